@@ -1,0 +1,11 @@
+"""The array type of the whole package."""
+
+from __future__ import annotations
+
+from typing import TypeAlias
+
+import numpy as np
+import numpy.typing as npt
+
+FloatArray: TypeAlias = npt.NDArray[np.float64]
+"""Float64 array; temperature [K] is the last axis."""

@@ -1,0 +1,1 @@
+"""Materials: laws, spreads, and the files they are read from."""

@@ -1,0 +1,360 @@
+"""The plan: what a search proposes, what verify makes of it, and the file that holds the result.
+
+A :class:`Proposal` is a claim with the evidence for it; only ``verify`` turns it into an
+:class:`Option`. Field names of the records are those of plan.json, units included.
+"""
+
+from __future__ import annotations
+
+import json
+from collections.abc import Mapping, Sequence
+from dataclasses import asdict, dataclass, field, fields
+from typing import Any, Literal, TypeAlias, TypeVar, cast, get_args
+
+from tcplan.errors import InputError, Problem
+from tcplan.material.model import Material, material_from_dict
+from tcplan.names import shown
+from tcplan.network import (
+    Arrangement,
+    Leg,
+    Network,
+    arrangement,
+    leg_names,
+    legs,
+    network_from_tree,
+    network_text,
+    shares,
+    tree,
+)
+from tcplan.toml_input import shape_problems
+
+SCHEMA = 1
+Verdict: TypeAlias = Literal["MET", "NOT MET", "NOT JUDGED"]
+Parameter: TypeAlias = Literal["ohm_per_square", "tc1", "tc2"]
+
+
+# --- evidence that travels from search to verify --------------------------------------------
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Space:
+    """A set of one-node networks: which materials, how many, and the least share of each.
+
+    ``fixed`` are members that are given. Together they hold a share of the whole inside
+    ``fixed_share`` (0, 0 when there are none); the chosen legs hold the rest.
+    """
+
+    arrangement: Literal["single", "series", "parallel"]
+    materials: tuple[str, ...]
+    most: int
+    min_share: float
+    fixed: tuple[Leg, ...] = ()
+    fixed_share: tuple[float, float] = (0.0, 0.0)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Certificate:
+    """Dual vectors that bound the figure of every network of a space.
+
+    ``nodes`` are (piece of the requirement, temperature [K]); each row of ``weights`` holds one
+    signed weight a node. Any weights give a true bound; good ones give a tight one.
+    """
+
+    nodes: tuple[tuple[int, float], ...]
+    weights: tuple[tuple[float, ...], ...]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Proposal:
+    """One network that a search (or the user) puts forward, with the evidence for its space."""
+
+    network: Network
+    space: Space | None = None
+    certificate: Certificate | None = None
+    role: str = ""
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class FloorEvidence:
+    """Where and with what weights a bound on every network whatever is to be evaluated."""
+
+    materials: tuple[str, ...]
+    nodes: tuple[tuple[int, float], ...]
+    upper: tuple[float, ...]
+    lower: tuple[float, ...]
+    fixed: tuple[Leg, ...] = ()
+    fixed_share: tuple[float, float] = (0.0, 0.0)
+
+
+# --- records, named as in plan.json -----------------------------------------------------------
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Nominal:
+    """Drift of the nominal network over the range."""
+
+    peak_ppm: float
+    at_degC: float
+    band_ppm: float
+    box_tcr_ppm_per_K: float
+    chord_cold_ppm_per_K: float | None
+    chord_hot_ppm_per_K: float | None
+    tc1_ppm_per_K: float
+    tc2_ppm_per_K2: float
+    centring_ppm: float
+    centred_peak_ppm: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Deviation:
+    """One material at a point of its spread: value factor, and shifts of TC1 and TC2."""
+
+    ohm_per_square: float
+    tc1: float
+    tc2: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Mover:
+    """How much of the worst case goes when one deviation of its device is undone [ppm]."""
+
+    material: str
+    parameter: Parameter
+    ppm: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class WorstCase:
+    """The largest judged drift over the spread box, the device that reaches it, and a bound."""
+
+    peak_ppm: float
+    at_degC: float
+    point: dict[str, Deviation]
+    method: str
+    upper_bound_ppm: float
+    movers: tuple[Mover, ...] = ()
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Proof:
+    """A lower bound on the judged figure of the arrangement, and the gap of this option to it."""
+
+    kind: Literal["global", "searched"]
+    of: Literal["nominal", "worst-case"]
+    lower_bound_ppm: float
+    gap_ppm: float
+
+    @property
+    def figure_ppm(self) -> float:
+        """The nominal figure that the bound belongs to."""
+        return self.lower_bound_ppm + self.gap_ppm
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Option:
+    """One checked answer to a brief. Only ``verify`` makes one."""
+
+    id: str
+    network: Network
+    squares: tuple[float | None, ...]
+    nominal: Nominal
+    worst_case: WorstCase | None
+    proof: Proof
+    verdict: Verdict
+    role: str = ""
+
+    @property
+    def arrangement(self) -> Arrangement:
+        """The kind of network."""
+        return arrangement(self.network)
+
+    def to_dict(self) -> dict[str, Any]:
+        """Return the option as plan.json holds it."""
+        rows = zip(
+            leg_names(len(self.squares)), legs(self.network), shares(self.network), self.squares, strict=True
+        )
+        return {
+            "id": self.id,
+            "role": self.role,
+            "arrangement": self.arrangement,
+            "network": network_text(self.network),
+            "tree": tree(self.network),
+            "legs": [
+                {"id": i, "material": leg.material, "ohms": leg.ohms, "share": share, "squares": squares}
+                for i, leg, share, squares in rows
+            ],
+            "nominal": asdict(self.nominal),
+            "worst_case": asdict(self.worst_case) if self.worst_case else None,
+            "proof": asdict(self.proof),
+            "verdict": self.verdict,
+        }
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class RangeRecord:
+    """The temperature range; ``high_degC`` includes ``rise_K``."""
+
+    name: str
+    low_degC: float
+    high_degC: float
+    reference_degC: float
+    rise_K: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class TargetRecord:
+    """The wanted value (None when free) and the wanted coefficients (0 when flat)."""
+
+    ohms: float | None
+    tc1_ppm_per_K: float
+    tc2_ppm_per_K2: float
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class LimitRecord:
+    """The limit as a drift; ``drift_ppm`` is None when no limit was given."""
+
+    kind: str
+    drift_ppm: float | None
+    judge: Literal["nominal", "worst-case"]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Floor:
+    """What no network of these materials can beat, and why."""
+
+    nominal_ppm: float
+    worst_case_ppm: float | None
+    why: str
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Plan:
+    """The ranked list of options for one brief, best first; ``chosen`` is an option id."""
+
+    tcplan: str
+    brief: dict[str, Any]
+    range: RangeRecord
+    target: TargetRecord
+    limit: LimitRecord
+    materials: tuple[Material, ...]
+    floor: Floor
+    chosen: str
+    options: tuple[Option, ...]
+    notes: tuple[str, ...] = field(default=())
+
+    @property
+    def best(self) -> Option:
+        """The chosen option."""
+        return next(option for option in self.options if option.id == self.chosen)
+
+    @property
+    def by_name(self) -> dict[str, Material]:
+        """The materials by name."""
+        return {material.name: material for material in self.materials}
+
+    def to_dict(self) -> dict[str, Any]:
+        """Return the plan as plain JSON data."""
+        return {
+            "schema": SCHEMA,
+            "tcplan": self.tcplan,
+            "brief": self.brief,
+            "range": asdict(self.range),
+            "target": asdict(self.target),
+            "limit": asdict(self.limit),
+            "materials": {material.name: material.to_dict() for material in self.materials},
+            "floor": asdict(self.floor),
+            "chosen": self.chosen,
+            "options": [option.to_dict() for option in self.options],
+            "notes": list(self.notes),
+        }
+
+
+def plan_json(plan: Plan) -> str:
+    """Return plan.json as text, at full precision; never NaN or infinity."""
+    return json.dumps(plan.to_dict(), indent=2, ensure_ascii=False, allow_nan=False) + "\n"
+
+
+T = TypeVar("T")
+
+
+def _keys(data: Any, names: Sequence[str], where: str) -> dict[str, Any]:
+    """Return data as a dict that holds exactly these names."""
+    if not isinstance(data, Mapping):
+        raise InputError(Problem(where=where, found=type(data).__name__, expected="a table of keys"))
+    wrong = [
+        *(Problem(where=where, found=f"no {n}", expected=f"the key {n}") for n in names if n not in data),
+        *(Problem(where=where, found=shown(n), expected="no other key") for n in data if n not in names),
+    ]
+    if wrong:
+        raise InputError(wrong)
+    return dict(data)
+
+
+def _record(kind: type[T], data: Any, where: str) -> T:
+    """Return a record read from untrusted data, every mistake reported with its place."""
+    from pydantic import TypeAdapter, ValidationError
+
+    content = _keys(data, [entry.name for entry in fields(cast("Any", kind))], where)
+    try:
+        return TypeAdapter(kind).validate_python(content)
+    except ValidationError as error:
+        raise InputError(shape_problems(error.errors(include_url=False), kind, where)) from None
+
+
+def _option(data: Any, where: str) -> Option:
+    """Return one option; the derived keys (arrangement, network, share) are made anew."""
+    names = "id role arrangement network tree legs nominal worst_case proof verdict".split()
+    content = _keys(data, names, where)
+    rows = [_keys(row, "id material ohms share squares".split(), f"{where}.legs") for row in content["legs"]]
+    by_id = {row["id"]: Leg(material=row["material"], ohms=row["ohms"]) for row in rows}
+    worst = content["worst_case"]
+    if content["verdict"] not in get_args(Verdict):
+        raise InputError(
+            Problem(where=f"{where}.verdict", found=shown(content["verdict"]), expected=str(get_args(Verdict)))
+        )
+    return Option(
+        id=content["id"],
+        role=content["role"],
+        network=network_from_tree(content["tree"], by_id),
+        squares=tuple(row["squares"] for row in rows),
+        nominal=_record(Nominal, content["nominal"], f"{where}.nominal"),
+        worst_case=_record(WorstCase, worst, f"{where}.worst_case") if worst is not None else None,
+        proof=_record(Proof, content["proof"], f"{where}.proof"),
+        verdict=content["verdict"],
+    )
+
+
+def plan_from_dict(data: Any) -> Plan:
+    """Return the plan of plain JSON data; the inverse of :meth:`Plan.to_dict`.
+
+    Raises
+    ------
+    InputError
+        When a key is missing, unknown or of the wrong kind.
+    """
+    names = "schema tcplan brief range target limit materials floor chosen options notes".split()
+    content = _keys(data, names, "plan")
+    if content["schema"] != SCHEMA:
+        raise InputError(Problem(where="plan.schema", found=repr(content["schema"]), expected=str(SCHEMA)))
+    return Plan(
+        tcplan=content["tcplan"],
+        brief=content["brief"],
+        range=_record(RangeRecord, content["range"], "plan.range"),
+        target=_record(TargetRecord, content["target"], "plan.target"),
+        limit=_record(LimitRecord, content["limit"], "plan.limit"),
+        materials=tuple(material_from_dict(entry) for entry in content["materials"].values()),
+        floor=_record(Floor, content["floor"], "plan.floor"),
+        chosen=content["chosen"],
+        options=tuple(_option(row, f"plan.options[{i}]") for i, row in enumerate(content["options"])),
+        notes=tuple(content["notes"]),
+    )
+
+
+def read_plan(text: str) -> Plan:
+    """Return the plan that the text of a plan.json holds."""
+    try:
+        data = json.loads(text)
+    except ValueError as error:
+        raise InputError(Problem(where="plan", found=f"not JSON ({error})", expected="a plan.json")) from None
+    return plan_from_dict(data)

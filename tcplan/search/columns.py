@@ -1,0 +1,129 @@
+"""Rows and columns of the drift programme: one column a material, one row pair a temperature.
+
+For the shares x of a one-node network the figure is the least e with
+``|n x - c b x| <= e d x`` in every row, where
+
+- series:   n = r - t,        d = L,        b = 1
+- parallel: n = 1 - t Gamma,  d = L Gamma,  b = Gamma   (Gamma = 1/r)
+
+r the ratio of a material, t the wanted law, L the weight of the piece, c the free centre (b is 0
+where a piece is not centred). The last column stands for the fixed members together.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+
+from tcplan.arrays import FloatArray
+from tcplan.goal import Requirement
+from tcplan.material.model import Material
+from tcplan.network import Network, Parallel, Series, resistance, value
+from tcplan.plan import Space
+
+GRID = 129  # points a piece on which violations are looked for before they are refined
+START = 13  # Chebyshev nodes a piece that every programme starts from
+
+
+@dataclass(frozen=True, slots=True)
+class Rows:
+    """Some rows of the programme; n, d, b have shape (rows, materials + 1)."""
+
+    piece: FloatArray
+    temperature: FloatArray
+    n: FloatArray
+    d: FloatArray
+    b: FloatArray
+
+    def take(self, where: FloatArray) -> Rows:
+        """Return the rows at these positions."""
+        return Rows(
+            self.piece[where], self.temperature[where], self.n[where], self.d[where], self.b[where]
+        )
+
+    def joined(self, other: Rows) -> Rows:
+        """Return these rows and then the other ones."""
+        return Rows(
+            np.concatenate([self.piece, other.piece]),
+            np.concatenate([self.temperature, other.temperature]),
+            np.vstack([self.n, other.n]),
+            np.vstack([self.d, other.d]),
+            np.vstack([self.b, other.b]),
+        )
+
+    def figures(self, x: FloatArray, centre: float) -> FloatArray:
+        """Return the signed figure in every row for shares x, shape (materials + 1,)."""
+        return np.asarray((self.n @ x - centre * (self.b @ x)) / (self.d @ x))
+
+
+@dataclass(frozen=True, slots=True)
+class Programme:
+    """The columns of a space against a requirement, at any temperature."""
+
+    space: Space
+    need: Requirement
+    materials: Mapping[str, Material]
+    names: tuple[str, ...]
+
+    def rows(self, piece: FloatArray, temperature: FloatArray) -> Rows:
+        """Return the rows at these pieces and temperatures [K], both of shape (rows,)."""
+        reference = self.need.reference
+        ratios = [self.materials[name].ratio(temperature, reference) for name in self.names]
+        r = np.stack([*ratios, self._fixed_ratio(temperature)], axis=1)
+        weight = np.array([p.weight for p in self.need.pieces])[piece][:, None]
+        free = np.array([1.0 if p.centred else 0.0 for p in self.need.pieces])[piece][:, None]
+        t = self.need.wanted(temperature)[:, None]
+        base = 1.0 / r if self.space.arrangement == "parallel" else np.ones_like(r)
+        n = 1.0 - t * base if self.space.arrangement == "parallel" else r - t
+        return Rows(piece, temperature, n, weight * base, free * base)
+
+    def _fixed_ratio(self, temperature: FloatArray) -> FloatArray:
+        """Return R(T)/R(T_ref) of the fixed members together; 1 when there are none."""
+        fixed = fixed_group(self.space)
+        if fixed is None:
+            return np.ones_like(temperature)
+        reference = self.need.reference
+        ratios = {
+            leg.material: self.materials[leg.material].ratio(temperature, reference)
+            for leg in self.space.fixed
+        }
+        return resistance(fixed, ratios) / value(fixed)
+
+    def spread_rows(self, count: int, *, chebyshev: bool) -> Rows:
+        """Return ``count`` rows over every piece, its ends included (one row for a point)."""
+        pieces, temperatures = [], []
+        for index, piece in enumerate(self.need.pieces):
+            z = np.cos(np.pi * np.arange(count) / (count - 1)) if chebyshev else np.linspace(1, -1, count)
+            points = 0.5 * (piece.low + piece.high) - 0.5 * (piece.high - piece.low) * z
+            points = np.unique(np.clip(points, piece.low, piece.high))
+            temperatures.append(points)
+            pieces.append(np.full(len(points), index))
+        return self.rows(np.concatenate(pieces), np.concatenate(temperatures))
+
+
+def fixed_group(space: Space) -> Network | None:
+    """Return the fixed members as one network, or None."""
+    if len(space.fixed) < 2:
+        return space.fixed[0] if space.fixed else None
+    return Parallel(space.fixed) if space.arrangement == "parallel" else Series(space.fixed)
+
+
+def vertex_weights(space: Space, support: Sequence[int], count: int) -> FloatArray:
+    """Return the vertices of the shares that a support allows, shape (count + 1, vertices).
+
+    Every leg of the support holds at least ``min_share``, the fixed members a share u between
+    their bounds, and one leg at a time holds the rest.
+    """
+    columns = []
+    for u in sorted(set(space.fixed_share)):
+        rest = 1.0 - u - len(support) * space.min_share
+        for i in support:
+            column = np.zeros(count + 1)
+            column[list(support)] = space.min_share
+            column[i] += rest
+            column[count] = u
+            if rest >= -1e-12:
+                columns.append(column)
+    return np.stack(columns, axis=1) if columns else np.zeros((count + 1, 0))

@@ -1,0 +1,197 @@
+"""Lower bounds, evaluated from dual vectors: what no network of a space can beat.
+
+For signed weights y over the rows, and any mix of columns,
+``e >= min over columns of (y n - c y b)/(|y| d)`` with
+
+- series:   n = r - t,        d = L,        b = 1
+- parallel: n = 1 - t Gamma,  d = L Gamma,  b = Gamma
+
+A bound needs nothing of the solver that found y: any y gives a true one (METHODS 3).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+from itertools import combinations
+
+import numpy as np
+
+from tcplan.arrays import FloatArray
+from tcplan.goal import Requirement
+from tcplan.material.model import Material
+from tcplan.network import Leg, Parallel, Series, resistance, value
+from tcplan.plan import Certificate, FloorEvidence, Space
+
+MARGIN = 1e-13  # floating point without directed rounding
+CELLS = 400
+CHUNK = 20_000
+
+
+@dataclass(frozen=True, slots=True)
+class Line:
+    """For one y: y n, y b and |y| d of every material, and last of the fixed members together."""
+
+    n: FloatArray
+    b: FloatArray
+    d: FloatArray
+
+
+def ratio_of_fixed(
+    fixed: tuple[Leg, ...], parallel: bool, materials: Mapping[str, Material], reference: float, T: FloatArray
+) -> FloatArray:
+    """Return R(T)/R(T_ref) of the fixed members together; 1 when there are none."""
+    if not fixed:
+        return np.ones_like(T)
+    kind = Parallel if parallel else Series
+    group = fixed[0] if len(fixed) == 1 else kind(fixed)
+    ratios = {leg.material: materials[leg.material].ratio(T, reference) for leg in fixed}
+    return resistance(group, ratios) / value(group)
+
+
+def _lines(
+    space: Space, evidence: Certificate, need: Requirement, materials: Mapping[str, Material]
+) -> list[Line]:
+    """Evaluate every dual vector of the evidence from the materials' laws."""
+    T = np.array([t for _, t in evidence.nodes])
+    weight = np.array([need.pieces[p].weight for p, _ in evidence.nodes])
+    free = np.array([1.0 if need.pieces[p].centred else 0.0 for p, _ in evidence.nodes])
+    parallel = space.arrangement == "parallel"
+    columns = [materials[name].ratio(T, need.reference) for name in space.materials]
+    columns.append(ratio_of_fixed(space.fixed, parallel, materials, need.reference, T))
+    t = need.wanted(T)
+    y = np.array(evidence.weights)
+    n = np.empty((len(y), len(columns)))
+    b, d = np.empty_like(n), np.empty_like(n)
+    for j, r in enumerate(columns):
+        base = 1.0 / r if parallel else np.ones_like(r)
+        n[:, j] = y @ (1.0 - t * base if parallel else r - t)
+        b[:, j] = y @ (free * base)
+        d[:, j] = np.abs(y) @ (weight * base)
+    return [Line(n[k], b[k], d[k]) for k in range(len(y)) if np.all(d[k] > 0)]
+
+
+def _value(line: Line, space: Space, support: FloatArray, centre: float) -> FloatArray:
+    """Return what a line proves at one centre for supports of one size, shape (supports,)."""
+    size = support.shape[1]
+    top = line.n - centre * line.b
+    lowest = np.full(len(support), np.inf)
+    for u in set(space.fixed_share):
+        rest = 1.0 - u - size * space.min_share
+        if rest < -1e-12:
+            continue
+        above = space.min_share * top[support].sum(axis=1, keepdims=True) + rest * top[support] + u * top[-1]
+        below = (
+            space.min_share * line.d[support].sum(axis=1, keepdims=True)
+            + rest * line.d[support]
+            + u * line.d[-1]
+        )
+        lowest = np.minimum(lowest, (above / below).min(axis=1))
+    return lowest
+
+
+def _over_centre(lines: Sequence[Line], space: Space, support: FloatArray, limit: float) -> float:
+    """Return the least over |c| <= limit of the best line for one support.
+
+    A line is concave in c, hence at least the lesser of its ends on a cell; the loosest cell is
+    halved until the bound no longer rises.
+    """
+
+    def at(c: float) -> FloatArray:
+        return np.array([_value(line, space, support, c)[0] for line in lines])
+
+    cells = [(-limit, at(-limit), limit, at(limit))]
+    for _ in range(CELLS):
+        bounds = [float(np.max(np.minimum(left, right))) for _, left, _, right in cells]
+        k = int(np.argmin(bounds))
+        low, left, high, right = cells[k]
+        middle = 0.5 * (low + high)
+        here = at(middle)
+        if float(np.max(here)) - bounds[k] <= 1e-9 * abs(bounds[k]) + MARGIN:
+            break
+        cells[k : k + 1] = [(low, left, middle, here), (middle, here, high, right)]
+    return min(float(np.max(np.minimum(left, right))) for _, left, _, right in cells)
+
+
+def _supports(space: Space) -> Iterator[FloatArray]:
+    """Yield all supports in chunks of one size; without a least share one size holds the smaller."""
+    count = len(space.materials)
+    most = min(space.most, count)
+    if space.min_share == 0 and most == count:
+        yield np.arange(count)[None, :]
+        return
+    for size in range(1, most + 1) if space.min_share > 0 else [most]:
+        chunk: list[tuple[int, ...]] = []
+        for support in combinations(range(count), size):
+            chunk.append(support)
+            if len(chunk) == CHUNK:
+                yield np.array(chunk)
+                chunk = []
+        if chunk:
+            yield np.array(chunk)
+
+
+def arrangement_bound(
+    space: Space,
+    evidence: Certificate,
+    need: Requirement,
+    materials: Mapping[str, Material],
+    figure: float,
+) -> float:
+    """Return a lower bound on the figure of every network of a space (a fraction, at least 0).
+
+    Parameters
+    ----------
+    space : Space
+    evidence : Certificate
+    need : Requirement
+    materials : mapping of name to Material
+    figure : float
+        A figure that some network of the space reaches: whatever beats it has its centre within
+        weight * figure of the wanted value, since the drift is 0 at the reference.
+    """
+    lines = _lines(space, evidence, need, materials)
+    limit = next((p.weight * figure for p in need.pieces if p.centred), 0.0)
+    if not lines:
+        return 0.0
+    lowest = np.inf
+    for chunk in _supports(space):
+        best = np.full(len(chunk), -np.inf)
+        for line in lines:
+            ends = [_value(line, space, chunk, c) for c in {-limit, limit}]
+            np.maximum(best, np.minimum.reduce(ends), out=best)
+        if limit:
+            for k in np.nonzero(best < figure * (1 - 1e-7))[0]:
+                best[k] = _over_centre(lines, space, chunk[k : k + 1], limit)
+        lowest = min(lowest, float(best.min()))
+    return float(min(max(0.0, lowest - MARGIN), figure))
+
+
+def sandwich_bound(
+    evidence: FloorEvidence, need: Requirement, materials: Mapping[str, Material], figure: float
+) -> float:
+    """Return a lower bound on the figure of any network whatever of these materials.
+
+    Every network obeys 1/sum(p/r) <= R(T)/R(T_ref) <= sum p r with p its shares at the reference,
+    so a figure e needs sum p r >= t + c - eL and (t + c + eL) sum p/r >= 1 at every T.
+    """
+    T = np.array([t for _, t in evidence.nodes])
+    weight = np.array([need.pieces[p].weight for p, _ in evidence.nodes])
+    free = np.array([1.0 if need.pieces[p].centred else 0.0 for p, _ in evidence.nodes])
+    up, low = np.array(evidence.upper), np.array(evidence.lower)
+    limit = next((p.weight * figure for p in need.pieces if p.centred), 0.0)
+    columns = [materials[name].ratio(T, need.reference) for name in evidence.materials]
+    last = ratio_of_fixed(evidence.fixed, False, materials, need.reference, T)
+
+    def terms(r: FloatArray, c: float) -> tuple[float, float]:
+        t = need.wanted(T) + c * free
+        return float(up @ (t - r) + low @ (1.0 - t / r)), float(up @ weight + low @ (weight / r))
+
+    lowest = np.inf
+    for c in {-limit, limit}:
+        fixed_n, fixed_d = terms(last, c)
+        for r in columns:
+            n, d = terms(r, c)
+            for u in set(evidence.fixed_share):
+                lowest = min(lowest, ((1 - u) * n + u * fixed_n) / ((1 - u) * d + u * fixed_d))
+    return float(max(0.0, lowest - MARGIN))

@@ -1,0 +1,198 @@
+"""From a proposal to a checked option: every figure made anew from the materials' laws."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+
+from tcplan.arrays import FloatArray
+from tcplan.drift import breakpoints, centring, chord_tcr, effective_coefficients, extremes, panels, ratio_curve
+from tcplan.errors import InternalError
+from tcplan.goal import Requirement, judged
+from tcplan.material.model import Material
+from tcplan.material.spread import Spread
+from tcplan.network import Network, legs, shares, used_materials, value
+from tcplan.plan import (
+    Deviation,
+    Mover,
+    Nominal,
+    Option,
+    Parameter,
+    Proof,
+    Proposal,
+    Verdict,
+    WorstCase,
+)
+from tcplan.ranges import TemperatureRange
+from tcplan.units import to_celsius
+from tcplan.verify.bound import arrangement_bound
+from tcplan.verify.worst import Box, Device, Worst, worst_case
+
+CLOSED_RELATIVE, CLOSED_PPM = 1e-6, 1e-6
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Case:
+    """What an option is checked against.
+
+    ``spreads`` holds the spread of each material that has one, over this range; ``floor_ppm`` is
+    the nominal floor, which bounds an option that comes without evidence of its own.
+    """
+
+    materials: Mapping[str, Material]
+    spreads: Mapping[str, Spread]
+    over: TemperatureRange
+    need: Requirement
+    floor_ppm: float = 0.0
+
+
+def nominal_figures(network: Network, case: Case) -> Nominal:
+    """Return the drift of a network of nominal materials over the whole range."""
+    over, need = case.over, case.need
+    ratio = ratio_curve(network, case.materials, over.reference)
+    splits = (*breakpoints(case.materials, used_materials(network)), *need.breakpoints())
+    whole = panels(over.low, over.high, splits)
+
+    def drift(T: FloatArray) -> FloatArray:
+        return ratio(T) - need.wanted(T)
+
+    def relative(T: FloatArray) -> FloatArray:
+        return ratio(T) / need.wanted(T) - 1.0
+
+    ends = extremes(drift, whole)
+    offset, left = centring(extremes(relative, whole))
+    tc1, tc2, *_ = effective_coefficients(network, case.materials, over.reference)
+
+    def chord(at: float) -> float | None:
+        return None if at == over.reference else chord_tcr(ratio, at, over.reference) * 1e6
+
+    return Nominal(
+        peak_ppm=ends.peak.value * 1e6,
+        at_degC=to_celsius(ends.peak.at),
+        band_ppm=ends.band * 1e6,
+        box_tcr_ppm_per_K=ends.band / over.span * 1e6,
+        chord_cold_ppm_per_K=chord(over.low),
+        chord_hot_ppm_per_K=chord(over.high),
+        tc1_ppm_per_K=tc1 * 1e6,
+        tc2_ppm_per_K2=tc2 * 1e6,
+        centring_ppm=offset * 1e6,
+        centred_peak_ppm=left * 1e6,
+    )
+
+
+def nominal_figure(network: Network, case: Case) -> float:
+    """Return the figure that the goal sets on a network of nominal materials (a fraction)."""
+    ratio = ratio_curve(network, case.materials, case.over.reference)
+    return judged(ratio, case.need, breakpoints(case.materials, used_materials(network))).figure
+
+
+def spread_figures(network: Network, case: Case) -> WorstCase | None:
+    """Return the worst case over the spread; None when a material of the network has none."""
+    names = used_materials(network)
+    if any(name not in case.spreads for name in names):
+        return None
+    worst = worst_case(network, case.materials, case.spreads, case.need)
+    return WorstCase(
+        peak_ppm=worst.judged.figure * 1e6,
+        at_degC=to_celsius(worst.judged.at),
+        point=_point(worst),
+        method=worst.method,
+        upper_bound_ppm=worst.upper * 1e6,
+        movers=_movers(network, case, worst),
+    )
+
+
+def _movers(network: Network, case: Case, worst: Worst) -> tuple[Mover, ...]:
+    """Return the deviations of the worst device that matter most, largest first, three at most.
+
+    Each is undone alone, its device judged again, and the fall of the figure is its weight.
+    """
+    box = Box(network, case.materials, case.spreads, case.need)
+    found = []
+    for name in used_materials(network):
+        tc1, tc2 = worst.device.shifts[name]
+        undone: dict[Parameter, Device] = {
+            "ohm_per_square": worst.device.with_factor(name, 1.0),
+            "tc1": worst.device.with_shift(name, (0.0, tc2)),
+            "tc2": worst.device.with_shift(name, (tc1, 0.0)),
+        }
+        for parameter, device in undone.items():
+            fall = worst.judged.figure - box.judge(device).figure
+            if fall > 1e-9:
+                found.append(Mover(material=name, parameter=parameter, ppm=fall * 1e6))
+    return tuple(sorted(found, key=lambda m: (-m.ppm, m.material, m.parameter))[:3])
+
+
+def _point(worst: Worst) -> dict[str, Deviation]:
+    device = worst.device
+    return {
+        name: Deviation(ohm_per_square=factor, tc1=device.shifts[name][0] * 1e6, tc2=device.shifts[name][1] * 1e6)
+        for name, factor in device.factors.items()
+    }
+
+
+def verdict(need: Requirement, figure: float, worst: WorstCase | None) -> Verdict:
+    """Return whether the limit is met; without a limit, or without a spread to judge, not judged.
+
+    A worst case is met only when its guaranteed bound is within the limit.
+    """
+    if need.scale is None:
+        return "NOT JUDGED"
+    if need.goal.judge == "nominal":
+        return "MET" if need.met(figure) else "NOT MET"
+    if worst is None:
+        return "NOT JUDGED"
+    if need.met(worst.upper_bound_ppm * 1e-6):
+        return "MET"
+    return "NOT JUDGED" if need.met(worst.peak_ppm * 1e-6) else "NOT MET"
+
+
+def _proof(proposal: Proposal, figure: float, case: Case) -> Proof:
+    """Return the bound that the evidence proves; without evidence, the floor of all networks."""
+    bound = min(case.floor_ppm * 1e-6, figure)
+    if proposal.space is not None and proposal.certificate is not None:
+        own = arrangement_bound(proposal.space, proposal.certificate, case.need, case.materials, figure)
+        bound = max(bound, own)
+    gap = max(0.0, figure - bound)
+    proved = proposal.space is not None and gap * 1e6 <= max(CLOSED_PPM, CLOSED_RELATIVE * figure * 1e6)
+    return Proof(
+        kind="global" if proved else "searched",
+        of="nominal",
+        lower_bound_ppm=bound * 1e6,
+        gap_ppm=gap * 1e6,
+    )
+
+
+def check(proposal: Proposal, case: Case, name: str) -> Option:
+    """Return the checked option of a proposal.
+
+    Parameters
+    ----------
+    proposal : Proposal
+    case : Case
+    name : str
+        The id of the option.
+
+    Raises
+    ------
+    InternalError
+        When the network contradicts itself: shares that do not sum to 1.
+    """
+    network = proposal.network
+    if abs(sum(shares(network)) - 1.0) > 1e-9 or not np.isfinite(value(network)):
+        raise InternalError(f"option {name}: the shares of its legs do not sum to 1")
+    figure = nominal_figure(network, case)
+    worst = spread_figures(network, case)
+    reference = case.over.reference
+    return Option(
+        id=name,
+        network=network,
+        squares=tuple(case.materials[leg.material].squares(leg.ohms, reference) for leg in legs(network)),
+        nominal=nominal_figures(network, case),
+        worst_case=worst,
+        proof=_proof(proposal, figure, case),
+        verdict=verdict(case.need, figure, worst),
+        role=proposal.role,
+    )

@@ -1,0 +1,257 @@
+"""The short compositions that users and the command line both call."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import replace
+
+from tcplan import __version__
+from tcplan.brief import Brief
+from tcplan.errors import NoAnswer
+from tcplan.goal import Requirement, requirement
+from tcplan.material.spread import Spread
+from tcplan.network import arrangement, legs, used_materials, value
+from tcplan.plan import (
+    FloorEvidence,
+    LimitRecord,
+    Option,
+    Plan,
+    Proposal,
+    RangeRecord,
+    Space,
+    TargetRecord,
+)
+from tcplan.search.floor import floor_evidence
+from tcplan.search.linear import least_total, search_space
+from tcplan.verify.floor import floor
+from tcplan.verify.option import Case, check, nominal_figure, spread_figures
+
+FEW = 3
+EQUAL = 1.01  # an option that a simpler one equals within this factor is dropped
+TINY_SHARE = 1e-4  # of the fixed members, when the total is free
+
+
+def spreads_of(brief: Brief) -> dict[str, Spread]:
+    """Return the spread of each material that states one, over the range of the brief."""
+    found = {m.name: m.effective_spread(brief.over.low, brief.over.high) for m in brief.materials}
+    return {name: spread for name, spread in found.items() if spread is not None}
+
+
+def spaces(brief: Brief) -> tuple[Space, ...]:
+    """Return the sets of networks that the brief asks to search, one an arrangement."""
+    rules, fixed = brief.rules, tuple(member.leg for member in brief.fixed)
+    return tuple(
+        Space(
+            arrangement=kind,
+            materials=rules.use,
+            most=1 if kind == "single" else min(rules.max_materials, rules.max_legs),
+            min_share=0.0 if kind == "single" else rules.min_share,
+            fixed=fixed,
+            fixed_share=_fixed_share(brief),
+        )
+        for kind in rules.arrangements
+    )
+
+
+def _fixed_share(brief: Brief) -> tuple[float, float]:
+    """Return the least and the greatest share of the fixed members together."""
+    if not brief.fixed:
+        return 0.0, 0.0
+    total, bound = brief.target.ohms, brief.target.at_most
+    if brief.fixed[0].place == "series":
+        own = sum(member.leg.ohms for member in brief.fixed)
+        if total is not None:
+            return own / total, own / total
+        return (own / bound if bound is not None else TINY_SHARE), 1.0
+    own = 1.0 / sum(1.0 / member.leg.ohms for member in brief.fixed)
+    if total is not None:
+        return total / own, total / own
+    return TINY_SHARE, min(1.0, bound / own) if bound is not None else 1.0
+
+
+# --- proposals ------------------------------------------------------------------------------------
+
+
+def _proposals(brief: Brief, need: Requirement, case: Case) -> list[Proposal]:
+    """Return what the search, or the user, puts forward."""
+    if brief.given is not None:
+        return [Proposal(network=brief.given, role="given")]
+    found: list[Proposal] = []
+    for space in spaces(brief):
+        low, high = space.fixed_share
+        parallel = space.arrangement == "parallel"
+        bounded = not brief.fixed or low == high or (brief.target.at_most is not None and not parallel)
+        if bounded:
+            mixes = search_space(space, need, case.materials, brief.target.ohms, FEW)
+            # A mix that has shrunk to one leg is what the single arrangement is for.
+            alone = "single" in brief.rules.arrangements and space.arrangement != "single"
+            found.extend(m for m in mixes if not (alone and arrangement(m.network) == "single"))
+        if brief.fixed and low != high and need.scale is not None:
+            extreme = _least_total(space, need, case, need.scale)
+            found.extend([extreme] if extreme is not None else [])
+    return found
+
+
+def _least_total(space: Space, need: Requirement, case: Case, limit: float) -> Proposal | None:
+    """Return the least (in parallel the greatest) total that meets the limit as it is judged.
+
+    Judged on the worst case, the nominal limit that the search works to is lowered until the
+    guaranteed worst case meets the limit; it is found by halving, so it is the best of these.
+    """
+    first = least_total(space, need, case.materials, limit)
+    if first is None or need.goal.judge == "nominal" or _worst(first, case) <= limit:
+        return first
+    best, low, high = None, 0.0, limit
+    for _ in range(14):
+        middle = 0.5 * (low + high)
+        proposal = least_total(space, need, case.materials, middle)
+        if proposal is not None and _worst(proposal, case) > limit:
+            high = middle
+        else:  # none at all: the limit is below what any total reaches
+            best, low = proposal or best, middle
+        if high - low <= 1e-3 * limit:
+            break
+    return best
+
+
+def _worst(proposal: Proposal, case: Case) -> float:
+    worst = spread_figures(proposal.network, case)
+    return float("inf") if worst is None else worst.upper_bound_ppm * 1e-6
+
+
+def _floor_evidence(brief: Brief, need: Requirement, figure: float) -> FloorEvidence:
+    names = used_materials(brief.given) if brief.given is not None else brief.rules.use
+    space = Space(
+        arrangement="series",
+        materials=tuple(names),
+        most=len(names),
+        min_share=0.0,
+        fixed=tuple(member.leg for member in brief.fixed),
+        fixed_share=_fixed_share(brief),
+    )
+    return floor_evidence(space, need, brief.by_name, figure)
+
+
+# --- ranking --------------------------------------------------------------------------------------
+
+
+def judged_ppm(option: Option, judge: str) -> float:
+    """Return the figure that the brief judges [ppm]; infinite where there is no worst case."""
+    if judge == "nominal":
+        return option.proof.figure_ppm
+    return option.worst_case.peak_ppm if option.worst_case else float("inf")
+
+
+def _shortlist(options: Sequence[Option], judge: str) -> tuple[Option, ...]:
+    """Return the options worth showing, best first.
+
+    Dropped: a network that is there already, and one that a simpler one equals within 1 %.
+    """
+    order = sorted(
+        options, key=lambda o: (judged_ppm(o, judge), o.proof.figure_ppm, len(legs(o.network)), o.id)
+    )
+    kept: list[Option] = []
+    for option in order:
+        figure = (judged_ppm(option, judge), option.proof.figure_ppm)
+        simpler = [o for o in order if len(legs(o.network)) < len(legs(option.network)) and not o.role]
+        beaten = any(
+            judged_ppm(o, judge) <= EQUAL * figure[0] and o.proof.figure_ppm <= EQUAL * figure[1]
+            for o in simpler
+        )
+        same = any(o.network == option.network for o in kept)
+        if option.role or not (beaten or same):
+            kept.append(option)
+    return tuple(kept)
+
+
+def _chosen(options: Sequence[Option], judge: str) -> Option:
+    """Return the simplest option that meets the limit, else the best one."""
+    met = [o for o in options if o.verdict == "MET"]
+    totals = [o for o in met if o.role in ("least total", "greatest total")]
+    if totals:
+        return totals[0]
+    if met:
+        return min(met, key=lambda o: (len(legs(o.network)), judged_ppm(o, judge)))
+    return options[0]
+
+
+# --- the plan -------------------------------------------------------------------------------------
+
+
+def make_plan(brief: Brief) -> Plan:
+    """Return the plan of a brief: searched, or given, and every option checked.
+
+    Raises
+    ------
+    NoAnswer
+        When no network fits the brief at all.
+    """
+    need = requirement(brief.goal, brief.over)
+    case = Case(materials=brief.by_name, spreads=spreads_of(brief), over=brief.over, need=need)
+    proposals = _proposals(brief, need, case)
+    if not proposals:
+        raise NoAnswer(
+            "No network of these materials fits the brief: the shares that min_share and the fixed "
+            "members ask for leave nothing, or no total meets the limit."
+        )
+    best = min(nominal_figure(proposal.network, case) for proposal in proposals)
+    evidence = _floor_evidence(brief, need, best)
+    names = {*evidence.materials, *(leg.material for leg in evidence.fixed)}
+    stated = case.spreads if names <= case.spreads.keys() else None
+    bottom = floor(evidence, need, case.materials, stated, best)
+    case = replace(case, floor_ppm=bottom.nominal_ppm)
+    options = _shortlist(
+        [check(proposal, case, str(n)) for n, proposal in enumerate(proposals, 1)], brief.goal.judge
+    )
+    options = tuple(replace(option, id=_option_id(options, n)) for n, option in enumerate(options))
+    return Plan(
+        tcplan=__version__,
+        brief=brief.to_dict(),
+        range=_range_record(brief),
+        target=_target_record(brief),
+        limit=LimitRecord(
+            kind=need.kind,
+            drift_ppm=None if need.scale is None else need.scale * 1e6,
+            judge=brief.goal.judge,
+        ),
+        materials=brief.materials,
+        floor=bottom,
+        chosen=_chosen(options, brief.goal.judge).id,
+        options=options,
+        notes=(),
+    )
+
+
+def _option_id(options: Sequence[Option], position: int) -> str:
+    """Return an id such as parallel-2: the arrangement, and its rank among its own."""
+    option = options[position]
+    if option.role == "given":
+        return "given"
+    same = [o for o in options[: position + 1] if o.arrangement == option.arrangement]
+    return f"{option.arrangement}-{len(same)}"
+
+
+def _range_record(brief: Brief) -> RangeRecord:
+    over = brief.over
+    return RangeRecord(
+        name=over.name,
+        low_degC=over.low_degC,
+        high_degC=over.high_degC,
+        reference_degC=over.reference_degC,
+        rise_K=over.rise,
+    )
+
+
+def _target_record(brief: Brief) -> TargetRecord:
+    wanted = brief.goal.wanted
+    tc1, tc2 = wanted.taylor(brief.over.reference, 2) if wanted else (0.0, 0.0)
+    return TargetRecord(
+        ohms=brief.target.ohms if brief.target.ohms is not None else _own_total(brief),
+        tc1_ppm_per_K=tc1 * 1e6,
+        tc2_ppm_per_K2=tc2 * 1e6,
+    )
+
+
+def _own_total(brief: Brief) -> float | None:
+    return value(brief.given) if brief.given is not None else None
+
