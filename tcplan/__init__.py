@@ -35,13 +35,13 @@ _HOMES = {
     "read_brief": "brief",
     "Plan": "plan",
     "Option": "plan",
-    "read_plan": "plan",
+    "read_plan": "plan_file",
     "plan_json": "plan",
     "make_plan": "workflow",
     "write_plan": "workflow",
 }
 
-__all__ = ["__version__", *_HOMES]  # noqa: PLE0604
+__all__ = ["__version__", *_HOMES]
 
 
 def __getattr__(name: str) -> Any:

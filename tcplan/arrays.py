@@ -9,3 +9,6 @@ import numpy.typing as npt
 
 FloatArray: TypeAlias = npt.NDArray[np.float64]
 """Float64 array; temperature [K] is the last axis."""
+
+IntArray: TypeAlias = npt.NDArray[np.intp]
+"""Array of positions."""

@@ -7,6 +7,7 @@ candidates. A maximum over a grid is never reported.
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Callable, Iterable, Mapping, Sequence
 from dataclasses import dataclass
 from functools import lru_cache
@@ -59,7 +60,7 @@ def panels(low: float, high: float, breakpoints: Iterable[float] = ()) -> tuple[
     """Split [low, high] at the breakpoints inside it; a single temperature is one empty panel."""
     inner = sorted({b for b in breakpoints if low < b < high})
     edges = [low, *inner, high]
-    return tuple(zip(edges[:-1], edges[1:], strict=True))
+    return tuple(itertools.pairwise(edges))
 
 
 @lru_cache(maxsize=8)
@@ -68,14 +69,14 @@ def _chebyshev_points(degree: int) -> tuple[FloatArray, FloatArray]:
     nodes = chebyshev.chebpts1(degree + 1)
     matrix = chebyshev.chebvander(nodes, degree).T * (2.0 / (degree + 1))
     matrix[0] *= 0.5
-    return nodes, matrix
+    return nodes, np.asarray(matrix, dtype=np.float64)
 
 
 @lru_cache(maxsize=8)
 def _check_points(degree: int) -> tuple[FloatArray, FloatArray]:
     """Return 64 points off the nodes and the Chebyshev values there."""
     points = np.cos(np.pi * (np.arange(64) + 0.37) / 64.0)
-    return points, chebyshev.chebvander(points, degree)
+    return points, np.asarray(chebyshev.chebvander(points, degree), dtype=np.float64)
 
 
 def _interpolant(curve: Curve, low: float, high: float, degree: int) -> FloatArray | None:

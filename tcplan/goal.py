@@ -35,8 +35,10 @@ class Window:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Limit:
-    """One limit. ``value`` is a fraction (drift, band), 1/K (chord_tcr, box_tcr), or the
-    tightest line of a mask."""
+    """One limit.
+
+    ``value`` is a fraction (drift, band), 1/K (chord_tcr, box_tcr), or the tightest line of a mask.
+    """
 
     kind: LimitKind
     value: float
@@ -65,7 +67,8 @@ class Goal:
         """Return t(T), the wanted R(T)/R(T_ref); 1 when flat."""
         if self.wanted is None:
             return np.ones_like(temperature)
-        return self.wanted.ratio(temperature) / self.wanted.ratio(np.array([reference]))[0]
+        at_reference = float(self.wanted.ratio(np.array([reference]))[0])
+        return np.asarray(self.wanted.ratio(temperature) / at_reference)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -115,9 +118,7 @@ def requirement(goal: Goal, over: TemperatureRange) -> Requirement:
     order = sorted(goal.limits, key=lambda limit: KINDS.index(limit.kind))
     if not order:
         whole = Piece(low=over.low, high=over.high, weight=1.0)
-        return Requirement(
-            kind="none", pieces=(whole,), scale=None, reference=over.reference, goal=goal
-        )
+        return Requirement(kind="none", pieces=(whole,), scale=None, reference=over.reference, goal=goal)
     scale = _own_scale(order[0], over)
     pieces = [
         replace(piece, weight=piece.weight * _own_scale(limit, over) / scale)

@@ -136,9 +136,7 @@ def shares(network: Network) -> tuple[float, ...]:
     return tuple(float(share) for share in leg_shares(network, ones))
 
 
-def slope(
-    network: Network, ratios: Mapping[str, FloatArray], slopes: Mapping[str, FloatArray]
-) -> FloatArray:
+def slope(network: Network, ratios: Mapping[str, FloatArray], slopes: Mapping[str, FloatArray]) -> FloatArray:
     """Return d ln R / dT [1/K]: the mean of the legs' slopes weighted by their shares."""
     terms = [
         share * slopes[leg.material]

@@ -30,8 +30,8 @@ class Grade:
     """
 
     name: str
-    low_degC: float  # noqa: N815 - a value that is not SI wears its unit
-    high_degC: float  # noqa: N815
+    low_degC: float
+    high_degC: float
     standard: str
 
 

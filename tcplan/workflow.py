@@ -254,4 +254,3 @@ def _target_record(brief: Brief) -> TargetRecord:
 
 def _own_total(brief: Brief) -> float | None:
     return value(brief.given) if brief.given is not None else None
-

@@ -22,6 +22,7 @@ from tcplan.material.law import (
     from_peak,
     steinhart_hart_from_points,
 )
+from tcplan.material.model import HOTTEST
 from tcplan.names import nearest_name, shown
 from tcplan.table_reader import TableReader
 
@@ -35,6 +36,19 @@ class _Form:
     needed: tuple[str, ...]
     build: Callable[[TableReader, float | None], Law | None]
     optional: tuple[str, ...] = ()
+
+
+def read_temperature(reader: TableReader, key: str) -> float | None:
+    """Return the temperature [K] of a key, or None with its mistake in the reader's list."""
+    temperature = reader.quantity(key, "K")
+    return temperature if temperature is not None and _is_temperature(reader, key, temperature) else None
+
+
+def _is_temperature(reader: TableReader, key: str, temperature: float) -> bool:
+    if 0.0 < temperature <= HOTTEST:
+        return True
+    reader.refuse(key, f"{temperature:g} K", f"a temperature above 0 K and up to {HOTTEST:g} K")
+    return False
 
 
 def read_law(reader: TableReader, reference: float | None) -> Law | None:
@@ -96,7 +110,7 @@ def _polynomial(reader: TableReader, reference: float | None) -> Law | None:
 
 
 def _chords(reader: TableReader, reference: float | None) -> Law | None:
-    cold, hot = reader.quantity("cold", "K"), reader.quantity("hot", "K")
+    cold, hot = read_temperature(reader, "cold"), read_temperature(reader, "hot")
     cold_tcr, hot_tcr = reader.quantity("cold_tcr", "1/K"), reader.quantity("hot_tcr", "1/K")
     if reference is None or cold is None or hot is None or cold_tcr is None or hot_tcr is None:
         return None
@@ -104,7 +118,7 @@ def _chords(reader: TableReader, reference: float | None) -> Law | None:
 
 
 def _peak(reader: TableReader, reference: float | None) -> Law | None:
-    peak, tc2 = reader.quantity("peak", "K"), reader.quantity("tc2", "1/K^2")
+    peak, tc2 = read_temperature(reader, "peak"), reader.quantity("tc2", "1/K^2")
     return None if reference is None or peak is None or tc2 is None else from_peak(peak, tc2, reference)
 
 
@@ -148,7 +162,10 @@ def _expression(reader: TableReader, reference: float | None) -> Law | None:
 
 def _points(reader: TableReader) -> tuple[tuple[float, float], ...] | None:
     rows = reader.list_of("points", ("K", "ohm"), MAX_POINTS)
-    return None if rows is None else tuple((temperature, ohms) for temperature, ohms in rows)
+    if rows is None:
+        return None
+    good = [_is_temperature(reader, f"points[{n}]", row[0]) for n, row in enumerate(rows, 1)]
+    return tuple((temperature, ohms) for temperature, ohms in rows) if all(good) else None
 
 
 def _number(reader: TableReader, key: str) -> float | None:

@@ -40,7 +40,7 @@ from typing import Annotated, Any, Literal
 from pydantic import BaseModel, ConfigDict, Field, ValidationError
 
 from tcplan.errors import InputError, InternalError, Problem
-from tcplan.material.file_laws import MAX_POINTS, read_law
+from tcplan.material.file_laws import MAX_POINTS, read_law, read_temperature
 from tcplan.material.law import Law, check_positive
 from tcplan.material.model import NAME, Film, Interval, Kind, Material, interval_problem, text_problems
 from tcplan.material.spread import Meaning, Spread
@@ -286,7 +286,7 @@ def _values(reader: TableReader, name: str) -> dict[str, Any]:
     return {
         "label": name if label is None else label,
         "source": reader.text("source"),
-        "law": read_law(reader, reader.quantity("reference", "K")),
+        "law": read_law(reader, read_temperature(reader, "reference")),
         "valid": _interval(reader, "valid"),
         "kind": kind,
         **size,

@@ -24,6 +24,8 @@ Interval = tuple[float, float]
 
 NAME = re.compile(r"[A-Za-z][A-Za-z0-9_]{0,39}")
 LONGEST_LABEL = 120
+HOTTEST = 10_000.0
+"""No solid is hotter [K]; a temperature beyond is a slip, and would overflow later."""
 LONGEST_SOURCE = 500
 _SIZE_KEY: dict[str, str] = {"film": "ohm_per_square", "wire": "ohm_per_metre", "part": "series"}
 
@@ -229,12 +231,12 @@ def text_problems(name: str, label: str, source: str) -> tuple[Problem, ...]:
 def interval_problem(where: str, interval: Interval) -> Problem | None:
     """Return what is wrong with a temperature range [K], if anything."""
     low, high = interval
-    if math.isfinite(low) and math.isfinite(high) and 0.0 < low < high:
+    if 0.0 < low < high <= HOTTEST:
         return None
     return Problem(
         where=where,
         found=f"{_temperature(low)} to {_temperature(high)}",
-        expected="two finite temperatures above absolute zero, the lower one first",
+        expected=f"two temperatures above 0 K and up to {HOTTEST:g} K, the lower one first",
     )
 
 

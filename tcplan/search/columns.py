@@ -17,7 +17,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from tcplan.arrays import FloatArray
+from tcplan.arrays import FloatArray, IntArray
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
 from tcplan.network import Network, Parallel, Series, resistance, value
@@ -31,17 +31,15 @@ START = 13  # Chebyshev nodes a piece that every programme starts from
 class Rows:
     """Some rows of the programme; n, d, b have shape (rows, materials + 1)."""
 
-    piece: FloatArray
+    piece: IntArray
     temperature: FloatArray
     n: FloatArray
     d: FloatArray
     b: FloatArray
 
-    def take(self, where: FloatArray) -> Rows:
+    def take(self, where: IntArray) -> Rows:
         """Return the rows at these positions."""
-        return Rows(
-            self.piece[where], self.temperature[where], self.n[where], self.d[where], self.b[where]
-        )
+        return Rows(self.piece[where], self.temperature[where], self.n[where], self.d[where], self.b[where])
 
     def joined(self, other: Rows) -> Rows:
         """Return these rows and then the other ones."""
@@ -67,7 +65,7 @@ class Programme:
     materials: Mapping[str, Material]
     names: tuple[str, ...]
 
-    def rows(self, piece: FloatArray, temperature: FloatArray) -> Rows:
+    def rows(self, piece: IntArray, temperature: FloatArray) -> Rows:
         """Return the rows at these pieces and temperatures [K], both of shape (rows,)."""
         reference = self.need.reference
         ratios = [self.materials[name].ratio(temperature, reference) for name in self.names]

@@ -12,7 +12,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from tcplan.arrays import FloatArray
+from tcplan.arrays import FloatArray, IntArray
 
 CLOSED = 1e-12
 MAX_PIVOTS = 2000
@@ -82,7 +82,7 @@ def _pivot(table: FloatArray, row: int, column: int) -> None:
     table[row, column] = 1.0 / pivot
 
 
-def _read(payoff: FloatArray, table: FloatArray, basic: FloatArray, free: FloatArray) -> Game:
+def _read(payoff: FloatArray, table: FloatArray, basic: IntArray, free: IntArray) -> Game:
     rows, columns = payoff.shape
     mix, weights = np.zeros(columns), np.zeros(rows)
     for i, variable in enumerate(basic):

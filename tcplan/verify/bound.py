@@ -17,7 +17,7 @@ from itertools import combinations
 
 import numpy as np
 
-from tcplan.arrays import FloatArray
+from tcplan.arrays import FloatArray, IntArray
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
 from tcplan.network import Leg, Parallel, Series, resistance, value
@@ -71,7 +71,7 @@ def _lines(
     return [Line(n[k], b[k], d[k]) for k in range(len(y)) if np.all(d[k] > 0)]
 
 
-def _value(line: Line, space: Space, support: FloatArray, centre: float) -> FloatArray:
+def _value(line: Line, space: Space, support: IntArray, centre: float) -> FloatArray:
     """Return what a line proves at one centre for supports of one size, shape (supports,)."""
     size = support.shape[1]
     top = line.n - centre * line.b
@@ -90,7 +90,7 @@ def _value(line: Line, space: Space, support: FloatArray, centre: float) -> Floa
     return lowest
 
 
-def _over_centre(lines: Sequence[Line], space: Space, support: FloatArray, limit: float) -> float:
+def _over_centre(lines: Sequence[Line], space: Space, support: IntArray, limit: float) -> float:
     """Return the least over |c| <= limit of the best line for one support.
 
     A line is concave in c, hence at least the lesser of its ends on a cell; the loosest cell is
@@ -113,7 +113,7 @@ def _over_centre(lines: Sequence[Line], space: Space, support: FloatArray, limit
     return min(float(np.max(np.minimum(left, right))) for _, left, _, right in cells)
 
 
-def _supports(space: Space) -> Iterator[FloatArray]:
+def _supports(space: Space) -> Iterator[IntArray]:
     """Yield all supports in chunks of one size; without a least share one size holds the smaller."""
     count = len(space.materials)
     most = min(space.most, count)

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+import itertools
 from collections.abc import Mapping, Sequence
+from typing import Protocol
 
 import numpy as np
 
@@ -33,7 +35,7 @@ def _temperatures(need: Requirement) -> tuple[FloatArray, FloatArray, FloatArray
     return T, plain, banded
 
 
-def least_slope_integral(materials: Sequence[Material], T: FloatArray) -> FloatArray:
+def least_slope_integral(materials: Sequence[_Sloped], T: FloatArray) -> FloatArray:
     """Return the integral of min over materials of d ln R/dT from T[0] to each T.
 
     Where one material has the least slope over a cell, the integral is the change of its ln R;
@@ -49,7 +51,15 @@ def least_slope_integral(materials: Sequence[Material], T: FloatArray) -> FloatA
             return float(min(step[1] for step in steps))
         return between(low, float(ends[1])) + between(float(ends[1]), high)
 
-    return np.concatenate([[0.0], np.cumsum([between(a, b) for a, b in zip(T[:-1], T[1:], strict=True)])])
+    return np.concatenate([[0.0], np.cumsum([between(a, b) for a, b in itertools.pairwise(T)])])
+
+
+class _Sloped(Protocol):
+    """What the slope bound needs of a material."""
+
+    def slope(self, T: FloatArray) -> FloatArray: ...
+
+    def ratio(self, T: FloatArray, reference: float) -> FloatArray: ...
 
 
 class _Mirror:
@@ -78,7 +88,7 @@ def slope_bound(
     reference = int(np.argmin(np.abs(T - need.reference)))
     best, stretch = 0.0, (need.reference, need.reference)
     for sign in (1, -1):
-        group = materials if sign > 0 else [_Mirror(m) for m in materials]  # type: ignore[misc]
+        group: Sequence[_Sloped] = materials if sign > 0 else [_Mirror(m) for m in materials]
         total = least_slope_integral(group, T)
         # rise[i, j] = least ln of R(T_j)/R(T_i), j > i; for the mirror, of R(T_i)/R(T_j)
         rise = np.triu(total[None, :] - total[:, None], 1)

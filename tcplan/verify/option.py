@@ -8,7 +8,15 @@ from dataclasses import dataclass
 import numpy as np
 
 from tcplan.arrays import FloatArray
-from tcplan.drift import breakpoints, centring, chord_tcr, effective_coefficients, extremes, panels, ratio_curve
+from tcplan.drift import (
+    breakpoints,
+    centring,
+    chord_tcr,
+    effective_coefficients,
+    extremes,
+    panels,
+    ratio_curve,
+)
 from tcplan.errors import InternalError
 from tcplan.goal import Requirement, judged
 from tcplan.material.model import Material
@@ -28,7 +36,8 @@ from tcplan.plan import (
 from tcplan.ranges import TemperatureRange
 from tcplan.units import to_celsius
 from tcplan.verify.bound import arrangement_bound
-from tcplan.verify.worst import Box, Device, Worst, worst_case
+from tcplan.verify.box import Box, Device, Worst
+from tcplan.verify.worst import worst_case
 
 CLOSED_RELATIVE, CLOSED_PPM = 1e-6, 1e-6
 
@@ -128,7 +137,9 @@ def _movers(network: Network, case: Case, worst: Worst) -> tuple[Mover, ...]:
 def _point(worst: Worst) -> dict[str, Deviation]:
     device = worst.device
     return {
-        name: Deviation(ohm_per_square=factor, tc1=device.shifts[name][0] * 1e6, tc2=device.shifts[name][1] * 1e6)
+        name: Deviation(
+            ohm_per_square=factor, tc1=device.shifts[name][0] * 1e6, tc2=device.shifts[name][1] * 1e6
+        )
         for name, factor in device.factors.items()
     }
 

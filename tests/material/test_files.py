@@ -369,6 +369,11 @@ def test_unknown_key_with_the_nearest(tmp_path: Path) -> None:
             'tc1 = "1 ppm/K"\nohm_per_square = "1 ohm"\n[material.m.film]\nmin_width = "0 um"',
             "film.min_width",
         ),
+        ('peak = "1e300 K"\ntc2 = "1 ppm/K^2"', "peak"),
+        (
+            'law = "table"\npoints = [["0 degC", "1 ohm"], ["25 degC", "1 ohm"], ["1e300 K", "2 ohm"]]',
+            "points[3]",
+        ),
         ('law = "thermistor"', "beta"),
         ('law = "thermistor"\nbeta = "-5 K"', "beta"),
         ('law = "steinhart-hart"\na = 1e-3\nb = 2e-4\nc = nan', "c"),

@@ -1,0 +1,95 @@
+"""The checked request, as plain frozen values."""
+
+from __future__ import annotations
+
+from dataclasses import dataclass
+from typing import Any, Literal, TypeAlias
+
+from tcplan.goal import Goal, Limit
+from tcplan.material.model import Material
+from tcplan.network import Leg, Network, network_text
+from tcplan.ranges import TemperatureRange
+from tcplan.units import to_celsius
+
+Searched: TypeAlias = Literal["single", "series", "parallel"]
+SEARCHED: tuple[Searched, ...] = ("single", "series", "parallel")
+Place: TypeAlias = Literal["series", "parallel"]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Target:
+    """The wanted total [ohm]: a number, at most a number, or free (both None)."""
+
+    ohms: float | None = None
+    at_most: float | None = None
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Fixed:
+    """A member that is given, not chosen."""
+
+    leg: Leg
+    place: Place = "series"
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class SearchRules:
+    """What the search may use. ``max_materials`` and ``max_legs`` count chosen ones only."""
+
+    arrangements: tuple[Searched, ...] = SEARCHED
+    use: tuple[str, ...] = ()
+    max_materials: int = 2
+    max_legs: int = 3
+    min_share: float = 0.0
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Brief:
+    """A checked request. ``materials`` are those in use, sorted by name."""
+
+    title: str
+    sha256: str
+    materials: tuple[Material, ...]
+    target: Target
+    over: TemperatureRange
+    goal: Goal
+    rules: SearchRules
+    fixed: tuple[Fixed, ...] = ()
+    given: Network | None = None
+
+    @property
+    def by_name(self) -> dict[str, Material]:
+        """The materials by name."""
+        return {material.name: material for material in self.materials}
+
+    def to_dict(self) -> dict[str, Any]:
+        """Return the brief as plan.json holds it, units in the names."""
+        rules = self.rules
+        return {
+            "title": self.title,
+            "sha256": self.sha256,
+            "resistor": {"value_ohms": self.target.ohms, "at_most_ohms": self.target.at_most},
+            "goal": {
+                "judge": self.goal.judge,
+                "limits": [_limit_dict(limit) for limit in self.goal.limits],
+                "wanted": self.goal.wanted.parameters() if self.goal.wanted else None,
+            },
+            "search": {
+                "arrangements": list(rules.arrangements),
+                "use": list(rules.use),
+                "max_materials": rules.max_materials,
+                "max_legs": rules.max_legs,
+                "min_share": rules.min_share,
+            },
+            "fixed": [{"material": f.leg.material, "ohms": f.leg.ohms, "place": f.place} for f in self.fixed],
+            "given": network_text(self.given) if self.given else None,
+        }
+
+
+def _limit_dict(limit: Limit) -> dict[str, Any]:
+    unit = "ppm_per_K" if limit.kind in ("chord_tcr", "box_tcr") else "ppm"
+    windows = [
+        {"low_degC": to_celsius(w.low), "high_degC": to_celsius(w.high), "limit_ppm": w.limit * 1e6}
+        for w in limit.windows
+    ]
+    return {"kind": limit.kind, unit: limit.value * 1e6, "windows": windows}

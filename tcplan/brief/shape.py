@@ -1,0 +1,93 @@
+"""The shape of a brief: its tables and keys. Values are read and checked elsewhere."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from typing import Annotated, Any, Literal
+
+from pydantic import BaseModel, ConfigDict, Field, ValidationError
+
+from tcplan.errors import Problem
+from tcplan.toml_input import shape_problems
+
+MOST_ROWS = 200
+
+
+class _Shape(BaseModel):
+    model_config = ConfigDict(extra="forbid", strict=True, allow_inf_nan=False, defer_build=True)
+
+
+def _text(example: str) -> Any:
+    return Field(default=None, examples=[f'"{example}"'])
+
+
+_Triple = Annotated[list[str], Field(min_length=3, max_length=3)]
+_Pair = Annotated[list[str], Field(min_length=2, max_length=2)]
+
+
+class _ResistorShape(_Shape):
+    value: str | None = _text("18 kohm")
+    at_most: str | None = _text("3 kohm")
+
+
+class _TemperatureShape(_Shape):
+    range: str | None = _text("automotive-1")
+    low: str | None = _text("-40 degC")
+    high: str | None = _text("125 degC")
+    rise: str | None = _text("10 K")
+    reference: str | None = _text("25 degC")
+
+
+class _GoalShape(_Shape):
+    drift: str | None = _text("6000 ppm")
+    band: str | None = _text("8000 ppm")
+    chord_tcr: str | None = _text("25 ppm/K")
+    box_tcr: str | None = _text("25 ppm/K")
+    mask: Annotated[list[_Triple], Field(min_length=1, max_length=MOST_ROWS)] | None = None
+    judge: Literal["nominal", "worst-case"] | None = None
+    tc1: str | None = _text("3000 ppm/K")
+    tc2: str | None = _text("0.5 ppm/K^2")
+    law: str | None = _text("exp(a*(T - T0))")
+    law_parameters: dict[str, float] | None = None
+    table: Annotated[list[_Pair], Field(min_length=3, max_length=MOST_ROWS)] | None = None
+
+
+class _SearchShape(_Shape):
+    arrangements: Annotated[list[str], Field(min_length=1, max_length=4)] | None = None
+    use: Annotated[list[str], Field(min_length=1)] | None = None
+    max_materials: Annotated[int, Field(ge=1, le=12)] | None = None
+    max_legs: Annotated[int, Field(ge=1, le=12)] | None = None
+    min_share: str | None = _text("3 %")
+
+
+class _FixedShape(_Shape):
+    material: str
+    value: str = Field(examples=['"412 ohm"'])
+    place: Literal["series", "parallel"] | None = None
+
+
+class _GivenShape(_Shape):
+    network: str = Field(examples=['"film_a 12 kohm + (film_b 4k7 || film_c 3k3)"'])
+    scaled: bool | None = None
+
+
+class _BriefShape(_Shape):
+    version: Literal[1] = Field(alias="schema", examples=["1"])
+    title: str = Field(examples=['"Span resistor"'])
+    materials: list[str] | None = None
+    material: dict[str, Any] | None = None
+    resistor: _ResistorShape | None = None
+    temperature: _TemperatureShape
+    goal: _GoalShape | None = None
+    search: _SearchShape | None = None
+    fixed: Annotated[list[_FixedShape], Field(max_length=16)] | None = None
+    given: _GivenShape | None = None
+
+
+def shape_mistakes(data: Mapping[str, Any], where: str) -> tuple[Problem, ...]:
+    """Return what is wrong with the tables and keys of a brief, in our words."""
+    try:
+        _BriefShape.model_validate(data)
+    except ValidationError as error:
+        return shape_problems(error.errors(include_url=False), _BriefShape, where)
+    return ()

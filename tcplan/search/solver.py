@@ -1,0 +1,250 @@
+"""The best mix of one support: a linear programme on a few temperatures, and node exchange.
+
+A mix is solved on a few temperatures, its violating extremes are added, and so on until what the
+mix reaches and what the duals prove agree. Every dual vector is kept: it bounds other supports too.
+"""
+
+from __future__ import annotations
+
+from dataclasses import dataclass, field, replace
+
+import numpy as np
+
+from tcplan.arrays import FloatArray, IntArray
+from tcplan.search.columns import GRID, START, Programme, Rows, vertex_weights
+from tcplan.search.minimax import solve_fractional
+
+RELATIVE, ABSOLUTE = 1e-7, 1e-13
+EXCHANGES = 25
+VANISHED = 1e-10
+
+
+@dataclass(frozen=True, slots=True)
+class Mix:
+    """Shares (fixed group last), the figure that they reach, and a bound for their support."""
+
+    shares: FloatArray
+    figure: float
+    lower: float
+
+    @property
+    def used(self) -> frozenset[int]:
+        """Positions of the chosen materials that carry a share."""
+        return frozenset(int(i) for i in np.nonzero(self.shares[:-1] > VANISHED)[0])
+
+
+def closed(upper: float, lower: float) -> bool:
+    """Whether a figure and its bound agree."""
+    return upper - lower <= max(ABSOLUTE, RELATIVE * abs(upper))
+
+
+@dataclass(slots=True)
+class Solver:
+    """One space: its rows so far, and the bank of dual vectors."""
+
+    programme: Programme
+    nodes: Rows = field(init=False)
+    grid: Rows = field(init=False)
+    bank: list[FloatArray] = field(default_factory=list)
+    centre_limit: float = 0.0
+
+    def __post_init__(self) -> None:
+        self.nodes = self.programme.spread_rows(START, chebyshev=True)
+        self.grid = self.programme.spread_rows(GRID, chebyshev=False)
+        if self.programme.need.centred:
+            self.centre_limit = self._least_single()
+
+    @property
+    def count(self) -> int:
+        """Number of chosen materials that are on offer."""
+        return len(self.programme.names)
+
+    def _least_single(self) -> float:
+        """Return a bound on |centre| of anything that beats the best single material.
+
+        The drift is 0 at the reference, so a centre further off than the half-band is beaten.
+        """
+        figures = []
+        space = self.programme.space
+        for i in range(self.count):
+            for vertex in vertex_weights(replace(space, min_share=0.0), [i], self.count).T:
+                figures.append(self.reach(vertex)[0])
+        weight = next(p.weight for p in self.programme.need.pieces if p.centred)
+        return 1.001 * weight * min(figures)
+
+    # --- what a mix reaches -------------------------------------------------------------------
+
+    def centre(self, x: FloatArray, rows: Rows) -> float:
+        """Return the centre that suits shares x best on these rows."""
+        banded = rows.b[:, -1] > 0
+        if not banded.any():
+            return 0.0
+        drift = (rows.n[banded] @ x) / (rows.b[banded] @ x)
+        return float(0.5 * (drift.max() + drift.min()))
+
+    def reach(self, x: FloatArray) -> tuple[float, Rows]:
+        """Return the figure of shares x over the continuous range, and the rows that set it."""
+        peaks = self._refined(x, self._grid_peaks(x))
+        all_rows = self.grid.joined(peaks)
+        centre = self.centre(x, all_rows)
+        figure = float(np.max(np.abs(all_rows.figures(x, centre))))
+        return figure, peaks
+
+    def _grid_peaks(self, x: FloatArray) -> IntArray:
+        """Return positions on the grid of the local extremes of the drift, ends included."""
+        drift, piece = self.grid.figures(x, 0.0), self.grid.piece
+        padded = np.r_[np.nan, drift, np.nan]
+        edge = np.r_[True, piece[1:] != piece[:-1], True]
+        left, right = padded[:-2].copy(), padded[2:].copy()
+        left[edge[:-1]], right[edge[1:]] = np.nan, np.nan
+        high = ~((left > drift) | (right > drift))
+        low = ~((left < drift) | (right < drift))
+        return np.nonzero(high | low)[0]
+
+    def _refined(self, x: FloatArray, at: IntArray) -> Rows:
+        """Return rows at extremes refined by two steps of parabolic interpolation."""
+        piece, t = self.grid.piece[at], self.grid.temperature[at].copy()
+        low = np.array([p.low for p in self.programme.need.pieces])[piece]
+        high = np.array([p.high for p in self.programme.need.pieces])[piece]
+        step = (high - low) / (GRID - 1)
+        inside = (t > low) & (t < high)
+        t[~inside & (t <= low)] = low[~inside & (t <= low)]
+        piece, t, step = piece[inside], t[inside], step[inside]
+        ends = self.grid.take(at[~inside])
+        for shrink in (1.0, 0.05):
+            h = step * shrink
+            if not len(t):
+                break
+            rows = self.programme.rows(np.tile(piece, 3), np.concatenate([t - h, t, t + h]))
+            f0, f1, f2 = np.split(rows.figures(x, 0.0), 3)
+            bend = f0 - 2 * f1 + f2
+            move = np.where(np.abs(bend) > 1e-18, 0.5 * (f0 - f2) / np.where(bend == 0, 1.0, bend), 0.0)
+            t = t + h * np.clip(move, -1.0, 1.0)
+        t = np.clip(t, low[inside], high[inside])
+        return ends.joined(self.programme.rows(piece, t))
+
+    # --- one support --------------------------------------------------------------------------
+
+    def solve(self, support: tuple[int, ...], *, enough: float = np.inf, relaxed: bool = False) -> Mix | None:
+        """Return the best mix of a support, or None when its shares cannot sum to 1.
+
+        Stops early once the proved bound is above ``enough``; ``relaxed`` leaves out the least
+        share.
+        """
+        space = self.programme.space
+        weights = vertex_weights(replace(space, min_share=0.0) if relaxed else space, support, self.count)
+        if not weights.shape[1]:
+            return None
+        x = weights.mean(axis=1)
+        best = Mix(x, float("inf"), 0.0)
+        mine = np.arange(len(self.nodes.temperature))
+        mine = mine[: self._shared_count()]
+        for _ in range(EXCHANGES):
+            rows = self.nodes.take(mine)
+            x, dual = self._mix_on(rows, weights, x)
+            y = np.zeros(len(self.nodes.temperature))
+            y[mine] = dual
+            self.bank.append(y)
+            lower = max(best.lower, self.bound_of(weights, [y]))
+            figure, peaks = self.reach(x)
+            if figure < best.figure:
+                best = Mix(x, figure, lower)
+            best = replace(best, lower=lower)
+            if closed(best.figure, lower) or lower > enough:
+                break
+            known = len(self.nodes.temperature)
+            fresh = self._new_rows(peaks, rows)
+            if not len(fresh.temperature):
+                break
+            self.nodes = self.nodes.joined(fresh)
+            mine = np.r_[mine, np.arange(known, len(self.nodes.temperature))]
+        if self.programme.need.centred and self.programme.space.arrangement == "parallel":
+            best = replace(best, lower=self._close_centre(weights, best, mine))
+        return best
+
+    def _shared_count(self) -> int:
+        """Return how many of the first rows every support uses."""
+        return sum(1 if p.low == p.high else START for p in self.programme.need.pieces)
+
+    def _new_rows(self, peaks: Rows, rows: Rows) -> Rows:
+        """Return the peaks that are not among the rows already."""
+        near = np.abs(peaks.temperature[:, None] - rows.temperature[None, :]) < 1e-7
+        same = near & (peaks.piece[:, None] == rows.piece[None, :])
+        return peaks.take(np.nonzero(~same.any(axis=1))[0])
+
+    def _mix_on(self, rows: Rows, weights: FloatArray, x: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Return shares and signed duals of the programme on some rows.
+
+        In parallel the product of centre and shares is not linear: it is linearised about the
+        last mix, and three rounds leave nothing, since the centre is a small fraction of 1.
+        """
+        n, d = rows.n @ weights, rows.d @ weights
+        rounds = 3 if self.centre_limit and self.programme.space.arrangement == "parallel" else 1
+        for _ in range(rounds):
+            shift = self.centre_limit * (rows.b @ x)[:, None]
+            sides = [n - shift, n + shift] if self.centre_limit else [n]
+            numerator = np.hstack([np.vstack([side, -side]) for side in sides])
+            denominator = np.hstack([np.vstack([d, d])] * len(sides))
+            answer = solve_fractional(numerator, denominator)
+            mix = answer.mix.reshape(len(sides), -1).sum(axis=0)
+            x = weights @ mix
+        up, down = np.split(answer.rows, 2)
+        return x, up - down
+
+    def bound_of(self, weights: FloatArray, duals: list[FloatArray]) -> float:
+        """Return what the duals prove for a support: the least over the centre of the best of them."""
+        lines = [self._line(y, weights) for y in duals]
+        if not self.centre_limit:
+            return max(float(np.min(n / d)) for n, _, d in lines)
+        return least_over_centre(lines, self.centre_limit)[0]
+
+    def _line(self, y: FloatArray, weights: FloatArray) -> tuple[FloatArray, FloatArray, FloatArray]:
+        """Return y n, y b, |y| d by vertex; the bound at centre c is min (yn - c yb)/(|y|d)."""
+        rows = self.nodes
+        k = len(y)
+        d = np.abs(y) @ rows.d[:k] @ weights
+        return y @ rows.n[:k] @ weights, y @ rows.b[:k] @ weights, np.maximum(d, 1e-300)
+
+    def _close_centre(self, weights: FloatArray, best: Mix, mine: IntArray) -> float:
+        """Add duals at fixed centres until the bound over all centres meets the figure."""
+        rows = self.nodes.take(mine)
+        duals = [np.pad(y, (0, len(self.nodes.temperature) - len(y))) for y in self.bank[-3:]]
+        for _ in range(80):
+            lower, where = least_over_centre([self._line(y, weights) for y in duals], self.centre_limit)
+            if closed(best.figure, lower):
+                break
+            n = (rows.n - where * rows.b) @ weights
+            d = rows.d @ weights
+            answer = solve_fractional(np.vstack([n, -n]), np.vstack([d, d]))
+            up, down = np.split(answer.rows, 2)
+            y = np.zeros(len(self.nodes.temperature))
+            y[mine] = up - down
+            duals.append(y)
+            self.bank.append(y)
+        return max(best.lower, lower)
+
+
+def least_over_centre(
+    lines: list[tuple[FloatArray, FloatArray, FloatArray]], limit: float
+) -> tuple[float, float]:
+    """Return the least over |c| <= limit of the best proved bound, and the centre where it lies.
+
+    Every line is concave in c (a minimum of affine functions), so on a cell it is at least the
+    lesser of its ends; cells are halved where that leaves the bound loose.
+    """
+    n, b, d = (np.stack([line[k] for line in lines]) for k in range(3))
+
+    def at(c: float) -> FloatArray:
+        return np.asarray(np.min((n - c * b) / d, axis=1))
+
+    cells = [(-limit, limit, at(-limit), at(limit))]
+    for _ in range(200):
+        bounds = [float(np.max(np.minimum(left, right))) for _, _, left, right in cells]
+        worst = int(np.argmin(bounds))
+        low, high, left, right = cells[worst]
+        middle = 0.5 * (low + high)
+        here = at(middle)
+        if float(np.max(here)) - bounds[worst] <= 1e-9 * abs(bounds[worst]) + 1e-16:
+            return max(0.0, bounds[worst]), middle
+        cells[worst : worst + 1] = [(low, middle, left, here), (middle, high, here, right)]
+    return max(0.0, min(bounds)), middle

@@ -1,0 +1,102 @@
+"""The spread box of a network: its devices, their curves, and what they are judged to reach."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+
+from tcplan.arrays import FloatArray
+from tcplan.drift import Curve
+from tcplan.goal import Judged, Requirement, judged
+from tcplan.material.model import Material
+from tcplan.material.spread import Spread, law_bounds, law_vertices, shifted_ratio, value_half_width
+from tcplan.network import Network, deviated, resistance, used_materials, value
+
+
+@dataclass(frozen=True, slots=True)
+class Device:
+    """One point of the spread box: factor, TC1 shift and TC2 shift by material."""
+
+    factors: dict[str, float]
+    shifts: dict[str, tuple[float, float]]
+
+    def with_factor(self, name: str, factor: float) -> Device:
+        """Return this device with another value factor of one material."""
+        return Device({**self.factors, name: factor}, self.shifts)
+
+    def with_shift(self, name: str, shift: tuple[float, float]) -> Device:
+        """Return this device with other shifts of one material."""
+        return Device(self.factors, {**self.shifts, name: shift})
+
+
+@dataclass(frozen=True, slots=True)
+class Worst:
+    """The worst device found, what it reaches, how, and a bound on every device."""
+
+    device: Device
+    judged: Judged
+    upper: float
+    method: str
+
+
+@dataclass(frozen=True, slots=True)
+class Box:
+    """A network with the limits of its materials."""
+
+    network: Network
+    materials: Mapping[str, Material]
+    spreads: Mapping[str, Spread]
+    need: Requirement
+
+    @property
+    def names(self) -> tuple[str, ...]:
+        """The materials of the network."""
+        return used_materials(self.network)
+
+    def half_widths(self) -> FloatArray:
+        """Return the half-width of each value factor at the brief's reference."""
+        return np.array(
+            [
+                value_half_width(self.materials[n].law, self.spreads[n], self.need.reference)
+                for n in self.names
+            ]
+        )
+
+    def bounds(self, T: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Return the lowest and highest law ratios, shape (materials, T)."""
+        pairs = [
+            law_bounds(self.materials[n].law, self.spreads[n], self.need.reference, T) for n in self.names
+        ]
+        return np.stack([lo for lo, _ in pairs]), np.stack([hi for _, hi in pairs])
+
+    def shifts_at(self, T: float, sign: int) -> dict[str, tuple[float, float]]:
+        """Return the corner of (TC1, TC2) of each material that is highest (or lowest) at T."""
+        at = np.array([T])
+        chosen = {}
+        for n in self.names:
+            law = self.materials[n].law
+            corners = law_vertices(self.spreads[n])
+            ratios = [sign * shifted_ratio(law, c, self.need.reference, at)[0] for c in corners]
+            chosen[n] = corners[int(np.argmax(ratios))]
+        return chosen
+
+    def curve(self, device: Device) -> Curve:
+        """Return T -> R(T)/R(T_ref) of one device."""
+        network = deviated(self.network, device.factors)
+        own = value(network)
+
+        def ratio(T: FloatArray) -> FloatArray:
+            ratios = {
+                n: shifted_ratio(self.materials[n].law, device.shifts[n], self.need.reference, T)
+                for n in self.names
+            }
+            return resistance(network, ratios) / own
+
+        return ratio
+
+    def judge(self, device: Device) -> Judged:
+        """Return the figure of one device over the continuous range."""
+        splits = [b for n in self.names for b in self.materials[n].law.breakpoints]
+        return judged(self.curve(device), self.need, splits)

@@ -1,0 +1,184 @@
+"""Value factors of a mixed network: cells of the factor box, bounded by tangents, then halved.
+
+The resistance of any network is concave and homogeneous of degree 1 in its legs, so its tangent at
+the centre of a cell is above it everywhere; over the cell the ratio of the tangent to R(T_ref) is
+largest at a vertex (METHODS 6).
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator
+from dataclasses import dataclass, replace
+from itertools import product
+
+import numpy as np
+
+from tcplan.arrays import FloatArray
+from tcplan.errors import InternalError
+from tcplan.network import leg_shares, legs, resistance
+from tcplan.verify.box import Box
+
+GAP = 1e-4
+MOST_CELLS = 60_000
+BATCH = 512
+
+
+def _faces(half: FloatArray) -> Iterator[tuple[FloatArray, FloatArray]]:
+    """Yield (centre, half-width) of the faces on which one factor is at its upper limit.
+
+    The ratio does not change when all factors are scaled together, and any point scales up until
+    its first factor reaches its limit: these faces hold every ratio of the box.
+    """
+    for k in np.nonzero(half > 0)[0]:
+        centre, width = np.ones_like(half), half.copy()
+        centre[k], width[k] = 1.0 + half[k], 0.0
+        yield centre, width
+    if not (half > 0).any():
+        yield np.ones_like(half), half
+
+
+def _cell_values(
+    box: Box, centre: FloatArray, width: FloatArray, lo: FloatArray, hi: FloatArray
+) -> tuple[FloatArray, FloatArray, FloatArray, FloatArray]:
+    """Return bounds on the ratio over cells, and its values at their centres.
+
+    Parameters
+    ----------
+    centre, width : array, shape (cells, materials)
+    lo, hi : array, shape (materials, T)
+
+    Returns
+    -------
+    top, bottom : array, shape (cells, T)
+        No device of the cell is above or below.
+    high, low : array, shape (cells, T)
+        What the centre reaches with all laws high, and all low.
+    """
+    flat = np.ones_like(lo[:, :1])
+    grad_hi, high_c = _gradient(box, centre, hi)
+    grad_ref, ref_c = _gradient(box, centre, flat)
+    _, low_c = _gradient(box, centre, lo)
+    top = np.full(high_c.shape, -np.inf)
+    bottom = np.full(low_c.shape, np.inf)
+    moving = np.nonzero(width.max(axis=0) > 0)[0]
+    for signs in product((-1.0, 1.0), repeat=len(moving)):
+        vertex = centre.copy()
+        vertex[:, moving] += width[:, moving] * np.array(signs)
+        own_ref = _values(box, vertex, flat)
+        own_low = _values(box, vertex, lo)
+        tangent_hi = np.einsum("cm,mct->ct", vertex, grad_hi)
+        tangent_ref = np.einsum("cm,mct->ct", vertex, grad_ref)
+        np.maximum(top, tangent_hi / own_ref, out=top)
+        np.minimum(bottom, own_low / tangent_ref, out=bottom)
+    return top, bottom, high_c / ref_c, low_c / ref_c
+
+
+def _scaled_ratios(box: Box, factors: FloatArray, ratios: FloatArray) -> dict[str, FloatArray]:
+    return {n: factors[:, k, None] * ratios[k][None, :] for k, n in enumerate(box.names)}
+
+
+def _values(box: Box, factors: FloatArray, ratios: FloatArray) -> FloatArray:
+    """Return R, shape (cells, T)."""
+    return resistance(box.network, _scaled_ratios(box, factors, ratios))
+
+
+def _gradient(box: Box, factors: FloatArray, ratios: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Return dR/dm, shape (materials, cells, T), and R."""
+    scaled = _scaled_ratios(box, factors, ratios)
+    whole = resistance(box.network, scaled)
+    gradient = np.zeros((len(box.names), *whole.shape))
+    for leg, share in zip(legs(box.network), leg_shares(box.network, scaled), strict=True):
+        k = box.names.index(leg.material)
+        gradient[k] += share * whole / factors[:, k, None]
+    return gradient, whole
+
+
+@dataclass(frozen=True, slots=True)
+class Grid:
+    """Temperatures [K] with the weight of the goal, the wanted ratio and the law bounds at each."""
+
+    T: FloatArray
+    weight: FloatArray
+    wanted: FloatArray
+    lo: FloatArray
+    hi: FloatArray
+
+
+def grid_of(box: Box, T: FloatArray, weight: FloatArray) -> Grid:
+    """Return the grid of a box at these temperatures."""
+    lo, hi = box.bounds(T)
+    return Grid(T, weight, box.need.wanted(T), lo, hi)
+
+
+@dataclass(frozen=True, slots=True)
+class Found:
+    """The worst point that the cells found, and the bound on all of them.
+
+    ``factors`` follow the materials of the box; ``sign`` is 1 when all laws are at their highest.
+    """
+
+    figure: float
+    upper: float
+    factors: FloatArray
+    sign: int
+    at: float
+
+
+def excursions(box: Box, centre: FloatArray, width: FloatArray, grid: Grid) -> tuple[float, float]:
+    """Return bounds on how far any device of the cells goes above and below the wanted ratio."""
+    top, bottom, _, _ = _cell_values(box, centre, width, grid.lo, grid.hi)
+    return float((top - grid.wanted).max()), float((grid.wanted - bottom).max())
+
+
+def _examined(box: Box, centre: FloatArray, width: FloatArray, grid: Grid) -> tuple[FloatArray, Found]:
+    """Return the bound of every cell of a batch, and the worst of their centres."""
+    top, bottom, high, low = _cell_values(box, centre, width, grid.lo, grid.hi)
+    t, weight = grid.wanted, grid.weight
+    bound = np.maximum((top - t) / weight, (t - bottom) / weight).max(axis=1)
+    reach = np.stack([(high - t) / weight, (t - low) / weight])
+    side, cell, at = np.unravel_index(int(np.argmax(reach)), reach.shape)
+    worst = float(reach[side, cell, at])
+    return bound, Found(worst, worst, centre[cell].copy(), 1 if side == 0 else -1, float(grid.T[at]))
+
+
+def start_cells(box: Box) -> tuple[FloatArray, FloatArray]:
+    """Return centres and half-widths of the faces that hold every ratio of the box."""
+    both = list(_faces(box.half_widths()))
+    return np.stack([c for c, _ in both]), np.stack([w for _, w in both])
+
+
+def cell_search(box: Box, grid: Grid) -> Found:
+    """Return the worst point of the box on a grid, and a bound within 1 part in 10^4 of it.
+
+    When the count of cells runs out the bound is that of the cells left, and so is looser.
+    """
+    centre, width = start_cells(box)
+    best: Found | None = None
+    closed, count = 0.0, 0
+    while len(centre):
+        keep: list[tuple[FloatArray, FloatArray]] = []
+        for k in range(0, len(centre), BATCH):
+            c, w = centre[k : k + BATCH], width[k : k + BATCH]
+            bound, found = _examined(box, c, w, grid)
+            best = found if best is None or found.figure > best.figure else best
+            open_cells = (bound > best.figure * (1.0 + GAP)) & (count < MOST_CELLS)
+            closed = max(closed, float(bound[~open_cells].max(initial=0.0)))
+            keep.append((c[open_cells], w[open_cells]))
+            count += len(c)
+        centre, width = halved(np.concatenate([c for c, _ in keep]), np.concatenate([w for _, w in keep]))
+    if best is None:
+        raise InternalError("a spread box without a cell")
+    return replace(best, upper=max(closed, best.figure))
+
+
+def halved(centre: FloatArray, width: FloatArray) -> tuple[FloatArray, FloatArray]:
+    """Cut every cell in two along its widest side."""
+    rows = np.arange(len(centre))
+    widest = np.argmax(width, axis=1) if len(centre) else rows
+    half = 0.5 * width[rows, widest]
+    new_width = width.copy()
+    new_width[rows, widest] = half
+    left, right = centre.copy(), centre.copy()
+    left[rows, widest] -= half
+    right[rows, widest] += half
+    return np.concatenate([left, right]), np.concatenate([new_width, new_width])
