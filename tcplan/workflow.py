@@ -23,6 +23,7 @@ from tcplan.plan import (
 )
 from tcplan.search.floor import floor_evidence
 from tcplan.search.linear import least_total, search_space
+from tcplan.units import format_ppm, round_outward
 from tcplan.verify.floor import floor
 from tcplan.verify.option import Case, check, nominal_figure, spread_figures
 
@@ -88,7 +89,10 @@ def _proposals(brief: Brief, need: Requirement, case: Case) -> list[Proposal]:
             found.extend(m for m in mixes if not (alone and arrangement(m.network) == "single"))
         if brief.fixed and low != high and need.scale is not None:
             extreme = _least_total(space, need, case, need.scale)
-            found.extend([extreme] if extreme is not None else [])
+            if extreme is not None:
+                found.append(extreme)
+            elif not bounded:  # no total meets the limit: show how near the best one comes
+                found.extend(search_space(space, need, case.materials, None, 1))
     return found
 
 
@@ -191,8 +195,8 @@ def make_plan(brief: Brief) -> Plan:
     proposals = _proposals(brief, need, case)
     if not proposals:
         raise NoAnswer(
-            "No network of these materials fits the brief: the shares that min_share and the fixed "
-            "members ask for leave nothing, or no total meets the limit."
+            "No network of these materials fits the brief: what min_share and the fixed members ask "
+            "for adds up to more than the whole."
         )
     best = min(nominal_figure(proposal.network, case) for proposal in proposals)
     evidence = _floor_evidence(brief, need, best)
@@ -218,8 +222,32 @@ def make_plan(brief: Brief) -> Plan:
         floor=bottom,
         chosen=_chosen(options, brief.goal.judge).id,
         options=options,
-        notes=(),
+        notes=_one_more(brief, case, options),
     )
+
+
+def _one_more(brief: Brief, case: Case, options: Sequence[Option]) -> tuple[str, ...]:
+    """Return a line on what one more material would give, when that is better by more than 1 %."""
+    rules = brief.rules
+    most = min(rules.max_materials, rules.max_legs) + 1
+    low, high = _fixed_share(brief)
+    if brief.given is not None or most > len(rules.use) or low != high:
+        return ()
+    wider = replace(brief, rules=replace(rules, max_materials=most, max_legs=most))
+    judge = brief.goal.judge
+    best = min(judged_ppm(option, judge) for option in options)
+    found = [
+        check(proposal, case, "more")
+        for proposal in _proposals(wider, case.need, case)
+        if len(legs(proposal.network)) - len(brief.fixed) == most
+    ]
+    better = [option for option in found if judged_ppm(option, judge) * EQUAL < best]
+    if not better:
+        return (f"One more material ({most}) gives no better {judge} figure in the networks searched.",)
+    option = min(better, key=lambda o: judged_ppm(o, judge))
+    names = ", ".join(used_materials(option.network))
+    figure = format_ppm(round_outward(judged_ppm(option, judge) * 1e-6))
+    return (f"One more material ({most}): {option.arrangement} of {names} reaches {figure} ({judge}).",)
 
 
 def _option_id(options: Sequence[Option], position: int) -> str:

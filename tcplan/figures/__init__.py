@@ -1,0 +1,1 @@
+"""Figures of a plan; each draws on the axes it is given, returns its artists and decides nothing."""

@@ -1,0 +1,157 @@
+"""The curves of a plan as functions of temperature [K], and its limits as bounds on the drift."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import dataclass
+from typing import Any
+
+import numpy as np
+
+from tcplan.arrays import FloatArray
+from tcplan.drift import Curve, breakpoints, extremes, panels, ratio_curve
+from tcplan.goal import Goal
+from tcplan.material.law import law_from_parameters
+from tcplan.material.spread import shifted_ratio
+from tcplan.network import deviated, resistance, used_materials, value
+from tcplan.plan import Plan
+from tcplan.units import from_celsius, to_celsius
+
+SAMPLES = 201
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Bound:
+    """One limit of the goal: the drift stays between ``lower`` and ``upper`` [fractions].
+
+    ``degC``, ``lower`` and ``upper`` are corners to join by straight lines; NaN leaves a gap.
+    """
+
+    kind: str
+    degC: FloatArray  # noqa: N815 - a value that is not SI wears its unit
+    lower: FloatArray
+    upper: FloatArray
+    amount: float
+
+
+def reference(plan: Plan) -> float:
+    """Return the reference temperature of the brief [K]."""
+    return from_celsius(plan.range.reference_degC)
+
+
+def ends(plan: Plan) -> tuple[float, float]:
+    """Return the low and the high end of the range [K]."""
+    return from_celsius(plan.range.low_degC), from_celsius(plan.range.high_degC)
+
+
+def _goal(plan: Plan) -> Goal:
+    wanted = plan.brief["goal"]["wanted"]
+    return Goal(wanted=law_from_parameters(wanted) if wanted else None)
+
+
+def _less_wanted(ratio: Curve, plan: Plan) -> Curve:
+    """Return the drift of a ratio: R(T)/R(T_ref) less the wanted law."""
+    goal, at = _goal(plan), reference(plan)
+    return lambda T: ratio(T) - goal.wanted_ratio(T, at)
+
+
+def material_drift(plan: Plan, name: str) -> Curve:
+    """Return the drift (a fraction) of a resistor made of one material alone."""
+    material, at = plan.by_name[name], reference(plan)
+    return _less_wanted(lambda T: material.ratio(T, at), plan)
+
+
+def chosen_drift(plan: Plan) -> Curve:
+    """Return the drift (a fraction) of the chosen option, all materials nominal."""
+    return _less_wanted(ratio_curve(plan.best.network, plan.by_name, reference(plan)), plan)
+
+
+def worst_drift(plan: Plan) -> Curve | None:
+    """Return the drift (a fraction) of the device that is the worst case of the chosen option."""
+    worst = plan.best.worst_case
+    if worst is None:
+        return None
+    point, materials, at = worst.point, plan.by_name, reference(plan)
+    network = deviated(plan.best.network, {name: moved.ohm_per_square for name, moved in point.items()})
+
+    def ratio(T: FloatArray) -> FloatArray:
+        ratios = {
+            name: shifted_ratio(materials[name].law, (moved.tc1 * 1e-6, moved.tc2 * 1e-6), at, T)
+            for name, moved in point.items()
+        }
+        return resistance(network, ratios) / value(network)
+
+    return _less_wanted(ratio, plan)
+
+
+def _splits(plan: Plan, names: Sequence[str]) -> tuple[float, ...]:
+    wanted = _goal(plan).wanted
+    return (*breakpoints(plan.by_name, names), *(wanted.breakpoints if wanted else ()))
+
+
+def temperatures(plan: Plan) -> FloatArray:
+    """Return the temperatures [K] to draw at: even ones, and all where something is marked or bends."""
+    low, high = ends(plan)
+    worst = plan.best.worst_case
+    marked = [plan.best.nominal.at_degC, *([worst.at_degC] if worst else [])]
+    extra = [reference(plan), *map(from_celsius, marked), *_splits(plan, list(plan.by_name))]
+    every = np.concatenate([np.linspace(low, high, SAMPLES), extra])
+    return np.unique(every[(every >= low) & (every <= high)])
+
+
+# --- limits -----------------------------------------------------------------------------------
+
+
+def bounds(plan: Plan) -> tuple[Bound, ...]:
+    """Return every limit of the goal as a bound on the drift."""
+    return tuple(_bound(plan, limit) for limit in plan.brief["goal"]["limits"])
+
+
+def _bound(plan: Plan, limit: dict[str, Any]) -> Bound:
+    kind = limit["kind"]
+    amount = limit["ppm_per_K" if kind in ("chord_tcr", "box_tcr") else "ppm"] * 1e-6
+    at = np.array([plan.range.low_degC, plan.range.high_degC])
+    if kind == "mask":
+        at, upper = _mask_corners(plan, limit["windows"])
+    elif kind == "chord_tcr":
+        at = np.array([plan.range.low_degC, plan.range.reference_degC, plan.range.high_degC])
+        upper = amount * np.abs(at - plan.range.reference_degC)
+    elif kind == "drift":
+        upper = np.full(2, amount)
+    else:
+        half = 0.5 * amount * ((at[1] - at[0]) if kind == "box_tcr" else 1.0)
+        middle = _middle(plan)
+        return Bound(
+            kind=kind,
+            degC=at,
+            lower=np.full(2, middle - half),
+            upper=np.full(2, middle + half),
+            amount=amount,
+        )
+    return Bound(kind=kind, degC=at, lower=-upper, upper=upper, amount=amount)
+
+
+def _middle(plan: Plan) -> float:
+    """Return the middle of the judged curve: a band may lie at any height, so it goes with it."""
+    worst = worst_drift(plan) if plan.limit.judge == "worst-case" else None
+    splits = _splits(plan, used_materials(plan.best.network))
+    found = extremes(worst or chosen_drift(plan), panels(*ends(plan), splits))
+    return 0.5 * (found.low.value + found.high.value)
+
+
+def _mask_corners(plan: Plan, windows: Sequence[dict[str, float]]) -> tuple[FloatArray, FloatArray]:
+    """Return the corners [degC, fraction] of a mask: where its lines overlap the tightest binds."""
+    low, high = plan.range.low_degC, plan.range.high_degC
+    lines = [(max(w["low_degC"], low), min(w["high_degC"], high), w["limit_ppm"] * 1e-6) for w in windows]
+    edges = sorted({edge for start, end, _ in lines if start <= end for edge in (start, end)})
+    at, upper = [], []
+    for start, end in zip(edges[:-1], edges[1:], strict=True):
+        over = [limit for first, last, limit in lines if first <= start and end <= last]
+        at += [start, end]
+        upper += [min(over, default=np.nan)] * 2
+    return np.array(at), np.array(upper)
+
+
+def celsius(temperature: FloatArray) -> FloatArray:
+    """Return temperatures [degC] of temperatures [K]."""
+    return np.array([to_celsius(T) for T in temperature])

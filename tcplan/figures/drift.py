@@ -1,0 +1,288 @@
+"""Drift against temperature: each material alone with the chosen option, and that option's residue."""
+
+from __future__ import annotations
+
+from collections.abc import Iterable, Sequence
+from dataclasses import dataclass
+
+import numpy as np
+from matplotlib.axes import Axes
+from matplotlib.collections import PolyCollection
+from matplotlib.legend import Legend
+from matplotlib.lines import Line2D
+from matplotlib.ticker import FuncFormatter
+
+from tcplan.arrays import FloatArray
+from tcplan.drift import Curve
+from tcplan.figures.curves import (
+    Bound,
+    bounds,
+    celsius,
+    chosen_drift,
+    material_drift,
+    temperatures,
+    worst_drift,
+)
+from tcplan.figures.style import (
+    CHOSEN,
+    FAINT,
+    LIMIT,
+    LIMIT_DASH,
+    OTHER,
+    SMALL_SIZE,
+    TEXT_SIZE,
+    WORST_DASH,
+    Look,
+    looks,
+    number_text,
+    short_names,
+)
+from tcplan.network import used_materials
+from tcplan.plan import Plan
+from tcplan.units import from_celsius
+
+PERCENT_FROM = 20_000.0  # ppm; from here on per cent reads better
+LEAST_HEIGHT = 0.01  # ppm; below this the curve is rounding, and is drawn flat
+FITS = 4.0  # a limit up to this many times the curve is brought into view
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class DriftArtists:
+    """What was drawn; ``others`` are the materials beyond those that have a colour."""
+
+    materials: dict[str, Line2D]
+    others: tuple[Line2D, ...]
+    chosen: Line2D
+    limits: tuple[Line2D | PolyCollection, ...]
+    residual: Line2D
+    worst: Line2D | None
+    residual_limits: tuple[Line2D | PolyCollection, ...]
+    peaks: tuple[Line2D, ...]
+    references: tuple[Line2D, ...]
+    legends: tuple[Legend, ...]
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Unit:
+    """The unit of a drift axis and what a fraction is multiplied by."""
+
+    name: str
+    factor: float
+
+
+def draw_drift(ax: Axes, residual_ax: Axes, plan: Plan) -> DriftArtists:
+    """Draw the drift of every material alone and of the chosen option, and below it that option alone.
+
+    Parameters
+    ----------
+    ax : Axes
+        For all curves on one scale. Legends go to the right of the axes, outside.
+    residual_ax : Axes
+        For the chosen option at its own scale, with its verified peak and its worst case.
+    plan : Plan
+
+    Returns
+    -------
+    DriftArtists
+    """
+    T = temperatures(plan)
+    limits = bounds(plan)
+    singles = {material.name: material_drift(plan, material.name)(T) for material in plan.materials}
+    own = chosen_drift(plan)
+    upper = _unit([*singles.values(), own(T)])
+    material_lines, others = _draw_singles(ax, plan, celsius(T), singles, upper)
+    (chosen,) = ax.plot(
+        celsius(T), own(T) * upper.factor, color=CHOSEN, lw=2.8, zorder=5, label=f"{plan.chosen} (chosen)"
+    )
+    low, high = _view([*singles.values(), own(T)])
+    upper_limits = _draw_limits(ax, limits, upper, (low, high))
+    _finish(ax, plan, upper, (low, high), "Each material alone, and the chosen option")
+    ax.set_xlabel("")
+    ax.tick_params(labelbottom=False)
+
+    worst = worst_drift(plan)
+    curves = [own(T), *([worst(T)] if worst else [])]
+    low, high = _view(curves, limits)
+    lower = _unit([np.array([low, high])])
+    residual, worst_line, peaks = _draw_residual(residual_ax, plan, T, (own, worst), lower)
+    lower_limits = _draw_limits(residual_ax, limits, lower, (low, high))
+    _finish(residual_ax, plan, lower, (low, high), f"The chosen option at its own scale: {plan.chosen}")
+    references = tuple(_draw_reference(part, plan) for part in (ax, residual_ax))
+    return DriftArtists(
+        materials=material_lines,
+        others=others,
+        chosen=chosen,
+        limits=upper_limits,
+        residual=residual,
+        worst=worst_line,
+        residual_limits=lower_limits,
+        peaks=peaks,
+        references=references,
+        legends=tuple(_legend(part) for part in (ax, residual_ax)),
+    )
+
+
+def _draw_singles(
+    ax: Axes, plan: Plan, degC: FloatArray, drifts: dict[str, FloatArray], unit: _Unit
+) -> tuple[dict[str, Line2D], tuple[Line2D, ...]]:
+    """Draw each material alone: coloured as far as colours go, the rest in thin grey."""
+    look = looks(list(drifts), used_materials(plan.best.network))
+    names = short_names(list(look))
+    lines: dict[str, Line2D] = {}
+    others: list[Line2D] = []
+    for name in (*look, *(n for n in drifts if n not in look)):
+        (line,) = ax.plot(degC, drifts[name] * unit.factor, color=OTHER, lw=0.7, zorder=2)
+        if name in look:
+            _wear(line, look[name], len(lines), names[name])
+            lines[name] = line
+        else:
+            line.set_label("_other" if others else f"{len(drifts) - len(look)} other materials")
+            others.append(line)
+    return lines, tuple(others)
+
+
+def _wear(line: Line2D, look: Look, position: int, name: str) -> None:
+    """Give a line its colour, dash and markers; these start apart so that they do not coincide."""
+    line.set(color=look.colour, linestyle=look.dash, linewidth=1.3, zorder=3, label=name)
+    line.set(marker=look.marker, markersize=4.5, markeredgecolor="white", markeredgewidth=0.5)
+    line.set_markevery((0.02 + 0.013 * position, 0.14))
+
+
+def _draw_residual(
+    ax: Axes, plan: Plan, T: FloatArray, curves: tuple[Curve, Curve | None], unit: _Unit
+) -> tuple[Line2D, Line2D | None, tuple[Line2D, ...]]:
+    """Draw the chosen option, its worst device, and a mark at the peak of each."""
+    own, worst = curves
+    (residual,) = ax.plot(
+        celsius(T), own(T) * unit.factor, color=CHOSEN, lw=2.0, zorder=5, label="materials nominal"
+    )
+    peaks = [_mark(ax, own, plan.best.nominal.at_degC, unit, filled=True)]
+    line = None
+    if worst is not None and plan.best.worst_case is not None:
+        (line,) = ax.plot(
+            celsius(T),
+            worst(T) * unit.factor,
+            color=MATERIAL_WORST,
+            linestyle=WORST_DASH,
+            lw=1.4,
+            zorder=4,
+            label="worst case of the spread",
+        )
+        peaks.append(_mark(ax, worst, plan.best.worst_case.at_degC, unit, filled=False))
+    return residual, line, tuple(peaks)
+
+
+MATERIAL_WORST = "#336688"
+
+
+def _mark(ax: Axes, curve: Curve, at_degC: float, unit: _Unit, *, filled: bool) -> Line2D:
+    """Mark the peak of a curve where verify found it."""
+    height = float(curve(np.array([from_celsius(at_degC)]))[0]) * unit.factor
+    colour = CHOSEN if filled else MATERIAL_WORST
+    (mark,) = ax.plot(
+        [at_degC],
+        [height],
+        linestyle="none",
+        marker="o",
+        markersize=6.0,
+        markerfacecolor=colour if filled else "white",
+        markeredgecolor=colour,
+        markeredgewidth=1.3,
+        zorder=6,
+        clip_on=False,
+        label="its verified peak",
+    )
+    return mark
+
+
+def _draw_limits(
+    ax: Axes, limits: Iterable[Bound], unit: _Unit, view: tuple[float, float]
+) -> tuple[Line2D | PolyCollection, ...]:
+    """Draw each limit: two lines, or a shaded band for one that may lie at any height."""
+    drawn: list[Line2D | PolyCollection] = []
+    for limit in limits:
+        lower, upper = limit.lower * unit.factor, limit.upper * unit.factor
+        label = _limit_text(limit, unit)
+        if not _visible(limit, view):
+            label += ",\noff this scale"
+        if limit.kind in ("band", "box_tcr"):
+            drawn.append(
+                ax.fill_between(
+                    limit.degC, lower, upper, facecolor="#f6dde1", edgecolor=LIMIT, lw=0.8, zorder=1, label=label
+                )
+            )
+            continue
+        for corners, text in ((upper, label), (lower, "_lower")):
+            drawn += ax.plot(
+                limit.degC, corners, color=LIMIT, linestyle=LIMIT_DASH, lw=1.1, zorder=4, label=text
+            )
+    return tuple(drawn)
+
+
+def _visible(limit: Bound, view: tuple[float, float]) -> bool:
+    corners = np.concatenate([limit.lower, limit.upper])
+    return bool(np.any((corners >= view[0]) & (corners <= view[1])))
+
+
+def _limit_text(limit: Bound, unit: _Unit) -> str:
+    """Return what the legend says of a limit, in the unit of the axis."""
+    as_drift = f"{number_text(limit.amount * unit.factor)} {unit.name}"
+    as_slope = f"{number_text(limit.amount * 1e6)} ppm/K"
+    return {
+        "drift": f"limit \N{PLUS-MINUS SIGN}{as_drift}",
+        "band": f"limit, a band of {as_drift}",
+        "box_tcr": f"limit, box TCR {as_slope}",
+        "chord_tcr": f"limit, chord TCR {as_slope}\n(judged at the ends)",
+        "mask": "limit, mask",
+    }[limit.kind]
+
+
+def _draw_reference(ax: Axes, plan: Plan) -> Line2D:
+    at = plan.range.reference_degC
+    label = f"reference {number_text(at)} \N{DEGREE SIGN}C"
+    return ax.axvline(at, color=OTHER, lw=0.8, linestyle=":", zorder=1, label=label)
+
+
+def _unit(drifts: Sequence[FloatArray]) -> _Unit:
+    """Return the unit that reads best for the largest of these drifts."""
+    largest = max(float(np.max(np.abs(drift))) for drift in drifts)
+    return _Unit(name="%", factor=1e2) if largest * 1e6 >= PERCENT_FROM else _Unit(name="ppm", factor=1e6)
+
+
+def _view(drifts: Sequence[FloatArray], limits: Iterable[Bound] = ()) -> tuple[float, float]:
+    """Return the lowest and highest drift to show, with a margin; limits as far as they fit."""
+    values = np.concatenate([np.zeros(1), *drifts])
+    reach = max(float(np.max(np.abs(values))), LEAST_HEIGHT * 1e-6)
+    corners = np.concatenate([np.zeros(1), *(np.concatenate([b.lower, b.upper]) for b in limits)])
+    values = np.concatenate([values, corners[np.abs(corners) <= FITS * reach]])
+    low, high = float(values.min()), float(values.max())
+    margin = 0.07 * max(high - low, 2.0 * LEAST_HEIGHT * 1e-6)
+    return low - margin, high + margin
+
+
+def _finish(ax: Axes, plan: Plan, unit: _Unit, view: tuple[float, float], title: str) -> None:
+    """Set limits, labels and grid."""
+    ax.set_xlim(plan.range.low_degC, plan.range.high_degC)
+    ax.set_ylim(view[0] * unit.factor, view[1] * unit.factor)
+    ax.set_xlabel("Temperature (\N{DEGREE SIGN}C)")
+    ax.set_ylabel(f"Drift ({unit.name})")
+    ax.set_title(title, loc="left", fontsize=TEXT_SIZE, parse_math=False)
+    for axis in (ax.xaxis, ax.yaxis):
+        axis.set_major_formatter(FuncFormatter(lambda number, _: number_text(number)))
+    ax.grid(color=FAINT, lw=0.5)
+    ax.axhline(0.0, color=OTHER, lw=0.6, zorder=1, label="_zero")
+
+
+def _legend(ax: Axes) -> Legend:
+    """Put the legend to the right of the axes, where it covers no curve."""
+    legend = ax.legend(
+        loc="upper left",
+        bbox_to_anchor=(1.015, 1.0),
+        borderaxespad=0.0,
+        frameon=False,
+        fontsize=SMALL_SIZE,
+        handlelength=2.8,
+    )
+    for text in legend.get_texts():
+        text.set_parse_math(False)
+    return legend

@@ -1,0 +1,347 @@
+"""What a plan says, in sentences: the same words on the screen and on every spec sheet."""
+
+from __future__ import annotations
+
+from tcplan.network import used_materials, value
+from tcplan.plan import Deviation, Option, Plan
+from tcplan.ranges import GRADES
+from tcplan.spec import numbers
+from tcplan.units import format_ohms, from_celsius
+
+NOT_INCLUDED = "package stress, ageing, humidity, self-heating, mismatch"
+ROUNDING = 1e-9
+_SIZE_WORDS = {"film": "ohm per square", "wire": "ohm per metre"}
+
+
+# --- what was asked ---------------------------------------------------------------------------
+
+
+def headline(plan: Plan) -> str:
+    """Return what was asked and the verdict, in one line."""
+    low, high = (numbers.stated(t) for t in (plan.range.low_degC, plan.range.high_degC))
+    judge = "worst case" if plan.limit.judge == "worst-case" else "nominal"
+    return f"{asked_value(plan)}, {asked_limit(plan)} ({judge}), {low} to {high} degC: {verdict(plan)}"
+
+
+def verdict(plan: Plan) -> str:
+    """Return the verdict of the chosen option, or that there is no limit to judge by."""
+    return plan.best.verdict if plan.limit.drift_ppm is not None else "no limit given"
+
+
+def asked_value(plan: Plan) -> str:
+    """Return the wanted total."""
+    if plan.target.ohms is not None:
+        return format_ohms(plan.target.ohms)
+    most = plan.brief["resistor"]["at_most_ohms"]
+    return "any total" if most is None else f"at most {format_ohms(most)}"
+
+
+def asked_limit(plan: Plan) -> str:
+    """Return the limits as they were stated."""
+    limits = plan.brief["goal"]["limits"]
+    return " and ".join(_limit(limit) for limit in limits) if limits else "least drift"
+
+
+def _limit(limit: dict[str, object]) -> str:
+    kind = str(limit["kind"])
+    words = {"chord_tcr": "chord TCR", "box_tcr": "box TCR"}.get(kind, kind)
+    if kind == "mask":
+        return "drift inside its mask"
+    unit = "ppm/K" if "ppm_per_K" in limit else "ppm"
+    amount = numbers.stated(float(str(limit.get("ppm_per_K", limit.get("ppm")))))
+    return f"{words} within {amount} {unit}"
+
+
+def mask_lines(plan: Plan) -> tuple[str, ...]:
+    """Return the lines of a mask; empty without one."""
+    return tuple(
+        f"{numbers.stated(w['low_degC'])} to {numbers.stated(w['high_degC'])} degC: "
+        f"{numbers.stated(w['limit_ppm'])} ppm"
+        for limit in plan.brief["goal"]["limits"]
+        for w in limit["windows"]
+    )
+
+
+def range_text(plan: Plan) -> str:
+    """Return the range with its numbers, its name, its standard and the reference."""
+    over = plan.range
+    low, high, reference = (numbers.stated(t) for t in (over.low_degC, over.high_degC, over.reference_degC))
+    grade = GRADES.get(over.name)
+    origin = f" ({over.name}, {grade.standard})" if grade else ""
+    rise = f", {numbers.stated(over.rise_K)} K of rise included at the high end" if over.rise_K else ""
+    return f"{low} to {high} degC{origin}{rise}, reference {reference} degC"
+
+
+def wanted_text(plan: Plan) -> str:
+    """Return the wanted law; empty when it is flat."""
+    if plan.brief["goal"]["wanted"] is None:
+        return ""
+    tc1, tc2 = numbers.number(plan.target.tc1_ppm_per_K), numbers.number(plan.target.tc2_ppm_per_K2)
+    return f"Drift is counted from the wanted law, TC1 {tc1} ppm/K and TC2 {tc2} ppm/K^2 at the reference."
+
+
+def figure_text(plan: Plan) -> str:
+    """Return what the figures in ppm are, for the kind of limit that was given."""
+    over = plan.range
+    arm = max(over.high_degC - over.reference_degC, over.reference_degC - over.low_degC)
+    words = {
+        "none": "the peak drift over the whole range",
+        "drift": "the peak drift over the whole range",
+        "band": "the band, highest minus lowest drift",
+        "box_tcr": f"the band; divided by {numbers.stated(over.high_degC - over.low_degC)} K it is the box TCR",
+        "chord_tcr": f"the larger chord TCR times {numbers.stated(arm)} K, the longer arm",
+        "mask": "the drift, scaled to the tightest line of the mask",
+    }
+    first = plan.limit.kind.split(" and ")[0]
+    several = "; of several limits, each on the scale of this one, the largest" if first != plan.limit.kind else ""
+    scale = plan.limit.drift_ppm
+    against = f", against {numbers.stated(scale)} ppm" if scale is not None and plan.limit.kind != "drift" else ""
+    return f"Figures are {words[first]}{several}{against}."
+
+
+# --- the outcome ------------------------------------------------------------------------------
+
+
+def nominal_ppm(option: Option) -> float:
+    """Return the nominal figure that the limit is set on [ppm]."""
+    return option.proof.figure_ppm
+
+
+def spread_ppm(option: Option) -> float | None:
+    """Return how far the worst case is from nominal [ppm]; None when it is not known."""
+    return None if option.worst_case is None else option.worst_case.peak_ppm - nominal_ppm(option)
+
+
+def nominal_text(option: Option) -> str:
+    """Return the nominal figure without its unit."""
+    return numbers.nominal(nominal_ppm(option), spread_ppm(option))
+
+
+def worst_text(plan: Plan, option: Option) -> str:
+    """Return the worst case without its unit; with its guaranteed bound where that differs."""
+    worst = option.worst_case
+    if worst is None:
+        return "not stated"
+    limit = plan.limit.drift_ppm if option.verdict == "MET" and plan.limit.judge == "worst-case" else None
+    found, most = numbers.worst(worst.peak_ppm, limit), numbers.worst(worst.upper_bound_ppm, limit)
+    return found if found == most else f"{found} (at most {most})"
+
+
+def floor_ppm(plan: Plan) -> float:
+    """Return the floor of the figure that the brief judges [ppm]."""
+    worst = plan.floor.worst_case_ppm
+    return worst if plan.limit.judge == "worst-case" and worst is not None else plan.floor.nominal_ppm
+
+
+def cannot_be_met(plan: Plan) -> bool:
+    """Whether the floor proves that no network of these materials meets the limit."""
+    limit = plan.limit.drift_ppm
+    return limit is not None and floor_ppm(plan) > limit * (1.0 + ROUNDING)
+
+
+def outcome(plan: Plan) -> tuple[str, ...]:
+    """Return by how much the limit is met or not, and what else the verdict needs beside it."""
+    limit, option = plan.limit.drift_ppm, plan.best
+    found = []
+    if limit is not None:
+        found.append(_against_limit(plan, option, limit))
+    if cannot_be_met(plan):
+        found.append(
+            f"No network of these materials can meet it: the floor is {numbers.bound(floor_ppm(plan))} ppm."
+        )
+    if option.verdict == "MET" and plan.limit.judge == "nominal":
+        found.extend(_nominal_only(plan, option, limit))
+    found.extend(_value_deviation(plan, option))
+    return tuple(found)
+
+
+def _against_limit(plan: Plan, option: Option, limit: float) -> str:
+    at_worst = plan.limit.judge == "worst-case"
+    if at_worst and option.worst_case is None:
+        missing = ", ".join(without_spread(plan, option))
+        return f"{option.id} is not judged: no spread is stated for {missing}."
+    stop = f"the limit of {numbers.stated(limit)} ppm"
+    if option.verdict == "NOT JUDGED":
+        return f"{option.id} is not judged: its worst case, {worst_text(plan, option)} ppm, may pass {stop}."
+    figure = option.worst_case.peak_ppm if at_worst and option.worst_case else nominal_ppm(option)
+    text = worst_text(plan, option) if at_worst else nominal_text(option)
+    reached = f"{option.id} reaches {text} ppm {'in the worst case' if at_worst else 'at nominal'}"
+    if option.verdict == "MET":
+        return f"{reached}, within {stop}."
+    return f"{reached}, {numbers.worst(figure - limit)} ppm over {stop}."
+
+
+def _nominal_only(plan: Plan, option: Option, limit: float | None) -> list[str]:
+    if option.worst_case is None:
+        missing = ", ".join(without_spread(plan, option))
+        return [f"That is at nominal only: no spread is stated for {missing}."]
+    if limit is None or option.worst_case.upper_bound_ppm <= limit:
+        return []
+    return [f"That is at nominal only: the worst case, {worst_text(plan, option)} ppm, is over the limit."]
+
+
+def _value_deviation(plan: Plan, option: Option) -> list[str]:
+    own, wanted = value(option.network), plan.target.ohms
+    if wanted is None:
+        return [f"The total is {format_ohms(own)}."]
+    deviation = own / wanted - 1.0
+    if abs(deviation) <= ROUNDING:
+        return []
+    side = "above" if deviation > 0 else "below"
+    return [
+        f"The network's own value is {format_ohms(own)}, {numbers.percent(abs(deviation))} "
+        f"{side} the {format_ohms(wanted)} asked for."
+    ]
+
+
+def without_spread(plan: Plan, option: Option) -> tuple[str, ...]:
+    """Return the materials of an option that have no spread."""
+    return tuple(n for n in used_materials(option.network) if plan.by_name[n].spread is None)
+
+
+# --- what the figures assume ------------------------------------------------------------------
+
+
+def assumptions(plan: Plan) -> tuple[str, ...]:
+    """Return what the figures assume, a sentence each."""
+    rise = f" beyond the {numbers.stated(plan.range.rise_K)} K of rise" if plan.range.rise_K else ""
+    left_out = NOT_INCLUDED.replace("self-heating", f"self-heating{rise}")
+    sentences = (figure_text(plan), wanted_text(plan), *_spreads(plan), f"Not included: {left_out}.", _designed(plan))
+    return tuple(sentence for sentence in (*sentences, _extrapolated(plan)) if sentence)
+
+
+def _spreads(plan: Plan) -> list[str]:
+    """Return the meaning of the spreads: nothing is assumed in silence."""
+    stated = {m.name: m.spread for m in plan.materials if m.spread is not None}
+    limits = [name for name, spread in stated.items() if spread.meaning == "limits"]
+    sigma = [name for name, spread in stated.items() if spread.meaning == "sigma"]
+    none = [m.name for m in plan.materials if m.spread is None]
+    parts = [
+        f"{', '.join(limits)} as stated limits" if limits else "",
+        f"{', '.join(sigma)} at 3 times the stated sigma" if sigma else "",
+    ]
+    found = []
+    if stated:
+        box = "; ".join(part for part in parts if part)
+        found.append(f"The worst case takes every deviation at once: {box}.")
+    if none:
+        found.append(f"No spread is stated for {', '.join(none)}.")
+    found.extend(_counted_as_zero(plan))
+    return found
+
+
+def _counted_as_zero(plan: Plan) -> list[str]:
+    found = []
+    for part, words in (("value", "value"), ("tc1", "TC1"), ("tc2", "TC2")):
+        names = [m.name for m in plan.materials if m.spread is not None and part in m.spread.unstated]
+        if names:
+            found.append(f"{words} of {', '.join(names)}")
+    return [f"No half-width stated, so counted as 0: {'; '.join(found)}."] if found else []
+
+
+def _designed(plan: Plan) -> str:
+    """Return that the search worked on another figure than the judge, when it did."""
+    option = plan.best
+    if option.proof.of == plan.limit.judge or option.role == "given":
+        return ""
+    return "Designed for nominal drift, judged on the worst case."
+
+
+def extrapolated(plan: Plan) -> tuple[str, ...]:
+    """Return the materials used outside the range in which their law was established."""
+    low, high = from_celsius(plan.range.low_degC), from_celsius(plan.range.high_degC)
+    return tuple(m.name for m in plan.materials if m.is_extrapolated(low, high))
+
+
+def _extrapolated(plan: Plan) -> str:
+    names = ", ".join(extrapolated(plan))
+    return f"EXTRAPOLATED beyond its valid range: {names}." if names else ""
+
+
+# --- floor, choice, proof ---------------------------------------------------------------------
+
+
+def floor_text(plan: Plan) -> str:
+    """Return the floor and why."""
+    floor = plan.floor
+    worst = floor.worst_case_ppm
+    beside = "worst case not stated" if worst is None else f"{numbers.bound(worst)} ppm worst case"
+    return (
+        f"No network of these materials is below {numbers.bound(floor.nominal_ppm)} ppm nominal, {beside}"
+        f" ({floor.why})."
+    )
+
+
+def reason(plan: Plan) -> str:
+    """Return why the chosen option is chosen."""
+    option = plan.best
+    if option.role == "given":
+        return "the network that was given"
+    if option.role:
+        return f"the {option.role} that meets the limit"
+    if plan.limit.drift_ppm is None:
+        return f"the least {'worst case' if plan.limit.judge == 'worst-case' else 'nominal figure'}"
+    if option.verdict == "MET":
+        return "the simplest that meets the limit"
+    return "the best of those found; none meets the limit"
+
+
+def proof_text(plan: Plan, option: Option) -> str:
+    """Return what is proved about an option; "proved" is about the data."""
+    proof = option.proof
+    if proof.kind == "global":
+        gap = numbers.nominal(proof.gap_ppm, None)
+        return (
+            f"Proved optimal among {option.arrangement} networks for these data, on {proof.of} figures and "
+            f"within the rules of the brief; gap {gap} ppm."
+        )
+    if option.role == "given":
+        return f"Not searched; no network of these materials is below {numbers.bound(proof.lower_bound_ppm)} ppm {proof.of}."
+    return f"Best found; no such network is below {numbers.bound(proof.lower_bound_ppm)} ppm {proof.of}."
+
+
+# --- the worst point, and centring --------------------------------------------------------------
+
+
+def worst_point(plan: Plan, option: Option) -> str:
+    """Return where the worst case is reached, and with what device; empty without a worst case."""
+    worst = option.worst_case
+    if worst is None:
+        return ""
+    devices = [f"{name} {text}" for name, d in worst.point.items() if (text := _deviation(plan, name, d))]
+    return f"{numbers.number(worst.at_degC)} degC, with {'; '.join(devices) or 'nominal materials'}."
+
+
+def _deviation(plan: Plan, name: str, at: Deviation) -> str:
+    size = _SIZE_WORDS.get(plan.by_name[name].kind, "value")
+    parts = [
+        f"{size} {numbers.signed((at.ohm_per_square - 1.0) * 100.0)} %" if at.ohm_per_square != 1.0 else "",
+        f"TC1 {numbers.signed(at.tc1)} ppm/K" if at.tc1 else "",
+        f"TC2 {numbers.signed(at.tc2)} ppm/K^2" if at.tc2 else "",
+    ]
+    return ", ".join(part for part in parts if part)
+
+
+def movers(plan: Plan, option: Option) -> tuple[str, ...]:
+    """Return the deviations that matter most, and what each alone adds to the worst case."""
+    if option.worst_case is None:
+        return ()
+    words = {"tc1": "TC1", "tc2": "TC2"}
+    return tuple(
+        f"{words.get(m.parameter, _SIZE_WORDS.get(plan.by_name[m.material].kind, 'value'))} of {m.material} "
+        f"({numbers.worst(m.ppm)} ppm)"
+        for m in option.worst_case.movers
+    )
+
+
+def centring(plan: Plan, option: Option) -> str:
+    """Return the offset of the value that centres the drift, and what remains."""
+    spread = spread_ppm(option)
+    offset = numbers.nominal(abs(option.nominal.centring_ppm), spread)
+    at = f"R({numbers.stated(plan.range.reference_degC)} degC)"
+    if offset.startswith("under"):
+        return f"The offset of {at} that centres the nominal drift is {offset} ppm: nothing to gain."
+    left = numbers.nominal(option.nominal.centred_peak_ppm, spread)
+    side = "above" if option.nominal.centring_ppm > 0 else "below"
+    beside = "; the spread adds to it" if spread else ""
+    return f"With {at} made {offset} ppm {side} its target, R stays within +/-{left} ppm of it (nominal{beside})."
