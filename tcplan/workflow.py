@@ -3,14 +3,19 @@
 from __future__ import annotations
 
 from collections.abc import Sequence
-from dataclasses import replace
+from dataclasses import dataclass, replace
+from pathlib import Path
 
 from tcplan import __version__
-from tcplan.brief import Brief
-from tcplan.errors import NoAnswer
+from tcplan.brief import Brief, parse_brief
+from tcplan.errors import InputError, NoAnswer, Problem
 from tcplan.goal import Requirement, requirement
+from tcplan.material.files import published, read_materials
+from tcplan.material.law import Law, chord_tcr
+from tcplan.material.model import Material
 from tcplan.material.spread import Spread
-from tcplan.network import arrangement, legs, used_materials, value
+from tcplan.network import arrangement, legs, symbolic, used_materials, value
+from tcplan.output import check_folder, write_files
 from tcplan.plan import (
     FloorEvidence,
     LimitRecord,
@@ -20,10 +25,11 @@ from tcplan.plan import (
     RangeRecord,
     Space,
     TargetRecord,
+    plan_json,
 )
 from tcplan.search.floor import floor_evidence
 from tcplan.search.linear import least_total, search_space
-from tcplan.units import format_ppm, round_outward
+from tcplan.units import format_ppm, from_celsius, round_outward
 from tcplan.verify.floor import floor
 from tcplan.verify.option import Case, check, nominal_figure, spread_figures
 
@@ -282,3 +288,107 @@ def _target_record(brief: Brief) -> TargetRecord:
 
 def _own_total(brief: Brief) -> float | None:
     return value(brief.given) if brief.given is not None else None
+
+
+# --- files and the smaller commands ---------------------------------------------------------------
+
+PLAN_FILES = (
+    "plan.json",
+    "mix.csv",
+    "spec.md",
+    "drift.svg",
+    "drift.png",
+    "slope-curvature.svg",
+    "slope-curvature.png",
+)
+
+
+def write_plan(plan: Plan, folder: Path, *, force: bool = False) -> tuple[Path, ...]:
+    """Write plan.json, mix.csv, spec.md and the figures of a plan, all of them or none.
+
+    Parameters
+    ----------
+    plan : Plan
+    folder : Path
+        Made when it does not exist.
+    force : bool
+        Whether files that exist may be replaced.
+
+    Returns
+    -------
+    tuple of Path
+        The files, in the order of ``PLAN_FILES``.
+
+    Raises
+    ------
+    OutputError
+        When a file is in the way or cannot be written.
+    """
+    from tcplan.figures.files import figure_files
+    from tcplan.spec.markdown import spec_markdown
+    from tcplan.spec.mix_csv import mix_csv
+
+    check_folder(folder, PLAN_FILES, force=force)
+    texts = {"plan.json": plan_json(plan), "mix.csv": mix_csv(plan), "spec.md": spec_markdown(plan)}
+    contents = {**{name: text.encode() for name, text in texts.items()}, **figure_files(plan)}
+    return write_files(folder, {name: contents[name] for name in PLAN_FILES}, force=force)
+
+
+def brief_from_bytes(content: bytes, folder: Path) -> Brief:
+    """Return the checked brief that came in on standard input.
+
+    Parameters
+    ----------
+    content : bytes
+        TOML, UTF-8 with or without a byte order mark.
+    folder : Path
+        What the names of materials files are relative to.
+    """
+    name = "standard input"
+    try:
+        text = content.decode("utf-8-sig")
+    except UnicodeDecodeError as fault:
+        found = f"bytes that are not UTF-8 text (at byte {fault.start + 1})"
+        raise InputError(Problem(where=name, found=found, expected="TOML text in UTF-8")) from fault
+    return parse_brief(text, name, folder)
+
+
+def materials_of(name: str) -> dict[str, Material]:
+    """Return the materials of a file, or of a set that comes with tcplan: ``published:NAME``."""
+    prefix = "published:"
+    return published(name.removeprefix(prefix)) if name.startswith(prefix) else read_materials(Path(name))
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Coefficients:
+    """TC1 [1/K] and TC2 [1/K^2] about ``reference`` [K]; each chord is (temperature [K], TCR [1/K])."""
+
+    reference: float
+    tc1: float
+    tc2: float
+    chords: tuple[tuple[float, float], ...]
+
+
+def coefficients_at(law: Law, reference: float, chords_to: Sequence[float] = ()) -> Coefficients:
+    """Return the coefficients of a law about another reference, and its chord TCRs from there.
+
+    Parameters
+    ----------
+    law : Law
+    reference : float
+        Where the coefficients are wanted [K].
+    chords_to : sequence of float
+        Temperatures to which the chord TCR is wanted [K].
+    """
+    moved = law.referred_to(reference)
+    tc1, tc2 = moved.taylor(reference, 2)
+    chords = tuple((at, chord_tcr(moved, at, reference)) for at in chords_to)
+    return Coefficients(reference=reference, tc1=tc1, tc2=tc2, chords=chords)
+
+
+def symbolic_formula(plan: Plan) -> str:
+    """Return R(T) [ohm] of the chosen option as one formula of T [K], made by sympy."""
+    option, reference = plan.best, from_celsius(plan.range.reference_degC)
+    names = used_materials(option.network)
+    ratios = {name: plan.by_name[name].law.referred_to(reference).symbolic() for name in names}
+    return str(symbolic(option.network, ratios))

@@ -28,9 +28,11 @@ from tcplan.figures.style import (
     FAINT,
     LIMIT,
     LIMIT_DASH,
+    LIMIT_FILL,
     OTHER,
     SMALL_SIZE,
     TEXT_SIZE,
+    WORST,
     WORST_DASH,
     Look,
     looks,
@@ -162,7 +164,7 @@ def _draw_residual(
         (line,) = ax.plot(
             celsius(T),
             worst(T) * unit.factor,
-            color=MATERIAL_WORST,
+            color=WORST,
             linestyle=WORST_DASH,
             lw=1.4,
             zorder=4,
@@ -172,13 +174,10 @@ def _draw_residual(
     return residual, line, tuple(peaks)
 
 
-MATERIAL_WORST = "#336688"
-
-
 def _mark(ax: Axes, curve: Curve, at_degC: float, unit: _Unit, *, filled: bool) -> Line2D:
     """Mark the peak of a curve where verify found it."""
     height = float(curve(np.array([from_celsius(at_degC)]))[0]) * unit.factor
-    colour = CHOSEN if filled else MATERIAL_WORST
+    colour = CHOSEN if filled else WORST
     (mark,) = ax.plot(
         [at_degC],
         [height],
@@ -208,7 +207,7 @@ def _draw_limits(
         if limit.kind in ("band", "box_tcr"):
             drawn.append(
                 ax.fill_between(
-                    limit.degC, lower, upper, facecolor="#f6dde1", edgecolor=LIMIT, lw=0.8, zorder=1, label=label
+                    limit.degC, lower, upper, facecolor=LIMIT_FILL, edgecolor=LIMIT, lw=0.8, zorder=1, label=label
                 )
             )
             continue

@@ -4,99 +4,13 @@ from __future__ import annotations
 
 from tcplan.network import used_materials, value
 from tcplan.plan import Deviation, Option, Plan
-from tcplan.ranges import GRADES
 from tcplan.spec import numbers
+from tcplan.spec.asked import figure_text, wanted_text
 from tcplan.units import format_ohms, from_celsius
 
 NOT_INCLUDED = "package stress, ageing, humidity, self-heating, mismatch"
 ROUNDING = 1e-9
-_SIZE_WORDS = {"film": "ohm per square", "wire": "ohm per metre"}
-
-
-# --- what was asked ---------------------------------------------------------------------------
-
-
-def headline(plan: Plan) -> str:
-    """Return what was asked and the verdict, in one line."""
-    low, high = (numbers.stated(t) for t in (plan.range.low_degC, plan.range.high_degC))
-    judge = "worst case" if plan.limit.judge == "worst-case" else "nominal"
-    return f"{asked_value(plan)}, {asked_limit(plan)} ({judge}), {low} to {high} degC: {verdict(plan)}"
-
-
-def verdict(plan: Plan) -> str:
-    """Return the verdict of the chosen option, or that there is no limit to judge by."""
-    return plan.best.verdict if plan.limit.drift_ppm is not None else "no limit given"
-
-
-def asked_value(plan: Plan) -> str:
-    """Return the wanted total."""
-    if plan.target.ohms is not None:
-        return format_ohms(plan.target.ohms)
-    most = plan.brief["resistor"]["at_most_ohms"]
-    return "any total" if most is None else f"at most {format_ohms(most)}"
-
-
-def asked_limit(plan: Plan) -> str:
-    """Return the limits as they were stated."""
-    limits = plan.brief["goal"]["limits"]
-    return " and ".join(_limit(limit) for limit in limits) if limits else "least drift"
-
-
-def _limit(limit: dict[str, object]) -> str:
-    kind = str(limit["kind"])
-    words = {"chord_tcr": "chord TCR", "box_tcr": "box TCR"}.get(kind, kind)
-    if kind == "mask":
-        return "drift inside its mask"
-    unit = "ppm/K" if "ppm_per_K" in limit else "ppm"
-    amount = numbers.stated(float(str(limit.get("ppm_per_K", limit.get("ppm")))))
-    return f"{words} within {amount} {unit}"
-
-
-def mask_lines(plan: Plan) -> tuple[str, ...]:
-    """Return the lines of a mask; empty without one."""
-    return tuple(
-        f"{numbers.stated(w['low_degC'])} to {numbers.stated(w['high_degC'])} degC: "
-        f"{numbers.stated(w['limit_ppm'])} ppm"
-        for limit in plan.brief["goal"]["limits"]
-        for w in limit["windows"]
-    )
-
-
-def range_text(plan: Plan) -> str:
-    """Return the range with its numbers, its name, its standard and the reference."""
-    over = plan.range
-    low, high, reference = (numbers.stated(t) for t in (over.low_degC, over.high_degC, over.reference_degC))
-    grade = GRADES.get(over.name)
-    origin = f" ({over.name}, {grade.standard})" if grade else ""
-    rise = f", {numbers.stated(over.rise_K)} K of rise included at the high end" if over.rise_K else ""
-    return f"{low} to {high} degC{origin}{rise}, reference {reference} degC"
-
-
-def wanted_text(plan: Plan) -> str:
-    """Return the wanted law; empty when it is flat."""
-    if plan.brief["goal"]["wanted"] is None:
-        return ""
-    tc1, tc2 = numbers.number(plan.target.tc1_ppm_per_K), numbers.number(plan.target.tc2_ppm_per_K2)
-    return f"Drift is counted from the wanted law, TC1 {tc1} ppm/K and TC2 {tc2} ppm/K^2 at the reference."
-
-
-def figure_text(plan: Plan) -> str:
-    """Return what the figures in ppm are, for the kind of limit that was given."""
-    over = plan.range
-    arm = max(over.high_degC - over.reference_degC, over.reference_degC - over.low_degC)
-    words = {
-        "none": "the peak drift over the whole range",
-        "drift": "the peak drift over the whole range",
-        "band": "the band, highest minus lowest drift",
-        "box_tcr": f"the band; divided by {numbers.stated(over.high_degC - over.low_degC)} K it is the box TCR",
-        "chord_tcr": f"the larger chord TCR times {numbers.stated(arm)} K, the longer arm",
-        "mask": "the drift, scaled to the tightest line of the mask",
-    }
-    first = plan.limit.kind.split(" and ")[0]
-    several = "; of several limits, each on the scale of this one, the largest" if first != plan.limit.kind else ""
-    scale = plan.limit.drift_ppm
-    against = f", against {numbers.stated(scale)} ppm" if scale is not None and plan.limit.kind != "drift" else ""
-    return f"Figures are {words[first]}{several}{against}."
+SIZE_WORDS = {"film": "sheet resistance", "wire": "resistance per metre"}
 
 
 # --- the outcome ------------------------------------------------------------------------------
@@ -264,12 +178,14 @@ def _extrapolated(plan: Plan) -> str:
 def floor_text(plan: Plan) -> str:
     """Return the floor and why."""
     floor = plan.floor
-    worst = floor.worst_case_ppm
-    beside = "worst case not stated" if worst is None else f"{numbers.bound(worst)} ppm worst case"
-    return (
-        f"No network of these materials is below {numbers.bound(floor.nominal_ppm)} ppm nominal, {beside}"
-        f" ({floor.why})."
-    )
+    bounds = {"nominal": floor.nominal_ppm, "worst case": floor.worst_case_ppm or 0.0}
+    above = [f"{text} ppm {of}" for of, ppm in bounds.items() if (text := numbers.bound(ppm)) != "0"]
+    if above:
+        said = f"no network of these materials is below {' and '.join(above)}"
+    else:
+        said = "none above zero is proved for these materials"
+    missing = "; worst case not stated" if floor.worst_case_ppm is None else ""
+    return f"{said}{missing} ({floor.why})."
 
 
 def reason(plan: Plan) -> str:
@@ -313,7 +229,7 @@ def worst_point(plan: Plan, option: Option) -> str:
 
 
 def _deviation(plan: Plan, name: str, at: Deviation) -> str:
-    size = _SIZE_WORDS.get(plan.by_name[name].kind, "value")
+    size = SIZE_WORDS.get(plan.by_name[name].kind, "value")
     parts = [
         f"{size} {numbers.signed((at.ohm_per_square - 1.0) * 100.0)} %" if at.ohm_per_square != 1.0 else "",
         f"TC1 {numbers.signed(at.tc1)} ppm/K" if at.tc1 else "",
@@ -328,7 +244,7 @@ def movers(plan: Plan, option: Option) -> tuple[str, ...]:
         return ()
     words = {"tc1": "TC1", "tc2": "TC2"}
     return tuple(
-        f"{words.get(m.parameter, _SIZE_WORDS.get(plan.by_name[m.material].kind, 'value'))} of {m.material} "
+        f"{words.get(m.parameter, SIZE_WORDS.get(plan.by_name[m.material].kind, 'value'))} of {m.material} "
         f"({numbers.worst(m.ppm)} ppm)"
         for m in option.worst_case.movers
     )

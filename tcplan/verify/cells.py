@@ -114,14 +114,15 @@ def grid_of(box: Box, T: FloatArray, weight: FloatArray) -> Grid:
 class Found:
     """The worst point that the cells found, and the bound on all of them.
 
-    ``factors`` follow the materials of the box; ``sign`` is 1 when all laws are at their highest.
+    ``factors`` follow the materials of the box; ``sign`` is 1 when all laws are at their highest;
+    ``at`` is the position on the grid.
     """
 
     figure: float
     upper: float
     factors: FloatArray
     sign: int
-    at: float
+    at: int
 
 
 def excursions(box: Box, centre: FloatArray, width: FloatArray, grid: Grid) -> tuple[float, float]:
@@ -137,8 +138,21 @@ def _examined(box: Box, centre: FloatArray, width: FloatArray, grid: Grid) -> tu
     bound = np.maximum((top - t) / weight, (t - bottom) / weight).max(axis=1)
     reach = np.stack([(high - t) / weight, (t - low) / weight])
     side, cell, at = np.unravel_index(int(np.argmax(reach)), reach.shape)
-    worst = float(reach[side, cell, at])
-    return bound, Found(worst, worst, centre[cell].copy(), 1 if side == 0 else -1, float(grid.T[at]))
+    found = Found(float(reach[side, cell, at]), 0.0, centre[cell].copy(), 1 if side == 0 else -1, int(at))
+    return bound, _at_vertices(box, found, width[cell], grid)
+
+
+def _at_vertices(box: Box, found: Found, width: FloatArray, grid: Grid) -> Found:
+    """Return the worst of the vertices of one cell at the temperature found: a limit is a vertex."""
+    steps = np.array(list(product((-1.0, 0.0, 1.0), repeat=int((width > 0).sum()))))
+    points = np.tile(found.factors, (len(steps), 1))
+    points[:, width > 0] += steps * width[width > 0]
+    k = found.at
+    law = (grid.hi if found.sign > 0 else grid.lo)[:, k : k + 1]
+    ratio = (_values(box, points, law) / _values(box, points, np.ones_like(law)))[:, 0]
+    figure = found.sign * (ratio - grid.wanted[k]) / grid.weight[k]
+    best = int(np.argmax(figure))
+    return replace(found, figure=float(figure[best]), factors=points[best])
 
 
 def start_cells(box: Box) -> tuple[FloatArray, FloatArray]:

@@ -96,7 +96,7 @@ def _mixed(box: Box) -> Worst:
         found = cell_search(box, grid_of(box, T, weight))
         upper = max(upper, found.upper)
         factors = dict(zip(box.names, found.factors.tolist(), strict=True))
-        settled = _settled(box, Device(factors, box.shifts_at(found.at, found.sign)))
+        settled = _settled(box, Device(factors, box.shifts_at(float(T[found.at]), found.sign)))
         if best is not None and settled[1].figure <= best[1].figure * (1 + 1e-6):
             break
         best = settled

@@ -1,0 +1,352 @@
+"""The TC1-TC2 plane: materials, what series mixes reach, the options, and contours of peak drift."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping, Sequence
+from dataclasses import dataclass, field
+
+import numpy as np
+from matplotlib.axes import Axes
+from matplotlib.legend import Legend
+from matplotlib.lines import Line2D
+from matplotlib.patches import Polygon, Rectangle
+from matplotlib.text import Annotation, Text
+from matplotlib.ticker import FuncFormatter, MaxNLocator
+
+from tcplan.figures.contours import PeakDrift, convex_hull, round_levels
+from tcplan.figures.curves import reference
+from tcplan.figures.labels import (
+    Box,
+    Name,
+    centred_box,
+    covered,
+    marker_box,
+    page_box,
+    place_names,
+)
+from tcplan.figures.style import (
+    CHOSEN,
+    FAINT,
+    OTHER,
+    SMALL_SIZE,
+    TEXT_SIZE,
+    Look,
+    looks,
+    number_text,
+    short_names,
+)
+from tcplan.network import used_materials
+from tcplan.plan import Option, Plan
+
+Point = tuple[float, float]
+"""(TC1 [ppm/K], TC2 [ppm/K^2])."""
+View = tuple[Point, Point]
+"""Two opposite corners."""
+
+CROWDED = 0.2  # of the view: options closer together than this get a view of their own
+NEARBY = 5.0  # options up to this many times the peak drift of the chosen one are shown there
+MOST_CONTOURS = 4
+SHORT = 84.0  # points for a name inside the axes
+INSET = (1.26, 0.0, 0.914, 1.0)  # beside the axes, where it covers nothing
+OPTION_MARKERS = {"single": "o", "series": "s", "parallel": "D", "mixed": "h"}
+CONTOUR = "#7a7a7a"
+HULL = "#e6ecf2"
+
+
+@dataclass(slots=True)
+class PlaneArtists:
+    """What was drawn on one pair of axes."""
+
+    materials: dict[str, Line2D] = field(default_factory=dict)
+    names: tuple[Annotation, ...] = ()
+    hull: Polygon | None = None
+    options: dict[str, Line2D] = field(default_factory=dict)
+    target: Line2D | None = None
+    contours: dict[float, Line2D] = field(default_factory=dict)
+    contour_labels: tuple[Text, ...] = ()
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class SlopeCurvatureArtists:
+    """What was drawn; ``near`` and its axes are None when nothing had to be enlarged."""
+
+    whole: PlaneArtists
+    near: PlaneArtists | None
+    inset: Axes | None
+    frame: Rectangle | None
+    legend: Legend
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class _Scene:
+    """All that the plane shows, in its own units."""
+
+    materials: Mapping[str, Point]
+    look: Mapping[str, Look]
+    options: Mapping[str, tuple[str, Point]]
+    chosen: str
+    target: Point
+    peak: PeakDrift
+
+    def distance(self, point: Point) -> float:
+        """Return the peak drift [ppm] of a quadratic law at a point, less the wanted one."""
+        away = np.array([point[0] - self.target[0]]), np.array([point[1] - self.target[1]])
+        return float(self.peak.of(*away)[0])
+
+
+def is_crowded(plan: Plan) -> bool:
+    """Return whether the options are so close together that they are drawn once more, enlarged."""
+    return _near_view(_scene(plan)) is not None
+
+
+def draw_slope_curvature(ax: Axes, plan: Plan) -> SlopeCurvatureArtists:
+    """Draw TC1 against TC2 at the brief's reference: materials, series mixes, options, contours.
+
+    Parameters
+    ----------
+    ax : Axes
+        With its final position, as names are placed on it. When `is_crowded`, an enlarged part
+        goes to its right, 1.2 times as wide in all; the legend goes below.
+    plan : Plan
+
+    Returns
+    -------
+    SlopeCurvatureArtists
+
+    Notes
+    -----
+    The hull holds all series mixes to second order: their TC1 and TC2 are means of those of the
+    materials. A contour joins the laws 1 + TC1 x + TC2 x^2 of one peak drift from the wanted law.
+    """
+    scene = _scene(plan)
+    near_view = _near_view(scene)
+    whole = _draw_plane(ax, scene, _whole_view(scene), near_view)
+    near, inset, frame = None, None, None
+    if near_view is not None:
+        inset = ax.inset_axes(INSET)
+        near = _draw_plane(inset, scene, near_view, None)
+        (left, bottom), (right, top) = near_view
+        frame = Rectangle(
+            (left, bottom), right - left, top - bottom, facecolor="none", edgecolor=CHOSEN, lw=0.8, zorder=6
+        )
+        ax.add_patch(frame)
+        ax.set_title("All materials; the frame is enlarged at the right", loc="left", fontsize=TEXT_SIZE)
+        inset.set_title("Options near the target", loc="left", fontsize=TEXT_SIZE)
+    for part in (ax, *([inset] if inset else [])):
+        part.set_xlabel(f"TC1 at {number_text(plan.range.reference_degC)} \N{DEGREE SIGN}C (ppm/K)")
+    ax.set_ylabel("TC2 (ppm/K\N{SUPERSCRIPT TWO})")
+    legend = _draw_legend(ax, scene, plan, near or whole)
+    return SlopeCurvatureArtists(whole=whole, near=near, inset=inset, frame=frame, legend=legend)
+
+
+# --- what is shown, and how much of it --------------------------------------------------------------
+
+
+def _scene(plan: Plan) -> _Scene:
+    def point(name: str) -> Point:
+        tc1, tc2 = plan.by_name[name].referred_taylor(reference(plan), 2)
+        return tc1 * 1e6, tc2 * 1e6
+
+    def of(option: Option) -> Point:
+        return option.nominal.tc1_ppm_per_K, option.nominal.tc2_ppm_per_K2
+
+    over = plan.range
+    return _Scene(
+        materials={material.name: point(material.name) for material in plan.materials},
+        look=looks([material.name for material in plan.materials], used_materials(plan.best.network)),
+        options={option.id: (option.arrangement, of(option)) for option in plan.options},
+        chosen=plan.chosen,
+        target=(plan.target.tc1_ppm_per_K, plan.target.tc2_ppm_per_K2),
+        peak=PeakDrift(cold=over.low_degC - over.reference_degC, hot=over.high_degC - over.reference_degC),
+    )
+
+
+def _whole_view(scene: _Scene) -> View:
+    """Return the view of everything, the origin included."""
+    options = [point for _, point in scene.options.values()]
+    return _view([*scene.materials.values(), *options, scene.target, (0.0, 0.0)], scene.peak)
+
+
+def _near_view(scene: _Scene) -> View | None:
+    """Return the view of the composite options near the target; None when the whole shows them well."""
+    composite = [p for name, (kind, p) in scene.options.items() if kind != "single" or name == scene.chosen]
+    reach = NEARBY * scene.distance(scene.options[scene.chosen][1])
+    near = [point for point in composite if scene.distance(point) <= reach]
+    if reach == 0.0 or not near:
+        return None
+    view, whole = _view([*near, scene.target], scene.peak), _whole_view(scene)
+    parts = [(view[1][n] - view[0][n]) / (whole[1][n] - whole[0][n]) for n in (0, 1)]
+    return view if max(parts) < CROWDED else None
+
+
+def _view(points: Sequence[Point], peak: PeakDrift) -> View:
+    """Return a view of points with a margin; neither side is tiny in terms of the drift it stands for."""
+    low, high = np.min(points, axis=0), np.max(points, axis=0)
+    middle, half = 0.5 * (low + high), 0.5 * (high - low)
+    per_unit = peak.of(np.array([1.0, 0.0]), np.array([0.0, 1.0]))
+    least = max(0.12 * float(np.max(half * per_unit)), 1e-3) / per_unit
+    half = 1.3 * np.maximum(half, least)
+    (left, bottom), (right, top) = (middle - half).tolist(), (middle + half).tolist()
+    return (left, bottom), (right, top)
+
+
+def _within(point: Point, view: View | None) -> bool:
+    return view is not None and all(view[0][n] <= point[n] <= view[1][n] for n in (0, 1))
+
+
+# --- drawing ------------------------------------------------------------------------------------------
+
+
+def _draw_plane(ax: Axes, scene: _Scene, view: View, elsewhere: View | None) -> PlaneArtists:
+    """Draw the plane as far as a view goes; what lies ``elsewhere`` is named there, not here."""
+    ax.set_xlim(view[0][0], view[1][0])
+    ax.set_ylim(view[0][1], view[1][1])
+    for axis in (ax.xaxis, ax.yaxis):
+        axis.set_major_locator(MaxNLocator(5))
+        axis.set_major_formatter(FuncFormatter(lambda number, _: number_text(number)))
+    for line in (ax.axhline, ax.axvline):
+        line(0.0, color=FAINT, lw=0.8, zorder=0)
+    drawn = PlaneArtists(hull=_draw_hull(ax, scene))
+    drawn.materials = {name: _draw_material(ax, scene, name) for name in scene.materials}
+    drawn.options = {name: _draw_option(ax, scene, name) for name in scene.options}
+    (drawn.target,) = ax.plot(*([v] for v in scene.target), marker="+", ms=11, mew=1.4, color=CHOSEN, zorder=4)
+    drawn.names, taken = place_names(ax, _names(scene, view, elsewhere), _markers(ax, scene, view))
+    _draw_contours(ax, scene, drawn, taken)
+    return drawn
+
+
+def _draw_hull(ax: Axes, scene: _Scene) -> Polygon:
+    corners = convex_hull(list(scene.materials.values()))
+    hull = Polygon(np.array(corners), closed=True, facecolor=HULL, edgecolor=OTHER, lw=0.7, zorder=0.5)
+    ax.add_patch(hull)
+    return hull
+
+
+def _draw_material(ax: Axes, scene: _Scene, name: str) -> Line2D:
+    look = scene.look.get(name)
+    (line,) = ax.plot(*([v] for v in scene.materials[name]), linestyle="none", zorder=3)
+    line.set(marker=look.marker if look else ".", color=look.colour if look else OTHER, markersize=6.0)
+    return line
+
+
+def _draw_option(ax: Axes, scene: _Scene, name: str) -> Line2D:
+    kind, point = scene.options[name]
+    (line,) = ax.plot(*([v] for v in point), zorder=6 if name == scene.chosen else 5)
+    line.set(**_option_style(kind, chosen=name == scene.chosen))
+    return line
+
+
+def _option_style(kind: str, *, chosen: bool) -> dict[str, object]:
+    """Return the marker of an option: its shape is the arrangement, and the chosen one is filled."""
+    size = 11.0 if kind == "single" and not chosen else 8.5 if chosen else 7.0
+    return {
+        "linestyle": "none",
+        "marker": OPTION_MARKERS[kind],
+        "markersize": size,
+        "markerfacecolor": CHOSEN if chosen else "none",
+        "markeredgecolor": "white" if chosen else CHOSEN,
+        "markeredgewidth": 0.8 if chosen else 1.1,
+    }
+
+
+def _names(scene: _Scene, view: View, elsewhere: View | None) -> list[Name]:
+    """Return the names to write: the chosen option, its materials, then the others."""
+    short = short_names(list(scene.materials), SHORT, SMALL_SIZE)
+    order = [*scene.look, *(name for name in scene.materials if name not in scene.look)]
+    options = sorted(scene.options.items(), key=lambda item: item[0] != scene.chosen)
+    wanted = [
+        Name(x=x, y=y, text=name, colour=CHOSEN, bold=name == scene.chosen)
+        for name, (kind, (x, y)) in options
+        if kind != "single"
+    ]
+    for name in order:
+        x, y = scene.materials[name]
+        wanted.append(Name(x=x, y=y, text=short[name], colour="#333333", needed=name in scene.look))
+    return [n for n in wanted if _within((n.x, n.y), view) and not _within((n.x, n.y), elsewhere)]
+
+
+def _markers(ax: Axes, scene: _Scene, view: View) -> list[Box]:
+    """Return the rectangles of all markers in view."""
+    points = [*scene.materials.values(), *(point for _, point in scene.options.values()), scene.target]
+    return [marker_box(ax, *point) for point in points if _within(point, view)]
+
+
+def _draw_contours(ax: Axes, scene: _Scene, drawn: PlaneArtists, taken: list[Box]) -> None:
+    """Draw the contours that find room for their label."""
+    corners = [(x, y) for x in ax.get_xlim() for y in ax.get_ylim()]
+    labels = []
+    for level in round_levels(max(scene.distance(corner) for corner in corners), MOST_CONTOURS):
+        across, up = scene.peak.contour(level)
+        x, y = across + scene.target[0], up + scene.target[1]
+        text = f"{number_text(level)} ppm"
+        at = _room(ax, list(zip(x.tolist(), y.tolist(), strict=True)), text, taken)
+        if at is None:
+            continue
+        (drawn.contours[level],) = ax.plot(x, y, color=CONTOUR, lw=0.8, linestyle=(0, (4, 2)), zorder=1)
+        taken.append(centred_box(ax, *at, text))
+        labels.append(_write_level(ax, at, text))
+    drawn.contour_labels = tuple(labels)
+
+
+def _room(ax: Axes, points: Sequence[Point], text: str, taken: Sequence[Box]) -> Point | None:
+    """Return the point of a contour, nearest to its top, where a text covers nothing."""
+    quarter, page = len(points) // 4, page_box(ax)
+    for step in sorted(range(0, len(points), 6), key=lambda n: min(abs(n - quarter), abs(n - 3 * quarter))):
+        box = centred_box(ax, *points[step], text)
+        if box.inside(page) and covered(box, taken) == 0.0:
+            return points[step]
+    return None
+
+
+def _write_level(ax: Axes, at: Point, text: str) -> Text:
+    return ax.text(
+        *at,
+        text,
+        ha="center",
+        va="center",
+        fontsize=SMALL_SIZE,
+        color="#555555",
+        zorder=2,
+        parse_math=False,
+        bbox={"facecolor": "white", "edgecolor": "none", "pad": 0.8, "alpha": 0.85},
+    )
+
+
+def _draw_legend(ax: Axes, scene: _Scene, plan: Plan, shown: PlaneArtists) -> Legend:
+    """Put the legend below the axes."""
+    handles: list[Line2D | Polygon] = [
+        Line2D([], [], **_option_style(kind, chosen=False), label=f"{kind} option")  # type: ignore[arg-type]
+        for kind in OPTION_MARKERS
+        if any(k == kind and name != scene.chosen for name, (k, _) in scene.options.items())
+    ]
+    chosen = _option_style(scene.options[scene.chosen][0], chosen=True)
+    handles.insert(0, Line2D([], [], **chosen, label=f"{scene.chosen} (chosen)"))  # type: ignore[arg-type]
+    handles.append(Line2D([], [], linestyle="none", marker="o", color=OTHER, ms=6, label="material (named)"))
+    flat = scene.target == (0.0, 0.0)
+    tc1, tc2 = map(number_text, scene.target)
+    wanted = f"wanted: TC1 {tc1} ppm/K, TC2 {tc2} ppm/K\N{SUPERSCRIPT TWO}"
+    handles.append(
+        Line2D(
+            [], [], linestyle="none", marker="+", ms=11, mew=1.4, color=CHOSEN,
+            label="wanted: no drift" if flat else wanted,
+        )
+    )  # fmt: skip
+    if len(scene.materials) > 1:
+        hull = Polygon(np.zeros((3, 2)), facecolor=HULL, edgecolor=OTHER, lw=0.7, label="all series mixes")
+        handles.append(hull)
+    low, high = number_text(plan.range.low_degC), number_text(plan.range.high_degC)
+    if shown.contours:
+        text = f"peak drift of a quadratic law, {low} to {high} \N{DEGREE SIGN}C"
+        handles.append(Line2D([], [], color=CONTOUR, lw=0.8, linestyle=(0, (4, 2)), label=text))
+    legend = ax.legend(
+        handles=handles,
+        loc="upper left",
+        bbox_to_anchor=(0.0, -0.16),
+        borderaxespad=0.0,
+        ncols=3,
+        frameon=False,
+        fontsize=SMALL_SIZE,
+    )
+    for entry in legend.get_texts():
+        entry.set_parse_math(False)
+    return legend

@@ -1,0 +1,165 @@
+"""Files written whole or not at all, and never over an existing file unless that is asked for."""
+
+from __future__ import annotations
+
+import errno
+import os
+import secrets
+from collections.abc import Callable, Iterable, Mapping
+from functools import partial
+from pathlib import Path
+
+from tcplan.errors import InternalError, OutputError, Problem
+
+
+def check_folder(folder: Path, names: Iterable[str], *, force: bool = False) -> None:
+    """Refuse a folder in which files of these names cannot or must not be written.
+
+    Parameters
+    ----------
+    folder : Path
+        It need not exist yet.
+    names : iterable of str
+        Names of files in it.
+    force : bool
+        Whether files that exist may be replaced.
+
+    Raises
+    ------
+    OutputError
+        With every file that is in the way.
+    """
+    problems = [problem for name in names if (problem := _in_the_way(folder / name, force=force))]
+    if folder.is_symlink() and not folder.exists():
+        problems = [_not_a_folder(folder, "a link to nothing")]
+    elif folder.exists() and not folder.is_dir():
+        problems = [_not_a_folder(folder, "a file")]
+    if problems:
+        raise OutputError(problems)
+
+
+def write_files(folder: Path, contents: Mapping[str, bytes], *, force: bool = False) -> tuple[Path, ...]:
+    """Write all files, or none of them: each to a temporary file, then all renamed.
+
+    Parameters
+    ----------
+    folder : Path
+        Made when it does not exist.
+    contents : mapping of name to bytes
+        Plain names, no paths.
+    force : bool
+        Whether files that exist may be replaced.
+
+    Returns
+    -------
+    tuple of Path
+        What was written, in the order of ``contents``.
+
+    Raises
+    ------
+    OutputError
+        When a file is in the way or cannot be written; the folder is then as it was.
+    """
+    for name in contents:
+        if Path(name).name != name:
+            raise InternalError(f"{name!r} is not a plain file name")
+    check_folder(folder, contents, force=force)
+    work = _Work(folder)
+    try:
+        work.write(contents)
+        work.put_in_place(contents, force=force)
+    except BaseException as fault:
+        work.undo()
+        if isinstance(fault, OSError):
+            raise OutputError(_cannot_write(folder, fault)) from fault
+        raise
+    work.finish()
+    return tuple(folder / name for name in contents)
+
+
+class _Work:
+    """One set of files on its way into a folder, and how to take all of it back."""
+
+    def __init__(self, folder: Path) -> None:
+        self.folder = folder
+        self.mark = f".tcplan-{secrets.token_hex(6)}-"
+        self.made: list[Path] = []
+        self.temporary: list[Path] = []
+        self.placed: list[Path] = []
+        self.kept: dict[Path, Path] = {}
+
+    def write(self, contents: Mapping[str, bytes]) -> None:
+        """Write every file under a temporary name."""
+        for folder in reversed([self.folder, *self.folder.parents]):
+            if not folder.exists():
+                folder.mkdir()
+                self.made.append(folder)
+        for name, content in contents.items():
+            path = self.folder / f"{self.mark}{name}"
+            with path.open("xb") as stream:
+                self.temporary.append(path)
+                stream.write(content)
+                stream.flush()
+                os.fsync(stream.fileno())
+
+    def put_in_place(self, names: Iterable[str], *, force: bool) -> None:
+        """Give every file its name; what was there before is kept until all are in place."""
+        for name in names:
+            target = self.folder / name
+            if target.is_symlink() or target.exists():
+                if not force:
+                    raise FileExistsError(errno.EEXIST, "a file of this name has appeared", str(target))
+                kept = self.folder / f"{self.mark}kept-{name}"
+                self.kept[target] = kept  # noted first: an interrupt can come between any two steps
+                target.rename(kept)
+            self.placed.append(target)
+            (self.folder / f"{self.mark}{name}").rename(target)
+
+    def undo(self) -> None:
+        """Take everything back, as far as the file system lets us."""
+        for path in (*self.placed, *self.temporary):
+            _quietly(path.unlink)
+        for target, kept in self.kept.items():
+            _quietly(partial(kept.rename, target))
+        for folder in reversed(self.made):
+            _quietly(folder.rmdir)
+
+    def finish(self) -> None:
+        """Remove what was replaced."""
+        for kept in self.kept.values():
+            _quietly(kept.unlink)
+
+
+def _quietly(action: Callable[[], object]) -> None:
+    try:
+        action()
+    except OSError:
+        return
+
+
+def _in_the_way(path: Path, *, force: bool) -> Problem | None:
+    if path.is_dir():
+        return Problem(
+            where=str(path), found="a folder of this name", expected="no folder there", todo="Choose another with -o."
+        )
+    if not force and (path.is_symlink() or path.exists()):
+        return Problem(
+            where=str(path),
+            found="an existing file",
+            expected="no file of this name",
+            todo="Replace it with --force, or write elsewhere.",
+        )
+    return None
+
+
+def _not_a_folder(folder: Path, found: str) -> Problem:
+    return Problem(where=str(folder), found=found, expected="a folder, or nothing yet", todo="Choose another name.")
+
+
+def _cannot_write(folder: Path, fault: OSError) -> Problem:
+    return Problem(
+        where=str(folder),
+        found=f"a folder that cannot be written ({fault.strerror or type(fault).__name__})",
+        expected="a folder in which files can be made",
+        todo="Check its permissions and the space left, or choose another with -o.",
+    )
