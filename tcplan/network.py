@@ -15,6 +15,7 @@ import numpy as np
 
 from tcplan.arrays import FloatArray
 from tcplan.errors import InputError, Problem
+from tcplan.names import shown
 
 if TYPE_CHECKING:
     import sympy
@@ -210,13 +211,13 @@ def tree(network: Network) -> dict[str, Any]:
 
 def network_from_tree(data: Mapping[str, Any], by_id: Mapping[str, Leg]) -> Network:
     """Return the network of a nesting made by :func:`tree` and its legs by id."""
-    (kind, content), *rest = data.items()
-    if rest or kind not in ("leg", "series", "parallel"):
-        raise InputError(
-            Problem(where="tree", found=repr(sorted(data)), expected="one of leg, series, parallel")
-        )
-    if kind == "leg":
+    kind = next(iter(data), "") if isinstance(data, Mapping) and len(data) == 1 else ""
+    content = data[kind] if kind else None
+    if kind == "leg" and isinstance(content, str) and content in by_id:
         return by_id[content]
+    if kind not in ("series", "parallel") or not isinstance(content, list):
+        expected = "a table with one key: leg with the id of a leg, or series or parallel with a list"
+        raise InputError(Problem(where="tree", found=shown(data), expected=expected))
     children = tuple(network_from_tree(child, by_id) for child in content)
     return Series(children) if kind == "series" else Parallel(children)
 

@@ -5,21 +5,21 @@ from __future__ import annotations
 import errno
 import os
 import secrets
-from collections.abc import Callable, Iterable, Mapping
+from collections.abc import Callable, Collection, Iterable, Mapping
 from functools import partial
 from pathlib import Path
 
 from tcplan.errors import InternalError, OutputError, Problem
 
 
-def check_folder(folder: Path, names: Iterable[str], *, force: bool = False) -> None:
+def check_folder(folder: Path, names: Collection[str], *, force: bool = False) -> None:
     """Refuse a folder in which files of these names cannot or must not be written.
 
     Parameters
     ----------
     folder : Path
         It need not exist yet.
-    names : iterable of str
+    names : collection of str
         Names of files in it.
     force : bool
         Whether files that exist may be replaced.
@@ -29,11 +29,11 @@ def check_folder(folder: Path, names: Iterable[str], *, force: bool = False) -> 
     OutputError
         With every file that is in the way.
     """
-    problems = [problem for name in names if (problem := _in_the_way(folder / name, force=force))]
+    if folder.exists() and not folder.is_dir():
+        raise OutputError(_not_a_folder(folder, "a file"))
     if folder.is_symlink() and not folder.exists():
-        problems = [_not_a_folder(folder, "a link to nothing")]
-    elif folder.exists() and not folder.is_dir():
-        problems = [_not_a_folder(folder, "a file")]
+        raise OutputError(_not_a_folder(folder, "a link to nothing"))
+    problems = [*_folders_in_the_way(folder, names), *_files_in_the_way(folder, () if force else names)]
     if problems:
         raise OutputError(problems)
 
@@ -137,23 +137,41 @@ def _quietly(action: Callable[[], object]) -> None:
         return
 
 
-def _in_the_way(path: Path, *, force: bool) -> Problem | None:
-    if path.is_dir():
-        return Problem(
-            where=str(path), found="a folder of this name", expected="no folder there", todo="Choose another with -o."
+def _folders_in_the_way(folder: Path, names: Collection[str]) -> list[Problem]:
+    found = [name for name in names if (folder / name).is_dir()]
+    if not found:
+        return []
+    return [
+        Problem(
+            where=str(folder),
+            found=f"a folder by the name of {', '.join(found)}",
+            expected="no folder of that name",
+            todo="Write elsewhere.",
         )
-    if not force and (path.is_symlink() or path.exists()):
-        return Problem(
-            where=str(path),
-            found="an existing file",
-            expected="no file of this name",
-            todo="Replace it with --force, or write elsewhere.",
+    ]
+
+
+def _files_in_the_way(folder: Path, names: Collection[str]) -> list[Problem]:
+    paths = {name: folder / name for name in names}
+    found = [
+        name for name, path in paths.items() if (path.is_symlink() or path.exists()) and not path.is_dir()
+    ]
+    if not found:
+        return []
+    return [
+        Problem(
+            where=str(folder),
+            found=f"{', '.join(found)} already there",
+            expected="no file of these names",
+            todo="Replace them with --force, or write elsewhere.",
         )
-    return None
+    ]
 
 
 def _not_a_folder(folder: Path, found: str) -> Problem:
-    return Problem(where=str(folder), found=found, expected="a folder, or nothing yet", todo="Choose another name.")
+    return Problem(
+        where=str(folder), found=found, expected="a folder, or nothing yet", todo="Write elsewhere."
+    )
 
 
 def _cannot_write(folder: Path, fault: OSError) -> Problem:
@@ -161,5 +179,5 @@ def _cannot_write(folder: Path, fault: OSError) -> Problem:
         where=str(folder),
         found=f"a folder that cannot be written ({fault.strerror or type(fault).__name__})",
         expected="a folder in which files can be made",
-        todo="Check its permissions and the space left, or choose another with -o.",
+        todo="Check its permissions and the space left, or write elsewhere.",
     )

@@ -3,16 +3,17 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Mapping, Sequence
-from dataclasses import fields
-from typing import Any, TypeVar, cast, get_args
+from collections.abc import Iterator, Mapping
+from dataclasses import dataclass
+from typing import Any, Literal
+
+from pydantic import ConfigDict, TypeAdapter, ValidationError
 
 from tcplan.errors import InputError, Problem
 from tcplan.material.model import material_from_dict
 from tcplan.names import shown
-from tcplan.network import Leg, network_from_tree
+from tcplan.network import Leg, legs, network_from_tree
 from tcplan.plan import (
-    SCHEMA,
     Floor,
     LimitRecord,
     Nominal,
@@ -26,96 +27,99 @@ from tcplan.plan import (
 )
 from tcplan.toml_input import shape_problems
 
-PLAN_KEYS = (
-    "schema",
-    "tcplan",
-    "brief",
-    "range",
-    "target",
-    "limit",
-    "materials",
-    "floor",
-    "chosen",
-    "options",
-    "notes",
-)
-OPTION_KEYS = (
-    "id",
-    "role",
-    "arrangement",
-    "network",
-    "tree",
-    "legs",
-    "nominal",
-    "worst_case",
-    "proof",
-    "verdict",
-)
-LEG_KEYS = ("id", "material", "ohms", "share", "squares")
 
-T = TypeVar("T")
+@dataclass(frozen=True, slots=True)
+class _LegRow:
+    id: str
+    material: str
+    ohms: float
+    share: float
+    squares: float | None
 
 
-def _keys(data: Any, names: Sequence[str], where: str) -> dict[str, Any]:
-    """Return data as a dict that holds exactly these names."""
-    if not isinstance(data, Mapping):
-        raise InputError(Problem(where=where, found=type(data).__name__, expected="a table of keys"))
-    wrong = [
-        *(Problem(where=where, found=f"no {n}", expected=f"the key {n}") for n in names if n not in data),
-        *(Problem(where=where, found=shown(n), expected="no other key") for n in data if n not in names),
-    ]
-    if wrong:
-        raise InputError(wrong)
-    return dict(data)
+@dataclass(frozen=True, slots=True)
+class _OptionRow:
+    id: str
+    role: str
+    arrangement: str
+    network: str
+    tree: dict[str, Any]
+    legs: list[_LegRow]
+    nominal: Nominal
+    worst_case: WorstCase | None
+    proof: Proof
+    verdict: Verdict
 
 
-def _record(kind: type[T], data: Any, where: str) -> T:
-    """Return a record read from untrusted data, every mistake reported with its place."""
-    from pydantic import TypeAdapter, ValidationError
+@dataclass(frozen=True, slots=True)
+class _PlanRow:
+    __pydantic_config__ = ConfigDict(allow_inf_nan=False)
+    schema: Literal[1]
+    tcplan: str
+    brief: dict[str, Any]
+    range: RangeRecord
+    target: TargetRecord
+    limit: LimitRecord
+    materials: dict[str, dict[str, Any]]
+    floor: Floor
+    chosen: str
+    options: list[_OptionRow]
+    notes: list[str]
 
-    content = _keys(data, [entry.name for entry in fields(cast("Any", kind))], where)
-    try:
-        return TypeAdapter(kind).validate_python(content)
-    except ValidationError as error:
-        raise InputError(shape_problems(error.errors(include_url=False), kind, where)) from None
 
-
-def _option(data: Any, where: str) -> Option:
-    """Return one option; the derived keys (arrangement, network, share) are made anew."""
-    names = [
-        "id",
-        "role",
-        "arrangement",
-        "network",
-        "tree",
-        "legs",
-        "nominal",
-        "worst_case",
-        "proof",
-        "verdict",
-    ]
-    content = _keys(data, names, where)
-    rows = [
-        _keys(row, ["id", "material", "ohms", "share", "squares"], f"{where}.legs") for row in content["legs"]
-    ]
-    by_id = {row["id"]: Leg(material=row["material"], ohms=row["ohms"]) for row in rows}
-    worst = content["worst_case"]
-    if content["verdict"] not in get_args(Verdict):
+def _option(row: _OptionRow, where: str) -> Option:
+    """Return one option; what can be derived (arrangement, network, shares) is made anew."""
+    by_id = {leg.id: Leg(material=leg.material, ohms=leg.ohms) for leg in row.legs}
+    network = network_from_tree(row.tree, by_id)
+    if legs(network) != tuple(by_id.values()):
         raise InputError(
-            Problem(
-                where=f"{where}.verdict", found=shown(content["verdict"]), expected=str(get_args(Verdict))
-            )
+            Problem(where=f"{where}.tree", found="legs in another order", expected="each leg of legs, once")
         )
     return Option(
-        id=content["id"],
-        role=content["role"],
-        network=network_from_tree(content["tree"], by_id),
-        squares=tuple(row["squares"] for row in rows),
-        nominal=_record(Nominal, content["nominal"], f"{where}.nominal"),
-        worst_case=_record(WorstCase, worst, f"{where}.worst_case") if worst is not None else None,
-        proof=_record(Proof, content["proof"], f"{where}.proof"),
-        verdict=content["verdict"],
+        id=row.id,
+        role=row.role,
+        network=network,
+        squares=tuple(leg.squares for leg in row.legs),
+        nominal=row.nominal,
+        worst_case=row.worst_case,
+        proof=row.proof,
+        verdict=row.verdict,
     )
+
+
+def _checked_rows(data: Any) -> _PlanRow:
+    # As JSON text: in its strict reading "12" is no number and true is not 1, yet lists are tuples.
+    try:
+        return TypeAdapter(_PlanRow).validate_json(json.dumps(data), strict=True)
+    except ValidationError as error:
+        raise InputError(shape_problems(error.errors(include_url=False), _PlanRow, "plan")) from None
+
+
+def _unknown_keys(data: Any, known: Any, where: str) -> Iterator[Problem]:
+    """Yield every key of ``data`` that the plan, written again, does not have."""
+    if isinstance(data, Mapping) and isinstance(known, Mapping):
+        for key, value in data.items():
+            if key not in known:
+                yield Problem(where=where, found=f"the unknown key {shown(key)}", expected="no other key")
+            else:
+                yield from _unknown_keys(value, known[key], f"{where}.{key}")
+    elif isinstance(data, list) and isinstance(known, (list, tuple)):
+        for n, (value, other) in enumerate(zip(data, known, strict=False), 1):
+            yield from _unknown_keys(value, other, f"{where}[{n}]")
+
+
+def _agreement(plan: Plan) -> Iterator[Problem]:
+    """Yield what contradicts itself inside a plan."""
+    if plan.chosen not in {option.id for option in plan.options}:
+        yield Problem(where="plan.chosen", found=shown(plan.chosen), expected="the id of an option")
+    for option in plan.options:
+        for leg in legs(option.network):
+            if leg.material not in plan.by_name:
+                yield Problem(
+                    where=f"plan.options {option.id}",
+                    found=shown(leg.material),
+                    expected="a material of the plan",
+                )
 
 
 def plan_from_dict(data: Any) -> Plan:
@@ -124,42 +128,38 @@ def plan_from_dict(data: Any) -> Plan:
     Raises
     ------
     InputError
-        When a key is missing, unknown or of the wrong kind.
+        When a key is missing, unknown or of the wrong kind, or the plan contradicts itself.
     """
-    names = [
-        "schema",
-        "tcplan",
-        "brief",
-        "range",
-        "target",
-        "limit",
-        "materials",
-        "floor",
-        "chosen",
-        "options",
-        "notes",
-    ]
-    content = _keys(data, names, "plan")
-    if content["schema"] != SCHEMA:
-        raise InputError(Problem(where="plan.schema", found=repr(content["schema"]), expected=str(SCHEMA)))
-    return Plan(
-        tcplan=content["tcplan"],
-        brief=content["brief"],
-        range=_record(RangeRecord, content["range"], "plan.range"),
-        target=_record(TargetRecord, content["target"], "plan.target"),
-        limit=_record(LimitRecord, content["limit"], "plan.limit"),
-        materials=tuple(material_from_dict(entry) for entry in content["materials"].values()),
-        floor=_record(Floor, content["floor"], "plan.floor"),
-        chosen=content["chosen"],
-        options=tuple(_option(row, f"plan.options[{i}]") for i, row in enumerate(content["options"])),
-        notes=tuple(content["notes"]),
+    rows = _checked_rows(data)
+    plan = Plan(
+        tcplan=rows.tcplan,
+        brief=rows.brief,
+        range=rows.range,
+        target=rows.target,
+        limit=rows.limit,
+        materials=tuple(material_from_dict(entry) for entry in rows.materials.values()),
+        floor=rows.floor,
+        chosen=rows.chosen,
+        options=tuple(_option(row, f"plan.options[{n}]") for n, row in enumerate(rows.options, 1)),
+        notes=tuple(rows.notes),
     )
+    problems = (*_unknown_keys(data, plan.to_dict(), "plan"), *_agreement(plan))
+    if problems:
+        raise InputError(problems)
+    return plan
 
 
 def read_plan(text: str) -> Plan:
-    """Return the plan that the text of a plan.json holds."""
+    """Return the plan that the text of a plan.json holds.
+
+    Raises
+    ------
+    InputError
+        When it is not JSON, or not a plan.
+    """
     try:
         data = json.loads(text)
-    except ValueError as error:
-        raise InputError(Problem(where="plan", found=f"not JSON ({error})", expected="a plan.json")) from None
+    except (ValueError, RecursionError) as error:
+        found = f"not JSON ({shown(str(error))[1:-1]})"
+        raise InputError(Problem(where="plan", found=found, expected="the content of a plan.json")) from None
     return plan_from_dict(data)

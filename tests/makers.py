@@ -63,9 +63,7 @@ def by_name(*materials: Material) -> dict[str, Material]:
 
 
 def six_films() -> dict[str, Material]:
-    return by_name(
-        *(film(n, a, b, value_percent=s, tc1_spread_ppm=u) for n, a, b, s, u in SIX_FILMS)
-    )
+    return by_name(*(film(n, a, b, value_percent=s, tc1_spread_ppm=u) for n, a, b, s, u in SIX_FILMS))
 
 
 def random_films(seed: int, count: int) -> dict[str, Material]:

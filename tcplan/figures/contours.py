@@ -32,9 +32,7 @@ class PeakDrift:
             [ppm/K], [ppm/K^2]; of one shape.
         """
         a, b = np.asarray(tc1, dtype=np.float64), np.asarray(tc2, dtype=np.float64)
-        at_ends = np.maximum(
-            np.abs(self.cold * (a + b * self.cold)), np.abs(self.hot * (a + b * self.hot))
-        )
+        at_ends = np.maximum(np.abs(self.cold * (a + b * self.cold)), np.abs(self.hot * (a + b * self.hot)))
         bent = b != 0.0
         vertex = np.divide(-a, 2.0 * b, out=np.zeros_like(a + b), where=bent)
         inside = bent & (vertex > self.cold) & (vertex < self.hot)

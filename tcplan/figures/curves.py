@@ -102,40 +102,39 @@ def temperatures(plan: Plan) -> FloatArray:
 # --- limits -----------------------------------------------------------------------------------
 
 
-def bounds(plan: Plan) -> tuple[Bound, ...]:
-    """Return every limit of the goal as a bound on the drift."""
-    return tuple(_bound(plan, limit) for limit in plan.brief["goal"]["limits"])
+def bounds(plan: Plan, held: Curve) -> tuple[Bound, ...]:
+    """Return every limit of the goal as a bound on the drift.
+
+    Parameters
+    ----------
+    plan : Plan
+    held : callable
+        The drift that is held against them: a band may lie at any height, so it is laid around it.
+    """
+    return tuple(_bound(plan, limit, held) for limit in plan.brief["goal"]["limits"])
 
 
-def _bound(plan: Plan, limit: dict[str, Any]) -> Bound:
-    kind = limit["kind"]
+def _bound(plan: Plan, limit: dict[str, Any], held: Curve) -> Bound:
+    kind, over = limit["kind"], plan.range
     amount = limit["ppm_per_K" if kind in ("chord_tcr", "box_tcr") else "ppm"] * 1e-6
-    at = np.array([plan.range.low_degC, plan.range.high_degC])
+    at, middle = np.array([over.low_degC, over.high_degC]), 0.0
     if kind == "mask":
-        at, upper = _mask_corners(plan, limit["windows"])
+        at, half = _mask_corners(plan, limit["windows"])
     elif kind == "chord_tcr":
-        at = np.array([plan.range.low_degC, plan.range.reference_degC, plan.range.high_degC])
-        upper = amount * np.abs(at - plan.range.reference_degC)
+        at = np.array([over.low_degC, over.reference_degC, over.high_degC])
+        half = amount * np.abs(at - over.reference_degC)
     elif kind == "drift":
-        upper = np.full(2, amount)
+        half = np.full(2, amount)
     else:
-        half = 0.5 * amount * ((at[1] - at[0]) if kind == "box_tcr" else 1.0)
-        middle = _middle(plan)
-        return Bound(
-            kind=kind,
-            degC=at,
-            lower=np.full(2, middle - half),
-            upper=np.full(2, middle + half),
-            amount=amount,
-        )
-    return Bound(kind=kind, degC=at, lower=-upper, upper=upper, amount=amount)
+        middle = _middle(plan, held)
+        half = np.full(2, 0.5 * amount * ((over.high_degC - over.low_degC) if kind == "box_tcr" else 1.0))
+    return Bound(kind=kind, degC=at, lower=middle - half, upper=middle + half, amount=amount)
 
 
-def _middle(plan: Plan) -> float:
-    """Return the middle of the judged curve: a band may lie at any height, so it goes with it."""
-    worst = worst_drift(plan) if plan.limit.judge == "worst-case" else None
+def _middle(plan: Plan, held: Curve) -> float:
+    """Return the middle between the highest and the lowest point of a curve."""
     splits = _splits(plan, used_materials(plan.best.network))
-    found = extremes(worst or chosen_drift(plan), panels(*ends(plan), splits))
+    found = extremes(held, panels(*ends(plan), splits))
     return 0.5 * (found.low.value + found.high.value)
 
 

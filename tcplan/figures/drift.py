@@ -88,27 +88,25 @@ def draw_drift(ax: Axes, residual_ax: Axes, plan: Plan) -> DriftArtists:
     DriftArtists
     """
     T = temperatures(plan)
-    limits = bounds(plan)
+    own, worst = chosen_drift(plan), worst_drift(plan)
     singles = {material.name: material_drift(plan, material.name)(T) for material in plan.materials}
-    own = chosen_drift(plan)
-    upper = _unit([*singles.values(), own(T)])
-    material_lines, others = _draw_singles(ax, plan, celsius(T), singles, upper)
-    (chosen,) = ax.plot(
-        celsius(T), own(T) * upper.factor, color=CHOSEN, lw=2.8, zorder=5, label=f"{plan.chosen} (chosen)"
-    )
-    low, high = _view([*singles.values(), own(T)])
-    upper_limits = _draw_limits(ax, limits, upper, (low, high))
-    _finish(ax, plan, upper, (low, high), "Each material alone, and the chosen option")
+    limits = bounds(plan, own)
+    view = _view([*singles.values(), own(T)], limits)
+    unit = _unit(view)
+    material_lines, others = _draw_singles(ax, plan, celsius(T), singles, unit)
+    (chosen,) = ax.plot(celsius(T), own(T) * unit.factor, color=CHOSEN, lw=2.8, zorder=5)
+    chosen.set_label(f"{plan.chosen} (chosen)")
+    upper_limits = _draw_limits(ax, limits, unit, view)
+    _finish(ax, plan, unit, view, "Each material alone, and the chosen option")
     ax.set_xlabel("")
     ax.tick_params(labelbottom=False)
 
-    worst = worst_drift(plan)
-    curves = [own(T), *([worst(T)] if worst else [])]
-    low, high = _view(curves, limits)
-    lower = _unit([np.array([low, high])])
-    residual, worst_line, peaks = _draw_residual(residual_ax, plan, T, (own, worst), lower)
-    lower_limits = _draw_limits(residual_ax, limits, lower, (low, high))
-    _finish(residual_ax, plan, lower, (low, high), f"The chosen option at its own scale: {plan.chosen}")
+    limits = bounds(plan, worst if worst and plan.limit.judge == "worst-case" else own)
+    view = _view([own(T), *([worst(T)] if worst else [])], limits)
+    unit = _unit(view)
+    residual, worst_line, peaks = _draw_residual(residual_ax, plan, T, (own, worst), unit)
+    lower_limits = _draw_limits(residual_ax, limits, unit, view)
+    _finish(residual_ax, plan, unit, view, f"The chosen option at its own scale: {plan.chosen}")
     references = tuple(_draw_reference(part, plan) for part in (ax, residual_ax))
     return DriftArtists(
         materials=material_lines,
@@ -189,7 +187,7 @@ def _mark(ax: Axes, curve: Curve, at_degC: float, unit: _Unit, *, filled: bool) 
         markeredgewidth=1.3,
         zorder=6,
         clip_on=False,
-        label="its verified peak",
+        label="its verified peak" if filled else "where it is judged",
     )
     return mark
 
@@ -203,11 +201,18 @@ def _draw_limits(
         lower, upper = limit.lower * unit.factor, limit.upper * unit.factor
         label = _limit_text(limit, unit)
         if not _visible(limit, view):
-            label += ",\noff this scale"
+            label += ",\nbeyond this scale"
         if limit.kind in ("band", "box_tcr"):
             drawn.append(
                 ax.fill_between(
-                    limit.degC, lower, upper, facecolor=LIMIT_FILL, edgecolor=LIMIT, lw=0.8, zorder=1, label=label
+                    limit.degC,
+                    lower,
+                    upper,
+                    facecolor=LIMIT_FILL,
+                    edgecolor=LIMIT,
+                    lw=0.8,
+                    zorder=1,
+                    label=label,
                 )
             )
             continue
@@ -231,7 +236,7 @@ def _limit_text(limit: Bound, unit: _Unit) -> str:
         "drift": f"limit \N{PLUS-MINUS SIGN}{as_drift}",
         "band": f"limit, a band of {as_drift}",
         "box_tcr": f"limit, box TCR {as_slope}",
-        "chord_tcr": f"limit, chord TCR {as_slope}\n(judged at the ends)",
+        "chord_tcr": f"limit, chord TCR \N{PLUS-MINUS SIGN}{as_slope}\n(judged at the ends)",
         "mask": "limit, mask",
     }[limit.kind]
 
@@ -242,20 +247,22 @@ def _draw_reference(ax: Axes, plan: Plan) -> Line2D:
     return ax.axvline(at, color=OTHER, lw=0.8, linestyle=":", zorder=1, label=label)
 
 
-def _unit(drifts: Sequence[FloatArray]) -> _Unit:
-    """Return the unit that reads best for the largest of these drifts."""
-    largest = max(float(np.max(np.abs(drift))) for drift in drifts)
-    return _Unit(name="%", factor=1e2) if largest * 1e6 >= PERCENT_FROM else _Unit(name="ppm", factor=1e6)
+def _unit(view: tuple[float, float]) -> _Unit:
+    """Return the unit that reads best for the drifts in view."""
+    percent = max(abs(drift) for drift in view) * 1e6 >= PERCENT_FROM
+    return _Unit(name="%", factor=1e2) if percent else _Unit(name="ppm", factor=1e6)
 
 
-def _view(drifts: Sequence[FloatArray], limits: Iterable[Bound] = ()) -> tuple[float, float]:
+def _view(drifts: Sequence[FloatArray], limits: Iterable[Bound]) -> tuple[float, float]:
     """Return the lowest and highest drift to show, with a margin; limits as far as they fit."""
     values = np.concatenate([np.zeros(1), *drifts])
-    reach = max(float(np.max(np.abs(values))), LEAST_HEIGHT * 1e-6)
+    reach = FITS * float(np.max(np.abs(values)))
+    if reach < LEAST_HEIGHT * 1e-6:  # rounding: only a limit can set the scale
+        reach = np.inf
     corners = np.concatenate([np.zeros(1), *(np.concatenate([b.lower, b.upper]) for b in limits)])
-    values = np.concatenate([values, corners[np.abs(corners) <= FITS * reach]])
+    values = np.concatenate([values, corners[np.abs(corners) <= reach]])
     low, high = float(values.min()), float(values.max())
-    margin = 0.07 * max(high - low, 2.0 * LEAST_HEIGHT * 1e-6)
+    margin = max(0.07 * (high - low), LEAST_HEIGHT * 1e-6)
     return low - margin, high + margin
 
 
@@ -265,6 +272,7 @@ def _finish(ax: Axes, plan: Plan, unit: _Unit, view: tuple[float, float], title:
     ax.set_ylim(view[0] * unit.factor, view[1] * unit.factor)
     ax.set_xlabel("Temperature (\N{DEGREE SIGN}C)")
     ax.set_ylabel(f"Drift ({unit.name})")
+    ax.yaxis.set_label_coords(-0.13, 0.5)
     ax.set_title(title, loc="left", fontsize=TEXT_SIZE, parse_math=False)
     for axis in (ax.xaxis, ax.yaxis):
         axis.set_major_formatter(FuncFormatter(lambda number, _: number_text(number)))

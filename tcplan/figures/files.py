@@ -26,7 +26,10 @@ def figure_files(plan: Plan) -> dict[str, bytes]:
     """
     found: dict[str, bytes] = {}
     with figure_style():
-        for name, figure in (("drift", drift_figure(plan)), ("slope-curvature", slope_curvature_figure(plan))):
+        for name, figure in (
+            ("drift", drift_figure(plan)),
+            ("slope-curvature", slope_curvature_figure(plan)),
+        ):
             found[f"{name}.svg"] = _svg(figure)
             found[f"{name}.png"] = _png(figure)
     return found
@@ -35,8 +38,8 @@ def figure_files(plan: Plan) -> dict[str, bytes]:
 def drift_figure(plan: Plan) -> Figure:
     """Return the drift figure, its two panels one above the other."""
     figure = Figure(figsize=DRIFT_INCHES)
-    ax = figure.add_axes((0.095, 0.475, 0.615, 0.485))
-    residual_ax = figure.add_axes((0.095, 0.08, 0.615, 0.325))
+    ax = figure.add_axes((0.11, 0.475, 0.6, 0.485))
+    residual_ax = figure.add_axes((0.11, 0.08, 0.6, 0.325))
     draw_drift(ax, residual_ax, plan)
     return figure
 
@@ -44,7 +47,7 @@ def drift_figure(plan: Plan) -> Figure:
 def slope_curvature_figure(plan: Plan) -> Figure:
     """Return the TC1-TC2 figure; its axes leave room at the right when an enlarged part goes there."""
     figure = Figure(figsize=PLANE_INCHES)
-    ax = figure.add_axes((0.095, 0.29, 0.405 if is_crowded(plan) else 0.88, 0.66))
+    ax = figure.add_axes((0.095, 0.285, 0.405 if is_crowded(plan) else 0.88, 0.66))
     draw_slope_curvature(ax, plan)
     return figure
 

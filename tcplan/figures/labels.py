@@ -15,6 +15,7 @@ HEIGHT = 1.25  # of a line of text, in sizes
 MARKER = 4.0  # points from the middle of a marker to its edge
 DISTANCES = (7.0, 13.0, 21.0, 31.0, 43.0)  # points; far names get a line to their point
 NEAR = 8.0
+CLEAR = 6.0  # points between a name and the marker of another
 OUTSIDE = 1e6  # what it costs to leave the axes [points^2]
 DIRECTIONS = tuple(math.radians(45.0 * step) for step in (0, 4, 1, 3, 7, 5, 2, 6))
 
@@ -33,6 +34,10 @@ class Box:
         width = min(self.right, other.right) - max(self.left, other.left)
         height = min(self.top, other.top) - max(self.bottom, other.bottom)
         return width * height if width > 0.0 and height > 0.0 else 0.0
+
+    def grown(self, by: float) -> Box:
+        """Return the rectangle with a margin around it."""
+        return Box(self.left - by, self.bottom - by, self.right + by, self.top + by)
 
     def inside(self, other: Box) -> bool:
         """Whether this rectangle lies wholly in the other."""
@@ -109,23 +114,29 @@ def place_names(
     """
     boxes, written = list(taken), []
     for name in names:
-        offset, box = _best(ax, name, boxes)
-        if name.needed or covered(box, boxes) == 0.0:
+        at = marker_box(ax, name.x, name.y)
+        # First where no other marker is near, as a name there could be taken for its own.
+        apart = [box.grown(CLEAR) for box in taken if box != at]
+        offset, box, free = _best(ax, name, [*boxes, *apart])
+        if not free:
+            offset, box, free = _best(ax, name, boxes)
+        if name.needed or free:
             boxes.append(box)
             written.append(_write(ax, name, offset))
     return tuple(written), boxes
 
 
-def _best(ax: Axes, name: Name, boxes: Sequence[Box]) -> tuple[tuple[float, float], Box]:
-    """Return the first place that covers nothing, else the one that covers least."""
+def _best(ax: Axes, name: Name, boxes: Sequence[Box]) -> tuple[tuple[float, float], Box, bool]:
+    """Return the first place that covers nothing, else the one that covers least, and which it is."""
     page = page_box(ax)
     tried: list[tuple[float, tuple[float, float], Box]] = []
     for offset, box in _places(ax, name):
         cost = covered(box, boxes) + (0.0 if box.inside(page) else OUTSIDE)
         if cost == 0.0:
-            return offset, box
+            return offset, box, True
         tried.append((cost, offset, box))
-    return min(tried, key=lambda trial: trial[0])[1:]
+    _, offset, box = min(tried, key=lambda trial: trial[0])
+    return offset, box, False
 
 
 def _places(ax: Axes, name: Name) -> Iterator[tuple[tuple[float, float], Box]]:
@@ -161,6 +172,7 @@ def _write(ax: Axes, name: Name, offset: tuple[float, float]) -> Annotation:
         color=name.colour,
         zorder=7,
         parse_math=False,
+        bbox={"facecolor": "white", "edgecolor": "none", "pad": 0.5, "alpha": 0.7},
         arrowprops={"arrowstyle": "-", "lw": 0.5, "color": name.colour, "shrinkA": 0, "shrinkB": 3}
         if far
         else None,

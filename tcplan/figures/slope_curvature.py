@@ -43,8 +43,9 @@ Point = tuple[float, float]
 View = tuple[Point, Point]
 """Two opposite corners."""
 
-CROWDED = 0.2  # of the view: options closer together than this get a view of their own
+CROWDED = 0.33  # of the view: options closer together than this get a view of their own
 NEARBY = 5.0  # options up to this many times the peak drift of the chosen one are shown there
+LEAST = 1.0  # ppm: what is nearer to the target than this lies on it
 MOST_CONTOURS = 4
 SHORT = 84.0  # points for a name inside the axes
 INSET = (1.26, 0.0, 0.914, 1.0)  # beside the axes, where it covers nothing
@@ -125,16 +126,12 @@ def draw_slope_curvature(ax: Axes, plan: Plan) -> SlopeCurvatureArtists:
     if near_view is not None:
         inset = ax.inset_axes(INSET)
         near = _draw_plane(inset, scene, near_view, None)
-        (left, bottom), (right, top) = near_view
-        frame = Rectangle(
-            (left, bottom), right - left, top - bottom, facecolor="none", edgecolor=CHOSEN, lw=0.8, zorder=6
-        )
-        ax.add_patch(frame)
-        ax.set_title("All materials; the frame is enlarged at the right", loc="left", fontsize=TEXT_SIZE)
+        frame = _draw_frame(ax, near_view)
+        ax.set_title("All materials", loc="left", fontsize=TEXT_SIZE)
         inset.set_title("Options near the target", loc="left", fontsize=TEXT_SIZE)
     for part in (ax, *([inset] if inset else [])):
         part.set_xlabel(f"TC1 at {number_text(plan.range.reference_degC)} \N{DEGREE SIGN}C (ppm/K)")
-    ax.set_ylabel("TC2 (ppm/K\N{SUPERSCRIPT TWO})")
+        part.set_ylabel("TC2 (ppm/K\N{SUPERSCRIPT TWO})")
     legend = _draw_legend(ax, scene, plan, near or whole)
     return SlopeCurvatureArtists(whole=whole, near=near, inset=inset, frame=frame, legend=legend)
 
@@ -170,9 +167,9 @@ def _whole_view(scene: _Scene) -> View:
 def _near_view(scene: _Scene) -> View | None:
     """Return the view of the composite options near the target; None when the whole shows them well."""
     composite = [p for name, (kind, p) in scene.options.items() if kind != "single" or name == scene.chosen]
-    reach = NEARBY * scene.distance(scene.options[scene.chosen][1])
+    reach = NEARBY * max(scene.distance(scene.options[scene.chosen][1]), LEAST)
     near = [point for point in composite if scene.distance(point) <= reach]
-    if reach == 0.0 or not near:
+    if max((scene.distance(point) for point in near), default=0.0) < LEAST:
         return None
     view, whole = _view([*near, scene.target], scene.peak), _whole_view(scene)
     parts = [(view[1][n] - view[0][n]) / (whole[1][n] - whole[0][n]) for n in (0, 1)]
@@ -184,7 +181,7 @@ def _view(points: Sequence[Point], peak: PeakDrift) -> View:
     low, high = np.min(points, axis=0), np.max(points, axis=0)
     middle, half = 0.5 * (low + high), 0.5 * (high - low)
     per_unit = peak.of(np.array([1.0, 0.0]), np.array([0.0, 1.0]))
-    least = max(0.12 * float(np.max(half * per_unit)), 1e-3) / per_unit
+    least = max(0.12 * float(np.max(half * per_unit)), LEAST) / per_unit
     half = 1.3 * np.maximum(half, least)
     (left, bottom), (right, top) = (middle - half).tolist(), (middle + half).tolist()
     return (left, bottom), (right, top)
@@ -198,21 +195,38 @@ def _within(point: Point, view: View | None) -> bool:
 
 
 def _draw_plane(ax: Axes, scene: _Scene, view: View, elsewhere: View | None) -> PlaneArtists:
-    """Draw the plane as far as a view goes; what lies ``elsewhere`` is named there, not here."""
+    """Draw the plane as far as a view goes; options that lie ``elsewhere`` are drawn there, not here."""
     ax.set_xlim(view[0][0], view[1][0])
     ax.set_ylim(view[0][1], view[1][1])
     for axis in (ax.xaxis, ax.yaxis):
-        axis.set_major_locator(MaxNLocator(5))
+        axis.set_major_locator(MaxNLocator(5, steps=[1, 2, 2.5, 5, 10]))
         axis.set_major_formatter(FuncFormatter(lambda number, _: number_text(number)))
     for line in (ax.axhline, ax.axvline):
         line(0.0, color=FAINT, lw=0.8, zorder=0)
     drawn = PlaneArtists(hull=_draw_hull(ax, scene))
     drawn.materials = {name: _draw_material(ax, scene, name) for name in scene.materials}
-    drawn.options = {name: _draw_option(ax, scene, name) for name in scene.options}
-    (drawn.target,) = ax.plot(*([v] for v in scene.target), marker="+", ms=11, mew=1.4, color=CHOSEN, zorder=4)
+    drawn.options = {
+        name: _draw_option(ax, scene, name)
+        for name, (_, point) in scene.options.items()
+        if not _within(point, elsewhere)
+    }
+    if elsewhere is None:
+        (drawn.target,) = ax.plot(*([v] for v in scene.target), color=CHOSEN, zorder=4)
+        drawn.target.set(marker="+", markersize=11, markeredgewidth=1.4)
     drawn.names, taken = place_names(ax, _names(scene, view, elsewhere), _markers(ax, scene, view))
     _draw_contours(ax, scene, drawn, taken)
     return drawn
+
+
+def _draw_frame(ax: Axes, view: View) -> Rectangle:
+    """Draw the outline of the part that is enlarged."""
+    (left, bottom), (right, top) = view
+    frame = Rectangle(
+        (left, bottom), right - left, top - bottom, facecolor="none", edgecolor=CHOSEN, zorder=6
+    )
+    frame.set_linewidth(0.9)
+    ax.add_patch(frame)
+    return frame
 
 
 def _draw_hull(ax: Axes, scene: _Scene) -> Polygon:
@@ -231,14 +245,16 @@ def _draw_material(ax: Axes, scene: _Scene, name: str) -> Line2D:
 
 def _draw_option(ax: Axes, scene: _Scene, name: str) -> Line2D:
     kind, point = scene.options[name]
-    (line,) = ax.plot(*([v] for v in point), zorder=6 if name == scene.chosen else 5)
+    # A chosen single material is a disc behind the marker of that material.
+    over = 2.5 if kind == "single" else 6 if name == scene.chosen else 5
+    (line,) = ax.plot(*([v] for v in point), zorder=over)
     line.set(**_option_style(kind, chosen=name == scene.chosen))
     return line
 
 
 def _option_style(kind: str, *, chosen: bool) -> dict[str, object]:
     """Return the marker of an option: its shape is the arrangement, and the chosen one is filled."""
-    size = 11.0 if kind == "single" and not chosen else 8.5 if chosen else 7.0
+    size = (12.0 if chosen else 11.0) if kind == "single" else (8.5 if chosen else 7.0)
     return {
         "linestyle": "none",
         "marker": OPTION_MARKERS[kind],
@@ -262,7 +278,12 @@ def _names(scene: _Scene, view: View, elsewhere: View | None) -> list[Name]:
     for name in order:
         x, y = scene.materials[name]
         wanted.append(Name(x=x, y=y, text=short[name], colour="#333333", needed=name in scene.look))
-    return [n for n in wanted if _within((n.x, n.y), view) and not _within((n.x, n.y), elsewhere)]
+    shown = [n for n in wanted if _within((n.x, n.y), view) and not _within((n.x, n.y), elsewhere)]
+    if elsewhere is not None:
+        (left, bottom), (right, top) = elsewhere
+        text = "enlarged at the right"
+        shown.append(Name(x=0.5 * (left + right), y=0.5 * (bottom + top), text=text, colour=CHOSEN))
+    return shown
 
 
 def _markers(ax: Axes, scene: _Scene, view: View) -> list[Box]:
@@ -324,7 +345,7 @@ def _draw_legend(ax: Axes, scene: _Scene, plan: Plan, shown: PlaneArtists) -> Le
     handles.append(Line2D([], [], linestyle="none", marker="o", color=OTHER, ms=6, label="material (named)"))
     flat = scene.target == (0.0, 0.0)
     tc1, tc2 = map(number_text, scene.target)
-    wanted = f"wanted: TC1 {tc1} ppm/K, TC2 {tc2} ppm/K\N{SUPERSCRIPT TWO}"
+    wanted = f"wanted: TC1 {tc1} ppm/K,\nTC2 {tc2} ppm/K\N{SUPERSCRIPT TWO}"
     handles.append(
         Line2D(
             [], [], linestyle="none", marker="+", ms=11, mew=1.4, color=CHOSEN,
@@ -336,7 +357,7 @@ def _draw_legend(ax: Axes, scene: _Scene, plan: Plan, shown: PlaneArtists) -> Le
         handles.append(hull)
     low, high = number_text(plan.range.low_degC), number_text(plan.range.high_degC)
     if shown.contours:
-        text = f"peak drift of a quadratic law, {low} to {high} \N{DEGREE SIGN}C"
+        text = f"peak drift of a quadratic law,\n{low} to {high} \N{DEGREE SIGN}C"
         handles.append(Line2D([], [], color=CONTOUR, lw=0.8, linestyle=(0, (4, 2)), label=text))
     legend = ax.legend(
         handles=handles,

@@ -74,19 +74,23 @@ def wanted_text(plan: Plan) -> str:
 
 def figure_text(plan: Plan) -> str:
     """Return what the figures in ppm are, for the kind of limit that was given."""
-    over, arm = plan.range, longer_arm_K(plan)
+    span, arm = plan.range.high_degC - plan.range.low_degC, longer_arm_K(plan)
     words = {
         "none": "the peak drift over the whole range",
         "drift": "the peak drift over the whole range",
         "band": "the band, highest minus lowest drift",
-        "box_tcr": f"the band; divided by {numbers.stated(over.high_degC - over.low_degC)} K it is the box TCR",
+        "box_tcr": f"the band; divided by {numbers.stated(span)} K it is the box TCR",
         "chord_tcr": f"the larger chord TCR times {numbers.stated(arm)} K, the longer arm",
         "mask": "the drift, scaled to the tightest line of the mask",
     }
     first = plan.limit.kind.split(" and ")[0]
-    several = "; of several limits, each on the scale of this one, the largest" if first != plan.limit.kind else ""
+    several = (
+        "; of several limits, each on the scale of this one, the largest" if first != plan.limit.kind else ""
+    )
     scale = plan.limit.drift_ppm
-    against = f", against {numbers.stated(scale)} ppm" if scale is not None and plan.limit.kind != "drift" else ""
+    against = (
+        f", against {numbers.stated(scale)} ppm" if scale is not None and plan.limit.kind != "drift" else ""
+    )
     return f"Figures are {words[first]}{several}{against}."
 
 

@@ -1,7 +1,7 @@
 """The formula of a composite, as text and as LaTeX, from its tree and the laws of its materials.
 
-No sympy is loaded for polynomials and thermistors: R(T) is written with one ratio r(T) a material, each defined
-on a line of its own about the reference of the brief.
+No sympy is loaded for polynomials and thermistors: R(T) is written with one ratio r(T) a material,
+each defined on a line of its own about the reference of the brief.
 """
 
 from __future__ import annotations

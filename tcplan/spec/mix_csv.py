@@ -34,7 +34,11 @@ def mix_csv(plan: Plan) -> str:
     writer = csv.writer(stream)
     writer.writerow(COLUMNS)
     rows = zip(
-        leg_names(len(option.squares)), legs(option.network), shares(option.network), option.squares, strict=True
+        leg_names(len(option.squares)),
+        legs(option.network),
+        shares(option.network),
+        option.squares,
+        strict=True,
     )
     for name, leg, share, squares in rows:
         tc1, tc2 = plan.by_name[leg.material].referred_taylor(reference, 2)

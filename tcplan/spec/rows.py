@@ -124,7 +124,9 @@ def figure_rows(plan: Plan, option: Option) -> tuple[tuple[str, str], ...]:
         ("box TCR, nominal", f"{numbers.nominal(nominal.box_tcr_ppm_per_K, per_K)} ppm/K"),
     ]
     rows += [
-        (f"chord TCR, {end}, nominal", f"{numbers.nominal(tcr, per_K)} ppm/K") for end, tcr in chords if tcr is not None
+        (f"chord TCR, {end}, nominal", f"{numbers.nominal(tcr, per_K)} ppm/K")
+        for end, tcr in chords
+        if tcr is not None
     ]
     return tuple(rows)
 

@@ -120,7 +120,13 @@ def assumptions(plan: Plan) -> tuple[str, ...]:
     """Return what the figures assume, a sentence each."""
     rise = f" beyond the {numbers.stated(plan.range.rise_K)} K of rise" if plan.range.rise_K else ""
     left_out = NOT_INCLUDED.replace("self-heating", f"self-heating{rise}")
-    sentences = (figure_text(plan), wanted_text(plan), *_spreads(plan), f"Not included: {left_out}.", _designed(plan))
+    sentences = (
+        figure_text(plan),
+        wanted_text(plan),
+        *_spreads(plan),
+        f"Not included: {left_out}.",
+        _designed(plan),
+    )
     return tuple(sentence for sentence in (*sentences, _extrapolated(plan)) if sentence)
 
 
@@ -181,9 +187,9 @@ def floor_text(plan: Plan) -> str:
     bounds = {"nominal": floor.nominal_ppm, "worst case": floor.worst_case_ppm or 0.0}
     above = [f"{text} ppm {of}" for of, ppm in bounds.items() if (text := numbers.bound(ppm)) != "0"]
     if above:
-        said = f"no network of these materials is below {' and '.join(above)}"
+        said = f"No network of these materials is below {' and '.join(above)}"
     else:
-        said = "none above zero is proved for these materials"
+        said = "No floor above zero is proved for these materials"
     missing = "; worst case not stated" if floor.worst_case_ppm is None else ""
     return f"{said}{missing} ({floor.why})."
 
@@ -209,11 +215,19 @@ def proof_text(plan: Plan, option: Option) -> str:
         gap = numbers.nominal(proof.gap_ppm, None)
         return (
             f"Proved optimal among {option.arrangement} networks for these data, on {proof.of} figures and "
-            f"within the rules of the brief; gap {gap} ppm."
+            f"within the rules of the brief ({_rules(plan)}); gap {gap} ppm."
         )
+    above = f"below {numbers.bound(proof.lower_bound_ppm)} ppm {proof.of}"
     if option.role == "given":
-        return f"Not searched; no network of these materials is below {numbers.bound(proof.lower_bound_ppm)} ppm {proof.of}."
-    return f"Best found; no such network is below {numbers.bound(proof.lower_bound_ppm)} ppm {proof.of}."
+        return f"Given, not searched; no network of these materials is {above}."
+    return f"Best found; no such network is {above}."
+
+
+def _rules(plan: Plan) -> str:
+    rules = plan.brief["search"]
+    share = rules["min_share"]
+    least = f", shares of {numbers.percent(share)} or more" if share else ""
+    return f"at most {min(rules['max_materials'], rules['max_legs'])} chosen materials{least}"
 
 
 # --- the worst point, and centring --------------------------------------------------------------
@@ -260,4 +274,5 @@ def centring(plan: Plan, option: Option) -> str:
     left = numbers.nominal(option.nominal.centred_peak_ppm, spread)
     side = "above" if option.nominal.centring_ppm > 0 else "below"
     beside = "; the spread adds to it" if spread else ""
-    return f"With {at} made {offset} ppm {side} its target, R stays within +/-{left} ppm of it (nominal{beside})."
+    made = f"With {at} made {offset} ppm {side} its target"
+    return f"{made}, R stays within +/-{left} ppm of it (nominal{beside})."

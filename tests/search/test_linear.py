@@ -1,5 +1,7 @@
 """Series and parallel optima: the prototype's figures, brute force, and properties."""
 
+from itertools import combinations, pairwise
+
 import numpy as np
 import pytest
 from makers import brute_ratio, by_name, film, grid, need_of, over, random_films, six_films
@@ -47,10 +49,13 @@ def test_six_films_nominal(kind, names, ppm, digits):
 def test_six_films_shares():
     """METHODS 4: series pp 2/3, np 1/3; parallel conductances hi .101369, pp .824706, sp .073925."""
     series, parallel = best("series", six_films(), most=6)[0], best("parallel", six_films(), most=6)[0]
-    got = {leg.material: share for leg, share in zip(legs(series.network), shares(series.network), strict=True)}
+    got = {
+        leg.material: share for leg, share in zip(legs(series.network), shares(series.network), strict=True)
+    }
     assert got == pytest.approx({"pp": 2 / 3, "np": 1 / 3}, abs=1e-9)
     got = {
-        leg.material: share for leg, share in zip(legs(parallel.network), shares(parallel.network), strict=True)
+        leg.material: share
+        for leg, share in zip(legs(parallel.network), shares(parallel.network), strict=True)
     }
     assert got == pytest.approx({"hi": 0.101369, "pp": 0.824706, "sp": 0.073925}, abs=5e-7)
 
@@ -107,8 +112,6 @@ def test_pairs_against_brute_force_over_all_supports(kind, min_share):
 @pytest.mark.parametrize("kind", ["series", "parallel"])
 def test_three_of_nine_is_the_best_of_all_triples(kind):
     """Exact support: the optimum over each of the 84 triples, searched alone, is no better."""
-    from itertools import combinations
-
     films = random_films(3, 9)
     whole = best(kind, films, most=3)[0]
     singles = [
@@ -168,7 +171,10 @@ def test_every_goal_against_brute_force_on_two_films(kind, limit):
     coarse = np.linspace(0, 1, 4001)
     start = coarse[int(np.argmin([figure(s) for s in coarse]))]
     fine = minimize_scalar(
-        figure, bounds=(max(0, start - 1e-3), min(1, start + 1e-3)), method="bounded", options={"xatol": 1e-13}
+        figure,
+        bounds=(max(0, start - 1e-3), min(1, start + 1e-3)),
+        method="bounded",
+        options={"xatol": 1e-13},
     )
     option = best(kind, films, need_of(limit), most=2)[0]
     assert option.proof.figure_ppm == pytest.approx(fine.fun * 1e6, rel=2e-4)
@@ -182,7 +188,7 @@ def test_adding_a_material_never_worsens_the_optimum(kind):
     figures = [
         best(kind, {n: films[n] for n in names[:count]}, most=3)[0].proof.figure_ppm for count in range(2, 8)
     ]
-    assert all(later <= earlier * (1 + 1e-9) + 1e-9 for earlier, later in zip(figures, figures[1:], strict=False))
+    assert all(later <= earlier * (1 + 1e-9) + 1e-9 for earlier, later in pairwise(figures))
 
 
 @pytest.mark.parametrize("kind", ["series", "parallel"])
@@ -190,9 +196,7 @@ def test_scaling_the_target_changes_no_figure(kind):
     films = six_films()
     need = need_of()
     case = Case(materials=films, spreads={}, over=over(), need=need)
-    small, large = (
-        search_space(space(kind, films), need, films, ohms, 1)[0].network for ohms in (1.0, 1e6)
-    )
+    small, large = (search_space(space(kind, films), need, films, ohms, 1)[0].network for ohms in (1.0, 1e6))
     assert value(small) == pytest.approx(1.0, rel=1e-12)
     assert value(large) == pytest.approx(1e6, rel=1e-12)
     assert nominal_figure(small, case) == pytest.approx(nominal_figure(large, case), rel=1e-12)

@@ -22,7 +22,8 @@ def floor_of(films, need=None, figure=1.0, spreads=None):
 
 
 def test_films_of_falling_curvature():
-    """METHODS 5 (prototype): TC1 300 -250 120 -80, TC2 -.8 -.5 -.4 -.6: sandwich 3457.4 = the series optimum."""
+    """METHODS 5 (prototype): TC1 300 -250 120 -80, TC2 -.8 -.5 -.4 -.6: sandwich 3457.4 = the
+    series optimum."""
     rows = ((300, -0.8), (-250, -0.5), (120, -0.4), (-80, -0.6))
     films = by_name(*(film(f"f{k}", a, b) for k, (a, b) in enumerate(rows)))
     need = need_of()

@@ -12,7 +12,9 @@ from tcplan.verify.option import Case, check
 
 def case_of(materials, need=None, spread=True, floor_ppm=0.0):
     spreads = {n: m.spread for n, m in materials.items() if m.spread} if spread else {}
-    return Case(materials=materials, spreads=spreads, over=over(), need=need or need_of(), floor_ppm=floor_ppm)
+    return Case(
+        materials=materials, spreads=spreads, over=over(), need=need or need_of(), floor_ppm=floor_ppm
+    )
 
 
 @pytest.mark.parametrize("seed", range(12))

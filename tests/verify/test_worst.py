@@ -39,7 +39,8 @@ def brute_worst(network, materials, T, steps=9):
 
 
 # METHODS 4, six films, given mixes. The mix pp 2/3, np 1/3 by hand, at 150 degC, pp at 0.8 and TC1 -80, np at
-# 1.1 and TC1 +190 ppm/K: (0.8*2/3*(-1406.25) + 1.1/3*30000)/(0.9) = 11388.889 ppm. (The prototype's 11387.8 is of a
+# 1.1 and TC1 +190 ppm/K: (0.8*2/3*(-1406.25) + 1.1/3*30000)/(0.9) = 11388.889 ppm. (The prototype's
+# 11387.8 is of a
 # mix rounded to five digits.) 8898.83 and 8014.34 are for unrounded shares, known here to 4-5 digits.
 @pytest.mark.parametrize(
     ("network", "ppm", "digits"),
@@ -130,9 +131,7 @@ def test_a_reference_of_its_own_widens_the_law():
     a = worst_case(single, near, spreads(near), need_of()).judged.figure
     b = worst_case(single, far, spreads(far), need_of()).judged.figure
     T = grid(count=2)
-    by_hand = max(
-        abs((1 + k * (T[1] - 278.15)) / (1 + k * 20.0) - 1) for k in (3850e-6, 3950e-6)
-    )
+    by_hand = max(abs((1 + k * (T[1] - 278.15)) / (1 + k * 20.0) - 1) for k in (3850e-6, 3950e-6))
     assert b == pytest.approx(by_hand, rel=1e-9)
     assert a == pytest.approx(3950e-6 * 125, rel=1e-9)
 

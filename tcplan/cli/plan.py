@@ -1,0 +1,97 @@
+"""``tcplan plan``: the main job."""
+
+from __future__ import annotations
+
+import sys
+from pathlib import Path
+from typing import TYPE_CHECKING
+
+import click
+
+from tcplan.cli.exits import CANNOT_BE_MET, DONE, NOT_MET
+from tcplan.cli.talk import colourful, complain, say, say_json_text, width
+
+if TYPE_CHECKING:
+    from tcplan.brief import Brief
+    from tcplan.plan import Plan
+
+STDIN = "-"
+
+EXAMPLES = """\
+\b
+Examples:
+  tcplan plan brief.toml
+  tcplan plan brief.toml -o out --force
+  tcplan plan brief.toml --json | python -m json.tool
+  tcplan plan - -o out < brief.toml
+"""
+
+
+@click.command(
+    "plan", short_help="Find the mix for a brief, prove it, write the spec sheet.", epilog=EXAMPLES
+)
+@click.argument("brief")
+@click.option(
+    "-o", "--output", metavar="DIR", help="Folder to write to; NAME-plan for NAME.toml when not given."
+)
+@click.option("--force", is_flag=True, help="Replace files that exist.")
+@click.option("--json", "as_json", is_flag=True, help="Print plan.json; write files only with -o.")
+def command(brief: str, output: str | None, force: bool, as_json: bool) -> int:
+    """Find the mix of materials for BRIEF (a TOML file; - is stdin), check it and write the result.
+
+    Writes plan.json, mix.csv, spec.md and the figures drift and slope-curvature (SVG and PNG), all of
+    them or none. The options and the verdict go to stdout, everything else to stderr.
+
+    Exit code 0: the limit is met, or none was given. 1: not met, or not judged. 3: proved that no
+    network of these materials can meet it.
+    """
+    from tcplan.output import check_folder
+    from tcplan.workflow import PLAN_FILES, make_plan, write_plan
+
+    asked, folder = _read(brief), _folder(brief, output, as_json=as_json)
+    if folder is not None:
+        check_folder(folder, PLAN_FILES, force=force)
+    plan = make_plan(asked)
+    paths = write_plan(plan, folder, force=force) if folder is not None else ()
+    _show(plan, as_json=as_json)
+    if paths:
+        complain(f"wrote {len(paths)} files to {folder}: {', '.join(path.name for path in paths)}")
+    return _code(plan)
+
+
+def _read(brief: str) -> Brief:
+    from tcplan.brief import read_brief
+    from tcplan.toml_input import MAX_BYTES
+    from tcplan.workflow import brief_from_bytes
+
+    if brief == STDIN:
+        return brief_from_bytes(sys.stdin.buffer.read(MAX_BYTES + 1), Path())
+    return read_brief(Path(brief))
+
+
+def _folder(brief: str, output: str | None, *, as_json: bool) -> Path | None:
+    """Return where to write: the folder asked for, else one in the current folder named after the brief."""
+    if output is not None:
+        return Path(output)
+    if as_json:
+        return None
+    return Path("plan" if brief == STDIN else f"{Path(brief).stem}-plan")
+
+
+def _show(plan: Plan, *, as_json: bool) -> None:
+    from tcplan.cli.screen import screen
+    from tcplan.plan import plan_json
+    from tcplan.spec.spec import spec_of
+
+    if as_json:
+        say_json_text(plan_json(plan))
+    else:
+        say(screen(spec_of(plan), width(), colour=colourful()))
+
+
+def _code(plan: Plan) -> int:
+    from tcplan.spec.statements import cannot_be_met
+
+    if plan.limit.drift_ppm is None or plan.best.verdict == "MET":
+        return DONE
+    return CANNOT_BE_MET if cannot_be_met(plan) else NOT_MET
