@@ -75,7 +75,8 @@ class _Reader:
         if self.materials is not None and name not in self.materials:
             near = nearest_name(name, self.materials)
             hint = f"Did you mean {near}?" if near else ""
-            raise self.refuse(f"a material named {shown(name)}", "a material of the brief", hint)
+            known = "one of " + ", ".join(sorted(self.materials)[:12])
+            raise self.refuse(f"a material named {shown(name)}", known, hint)
         words = []
         while self.peek() not in ("", "(", ")", "+", "||"):
             words.append(self.take())

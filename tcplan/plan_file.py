@@ -5,15 +5,16 @@ from __future__ import annotations
 import json
 from collections.abc import Iterator, Mapping
 from dataclasses import dataclass
-from typing import Any, Literal
+from typing import Annotated, Any
 
-from pydantic import ConfigDict, TypeAdapter, ValidationError
+from pydantic import ConfigDict, Field, TypeAdapter, ValidationError
 
 from tcplan.errors import InputError, Problem
 from tcplan.material.model import material_from_dict
 from tcplan.names import shown
 from tcplan.network import Leg, legs, network_from_tree
 from tcplan.plan import (
+    SCHEMA,
     Floor,
     LimitRecord,
     Nominal,
@@ -54,7 +55,7 @@ class _OptionRow:
 @dataclass(frozen=True, slots=True)
 class _PlanRow:
     __pydantic_config__ = ConfigDict(allow_inf_nan=False)
-    schema: Literal[1]
+    schema: Annotated[int, Field(ge=SCHEMA, le=SCHEMA)]
     tcplan: str
     brief: dict[str, Any]
     range: RangeRecord

@@ -72,7 +72,7 @@ class _GivenShape(_Shape):
 
 
 class _BriefShape(_Shape):
-    version: Literal[1] = Field(alias="schema", examples=["1"])
+    version: Annotated[int, Field(ge=1, le=1)] = Field(alias="schema", examples=["1"])
     title: str = Field(examples=['"Span resistor"'])
     materials: list[str] | None = None
     material: dict[str, Any] | None = None

@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import os
+import re
 import shutil
 import sys
 from typing import Any
@@ -13,6 +14,7 @@ import click
 from tcplan.errors import OutputError, Problem
 
 WIDEST, NARROWEST = 80, 40
+_STYLE = re.compile(r"(\x1b\[[0-9]{1,2}m)")
 
 
 def say(text: str) -> None:
@@ -50,20 +52,13 @@ def width() -> int:
 
 
 def _harmless(text: str) -> str:
-    """Return text with every control character but line ends, and the colours of click, escaped."""
-    parts = (mark if mark.isprintable() or mark in "\n\x1b" else repr(mark)[1:-1] for mark in text)
-    return _without_escapes("".join(parts))
+    """Return text with every control character escaped, but line ends and, on a terminal, styles."""
+    pieces = _STYLE.split(text) if colourful() else [text]
+    return "".join(piece if n % 2 else _escaped(piece) for n, piece in enumerate(pieces))
 
 
-def _without_escapes(text: str) -> str:
-    first, *rest = text.split("\x1b")
-    kept = [f"\x1b{piece}" if _is_colour(piece) else f"\\x1b{piece}" for piece in rest]
-    return first + "".join(kept)
-
-
-def _is_colour(piece: str) -> bool:
-    """Whether what follows an escape is one of the styles that the screen uses."""
-    return colourful() and piece.startswith(("[1m", "[31m", "[32m", "[33m", "[0m"))
+def _escaped(text: str) -> str:
+    return "".join(mark if mark.isprintable() or mark == "\n" else repr(mark)[1:-1] for mark in text)
 
 
 def _encoding() -> str:

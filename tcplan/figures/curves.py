@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import dataclass
+from itertools import pairwise
 from typing import Any
 
 import numpy as np
@@ -28,7 +29,7 @@ class Bound:
     """
 
     kind: str
-    degC: FloatArray  # noqa: N815 - a value that is not SI wears its unit
+    degC: FloatArray
     lower: FloatArray
     upper: FloatArray
     amount: float
@@ -144,7 +145,7 @@ def _mask_corners(plan: Plan, windows: Sequence[dict[str, float]]) -> tuple[Floa
     lines = [(max(w["low_degC"], low), min(w["high_degC"], high), w["limit_ppm"] * 1e-6) for w in windows]
     edges = sorted({edge for start, end, _ in lines if start <= end for edge in (start, end)})
     at, upper = [], []
-    for start, end in zip(edges[:-1], edges[1:], strict=True):
+    for start, end in pairwise(edges):
         over = [limit for first, last, limit in lines if first <= start and end <= last]
         at += [start, end]
         upper += [min(over, default=np.nan)] * 2

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-from collections.abc import Iterable, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -15,7 +14,6 @@ from matplotlib.ticker import FuncFormatter
 from tcplan.arrays import FloatArray
 from tcplan.drift import Curve
 from tcplan.figures.curves import (
-    Bound,
     bounds,
     celsius,
     chosen_drift,
@@ -23,12 +21,10 @@ from tcplan.figures.curves import (
     temperatures,
     worst_drift,
 )
+from tcplan.figures.limits import Unit, draw_limits, unit_of, view_of
 from tcplan.figures.style import (
     CHOSEN,
     FAINT,
-    LIMIT,
-    LIMIT_DASH,
-    LIMIT_FILL,
     OTHER,
     SMALL_SIZE,
     TEXT_SIZE,
@@ -42,10 +38,6 @@ from tcplan.figures.style import (
 from tcplan.network import used_materials
 from tcplan.plan import Plan
 from tcplan.units import from_celsius
-
-PERCENT_FROM = 20_000.0  # ppm; from here on per cent reads better
-LEAST_HEIGHT = 0.01  # ppm; below this the curve is rounding, and is drawn flat
-FITS = 4.0  # a limit up to this many times the curve is brought into view
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -62,14 +54,6 @@ class DriftArtists:
     peaks: tuple[Line2D, ...]
     references: tuple[Line2D, ...]
     legends: tuple[Legend, ...]
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class _Unit:
-    """The unit of a drift axis and what a fraction is multiplied by."""
-
-    name: str
-    factor: float
 
 
 def draw_drift(ax: Axes, residual_ax: Axes, plan: Plan) -> DriftArtists:
@@ -91,21 +75,24 @@ def draw_drift(ax: Axes, residual_ax: Axes, plan: Plan) -> DriftArtists:
     own, worst = chosen_drift(plan), worst_drift(plan)
     singles = {material.name: material_drift(plan, material.name)(T) for material in plan.materials}
     limits = bounds(plan, own)
-    view = _view([*singles.values(), own(T)], limits)
-    unit = _unit(view)
+    view = view_of([*singles.values(), own(T)], limits)
+    unit = unit_of(view)
     material_lines, others = _draw_singles(ax, plan, celsius(T), singles, unit)
     (chosen,) = ax.plot(celsius(T), own(T) * unit.factor, color=CHOSEN, lw=2.8, zorder=5)
     chosen.set_label(f"{plan.chosen} (chosen)")
-    upper_limits = _draw_limits(ax, limits, unit, view)
+    upper_limits = draw_limits(ax, limits, unit, view)
     _finish(ax, plan, unit, view, "Each material alone, and the chosen option")
     ax.set_xlabel("")
     ax.tick_params(labelbottom=False)
 
-    limits = bounds(plan, worst if worst and plan.limit.judge == "worst-case" else own)
-    view = _view([own(T), *([worst(T)] if worst else [])], limits)
-    unit = _unit(view)
+    judged = worst if worst and plan.limit.judge == "worst-case" else own
+    limits = bounds(plan, judged)
+    view = view_of([own(T), *([worst(T)] if worst else [])], limits)
+    unit = unit_of(view)
     residual, worst_line, peaks = _draw_residual(residual_ax, plan, T, (own, worst), unit)
-    lower_limits = _draw_limits(residual_ax, limits, unit, view)
+    lower_limits = draw_limits(
+        residual_ax, limits, unit, view, "around the worst case" if judged is worst else ""
+    )
     _finish(residual_ax, plan, unit, view, f"The chosen option at its own scale: {plan.chosen}")
     references = tuple(_draw_reference(part, plan) for part in (ax, residual_ax))
     return DriftArtists(
@@ -123,7 +110,7 @@ def draw_drift(ax: Axes, residual_ax: Axes, plan: Plan) -> DriftArtists:
 
 
 def _draw_singles(
-    ax: Axes, plan: Plan, degC: FloatArray, drifts: dict[str, FloatArray], unit: _Unit
+    ax: Axes, plan: Plan, degC: FloatArray, drifts: dict[str, FloatArray], unit: Unit
 ) -> tuple[dict[str, Line2D], tuple[Line2D, ...]]:
     """Draw each material alone: coloured as far as colours go, the rest in thin grey."""
     look = looks(list(drifts), used_materials(plan.best.network))
@@ -149,7 +136,7 @@ def _wear(line: Line2D, look: Look, position: int, name: str) -> None:
 
 
 def _draw_residual(
-    ax: Axes, plan: Plan, T: FloatArray, curves: tuple[Curve, Curve | None], unit: _Unit
+    ax: Axes, plan: Plan, T: FloatArray, curves: tuple[Curve, Curve | None], unit: Unit
 ) -> tuple[Line2D, Line2D | None, tuple[Line2D, ...]]:
     """Draw the chosen option, its worst device, and a mark at the peak of each."""
     own, worst = curves
@@ -172,7 +159,7 @@ def _draw_residual(
     return residual, line, tuple(peaks)
 
 
-def _mark(ax: Axes, curve: Curve, at_degC: float, unit: _Unit, *, filled: bool) -> Line2D:
+def _mark(ax: Axes, curve: Curve, at_degC: float, unit: Unit, *, filled: bool) -> Line2D:
     """Mark the peak of a curve where verify found it."""
     height = float(curve(np.array([from_celsius(at_degC)]))[0]) * unit.factor
     colour = CHOSEN if filled else WORST
@@ -192,81 +179,13 @@ def _mark(ax: Axes, curve: Curve, at_degC: float, unit: _Unit, *, filled: bool) 
     return mark
 
 
-def _draw_limits(
-    ax: Axes, limits: Iterable[Bound], unit: _Unit, view: tuple[float, float]
-) -> tuple[Line2D | PolyCollection, ...]:
-    """Draw each limit: two lines, or a shaded band for one that may lie at any height."""
-    drawn: list[Line2D | PolyCollection] = []
-    for limit in limits:
-        lower, upper = limit.lower * unit.factor, limit.upper * unit.factor
-        label = _limit_text(limit, unit)
-        if not _visible(limit, view):
-            label += ",\nbeyond this scale"
-        if limit.kind in ("band", "box_tcr"):
-            drawn.append(
-                ax.fill_between(
-                    limit.degC,
-                    lower,
-                    upper,
-                    facecolor=LIMIT_FILL,
-                    edgecolor=LIMIT,
-                    lw=0.8,
-                    zorder=1,
-                    label=label,
-                )
-            )
-            continue
-        for corners, text in ((upper, label), (lower, "_lower")):
-            drawn += ax.plot(
-                limit.degC, corners, color=LIMIT, linestyle=LIMIT_DASH, lw=1.1, zorder=4, label=text
-            )
-    return tuple(drawn)
-
-
-def _visible(limit: Bound, view: tuple[float, float]) -> bool:
-    corners = np.concatenate([limit.lower, limit.upper])
-    return bool(np.any((corners >= view[0]) & (corners <= view[1])))
-
-
-def _limit_text(limit: Bound, unit: _Unit) -> str:
-    """Return what the legend says of a limit, in the unit of the axis."""
-    as_drift = f"{number_text(limit.amount * unit.factor)} {unit.name}"
-    as_slope = f"{number_text(limit.amount * 1e6)} ppm/K"
-    return {
-        "drift": f"limit \N{PLUS-MINUS SIGN}{as_drift}",
-        "band": f"limit, a band of {as_drift}",
-        "box_tcr": f"limit, box TCR {as_slope}",
-        "chord_tcr": f"limit, chord TCR \N{PLUS-MINUS SIGN}{as_slope}\n(judged at the ends)",
-        "mask": "limit, mask",
-    }[limit.kind]
-
-
 def _draw_reference(ax: Axes, plan: Plan) -> Line2D:
     at = plan.range.reference_degC
     label = f"reference {number_text(at)} \N{DEGREE SIGN}C"
     return ax.axvline(at, color=OTHER, lw=0.8, linestyle=":", zorder=1, label=label)
 
 
-def _unit(view: tuple[float, float]) -> _Unit:
-    """Return the unit that reads best for the drifts in view."""
-    percent = max(abs(drift) for drift in view) * 1e6 >= PERCENT_FROM
-    return _Unit(name="%", factor=1e2) if percent else _Unit(name="ppm", factor=1e6)
-
-
-def _view(drifts: Sequence[FloatArray], limits: Iterable[Bound]) -> tuple[float, float]:
-    """Return the lowest and highest drift to show, with a margin; limits as far as they fit."""
-    values = np.concatenate([np.zeros(1), *drifts])
-    reach = FITS * float(np.max(np.abs(values)))
-    if reach < LEAST_HEIGHT * 1e-6:  # rounding: only a limit can set the scale
-        reach = np.inf
-    corners = np.concatenate([np.zeros(1), *(np.concatenate([b.lower, b.upper]) for b in limits)])
-    values = np.concatenate([values, corners[np.abs(corners) <= reach]])
-    low, high = float(values.min()), float(values.max())
-    margin = max(0.07 * (high - low), LEAST_HEIGHT * 1e-6)
-    return low - margin, high + margin
-
-
-def _finish(ax: Axes, plan: Plan, unit: _Unit, view: tuple[float, float], title: str) -> None:
+def _finish(ax: Axes, plan: Plan, unit: Unit, view: tuple[float, float], title: str) -> None:
     """Set limits, labels and grid."""
     ax.set_xlim(plan.range.low_degC, plan.range.high_degC)
     ax.set_ylim(view[0] * unit.factor, view[1] * unit.factor)

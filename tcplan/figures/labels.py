@@ -29,6 +29,11 @@ class Box:
     right: float
     top: float
 
+    @property
+    def width(self) -> float:
+        """The width [points]."""
+        return self.right - self.left
+
     def overlap(self, other: Box) -> float:
         """Return the area that both cover."""
         width = min(self.right, other.right) - max(self.left, other.left)

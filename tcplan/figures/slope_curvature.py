@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Sequence
 from dataclasses import dataclass, field
 
 import numpy as np
@@ -13,8 +13,7 @@ from matplotlib.patches import Polygon, Rectangle
 from matplotlib.text import Annotation, Text
 from matplotlib.ticker import FuncFormatter, MaxNLocator
 
-from tcplan.figures.contours import PeakDrift, convex_hull, round_levels
-from tcplan.figures.curves import reference
+from tcplan.figures.contours import convex_hull, round_levels
 from tcplan.figures.labels import (
     Box,
     Name,
@@ -24,33 +23,28 @@ from tcplan.figures.labels import (
     page_box,
     place_names,
 )
+from tcplan.figures.plane import Point, Scene, View, near_view, scene_of, whole_view, within
 from tcplan.figures.style import (
     CHOSEN,
     FAINT,
     OTHER,
     SMALL_SIZE,
     TEXT_SIZE,
-    Look,
-    looks,
+    Dash,
     number_text,
     short_names,
 )
-from tcplan.network import used_materials
-from tcplan.plan import Option, Plan
+from tcplan.plan import Plan
 
-Point = tuple[float, float]
-"""(TC1 [ppm/K], TC2 [ppm/K^2])."""
-View = tuple[Point, Point]
-"""Two opposite corners."""
-
-CROWDED = 0.33  # of the view: options closer together than this get a view of their own
-NEARBY = 5.0  # options up to this many times the peak drift of the chosen one are shown there
-LEAST = 1.0  # ppm: what is nearer to the target than this lies on it
 MOST_CONTOURS = 4
+LABEL_DISTANCE = 41.0  # points from the axes to the middle of their label
 SHORT = 84.0  # points for a name inside the axes
 INSET = (1.26, 0.0, 0.914, 1.0)  # beside the axes, where it covers nothing
 OPTION_MARKERS = {"single": "o", "series": "s", "parallel": "D", "mixed": "h"}
 CONTOUR = "#7a7a7a"
+CONTOUR_DASH: Dash = (0.0, (4.0, 2.0))
+NAME_COLOUR = "#333333"
+LEVEL_COLOUR = "#555555"
 HULL = "#e6ecf2"
 
 
@@ -78,26 +72,9 @@ class SlopeCurvatureArtists:
     legend: Legend
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
-class _Scene:
-    """All that the plane shows, in its own units."""
-
-    materials: Mapping[str, Point]
-    look: Mapping[str, Look]
-    options: Mapping[str, tuple[str, Point]]
-    chosen: str
-    target: Point
-    peak: PeakDrift
-
-    def distance(self, point: Point) -> float:
-        """Return the peak drift [ppm] of a quadratic law at a point, less the wanted one."""
-        away = np.array([point[0] - self.target[0]]), np.array([point[1] - self.target[1]])
-        return float(self.peak.of(*away)[0])
-
-
 def is_crowded(plan: Plan) -> bool:
     """Return whether the options are so close together that they are drawn once more, enlarged."""
-    return _near_view(_scene(plan)) is not None
+    return near_view(scene_of(plan)) is not None
 
 
 def draw_slope_curvature(ax: Axes, plan: Plan) -> SlopeCurvatureArtists:
@@ -119,82 +96,28 @@ def draw_slope_curvature(ax: Axes, plan: Plan) -> SlopeCurvatureArtists:
     The hull holds all series mixes to second order: their TC1 and TC2 are means of those of the
     materials. A contour joins the laws 1 + TC1 x + TC2 x^2 of one peak drift from the wanted law.
     """
-    scene = _scene(plan)
-    near_view = _near_view(scene)
-    whole = _draw_plane(ax, scene, _whole_view(scene), near_view)
+    scene = scene_of(plan)
+    enlarged = near_view(scene)
+    whole = _draw_plane(ax, scene, whole_view(scene), enlarged)
     near, inset, frame = None, None, None
-    if near_view is not None:
+    if enlarged is not None:
         inset = ax.inset_axes(INSET)
-        near = _draw_plane(inset, scene, near_view, None)
-        frame = _draw_frame(ax, near_view)
+        near = _draw_plane(inset, scene, enlarged, None)
+        frame = _draw_frame(ax, enlarged)
         ax.set_title("All materials", loc="left", fontsize=TEXT_SIZE)
         inset.set_title("Options near the target", loc="left", fontsize=TEXT_SIZE)
     for part in (ax, *([inset] if inset else [])):
         part.set_xlabel(f"TC1 at {number_text(plan.range.reference_degC)} \N{DEGREE SIGN}C (ppm/K)")
+        part.yaxis.set_label_coords(-LABEL_DISTANCE / page_box(part).width, 0.5)
         part.set_ylabel("TC2 (ppm/K\N{SUPERSCRIPT TWO})")
     legend = _draw_legend(ax, scene, plan, near or whole)
     return SlopeCurvatureArtists(whole=whole, near=near, inset=inset, frame=frame, legend=legend)
 
 
-# --- what is shown, and how much of it --------------------------------------------------------------
-
-
-def _scene(plan: Plan) -> _Scene:
-    def point(name: str) -> Point:
-        tc1, tc2 = plan.by_name[name].referred_taylor(reference(plan), 2)
-        return tc1 * 1e6, tc2 * 1e6
-
-    def of(option: Option) -> Point:
-        return option.nominal.tc1_ppm_per_K, option.nominal.tc2_ppm_per_K2
-
-    over = plan.range
-    return _Scene(
-        materials={material.name: point(material.name) for material in plan.materials},
-        look=looks([material.name for material in plan.materials], used_materials(plan.best.network)),
-        options={option.id: (option.arrangement, of(option)) for option in plan.options},
-        chosen=plan.chosen,
-        target=(plan.target.tc1_ppm_per_K, plan.target.tc2_ppm_per_K2),
-        peak=PeakDrift(cold=over.low_degC - over.reference_degC, hot=over.high_degC - over.reference_degC),
-    )
-
-
-def _whole_view(scene: _Scene) -> View:
-    """Return the view of everything, the origin included."""
-    options = [point for _, point in scene.options.values()]
-    return _view([*scene.materials.values(), *options, scene.target, (0.0, 0.0)], scene.peak)
-
-
-def _near_view(scene: _Scene) -> View | None:
-    """Return the view of the composite options near the target; None when the whole shows them well."""
-    composite = [p for name, (kind, p) in scene.options.items() if kind != "single" or name == scene.chosen]
-    reach = NEARBY * max(scene.distance(scene.options[scene.chosen][1]), LEAST)
-    near = [point for point in composite if scene.distance(point) <= reach]
-    if max((scene.distance(point) for point in near), default=0.0) < LEAST:
-        return None
-    view, whole = _view([*near, scene.target], scene.peak), _whole_view(scene)
-    parts = [(view[1][n] - view[0][n]) / (whole[1][n] - whole[0][n]) for n in (0, 1)]
-    return view if max(parts) < CROWDED else None
-
-
-def _view(points: Sequence[Point], peak: PeakDrift) -> View:
-    """Return a view of points with a margin; neither side is tiny in terms of the drift it stands for."""
-    low, high = np.min(points, axis=0), np.max(points, axis=0)
-    middle, half = 0.5 * (low + high), 0.5 * (high - low)
-    per_unit = peak.of(np.array([1.0, 0.0]), np.array([0.0, 1.0]))
-    least = max(0.12 * float(np.max(half * per_unit)), LEAST) / per_unit
-    half = 1.3 * np.maximum(half, least)
-    (left, bottom), (right, top) = (middle - half).tolist(), (middle + half).tolist()
-    return (left, bottom), (right, top)
-
-
-def _within(point: Point, view: View | None) -> bool:
-    return view is not None and all(view[0][n] <= point[n] <= view[1][n] for n in (0, 1))
-
-
 # --- drawing ------------------------------------------------------------------------------------------
 
 
-def _draw_plane(ax: Axes, scene: _Scene, view: View, elsewhere: View | None) -> PlaneArtists:
+def _draw_plane(ax: Axes, scene: Scene, view: View, elsewhere: View | None) -> PlaneArtists:
     """Draw the plane as far as a view goes; options that lie ``elsewhere`` are drawn there, not here."""
     ax.set_xlim(view[0][0], view[1][0])
     ax.set_ylim(view[0][1], view[1][1])
@@ -208,7 +131,7 @@ def _draw_plane(ax: Axes, scene: _Scene, view: View, elsewhere: View | None) -> 
     drawn.options = {
         name: _draw_option(ax, scene, name)
         for name, (_, point) in scene.options.items()
-        if not _within(point, elsewhere)
+        if not within(point, elsewhere)
     }
     if elsewhere is None:
         (drawn.target,) = ax.plot(*([v] for v in scene.target), color=CHOSEN, zorder=4)
@@ -229,21 +152,21 @@ def _draw_frame(ax: Axes, view: View) -> Rectangle:
     return frame
 
 
-def _draw_hull(ax: Axes, scene: _Scene) -> Polygon:
+def _draw_hull(ax: Axes, scene: Scene) -> Polygon:
     corners = convex_hull(list(scene.materials.values()))
     hull = Polygon(np.array(corners), closed=True, facecolor=HULL, edgecolor=OTHER, lw=0.7, zorder=0.5)
     ax.add_patch(hull)
     return hull
 
 
-def _draw_material(ax: Axes, scene: _Scene, name: str) -> Line2D:
+def _draw_material(ax: Axes, scene: Scene, name: str) -> Line2D:
     look = scene.look.get(name)
     (line,) = ax.plot(*([v] for v in scene.materials[name]), linestyle="none", zorder=3)
     line.set(marker=look.marker if look else ".", color=look.colour if look else OTHER, markersize=6.0)
     return line
 
 
-def _draw_option(ax: Axes, scene: _Scene, name: str) -> Line2D:
+def _draw_option(ax: Axes, scene: Scene, name: str) -> Line2D:
     kind, point = scene.options[name]
     # A chosen single material is a disc behind the marker of that material.
     over = 2.5 if kind == "single" else 6 if name == scene.chosen else 5
@@ -265,7 +188,7 @@ def _option_style(kind: str, *, chosen: bool) -> dict[str, object]:
     }
 
 
-def _names(scene: _Scene, view: View, elsewhere: View | None) -> list[Name]:
+def _names(scene: Scene, view: View, elsewhere: View | None) -> list[Name]:
     """Return the names to write: the chosen option, its materials, then the others."""
     short = short_names(list(scene.materials), SHORT, SMALL_SIZE)
     order = [*scene.look, *(name for name in scene.materials if name not in scene.look)]
@@ -277,8 +200,8 @@ def _names(scene: _Scene, view: View, elsewhere: View | None) -> list[Name]:
     ]
     for name in order:
         x, y = scene.materials[name]
-        wanted.append(Name(x=x, y=y, text=short[name], colour="#333333", needed=name in scene.look))
-    shown = [n for n in wanted if _within((n.x, n.y), view) and not _within((n.x, n.y), elsewhere)]
+        wanted.append(Name(x=x, y=y, text=short[name], colour=NAME_COLOUR, needed=name in scene.look))
+    shown = [n for n in wanted if within((n.x, n.y), view) and not within((n.x, n.y), elsewhere)]
     if elsewhere is not None:
         (left, bottom), (right, top) = elsewhere
         text = "enlarged at the right"
@@ -286,13 +209,13 @@ def _names(scene: _Scene, view: View, elsewhere: View | None) -> list[Name]:
     return shown
 
 
-def _markers(ax: Axes, scene: _Scene, view: View) -> list[Box]:
+def _markers(ax: Axes, scene: Scene, view: View) -> list[Box]:
     """Return the rectangles of all markers in view."""
     points = [*scene.materials.values(), *(point for _, point in scene.options.values()), scene.target]
-    return [marker_box(ax, *point) for point in points if _within(point, view)]
+    return [marker_box(ax, *point) for point in points if within(point, view)]
 
 
-def _draw_contours(ax: Axes, scene: _Scene, drawn: PlaneArtists, taken: list[Box]) -> None:
+def _draw_contours(ax: Axes, scene: Scene, drawn: PlaneArtists, taken: list[Box]) -> None:
     """Draw the contours that find room for their label."""
     corners = [(x, y) for x in ax.get_xlim() for y in ax.get_ylim()]
     labels = []
@@ -303,7 +226,7 @@ def _draw_contours(ax: Axes, scene: _Scene, drawn: PlaneArtists, taken: list[Box
         at = _room(ax, list(zip(x.tolist(), y.tolist(), strict=True)), text, taken)
         if at is None:
             continue
-        (drawn.contours[level],) = ax.plot(x, y, color=CONTOUR, lw=0.8, linestyle=(0, (4, 2)), zorder=1)
+        (drawn.contours[level],) = ax.plot(x, y, color=CONTOUR, lw=0.8, linestyle=CONTOUR_DASH, zorder=1)
         taken.append(centred_box(ax, *at, text))
         labels.append(_write_level(ax, at, text))
     drawn.contour_labels = tuple(labels)
@@ -326,39 +249,23 @@ def _write_level(ax: Axes, at: Point, text: str) -> Text:
         ha="center",
         va="center",
         fontsize=SMALL_SIZE,
-        color="#555555",
+        color=LEVEL_COLOUR,
         zorder=2,
         parse_math=False,
         bbox={"facecolor": "white", "edgecolor": "none", "pad": 0.8, "alpha": 0.85},
     )
 
 
-def _draw_legend(ax: Axes, scene: _Scene, plan: Plan, shown: PlaneArtists) -> Legend:
+def _draw_legend(ax: Axes, scene: Scene, plan: Plan, shown: PlaneArtists) -> Legend:
     """Put the legend below the axes."""
-    handles: list[Line2D | Polygon] = [
-        Line2D([], [], **_option_style(kind, chosen=False), label=f"{kind} option")  # type: ignore[arg-type]
-        for kind in OPTION_MARKERS
-        if any(k == kind and name != scene.chosen for name, (k, _) in scene.options.items())
-    ]
-    chosen = _option_style(scene.options[scene.chosen][0], chosen=True)
-    handles.insert(0, Line2D([], [], **chosen, label=f"{scene.chosen} (chosen)"))  # type: ignore[arg-type]
-    handles.append(Line2D([], [], linestyle="none", marker="o", color=OTHER, ms=6, label="material (named)"))
-    flat = scene.target == (0.0, 0.0)
-    tc1, tc2 = map(number_text, scene.target)
-    wanted = f"wanted: TC1 {tc1} ppm/K,\nTC2 {tc2} ppm/K\N{SUPERSCRIPT TWO}"
-    handles.append(
-        Line2D(
-            [], [], linestyle="none", marker="+", ms=11, mew=1.4, color=CHOSEN,
-            label="wanted: no drift" if flat else wanted,
-        )
-    )  # fmt: skip
+    handles: list[Line2D | Polygon] = [*_option_handles(scene), *_point_handles(scene)]
     if len(scene.materials) > 1:
         hull = Polygon(np.zeros((3, 2)), facecolor=HULL, edgecolor=OTHER, lw=0.7, label="all series mixes")
         handles.append(hull)
-    low, high = number_text(plan.range.low_degC), number_text(plan.range.high_degC)
     if shown.contours:
+        low, high = number_text(plan.range.low_degC), number_text(plan.range.high_degC)
         text = f"peak drift of a quadratic law,\n{low} to {high} \N{DEGREE SIGN}C"
-        handles.append(Line2D([], [], color=CONTOUR, lw=0.8, linestyle=(0, (4, 2)), label=text))
+        handles.append(Line2D([], [], color=CONTOUR, lw=0.8, linestyle=CONTOUR_DASH, label=text))
     legend = ax.legend(
         handles=handles,
         loc="upper left",
@@ -371,3 +278,27 @@ def _draw_legend(ax: Axes, scene: _Scene, plan: Plan, shown: PlaneArtists) -> Le
     for entry in legend.get_texts():
         entry.set_parse_math(False)
     return legend
+
+
+def _option_handles(scene: Scene) -> list[Line2D]:
+    """Return a sample of the chosen option's marker, and of each other arrangement that is there."""
+    others = {kind for name, (kind, _) in scene.options.items() if name != scene.chosen}
+    chosen = Line2D([], [], label=f"{scene.chosen} (chosen)")
+    chosen.set(**_option_style(scene.options[scene.chosen][0], chosen=True))
+    handles = [chosen]
+    for kind in (kind for kind in OPTION_MARKERS if kind in others):
+        handle = Line2D([], [], label=f"{kind} option")
+        handle.set(**_option_style(kind, chosen=False))
+        handles.append(handle)
+    return handles
+
+
+def _point_handles(scene: Scene) -> list[Line2D]:
+    """Return a sample of the markers of materials and of the target."""
+    tc1, tc2 = map(number_text, scene.target)
+    wanted = f"wanted: TC1 {tc1} ppm/K,\nTC2 {tc2} ppm/K\N{SUPERSCRIPT TWO}"
+    label = "wanted: no drift" if scene.target == (0.0, 0.0) else wanted
+    return [
+        Line2D([], [], linestyle="none", marker="o", color=OTHER, ms=6, label="material (named)"),
+        Line2D([], [], linestyle="none", marker="+", ms=11, mew=1.4, color=CHOSEN, label=label),
+    ]

@@ -56,17 +56,27 @@ def bound(figure_ppm: float) -> str:
     return _ppm(float(near))
 
 
-def nominal(figure_ppm: float, spread_ppm: float | None) -> str:
-    """Return a nominal figure [ppm], no finer than a tenth of its spread; "under N" when that leaves 0."""
-    if spread_ppm is None or abs(spread_ppm) < SMALLEST_PPM:
-        if abs(figure_ppm) < SMALLEST_PPM:
-            return f"under {number(SMALLEST_PPM)}"
-        return number(figure_ppm)
-    rounded = round_nominal(figure_ppm, spread_ppm)
-    step = round_outward(spread_ppm / 10.0, 1)
+def nominal(figure_ppm: float, spread_ppm: float | None, limit_ppm: float | None = None) -> str:
+    """Return a nominal figure [ppm], no finer than a tenth of its spread; "under N" when that leaves 0.
+
+    With the limit that it is judged by, rounding never puts it on the other side of the limit.
+    """
+    printed, most = _nominal(figure_ppm, spread_ppm)
+    if limit_ppm is not None and figure_ppm <= limit_ppm < most:
+        return f"under {stated(limit_ppm)}"
+    if limit_ppm is not None and most <= limit_ppm < figure_ppm:
+        return f"over {stated(limit_ppm)}"
+    return printed
+
+
+def _nominal(figure_ppm: float, spread_ppm: float | None) -> tuple[str, float]:
+    """Return the text of a nominal figure and the figure that a reader takes from it."""
+    known = spread_ppm is not None and abs(spread_ppm) >= SMALLEST_PPM
+    step = _power_of_ten(abs(spread_ppm) / 10.0) if spread_ppm is not None and known else SMALLEST_PPM
+    rounded = round_nominal(figure_ppm, spread_ppm if known else None)
     if rounded == 0.0 or abs(figure_ppm) < SMALLEST_PPM:
-        return f"under {number(_power_of_ten(step))}"
-    return number(rounded, MOST_DIGITS)
+        return f"under {number(step)}", step
+    return number(rounded, MOST_DIGITS), rounded
 
 
 def stated(value: float) -> str:
@@ -85,6 +95,6 @@ def _ppm(rounded: float) -> str:
 
 def _power_of_ten(step: float) -> float:
     """Return the power of ten that is ``step`` or the next above it."""
-    exact = Decimal(repr(step))
+    exact = Decimal(repr(round_outward(step, 1)))
     power = Decimal(1).scaleb(exact.adjusted())
     return float(power if exact <= power else power * 10)

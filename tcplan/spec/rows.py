@@ -69,7 +69,7 @@ def option_row(plan: Plan, option: Option) -> OptionRow:
         id=option.id,
         network=network_text(option.network, lambda leg: f"{leg.material} {format_ohms(leg.ohms)}"),
         sizes=", ".join(size or "-" for size in sizes) if any(sizes) else "",
-        nominal=nominal_text(option),
+        nominal=nominal_text(plan, option),
         worst_case=worst_text(plan, option),
         verdict=option.verdict if plan.limit.drift_ppm is not None else "no limit",
         chosen=option.id == plan.chosen,
@@ -117,7 +117,7 @@ def figure_rows(plan: Plan, option: Option) -> tuple[tuple[str, str], ...]:
     per_K = None if spread is None else spread / longer_arm_K(plan)
     chords = (("cold", nominal.chord_cold_ppm_per_K), ("hot", nominal.chord_hot_ppm_per_K))
     rows = [
-        ("judged figure, nominal", f"{nominal_text(option)} ppm"),
+        ("judged figure, nominal", f"{nominal_text(plan, option)} ppm"),
         ("judged figure, worst case", _worst(plan, option)),
         ("peak drift, nominal", f"{ppm(nominal.peak_ppm)} at {numbers.number(nominal.at_degC)} degC"),
         ("band, nominal", ppm(nominal.band_ppm)),

@@ -6,7 +6,7 @@ from dataclasses import dataclass
 
 from tcplan.network import network_text, value
 from tcplan.plan import Plan
-from tcplan.spec import statements
+from tcplan.spec import assumed, statements
 from tcplan.spec.asked import headline, mask_lines, range_text
 from tcplan.spec.rows import (
     LegRow,
@@ -68,14 +68,14 @@ def spec_of(plan: Plan) -> Spec:
     Spec
         Every number in it comes from the plan.
     """
-    option, outside = plan.best, statements.extrapolated(plan)
+    option, outside = plan.best, assumed.extrapolated(plan)
     return Spec(
         title=str(plan.brief["title"]),
         headline=headline(plan),
         over=range_text(plan),
         outcome=statements.outcome(plan),
         mask=mask_lines(plan),
-        assumptions=statements.assumptions(plan),
+        assumptions=assumed.assumptions(plan),
         floor=statements.floor_text(plan),
         options=tuple(option_row(plan, each) for each in plan.options),
         chosen=option.id,

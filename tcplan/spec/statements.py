@@ -5,10 +5,8 @@ from __future__ import annotations
 from tcplan.network import used_materials, value
 from tcplan.plan import Deviation, Option, Plan
 from tcplan.spec import numbers
-from tcplan.spec.asked import figure_text, wanted_text
-from tcplan.units import format_ohms, from_celsius
+from tcplan.units import format_ohms
 
-NOT_INCLUDED = "package stress, ageing, humidity, self-heating, mismatch"
 ROUNDING = 1e-9
 SIZE_WORDS = {"film": "sheet resistance", "wire": "resistance per metre"}
 
@@ -26,9 +24,10 @@ def spread_ppm(option: Option) -> float | None:
     return None if option.worst_case is None else option.worst_case.peak_ppm - nominal_ppm(option)
 
 
-def nominal_text(option: Option) -> str:
+def nominal_text(plan: Plan, option: Option) -> str:
     """Return the nominal figure without its unit."""
-    return numbers.nominal(nominal_ppm(option), spread_ppm(option))
+    limit = plan.limit.drift_ppm if plan.limit.judge == "nominal" else None
+    return numbers.nominal(nominal_ppm(option), spread_ppm(option), limit)
 
 
 def worst_text(plan: Plan, option: Option) -> str:
@@ -77,12 +76,14 @@ def _against_limit(plan: Plan, option: Option, limit: float) -> str:
     stop = f"the limit of {numbers.stated(limit)} ppm"
     if option.verdict == "NOT JUDGED":
         return f"{option.id} is not judged: its worst case, {worst_text(plan, option)} ppm, may pass {stop}."
-    figure = option.worst_case.peak_ppm if at_worst and option.worst_case else nominal_ppm(option)
-    text = worst_text(plan, option) if at_worst else nominal_text(option)
-    reached = f"{option.id} reaches {text} ppm {'in the worst case' if at_worst else 'at nominal'}"
+    if at_worst and option.worst_case:
+        figure, reached = option.worst_case.peak_ppm, f"{worst_text(plan, option)} ppm in the worst case"
+    else:
+        figure, reached = nominal_ppm(option), f"{nominal_text(plan, option)} ppm at nominal"
+        reached += f" and {worst_text(plan, option)} ppm in the worst case" if option.worst_case else ""
     if option.verdict == "MET":
-        return f"{reached}, within {stop}."
-    return f"{reached}, {numbers.worst(figure - limit)} ppm over {stop}."
+        return f"{option.id} reaches {reached}; {stop} is met{'' if at_worst else ' at nominal'}."
+    return f"{option.id} reaches {reached}, {numbers.worst(figure - limit)} ppm over {stop}."
 
 
 def _nominal_only(plan: Plan, option: Option, limit: float | None) -> list[str]:
@@ -91,7 +92,7 @@ def _nominal_only(plan: Plan, option: Option, limit: float | None) -> list[str]:
         return [f"That is at nominal only: no spread is stated for {missing}."]
     if limit is None or option.worst_case.upper_bound_ppm <= limit:
         return []
-    return [f"That is at nominal only: the worst case, {worst_text(plan, option)} ppm, is over the limit."]
+    return ["That is at nominal only: the worst case is over the limit."]
 
 
 def _value_deviation(plan: Plan, option: Option) -> list[str]:
@@ -111,71 +112,6 @@ def _value_deviation(plan: Plan, option: Option) -> list[str]:
 def without_spread(plan: Plan, option: Option) -> tuple[str, ...]:
     """Return the materials of an option that have no spread."""
     return tuple(n for n in used_materials(option.network) if plan.by_name[n].spread is None)
-
-
-# --- what the figures assume ------------------------------------------------------------------
-
-
-def assumptions(plan: Plan) -> tuple[str, ...]:
-    """Return what the figures assume, a sentence each."""
-    rise = f" beyond the {numbers.stated(plan.range.rise_K)} K of rise" if plan.range.rise_K else ""
-    left_out = NOT_INCLUDED.replace("self-heating", f"self-heating{rise}")
-    sentences = (
-        figure_text(plan),
-        wanted_text(plan),
-        *_spreads(plan),
-        f"Not included: {left_out}.",
-        _designed(plan),
-    )
-    return tuple(sentence for sentence in (*sentences, _extrapolated(plan)) if sentence)
-
-
-def _spreads(plan: Plan) -> list[str]:
-    """Return the meaning of the spreads: nothing is assumed in silence."""
-    stated = {m.name: m.spread for m in plan.materials if m.spread is not None}
-    limits = [name for name, spread in stated.items() if spread.meaning == "limits"]
-    sigma = [name for name, spread in stated.items() if spread.meaning == "sigma"]
-    none = [m.name for m in plan.materials if m.spread is None]
-    parts = [
-        f"{', '.join(limits)} as stated limits" if limits else "",
-        f"{', '.join(sigma)} at 3 times the stated sigma" if sigma else "",
-    ]
-    found = []
-    if stated:
-        box = "; ".join(part for part in parts if part)
-        found.append(f"The worst case takes every deviation at once: {box}.")
-    if none:
-        found.append(f"No spread is stated for {', '.join(none)}.")
-    found.extend(_counted_as_zero(plan))
-    return found
-
-
-def _counted_as_zero(plan: Plan) -> list[str]:
-    found = []
-    for part, words in (("value", "value"), ("tc1", "TC1"), ("tc2", "TC2")):
-        names = [m.name for m in plan.materials if m.spread is not None and part in m.spread.unstated]
-        if names:
-            found.append(f"{words} of {', '.join(names)}")
-    return [f"No half-width stated, so counted as 0: {'; '.join(found)}."] if found else []
-
-
-def _designed(plan: Plan) -> str:
-    """Return that the search worked on another figure than the judge, when it did."""
-    option = plan.best
-    if option.proof.of == plan.limit.judge or option.role == "given":
-        return ""
-    return "Designed for nominal drift, judged on the worst case."
-
-
-def extrapolated(plan: Plan) -> tuple[str, ...]:
-    """Return the materials used outside the range in which their law was established."""
-    low, high = from_celsius(plan.range.low_degC), from_celsius(plan.range.high_degC)
-    return tuple(m.name for m in plan.materials if m.is_extrapolated(low, high))
-
-
-def _extrapolated(plan: Plan) -> str:
-    names = ", ".join(extrapolated(plan))
-    return f"EXTRAPOLATED beyond its valid range: {names}." if names else ""
 
 
 # --- floor, choice, proof ---------------------------------------------------------------------
@@ -213,14 +149,22 @@ def proof_text(plan: Plan, option: Option) -> str:
     proof = option.proof
     if proof.kind == "global":
         gap = numbers.nominal(proof.gap_ppm, None)
-        return (
-            f"Proved optimal among {option.arrangement} networks for these data, on {proof.of} figures and "
-            f"within the rules of the brief ({_rules(plan)}); gap {gap} ppm."
-        )
-    above = f"below {numbers.bound(proof.lower_bound_ppm)} ppm {proof.of}"
-    if option.role == "given":
-        return f"Given, not searched; no network of these materials is {above}."
-    return f"Best found; no such network is {above}."
+        within = f"on {proof.of} figures and within the rules of the brief ({_rules(plan)})"
+        return f"{_proved(option)}, {within}; gap {gap} ppm."
+    found = "Given, not searched" if option.role == "given" else "Best found"
+    which = "no network of these materials" if option.role == "given" else "no such network"
+    above = numbers.bound(proof.lower_bound_ppm)
+    if above == "0":
+        return f"{found}; no bound above zero is proved."
+    return f"{found}; {which} is below {above} ppm {proof.of}."
+
+
+def _proved(option: Option) -> str:
+    """Return what is proved: with a free total, about the totals on its side only."""
+    side = {"least total": "or less", "greatest total": "or more"}.get(option.role)
+    if side is None:
+        return f"Proved optimal among {option.arrangement} networks for these data"
+    return f"Proved for these data: no {option.arrangement} network of this total {side} drifts less"
 
 
 def _rules(plan: Plan) -> str:

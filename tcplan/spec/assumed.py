@@ -1,0 +1,72 @@
+"""What the figures of a plan assume, in sentences: nothing is assumed in silence."""
+
+from __future__ import annotations
+
+from tcplan.plan import Plan
+from tcplan.spec import numbers
+from tcplan.spec.asked import figure_text, wanted_text
+from tcplan.units import from_celsius
+
+NOT_INCLUDED = "package stress, ageing, humidity, self-heating, mismatch"
+
+
+def assumptions(plan: Plan) -> tuple[str, ...]:
+    """Return what the figures assume, a sentence each."""
+    rise = f" beyond the {numbers.stated(plan.range.rise_K)} K of rise" if plan.range.rise_K else ""
+    left_out = NOT_INCLUDED.replace("self-heating", f"self-heating{rise}")
+    sentences = (
+        figure_text(plan),
+        wanted_text(plan),
+        *_spreads(plan),
+        f"Not included: {left_out}.",
+        _designed(plan),
+    )
+    return tuple(sentence for sentence in (*sentences, _extrapolated(plan)) if sentence)
+
+
+def _spreads(plan: Plan) -> list[str]:
+    """Return the meaning of the spreads: nothing is assumed in silence."""
+    stated = {m.name: m.spread for m in plan.materials if m.spread is not None}
+    limits = [name for name, spread in stated.items() if spread.meaning == "limits"]
+    sigma = [name for name, spread in stated.items() if spread.meaning == "sigma"]
+    none = [m.name for m in plan.materials if m.spread is None]
+    parts = [
+        f"{', '.join(limits)} as stated limits" if limits else "",
+        f"{', '.join(sigma)} at 3 times the stated sigma" if sigma else "",
+    ]
+    found = []
+    if stated:
+        box = "; ".join(part for part in parts if part)
+        found.append(f"The worst case takes every deviation at once: {box}.")
+    if none:
+        found.append(f"No spread is stated for {', '.join(none)}.")
+    found.extend(_counted_as_zero(plan))
+    return found
+
+
+def _counted_as_zero(plan: Plan) -> list[str]:
+    found = []
+    for part, words in (("value", "value"), ("tc1", "TC1"), ("tc2", "TC2")):
+        names = [m.name for m in plan.materials if m.spread is not None and part in m.spread.unstated]
+        if names:
+            found.append(f"{words} of {', '.join(names)}")
+    return [f"No half-width stated, so counted as 0: {'; '.join(found)}."] if found else []
+
+
+def _designed(plan: Plan) -> str:
+    """Return that the search worked on another figure than the judge, when it did."""
+    option = plan.best
+    if option.proof.of == plan.limit.judge or option.role == "given":
+        return ""
+    return "Designed for nominal drift, judged on the worst case."
+
+
+def extrapolated(plan: Plan) -> tuple[str, ...]:
+    """Return the materials used outside the range in which their law was established."""
+    low, high = from_celsius(plan.range.low_degC), from_celsius(plan.range.high_degC)
+    return tuple(m.name for m in plan.materials if m.is_extrapolated(low, high))
+
+
+def _extrapolated(plan: Plan) -> str:
+    names = ", ".join(extrapolated(plan))
+    return f"EXTRAPOLATED beyond its valid range: {names}." if names else ""
