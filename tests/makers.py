@@ -16,7 +16,7 @@ from tcplan.network import Leg, Network, Parallel, Series
 from tcplan.ranges import TemperatureRange, temperature_range
 
 REFERENCE = 298.15
-SIX_FILMS = (  # METHODS 4: name, TC1 ppm/K, TC2 ppm/K^2, sheet %, TC1 spread ppm/K
+SIX_FILMS = (  # Independent prototype: name, TC1 ppm/K, TC2 ppm/K^2, sheet %, TC1 spread ppm/K
     ("hi", -1400.0, 3.0, 15.0, 80.0),
     ("pp", -120.0, 0.55, 20.0, 40.0),
     ("np", 150.0, 0.4, 10.0, 40.0),

@@ -55,7 +55,7 @@ def test_panels_split_inside_only():
 
 @pytest.mark.parametrize(("low", "high", "value"), [(-1.0, 3.0, 2.0), (-5.0, 1.0, 4.5), (0.0, 0.3, 0.01125)])
 def test_minimax_line_through_a_parabola(low, high, value):
-    """CHECKS 8: x^2 approximated by a line on [a, b] errs by (b - a)^2/8 (Chebyshev; Cheney, Rivlin)."""
+    """x^2 approximated by a line on [a, b] errs by (b - a)^2/8 (Chebyshev; Cheney, Rivlin)."""
     middle = (low + high) / 2
     offset = (high - low) ** 2 / 8
 

@@ -25,7 +25,7 @@ Example:
 def command(folder: str, force: bool) -> None:
     """Write brief.toml and films.toml to DIR (the current folder by default).
 
-    They hold invented data and run as they are; every key is explained in them.
+    They hold invented data and run as they are; the keys that they use are explained in them.
     """
     from tcplan.output import write_files
 

@@ -104,6 +104,6 @@ def _limit_text(limit: Bound, unit: Unit) -> str:
         "drift": f"limit \N{PLUS-MINUS SIGN}{as_drift}",
         "band": f"limit, a band of {as_drift}",
         "box_tcr": f"limit, box TCR {as_slope}",
-        "chord_tcr": f"limit, chord TCR \N{PLUS-MINUS SIGN}{as_slope}\n(judged at the ends)",
+        "chord_tcr": f"limit, chord TCR of the ends\n\N{PLUS-MINUS SIGN}{as_slope}",
         "mask": "limit, mask",
     }[limit.kind]

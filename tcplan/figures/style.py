@@ -14,13 +14,13 @@ import math
 from collections.abc import Iterator, Sequence
 from contextlib import contextmanager
 from dataclasses import dataclass
-from typing import TypeAlias
+from typing import Literal, TypeAlias
 
 import matplotlib
 from matplotlib.font_manager import FontProperties
 from matplotlib.textpath import text_to_path
 
-Dash: TypeAlias = str | tuple[float, tuple[float, ...]]
+Dash: TypeAlias = Literal["-"] | tuple[float, tuple[float, ...]]
 
 MATERIAL_COLOURS = (
     "#336688",

@@ -25,7 +25,7 @@ def asked_value(plan: Plan) -> str:
     if plan.target.ohms is not None:
         return format_ohms(plan.target.ohms)
     most = plan.brief["resistor"]["at_most_ohms"]
-    return "any total" if most is None else f"at most {format_ohms(most)}"
+    return "free total" if most is None else f"at most {format_ohms(most)}"
 
 
 def asked_limit(plan: Plan) -> str:

@@ -6,7 +6,7 @@ For signed weights y over the rows, and any mix of columns,
 - series:   n = r - t,        d = L,        b = 1
 - parallel: n = 1 - t Gamma,  d = L Gamma,  b = Gamma
 
-A bound needs nothing of the solver that found y: any y gives a true one (METHODS 3).
+A bound needs nothing of the solver that found y: any y gives a true one.
 """
 
 from __future__ import annotations

@@ -2,7 +2,7 @@
 
 The resistance of any network is concave and homogeneous of degree 1 in its legs, so its tangent at
 the centre of a cell is above it everywhere; over the cell the ratio of the tangent to R(T_ref) is
-largest at a vertex (METHODS 6).
+largest at a vertex.
 """
 
 from __future__ import annotations

@@ -6,7 +6,7 @@ temperature all laws sit at their highest or all at their lowest; only value fac
 
 - one node (series or parallel): exact, each factor sits at a limit that one comparison decides;
 - mixed: the worst factor can lie inside; cells of the factor box are bounded by tangents of the
-  concave R and halved until nothing can be worse by more than 1 part in 10^4 (METHODS 6).
+  concave R and halved until nothing can be worse by more than 1 part in 10^4.
 
 What is reported is reached by a device that is named; the bound holds for all of them.
 """

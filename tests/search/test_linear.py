@@ -26,7 +26,7 @@ def best(kind, materials, need=None, most=3, min_share=0.0, few=1):
     return [check(proposal, case, "x") for proposal in found]
 
 
-# METHODS 4 and 1 (independent prototype), six invented films, 25 degC, -40..150 degC, to the digits given.
+# Independent prototype, six invented films, 25 degC, -40..150 degC, to the digits given.
 @pytest.mark.parametrize(
     ("kind", "names", "ppm", "digits"),
     [
@@ -47,7 +47,7 @@ def test_six_films_nominal(kind, names, ppm, digits):
 
 
 def test_six_films_shares():
-    """METHODS 4: series pp 2/3, np 1/3; parallel conductances hi .101369, pp .824706, sp .073925."""
+    """Independent prototype: series pp 2/3, np 1/3; parallel conductances hi .101369, pp .824706, sp .073925."""
     series, parallel = best("series", six_films(), most=6)[0], best("parallel", six_films(), most=6)[0]
     got = {
         leg.material: share for leg, share in zip(legs(series.network), shares(series.network), strict=True)
@@ -123,7 +123,7 @@ def test_three_of_nine_is_the_best_of_all_triples(kind):
 
 
 def test_zero_drift_is_reached_when_the_origin_is_in_the_hull():
-    """METHODS 3: zero is reachable in series when the origin is inside the hull of (TC1, TC2)."""
+    """Zero is reachable in series when the origin is inside the hull of (TC1, TC2)."""
     films = by_name(film("a", -400, -0.3), film("b", 300, -0.4), film("c", 20, 0.9))
     option = best("series", films, most=3)[0]
     assert option.proof.figure_ppm <= 1e-6

@@ -1,4 +1,4 @@
-"""The floor: below every network that can be built, and equal to the optimum where METHODS says so."""
+"""The floor: below every network that can be built, and equal to the optimum where that is known."""
 
 import numpy as np
 import pytest
@@ -22,7 +22,7 @@ def floor_of(films, need=None, figure=1.0, spreads=None):
 
 
 def test_films_of_falling_curvature():
-    """METHODS 5 (prototype): TC1 300 -250 120 -80, TC2 -.8 -.5 -.4 -.6: sandwich 3457.4 = the
+    """Independent prototype: TC1 300 -250 120 -80, TC2 -.8 -.5 -.4 -.6: sandwich 3457.4 = the
     series optimum."""
     rows = ((300, -0.8), (-250, -0.5), (120, -0.4), (-80, -0.6))
     films = by_name(*(film(f"f{k}", a, b) for k, (a, b) in enumerate(rows)))
@@ -57,7 +57,7 @@ def test_slopes_of_one_sign_by_hand():
 
 
 def test_slopes_against_tanh_for_a_pair_of_temperatures():
-    """METHODS 5: over a stretch of integral I the drift is at least tanh(|I|/2), here with a mask that leaves
+    """Slope bound: over a stretch of integral I the drift is at least tanh(|I|/2), here with a mask that leaves
     the reference out."""
     from tcplan.goal import Window
 
@@ -101,7 +101,7 @@ def test_spread_floor_is_below_the_worst_case_of_every_network(seed):
     spreads = {n: m.spread for n, m in films.items()}
     need = need_of()
     bound, at, _ = spread_bound(need, list(films.values()), spreads)
-    # About min dTC1 |x| (METHODS 5): 30 ppm/K over 125 K.
+    # About min dTC1 |x|: 30 ppm/K over 125 K.
     assert bound == pytest.approx(30e-6 * 125, rel=0.35)
     assert at == pytest.approx(423.15)
     for _ in range(5):

@@ -1,0 +1,107 @@
+"""The figure files: names, formats, the same bytes every time, nothing that points elsewhere."""
+
+import re
+import subprocess
+import sys
+import xml.etree.ElementTree as ET
+
+import matplotlib
+import pytest
+from makers import BRIEF, FILMS, brief
+
+from tcplan.figures.files import figure_files
+from tcplan.workflow import make_plan
+
+LABEL = 'label = "</text><script>$\\\\frac{$ & x^2_3"\n'
+
+
+@pytest.fixture(scope="module")
+def plan():
+    odd = FILMS.replace('source = "invented"\n', 'source = "<b>$\\\\undefined{$</b>"\n' + LABEL)
+    return make_plan(brief(BRIEF + odd))
+
+
+@pytest.fixture(scope="module")
+def files(plan):
+    return figure_files(plan)
+
+
+def test_the_four_files(files) -> None:
+    assert list(files) == ["drift.svg", "drift.png", "slope-curvature.svg", "slope-curvature.png"]
+    assert all(isinstance(content, bytes) for content in files.values())
+
+
+@pytest.mark.parametrize(("name", "inches"), [("drift.png", (7.2, 5.6)), ("slope-curvature.png", (7.2, 4.5))])
+def test_png_signature_size_and_resolution(files, name: str, inches: tuple[float, float]) -> None:
+    # PNG specification (ISO/IEC 15948): the signature, then IHDR with width and height; pHYs in 1/m.
+    content = files[name]
+    assert content.startswith(b"\x89PNG\r\n\x1a\n")
+    assert content[12:16] == b"IHDR"
+    size = [int.from_bytes(content[k : k + 4]) for k in (16, 20)]
+    place = content.index(b"pHYs") + 4
+    dpi = int.from_bytes(content[place : place + 4]) * 0.0254
+    assert 150 <= dpi <= 200
+    assert size == [pytest.approx(dpi * inch, abs=1) for inch in inches]
+    assert len(content) < 300_000
+
+
+@pytest.mark.parametrize("name", ["drift.svg", "slope-curvature.svg"])
+def test_svg_is_well_formed_and_points_nowhere(files, name: str) -> None:
+    text = files[name].decode()
+    root = ET.fromstring(text)
+    assert root.tag == "{http://www.w3.org/2000/svg}svg"
+    names = {element.tag.rsplit("}")[-1] for element in root.iter() if isinstance(element.tag, str)}
+    assert names.isdisjoint({"script", "image", "foreignObject", "a"})
+    for element in root.iter():
+        for key, value in element.attrib.items():
+            if key.rsplit("}")[-1] == "href":
+                assert value.startswith("#")
+            assert not key.startswith("on")
+            assert all(link.startswith("#") for link in re.findall(r"url\(([^)]*)\)", value))
+    assert "@import" not in text
+    addresses = set(re.findall(r"https?://[^\"'\s<]+", text))
+    assert addresses <= {"http://www.w3.org/2000/svg", "http://www.w3.org/1999/xlink"}
+    assert "<!DOCTYPE" not in text
+    assert len(text) < 200_000
+
+
+@pytest.mark.parametrize("name", ["drift.svg", "slope-curvature.svg"])
+def test_svg_text_is_drawn_as_paths_so_that_it_needs_no_font(files, name: str) -> None:
+    root = ET.fromstring(files[name])
+    assert not list(root.iter("{http://www.w3.org/2000/svg}text"))
+    assert b"font-family" not in files[name]
+
+
+def test_the_bytes_are_the_same_every_time_whatever_the_settings(plan, files) -> None:
+    with matplotlib.rc_context({"font.size": 20.0, "svg.hashsalt": "other", "svg.fonttype": "none"}):
+        assert figure_files(plan) == files
+
+
+def test_settings_are_left_as_they_were(plan) -> None:
+    before = dict(matplotlib.rcParams)
+    figure_files(plan)
+    assert dict(matplotlib.rcParams) == before
+
+
+CODE = """
+import hashlib, sys
+from makers import BRIEF, FILMS, brief
+from tcplan.workflow import make_plan
+plan = make_plan(brief(BRIEF + FILMS))
+loaded = [name for name in ("matplotlib", "matplotlib.pyplot") if name in sys.modules]
+from tcplan.figures.files import figure_files
+content = b"".join(figure_files(plan).values())
+loaded += [n for n in ("matplotlib.pyplot", "scipy", "sympy", "pint") if n in sys.modules]
+print(hashlib.sha256(content).hexdigest(), loaded)
+"""
+
+
+def test_a_fresh_process_writes_the_same_bytes_and_loads_nothing_heavy() -> None:
+    def run(seed):
+        settings = {"PYTHONPATH": ":".join(sys.path), "PYTHONHASHSEED": seed}
+        call = [sys.executable, "-c", CODE]
+        return subprocess.run(call, capture_output=True, text=True, check=True, env=settings).stdout
+
+    runs = {run("1"), run("2")}
+    assert len(runs) == 1
+    assert runs.pop().strip().endswith(" []")
