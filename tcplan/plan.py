@@ -71,12 +71,16 @@ class Proposal:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class FloorEvidence:
-    """Where and with what weights a bound on every network whatever is to be evaluated."""
+    """Where and with what weights a bound on every network whatever is to be evaluated.
+
+    The fixed members, all in one ``place``, are one member of every network.
+    """
 
     materials: tuple[str, ...]
     nodes: tuple[tuple[int, float], ...]
     upper: tuple[float, ...]
     lower: tuple[float, ...]
+    place: Literal["series", "parallel"] = "series"
     fixed: tuple[Leg, ...] = ()
     fixed_share: tuple[float, float] = (0.0, 0.0)
 

@@ -132,7 +132,7 @@ def _worst(proposal: Proposal, case: Case) -> float:
 def _floor_evidence(brief: Brief, need: Requirement, figure: float) -> FloorEvidence:
     names = used_materials(brief.given) if brief.given is not None else brief.rules.use
     space = Space(
-        arrangement="series",
+        arrangement=brief.fixed[0].place if brief.fixed else "series",
         materials=tuple(names),
         most=len(names),
         min_share=0.0,

@@ -15,7 +15,7 @@ _LIMIT_UNITS = {"drift": "1", "band": "1", "chord_tcr": "1/K", "box_tcr": "1/K"}
 def read_goal(reader: TableReader, over: TemperatureRange | None) -> Goal | None:
     """Return the goal over a range; None when the range is wrong. Mistakes go to the reader."""
     table = reader.inner("goal") or TableReader({}, f"{reader.where}: goal", reader.problems)
-    limits = [limit for kind in KINDS if (limit := _limit(table, kind)) is not None]
+    limits = [limit for kind in KINDS if (limit := _limit(table, kind, over)) is not None]
     judge: Judge = "worst-case" if table.text("judge") == "worst-case" else "nominal"
     if over is None:
         return None
@@ -25,20 +25,25 @@ def read_goal(reader: TableReader, over: TemperatureRange | None) -> Goal | None
     return Goal(limits=tuple(limits), judge=judge, wanted=wanted)
 
 
-def _limit(table: TableReader, kind: LimitKind) -> Limit | None:
+def _limit(table: TableReader, kind: LimitKind, over: TemperatureRange | None) -> Limit | None:
     if kind == "mask":
         rows = table.list_of("mask", ("K", "K", "1"), MOST_ROWS)
-        return _mask(table, rows) if rows else None
+        return _mask(table, rows, over) if rows else None
     amount = table.above_zero(kind, _LIMIT_UNITS[kind])
     return None if amount is None else Limit(kind=kind, value=amount)
 
 
-def _mask(table: TableReader, rows: tuple[tuple[float, ...], ...]) -> Limit | None:
+def _mask(
+    table: TableReader, rows: tuple[tuple[float, ...], ...], over: TemperatureRange | None
+) -> Limit | None:
     for n, (low, high, limit) in enumerate(rows, 1):
         if low >= high:
             table.refuse(f"mask[{n}]", f"{format_celsius(low)} to {format_celsius(high)}", "low below high")
         if limit <= 0:
             table.refuse(f"mask[{n}]", f"a limit of {limit * 1e6:g} ppm", "a limit above zero")
+    if over is not None and not any(low <= over.high and high >= over.low for low, high, _ in rows):
+        table.refuse("mask", "no line inside the temperature range", f"lines inside {over.text()}")
+        return None
     windows = tuple(Window(low=low, high=high, limit=limit) for low, high, limit in rows)
     if any(w.low >= w.high or w.limit <= 0 for w in windows):
         return None

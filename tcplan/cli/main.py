@@ -58,6 +58,7 @@ class Commands(click.Group):
 
 
 @click.group(
+    "tcplan",
     cls=Commands,
     context_settings={"help_option_names": ["-h", "--help"], "max_content_width": 80},
     epilog=START,

@@ -89,7 +89,7 @@ def _options(rows: Sequence[OptionRow], width: int, *, colour: bool) -> list[str
     columns = _column_widths(shown, width)
     if columns[1] < LEAST_NETWORK:
         lines = [line for row in shown for line in _stacked(row, width, colour=colour)]
-        return ["Options, figures in ppm, * the chosen one", *lines, *more]
+        return [*_wrapped("Options, figures in ppm, * the chosen one", width), *lines, *more]
     head = ("option", "network", "nominal", "worst case", "verdict")
     title = _row("  ", head, columns)
     lines = [line for row in shown for line in _tabled(row, columns, colour=colour)]
@@ -134,22 +134,22 @@ def _stacked(row: OptionRow, width: int, *, colour: bool) -> list[str]:
 
 def _network_lines(row: OptionRow, width: int) -> list[str]:
     """Return the network, broken between legs, and the sizes of its legs."""
-    text = _glued(row.network, (" + ", " || "))
-    lines = [line.replace(NO_BREAK, " ") for line in _wrapped(text, width)]
+    lines = _wrapped(_glued(row.network, (" + ", " || ")), width)
+    sizes = _wrapped(_glued(row.sizes, (", ",)), width, "  ", "  ") if row.sizes else []
+    half = MOST_LINES // 2
     if len(lines) > MOST_LINES:
-        half = MOST_LINES // 2
         lines = [*lines[:half], "...", *lines[-half + 1 :]]
-    sizes = [line.replace(NO_BREAK, " ") for line in _wrapped(_glued(row.sizes, (", ",)), width, "  ", "  ")]
-    return lines + (sizes[: MOST_LINES // 2] if row.sizes else [])
+    if len(sizes) > half:
+        sizes = [*sizes[: half - 1], "  ..."]
+    return [line.replace(NO_BREAK, " ") for line in (*lines, *sizes)]
 
 
 def _glued(text: str, breaks: Sequence[str]) -> str:
     """Return text that can be broken only at the given places, a sign staying with what precedes it."""
     glued = text.replace(" ", NO_BREAK)
     for mark in breaks:
-        glued = glued.replace(
-            mark.replace(" ", NO_BREAK), f"{NO_BREAK}{mark.strip()} " if mark.strip() != "," else ", "
-        )
+        before = mark.rstrip().replace(" ", NO_BREAK)
+        glued = glued.replace(before + NO_BREAK, f"{before} ")
     return glued
 
 

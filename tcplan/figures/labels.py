@@ -85,10 +85,10 @@ def marker_box(ax: Axes, x: float, y: float, radius: float = MARKER) -> Box:
     return Box(column - radius, row - radius, column + radius, row + radius)
 
 
-def centred_box(ax: Axes, x: float, y: float, text: str) -> Box:
-    """Return the rectangle of a text whose middle is at a point of the data."""
+def centred_box(ax: Axes, x: float, y: float, width: float) -> Box:
+    """Return the rectangle of a text of a width [points] whose middle is at a point of the data."""
     column, row = page_point(ax, x, y)
-    half, rise = 0.5 * text_width(text, SMALL_SIZE) + 1.5, 0.5 * HEIGHT * SMALL_SIZE
+    half, rise = 0.5 * width + 1.5, 0.5 * HEIGHT * SMALL_SIZE
     return Box(column - half, row - rise, column + half, row + rise)
 
 

@@ -33,6 +33,7 @@ from tcplan.figures.style import (
     Dash,
     number_text,
     short_names,
+    text_width,
 )
 from tcplan.plan import Plan
 
@@ -223,20 +224,21 @@ def _draw_contours(ax: Axes, scene: Scene, drawn: PlaneArtists, taken: list[Box]
         across, up = scene.peak.contour(level)
         x, y = across + scene.target[0], up + scene.target[1]
         text = f"{number_text(level)} ppm"
-        at = _room(ax, list(zip(x.tolist(), y.tolist(), strict=True)), text, taken)
+        width = text_width(text, SMALL_SIZE)
+        at = _room(ax, list(zip(x.tolist(), y.tolist(), strict=True)), width, taken)
         if at is None:
             continue
         (drawn.contours[level],) = ax.plot(x, y, color=CONTOUR, lw=0.8, linestyle=CONTOUR_DASH, zorder=1)
-        taken.append(centred_box(ax, *at, text))
+        taken.append(centred_box(ax, *at, width))
         labels.append(_write_level(ax, at, text))
     drawn.contour_labels = tuple(labels)
 
 
-def _room(ax: Axes, points: Sequence[Point], text: str, taken: Sequence[Box]) -> Point | None:
-    """Return the point of a contour, nearest to its top, where a text covers nothing."""
+def _room(ax: Axes, points: Sequence[Point], width: float, taken: Sequence[Box]) -> Point | None:
+    """Return the point of a contour, nearest to its top, where a text of a width covers nothing."""
     quarter, page = len(points) // 4, page_box(ax)
     for step in sorted(range(0, len(points), 6), key=lambda n: min(abs(n - quarter), abs(n - 3 * quarter))):
-        box = centred_box(ax, *points[step], text)
+        box = centred_box(ax, *points[step], width)
         if box.inside(page) and covered(box, taken) == 0.0:
             return points[step]
     return None

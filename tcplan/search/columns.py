@@ -65,11 +65,15 @@ class Programme:
     materials: Mapping[str, Material]
     names: tuple[str, ...]
 
+    def ratios(self, temperature: FloatArray) -> FloatArray:
+        """Return R(T)/R(T_ref) of every column, shape (rows, materials + 1)."""
+        reference = self.need.reference
+        own = [self.materials[name].ratio(temperature, reference) for name in self.names]
+        return np.stack([*own, self._fixed_ratio(temperature)], axis=1)
+
     def rows(self, piece: IntArray, temperature: FloatArray) -> Rows:
         """Return the rows at these pieces and temperatures [K], both of shape (rows,)."""
-        reference = self.need.reference
-        ratios = [self.materials[name].ratio(temperature, reference) for name in self.names]
-        r = np.stack([*ratios, self._fixed_ratio(temperature)], axis=1)
+        r = self.ratios(temperature)
         weight = np.array([p.weight for p in self.need.pieces])[piece][:, None]
         free = np.array([1.0 if p.centred else 0.0 for p in self.need.pieces])[piece][:, None]
         t = self.need.wanted(temperature)[:, None]

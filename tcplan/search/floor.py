@@ -11,7 +11,7 @@ from tcplan.arrays import FloatArray
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
 from tcplan.plan import FloorEvidence, Space
-from tcplan.search.columns import Programme, vertex_weights
+from tcplan.search.columns import Programme, Rows, vertex_weights
 from tcplan.search.minimax import solve_fractional
 
 NODES = 41
@@ -28,20 +28,20 @@ def floor_evidence(
     Parameters
     ----------
     space : Space
-        The materials and the fixed members; its arrangement and least share do not matter.
+        The materials and the fixed members; its arrangement says where these are, and its least
+        share does not matter.
     need : Requirement
     materials : mapping of name to Material
     figure : float
         A figure that one of these networks reaches.
     """
-    # The fixed members are one column held by the series ratio of their group: an upper side.
-    series = replace(space, arrangement="series", min_share=0.0)
     names = tuple(sorted(space.materials))
-    rows = Programme(series, need, materials, names).spread_rows(NODES, chebyshev=True)
-    r = rows.n + need.wanted(rows.temperature)[:, None]
-    weights = vertex_weights(series, range(len(names)), len(names))
+    programme = Programme(space, need, materials, names)
+    rows = programme.spread_rows(NODES, chebyshev=True)
+    r = programme.ratios(rows.temperature)
+    weights = vertex_weights(replace(space, min_share=0.0), range(len(names)), len(names))
     limit = next((p.weight * figure for p in need.pieces if p.centred), 0.0)
-    sides = [_side(r, rows.d, need.wanted(rows.temperature)[:, None] + c * rows.b) for c in {-limit, limit}]
+    sides = [_side(r, need, rows, c) for c in {-limit, limit}]
     numerator = np.hstack([n @ weights for n, _ in sides])
     denominator = np.hstack([d @ weights for _, d in sides])
     dual = solve_fractional(numerator, denominator).rows
@@ -51,10 +51,15 @@ def floor_evidence(
         nodes=tuple((int(p), float(t)) for p, t in zip(rows.piece, rows.temperature, strict=True)),
         upper=tuple(upper.tolist()),
         lower=tuple(lower.tolist()),
+        place="parallel" if space.arrangement == "parallel" else "series",
         fixed=space.fixed,
         fixed_share=space.fixed_share,
     )
 
 
-def _side(r: FloatArray, weight: FloatArray, t: FloatArray) -> tuple[FloatArray, FloatArray]:
+def _side(r: FloatArray, need: Requirement, rows: Rows, centre: float) -> tuple[FloatArray, FloatArray]:
+    """Return numerator and denominator of both sides of the sandwich at one centre."""
+    weight = np.array([piece.weight for piece in need.pieces])[rows.piece][:, None] * np.ones_like(r)
+    free = np.array([1.0 if piece.centred else 0.0 for piece in need.pieces])[rows.piece][:, None]
+    t = need.wanted(rows.temperature)[:, None] + centre * free
     return np.vstack([t - r, 1.0 - t / r]), np.vstack([weight, weight / r])

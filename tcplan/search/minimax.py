@@ -30,6 +30,8 @@ class Game:
 
 def _evaluated(payoff: FloatArray, mix: FloatArray, rows: FloatArray) -> Game:
     mix, rows = np.maximum(mix, 0.0), np.maximum(rows, 0.0)
+    if mix.sum() <= 0 or rows.sum() <= 0:
+        return _uniform(payoff)
     mix, rows = mix / mix.sum(), rows / rows.sum()
     return Game(mix, rows, float(np.max(payoff @ mix)), float(np.min(rows @ payoff)))
 
@@ -52,7 +54,7 @@ def _pivoted(payoff: FloatArray) -> Game | None:
     for pivots in range(MAX_PIVOTS):
         column = _entering(table[rows, :columns], first=pivots > MAX_PIVOTS // 4)
         if column is None:
-            return _read(payoff, table, basic, free)
+            return _read(payoff, basic, free)
         entries = table[:rows, column]
         possible = entries > 1e-12
         if not possible.any():
@@ -82,16 +84,27 @@ def _pivot(table: FloatArray, row: int, column: int) -> None:
     table[row, column] = 1.0 / pivot
 
 
-def _read(payoff: FloatArray, table: FloatArray, basic: IntArray, free: IntArray) -> Game:
+def _read(payoff: FloatArray, basic: IntArray, free: IntArray) -> Game:
+    """Return the game of the last basis, solved anew: the table has gathered rounding by then.
+
+    As many columns are basic as rows are tight: on these the mix makes all rows equal, and the row
+    weights all columns.
+    """
     rows, columns = payoff.shape
+    used, tight = np.sort(basic[basic < columns]), np.sort(free[free >= columns]) - columns
+    size = len(used)
+    border = np.zeros((size + 1, size + 1))
+    border[:size, :size] = payoff[np.ix_(tight, used)]
+    border[:size, size] = -1.0
+    border[size, :size] = 1.0
+    unit = np.zeros(size + 1)
+    unit[size] = 1.0
     mix, weights = np.zeros(columns), np.zeros(rows)
-    for i, variable in enumerate(basic):
-        if variable < columns:
-            mix[variable] = table[i, columns]
-    for j, variable in enumerate(free):
-        if variable >= columns:
-            weights[variable - columns] = table[rows, j]
-    if mix.sum() <= 0 or weights.sum() <= 0:
+    try:
+        mix[used] = np.linalg.solve(border, unit)[:size]
+        border[:size, :size] = border[:size, :size].T.copy()
+        weights[tight] = np.linalg.solve(border, unit)[:size]
+    except np.linalg.LinAlgError:
         return _uniform(payoff)
     return _evaluated(payoff, mix, weights)
 
@@ -182,7 +195,7 @@ def solve_fractional(numerator: FloatArray, denominator: FloatArray) -> Fraction
     upper = float(np.max((numerator @ mix) / (denominator @ mix)))
     lower = fractional_bound(rows, numerator, denominator)
     for _ in range(0 if spread == 0.0 and np.ptp(denominator) == 0.0 else 40):
-        if upper - lower <= 1e-14 + 1e-12 * abs(upper):
+        if upper - lower <= 1e-13 + 1e-12 * abs(upper):
             break
         game = solve_game(numerator - upper * denominator)
         bound = fractional_bound(game.rows, numerator, denominator)

@@ -181,7 +181,8 @@ def sandwich_bound(
     up, low = np.array(evidence.upper), np.array(evidence.lower)
     limit = next((p.weight * figure for p in need.pieces if p.centred), 0.0)
     columns = [materials[name].ratio(T, need.reference) for name in evidence.materials]
-    last = ratio_of_fixed(evidence.fixed, False, materials, need.reference, T)
+    parallel = evidence.place == "parallel"
+    last = ratio_of_fixed(evidence.fixed, parallel, materials, need.reference, T)
 
     def terms(r: FloatArray, c: float) -> tuple[float, float]:
         t = need.wanted(T) + c * free

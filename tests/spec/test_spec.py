@@ -121,16 +121,21 @@ def test_no_spread_is_not_stated_and_not_judged() -> None:
     assert dict(spec_of(plan).figures)["judged figure, worst case"] == "not stated"
 
 
+SIGMA = ('"limits"\nohm_per_square = "20 %"', '"sigma"\nohm_per_square = "7 %"')
+BEYOND = ('"160 degC"]\ntc1 = "150', '"149 degC"]\nextrapolate_to = ["-60 degC", "151 degC"]\ntc1 = "150')
+SAME = ("", "")
+
+
 @pytest.mark.parametrize(
     ("change", "said"),
     [
-        (('"limits"\nohm_per_square = "20 %"', '"sigma"\nohm_per_square = "7 %"'), "pp at 3 times the stated sigma"),
-        (('"160 degC"]\ntc1 = "150', '"149 degC"]\nextrapolate_to = ["-60 degC", "151 degC"]\ntc1 = "150'), "EXTRAPOLATED beyond its valid range: np"),
-        (("", ""), "No half-width stated, so counted as 0: TC2 of np, pp."),
-        (("", ""), "Not included: package stress, ageing, humidity, self-heating, mismatch."),
-        (("", ""), "Designed for nominal drift, judged on the worst case."),
+        (SIGMA, "pp at 3 times the stated sigma"),
+        (BEYOND, "EXTRAPOLATED beyond its valid range: np"),
+        (SAME, "No half-width stated, so counted as 0: TC2 of np, pp."),
+        (SAME, "Not included: package stress, ageing, humidity, self-heating, mismatch."),
+        (SAME, "Designed for nominal drift, judged on the worst case."),
     ],
-)  # fmt: skip
+)
 def test_assumptions_are_told(change: tuple[str, str], said: str) -> None:
     films = FILMS.replace(*change, 1)
     if "extrapolate_to" in films:

@@ -2,11 +2,12 @@
 
 import numpy as np
 import pytest
-from makers import brute_ratio, by_name, film, grid, need_of, over, random_films, random_tree
+from makers import brute_ratio, by_name, film, grid, leg, need_of, over, random_films, random_tree
 
 from tcplan.goal import Limit
 from tcplan.material.law import Thermistor
 from tcplan.material.model import Material
+from tcplan.network import Parallel, Series
 from tcplan.plan import Space
 from tcplan.search.floor import floor_evidence
 from tcplan.search.linear import search_space
@@ -119,3 +120,29 @@ def test_floor_of_a_band_is_below_the_best_band():
         figures.append(nominal_figure(search_space(space, need, films, 1.0, 1)[0].network, case))
     bottom = floor_of(films, need, min(figures))
     assert bottom.nominal_ppm <= min(figures) * 1e6
+
+
+def test_fixed_members_in_parallel_enter_by_their_own_ratio():
+    """Two different fixed members in parallel: a network that holds them is not below the floor.
+
+    A and B fixed in parallel (100 ohm, 1 kohm), C and D free, total 55 ohm, -40..125 degC:
+    A || B || (C + D) with C 77.97 ohm and D 61.27 ohm reaches about 15283 ppm, by brute force here.
+    """
+    rows = {"A": 1000, "B": -3000, "C": -2500, "D": 1500}
+    films = by_name(*(film(n, tc1, -1.0) for n, tc1 in rows.items()))
+    fixed = (leg("A", 100.0), leg("B", 1000.0))
+    group = 1 / (1 / 100 + 1 / 1000)
+    space = Space(
+        arrangement="parallel",
+        materials=("C", "D"),
+        most=2,
+        min_share=0.0,
+        fixed=fixed,
+        fixed_share=(55 / group, 55 / group),
+    )
+    need = need_of(high=125.0)
+    bottom = floor(floor_evidence(space, need, films, 1.0), need, films, None, 1.0)
+    network = Parallel((*fixed, Series((leg("C", 77.97), leg("D", 61.27)))))
+    reached = np.max(np.abs(brute_ratio(network, films, grid(high=125.0, count=801)) - 1))
+    assert reached * 1e6 == pytest.approx(15283, rel=1e-2)
+    assert bottom.nominal_ppm <= reached * 1e6
