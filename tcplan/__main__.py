@@ -25,7 +25,7 @@ def main() -> int:
 
 
 def _stop(number: int, frame: FrameType | None) -> None:
-    raise Stopped(f"stopped by signal {number}")
+    raise Stopped(f"signal {number}")
 
 
 if __name__ == "__main__":

@@ -29,11 +29,10 @@ def check_folder(folder: Path, names: Collection[str], *, force: bool = False) -
     OutputError
         With every file that is in the way.
     """
-    if folder.exists() and not folder.is_dir():
-        raise OutputError(_not_a_folder(folder, "a file"))
-    if folder.is_symlink() and not folder.exists():
-        raise OutputError(_not_a_folder(folder, "a link to nothing"))
-    problems = [*_folders_in_the_way(folder, names), *_files_in_the_way(folder, () if force else names)]
+    try:
+        problems = _in_the_way(folder, names, force=force)
+    except (OSError, ValueError) as fault:  # a name too long, or with a zero byte
+        raise OutputError(_cannot_write(folder, fault)) from fault
     if problems:
         raise OutputError(problems)
 
@@ -70,7 +69,7 @@ def write_files(folder: Path, contents: Mapping[str, bytes], *, force: bool = Fa
         work.put_in_place(contents, force=force)
     except BaseException as fault:
         work.undo()
-        if isinstance(fault, OSError):
+        if isinstance(fault, (OSError, ValueError)):  # ValueError: a zero byte in the name
             raise OutputError(_cannot_write(folder, fault)) from fault
         raise
     work.finish()
@@ -137,6 +136,14 @@ def _quietly(action: Callable[[], object]) -> None:
         return
 
 
+def _in_the_way(folder: Path, names: Collection[str], *, force: bool) -> list[Problem]:
+    if folder.exists() and not folder.is_dir():
+        return [_not_a_folder(folder, "a file")]
+    if folder.is_symlink() and not folder.exists():
+        return [_not_a_folder(folder, "a link to nothing")]
+    return [*_folders_in_the_way(folder, names), *_files_in_the_way(folder, () if force else names)]
+
+
 def _folders_in_the_way(folder: Path, names: Collection[str]) -> list[Problem]:
     found = [name for name in names if (folder / name).is_dir()]
     if not found:
@@ -174,10 +181,10 @@ def _not_a_folder(folder: Path, found: str) -> Problem:
     )
 
 
-def _cannot_write(folder: Path, fault: OSError) -> Problem:
+def _cannot_write(folder: Path, fault: OSError | ValueError) -> Problem:
     return Problem(
         where=str(folder),
-        found=f"a folder that cannot be written ({fault.strerror or type(fault).__name__})",
+        found=f"a folder that cannot be written ({getattr(fault, 'strerror', None) or fault})",
         expected="a folder in which files can be made",
         todo="Check its permissions and the space left, or write elsewhere.",
     )

@@ -534,17 +534,23 @@ def round_nominal(value: float, spread: float | None, digits: int = 4) -> float:
     Returns
     -------
     float
-        The figure rounded to a power of ten that is at least a tenth of the spread.
+        The figure rounded to a multiple of ``nominal_step(spread)``.
     """
     if value == 0 or not math.isfinite(value) or (spread is not None and not math.isfinite(spread)):
         return float(value)
     exact = Decimal(repr(float(value)))
     place = _place(exact, digits)
     if spread:
-        tenth = Decimal(repr(abs(float(spread)))).scaleb(-1)
-        power = Decimal(1).scaleb(tenth.adjusted())
-        place = max(place, power if tenth <= power * Decimal("1.000000001") else power * 10)
+        place = max(place, Decimal(repr(nominal_step(spread))))
     return float((exact / place).to_integral_value() * place) + 0.0  # + 0.0: no minus zero
+
+
+def nominal_step(spread: float) -> float:
+    """Return the least of 1, 2, 5, 10, ... that is at least a tenth of a spread (not 0)."""
+    tenth = Decimal(repr(abs(float(spread)))).scaleb(-1)
+    power = Decimal(1).scaleb(tenth.adjusted())
+    enough = tenth / Decimal("1.000000001")  # rounding of the arithmetic before, not a larger step
+    return float(next(power * step for step in (1, 2, 5, 10) if enough <= power * step))
 
 
 def _place(value: Decimal, digits: int) -> Decimal:

@@ -79,8 +79,8 @@ def _fixed_share(brief: Brief) -> tuple[float, float]:
 # --- proposals ------------------------------------------------------------------------------------
 
 
-def _proposals(brief: Brief, need: Requirement, case: Case) -> list[Proposal]:
-    """Return what the search, or the user, puts forward."""
+def _proposals(brief: Brief, need: Requirement, case: Case, few: int = FEW) -> list[Proposal]:
+    """Return what the search, or the user, puts forward: the best few of each arrangement."""
     if brief.given is not None:
         return [Proposal(network=brief.given, role="given")]
     found: list[Proposal] = []
@@ -89,7 +89,7 @@ def _proposals(brief: Brief, need: Requirement, case: Case) -> list[Proposal]:
         parallel = space.arrangement == "parallel"
         bounded = not brief.fixed or low == high or (brief.target.at_most is not None and not parallel)
         if bounded:
-            mixes = search_space(space, need, case.materials, brief.target.ohms, FEW)
+            mixes = search_space(space, need, case.materials, brief.target.ohms, few)
             # A mix that has shrunk to one leg is what the single arrangement is for.
             alone = "single" in brief.rules.arrangements and space.arrangement != "single"
             found.extend(m for m in mixes if not (alone and arrangement(m.network) == "single"))
@@ -244,7 +244,7 @@ def _one_more(brief: Brief, case: Case, options: Sequence[Option]) -> tuple[str,
     best = min(judged_ppm(option, judge) for option in options)
     found = [
         check(proposal, case, "more")
-        for proposal in _proposals(wider, case.need, case)
+        for proposal in _proposals(wider, case.need, case, 1)
         if len(legs(proposal.network)) - len(brief.fixed) == most
     ]
     better = [option for option in found if judged_ppm(option, judge) * EQUAL < best]

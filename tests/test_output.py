@@ -56,10 +56,12 @@ def test_a_link_to_nothing_is_not_followed(tmp_path: Path) -> None:
         write_files(tmp_path / "out", TWO)
 
 
-def test_a_place_that_cannot_be_written() -> None:
-    # /proc takes no new entries, whoever asks
+@pytest.mark.parametrize("place", ["/proc/tcplan-out", "/dev/null/out", "x" * 300, "a\0b"])
+def test_a_place_that_cannot_be_written(tmp_path: Path, monkeypatch: pytest.MonkeyPatch, place: str) -> None:
+    monkeypatch.chdir(tmp_path)  # /proc takes no new entries, whoever asks
     with pytest.raises(OutputError, match="cannot be written"):
-        write_files(Path("/proc/tcplan-out"), TWO)
+        write_files(Path(place), TWO)
+    assert list(tmp_path.iterdir()) == []
 
 
 @pytest.mark.parametrize("fault", [OSError(28, "No space left on device"), KeyboardInterrupt()])

@@ -33,7 +33,7 @@ def exit_code(run: Callable[[], object]) -> int:
         complain(f"no answer: {error}")
         return CANNOT_BE_MET
     except (Stopped, KeyboardInterrupt, click.Abort) as error:
-        complain(f"stopped before the answer{f' ({error})' if str(error) else ''}; nothing was written.")
+        complain(f"stopped early{f': {error}' if str(error) else ''}")
         return STOPPED
     except Exception as error:
         if os.environ.get(TRACEBACK):

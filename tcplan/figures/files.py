@@ -47,7 +47,7 @@ def drift_figure(plan: Plan) -> Figure:
 def slope_curvature_figure(plan: Plan) -> Figure:
     """Return the TC1-TC2 figure; its axes leave room at the right when an enlarged part goes there."""
     figure = Figure(figsize=PLANE_INCHES)
-    ax = figure.add_axes((0.095, 0.285, 0.405 if is_crowded(plan) else 0.88, 0.66))
+    ax = figure.add_axes((0.115, 0.285, 0.38 if is_crowded(plan) else 0.865, 0.66))
     draw_slope_curvature(ax, plan)
     return figure
 

@@ -13,8 +13,8 @@ from tcplan.figures.style import SMALL_SIZE, text_width
 
 HEIGHT = 1.25  # of a line of text, in sizes
 MARKER = 4.0  # points from the middle of a marker to its edge
-DISTANCES = (7.0, 13.0, 21.0, 31.0, 43.0)  # points; far names get a line to their point
-NEAR = 8.0
+DISTANCES = (8.0, 13.0, 21.0, 31.0, 43.0)  # points; far names get a line to their point
+NEAR = 9.0
 CLEAR = 6.0  # points between a name and the marker of another
 OUTSIDE = 1e6  # what it costs to leave the axes [points^2]
 DIRECTIONS = tuple(math.radians(45.0 * step) for step in (0, 4, 1, 3, 7, 5, 2, 6))
@@ -28,11 +28,6 @@ class Box:
     bottom: float
     right: float
     top: float
-
-    @property
-    def width(self) -> float:
-        """The width [points]."""
-        return self.right - self.left
 
     def overlap(self, other: Box) -> float:
         """Return the area that both cover."""

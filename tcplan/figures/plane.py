@@ -21,6 +21,7 @@ View = tuple[Point, Point]
 CROWDED = 0.33  # of the view: options closer together than this get a view of their own
 NEARBY = 5.0  # options up to this many times the peak drift of the chosen one are shown there
 LEAST = 1.0  # ppm: what is nearer to the target than this lies on it
+LEAST_VIEW = 5.0  # ppm: no view shows less to either side of its middle
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -84,7 +85,7 @@ def _view(points: Sequence[Point], peak: PeakDrift) -> View:
     low, high = np.min(points, axis=0), np.max(points, axis=0)
     middle, half = 0.5 * (low + high), 0.5 * (high - low)
     per_unit = peak.of(np.array([1.0, 0.0]), np.array([0.0, 1.0]))
-    least = max(0.12 * float(np.max(half * per_unit)), LEAST) / per_unit
+    least = max(0.12 * float(np.max(half * per_unit)), LEAST_VIEW) / per_unit
     half = 1.3 * np.maximum(half, least)
     (left, bottom), (right, top) = (middle - half).tolist(), (middle + half).tolist()
     return (left, bottom), (right, top)

@@ -38,9 +38,8 @@ from tcplan.figures.style import (
 from tcplan.plan import Plan
 
 MOST_CONTOURS = 4
-LABEL_DISTANCE = 41.0  # points from the axes to the middle of their label
-SHORT = 84.0  # points for a name inside the axes
-INSET = (1.26, 0.0, 0.914, 1.0)  # beside the axes, where it covers nothing
+SHORT = 72.0  # points for a name inside the axes
+INSET = (1.316, 0.0, 0.96, 1.0)  # beside the axes, where it covers nothing
 OPTION_MARKERS = {"single": "o", "series": "s", "parallel": "D", "mixed": "h"}
 CONTOUR = "#7a7a7a"
 CONTOUR_DASH: Dash = (0.0, (4.0, 2.0))
@@ -85,7 +84,7 @@ def draw_slope_curvature(ax: Axes, plan: Plan) -> SlopeCurvatureArtists:
     ----------
     ax : Axes
         With its final position, as names are placed on it. When `is_crowded`, an enlarged part
-        goes to its right, 1.2 times as wide in all; the legend goes below.
+        goes to its right, 1.3 times as wide in all; the legend goes below.
     plan : Plan
 
     Returns
@@ -109,7 +108,6 @@ def draw_slope_curvature(ax: Axes, plan: Plan) -> SlopeCurvatureArtists:
         inset.set_title("Options near the target", loc="left", fontsize=TEXT_SIZE)
     for part in (ax, *([inset] if inset else [])):
         part.set_xlabel(f"TC1 at {number_text(plan.range.reference_degC)} \N{DEGREE SIGN}C (ppm/K)")
-        part.yaxis.set_label_coords(-LABEL_DISTANCE / page_box(part).width, 0.5)
         part.set_ylabel("TC2 (ppm/K\N{SUPERSCRIPT TWO})")
     legend = _draw_legend(ax, scene, plan, near or whole)
     return SlopeCurvatureArtists(whole=whole, near=near, inset=inset, frame=frame, legend=legend)

@@ -50,7 +50,6 @@ NAME_WIDTH = 112.0  # points that a name may take in a legend
 DRIFT_INCHES = (7.2, 5.6)
 PLANE_INCHES = (7.2, 4.5)
 PNG_DPI = 160
-MOST_COLOURED = len(MATERIAL_COLOURS)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

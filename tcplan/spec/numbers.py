@@ -7,7 +7,7 @@ from __future__ import annotations
 
 from decimal import ROUND_FLOOR, Decimal
 
-from tcplan.units import round_nominal, round_outward
+from tcplan.units import nominal_step, round_nominal, round_outward
 
 WORST_DIGITS = 3
 VALUE_DIGITS = 4
@@ -72,7 +72,7 @@ def nominal(figure_ppm: float, spread_ppm: float | None, limit_ppm: float | None
 def _nominal(figure_ppm: float, spread_ppm: float | None) -> tuple[str, float]:
     """Return the text of a nominal figure and the figure that a reader takes from it."""
     known = spread_ppm is not None and abs(spread_ppm) >= SMALLEST_PPM
-    step = _power_of_ten(abs(spread_ppm) / 10.0) if spread_ppm is not None and known else SMALLEST_PPM
+    step = nominal_step(spread_ppm) if spread_ppm is not None and known else SMALLEST_PPM
     rounded = round_nominal(figure_ppm, spread_ppm if known else None)
     if rounded == 0.0 or abs(figure_ppm) < SMALLEST_PPM:
         return f"under {number(step)}", step
@@ -91,10 +91,3 @@ def percent(fraction: float) -> str:
 
 def _ppm(rounded: float) -> str:
     return number(rounded, MOST_DIGITS)
-
-
-def _power_of_ten(step: float) -> float:
-    """Return the power of ten that is ``step`` or the next above it."""
-    exact = Decimal(repr(round_outward(step, 1)))
-    power = Decimal(1).scaleb(exact.adjusted())
-    return float(power if exact <= power else power * 10)

@@ -103,8 +103,8 @@ def test_no_network_at_all_is_three(folder: Path) -> None:
 @pytest.mark.parametrize(
     ("fault", "code", "said"),
     [
-        (KeyboardInterrupt(), 4, "stopped before the answer"),
-        (Stopped("enough"), 4, "(enough)"),
+        (KeyboardInterrupt(), 4, "stopped early"),
+        (Stopped("enough"), 4, "stopped early: enough"),
         (InternalError("shares"), 5, "a fault of tcplan itself (InternalError: shares)"),
         (ZeroDivisionError("x"), 5, "Please report it"),
     ],
@@ -315,5 +315,5 @@ def test_a_signal_stops_it_with_nothing_left(folder: Path) -> None:
     with process.stdin, process.stderr:
         said = process.stderr.read().decode()
     assert process.wait() == 4
-    assert said == "stopped before the answer (stopped by signal 15); nothing was written.\n"
+    assert said == "stopped early: signal 15\n"
     assert list(folder.iterdir()) == []

@@ -36,7 +36,7 @@ def plan_of(films=SIX, goal='drift = "6000 ppm"', own="25 degC", low="-40 degC")
 def drawn(plan):
     figure = Figure(figsize=(7.2, 4.5))
     FigureCanvasAgg(figure)
-    ax = figure.add_axes((0.095, 0.285, 0.405 if is_crowded(plan) else 0.88, 0.66))
+    ax = figure.add_axes((0.115, 0.285, 0.38 if is_crowded(plan) else 0.865, 0.66))
     with figure_style():
         artists = draw_slope_curvature(ax, plan)
     return ax, artists

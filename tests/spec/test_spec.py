@@ -70,7 +70,7 @@ def test_bounds_are_rounded_down(figure: float, text: str) -> None:
     ("figure", "spread", "limit", "text"),
     [
         (3925.5, 7116.0, None, "4000"),  # a tenth of the spread is 712, so thousands
-        (3.0, 4000.0, None, "under 1000"),
+        (3.0, 4000.0, None, "under 500"),
         (0.0, None, None, "under 0.001"),
         (671.09, None, None, "671.1"),
         (671.09, 0.0, None, "671.1"),
