@@ -12,7 +12,7 @@ from matplotlib.lines import Line2D
 
 from tcplan.arrays import FloatArray
 from tcplan.figures.curves import Bound
-from tcplan.figures.style import LIMIT, LIMIT_DASH, LIMIT_FILL, number_text
+from tcplan.figures.style import LIMIT, LIMIT_DASHES, LIMIT_FILL, number_text
 
 PERCENT_FROM = 20_000.0  # ppm; from here on per cent reads better
 LEAST_HEIGHT = 0.01  # ppm; below this the curve is rounding, and is drawn flat
@@ -63,7 +63,7 @@ def draw_limits(
         What the legend says of the height of a band.
     """
     drawn: list[Line2D | PolyCollection] = []
-    for limit in limits:
+    for n, limit in enumerate(limits):
         lower, upper = limit.lower * unit.factor, limit.upper * unit.factor
         label = _limit_text(limit, unit)
         if held and limit.kind in ("band", "box_tcr"):
@@ -84,10 +84,9 @@ def draw_limits(
                 )
             )
             continue
+        dash = LIMIT_DASHES[n % len(LIMIT_DASHES)]
         for corners, text in ((upper, label), (lower, "_lower")):
-            drawn += ax.plot(
-                limit.degC, corners, color=LIMIT, linestyle=LIMIT_DASH, lw=1.1, zorder=4, label=text
-            )
+            drawn += ax.plot(limit.degC, corners, color=LIMIT, linestyle=dash, lw=1.1, zorder=4, label=text)
     return tuple(drawn)
 
 

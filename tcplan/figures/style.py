@@ -42,7 +42,11 @@ WORST = "#336688"
 OTHER = "#8c8c8c"
 FAINT = "#d9d9d9"
 WORST_DASH: Dash = (0.0, (4.0, 2.0))
-LIMIT_DASH: Dash = (0.0, (7.0, 2.0, 1.5, 2.0))
+LIMIT_DASHES: tuple[Dash, ...] = (
+    (0.0, (7.0, 2.0, 1.5, 2.0)),
+    (0.0, (7.0, 2.0, 1.5, 2.0, 1.5, 2.0)),
+    (0.0, (2.5, 2.0)),
+)
 
 TEXT_SIZE = 8.0  # points; the figure goes on a page at its own size
 SMALL_SIZE = 7.5
@@ -136,5 +140,5 @@ def short_names(names: Sequence[str], width: float = NAME_WIDTH, size: float = T
 
 def number_text(number: float) -> str:
     """Return a number for a label: 6 digits, thousands apart from 10 000, a real minus sign."""
-    form = ",.6g" if abs(number) >= 1e4 else ".6g"
+    form = ",.0f" if abs(number) >= 1e5 else ",.6g" if abs(number) >= 1e4 else ".6g"
     return f"{number:{form}}".replace(",", "\N{NO-BREAK SPACE}").replace("-", "\N{MINUS SIGN}")

@@ -12,7 +12,15 @@ from matplotlib.figure import Figure
 from matplotlib.text import Text
 
 from tcplan.figures.drift import draw_drift
-from tcplan.figures.style import CHOSEN, LIMIT, MATERIAL_COLOURS, OTHER, figure_style, text_width
+from tcplan.figures.style import (
+    CHOSEN,
+    LIMIT,
+    MATERIAL_COLOURS,
+    OTHER,
+    figure_style,
+    number_text,
+    text_width,
+)
 from tcplan.plan import Plan
 from tcplan.workflow import make_plan
 
@@ -201,6 +209,14 @@ def test_without_a_limit_none_is_drawn() -> None:
     assert artists.limits == artists.residual_limits == ()
 
 
+def test_each_of_several_limits_has_a_dash_of_its_own() -> None:
+    _, _, artists = drawn(plan_of('drift = "6000 ppm"\nchord_tcr = "60 ppm/K"'))
+    drift, _, chord, _ = artists.residual_limits
+    assert "6000 ppm" in drift.get_label()
+    assert "60 ppm/K" in chord.get_label()
+    assert drift._dash_pattern != chord._dash_pattern  # matplotlib has no public way to read it
+
+
 def test_a_limit_far_off_the_scale_is_said_to_be_so() -> None:
     _, residual_ax, artists = drawn(plan_of('drift = "50 %"', spread=False))
     assert "beyond this scale" in artists.residual_limits[0].get_label()
@@ -299,6 +315,14 @@ def test_the_chosen_option_is_the_thickest_line() -> None:
     ax, _, artists = drawn(plan_of())
     others = [line.get_linewidth() for line in ax.lines if line is not artists.chosen]
     assert max(others) < artists.chosen.get_linewidth()
+
+
+@pytest.mark.parametrize(
+    ("number", "text"),
+    [(0.3 - 0.1, "0.2"), (-2500.0, "−2500"), (10_000.0, "10\xa0000"), (1e7, "10\xa0000\xa0000"), (0.0, "0")],
+)
+def test_numbers_are_written_without_exponents(number: float, text: str) -> None:
+    assert number_text(number) == text
 
 
 # --- colours ----------------------------------------------------------------------------------

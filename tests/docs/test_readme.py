@@ -1,0 +1,34 @@
+"""README: two commands, each on one line, and a first screen that is the real one."""
+
+import re
+import subprocess
+import sys
+from pathlib import Path
+
+ROOT = Path(__file__).parents[2]
+README = (ROOT / "README.md").read_text()
+
+
+def test_two_commands_do_all_the_set_up():
+    commands = [line for line in README.splitlines() if line.startswith("python3 -m venv")]
+    assert len(commands) == 2
+    assert "tcplan plan examples/" in commands[0]
+    assert commands[1].endswith("-m pytest")
+
+
+def test_the_printed_screen_is_the_real_one(tmp_path):
+    result = subprocess.run(
+        [sys.executable, "-m", "tcplan", "plan", "examples/brake_sensor_films/brief.toml", "-o", tmp_path / "o"],
+        cwd=ROOT,
+        capture_output=True,
+        text=True,
+        check=True,
+        env={"PATH": "", "COLUMNS": "80"},
+    )
+    blocks = re.findall(r"^```\n(.*?)^```$", README, flags=re.M | re.S)
+    assert result.stdout.rstrip() in [block.rstrip() for block in blocks]
+
+
+def test_links_lead_somewhere():
+    for target in re.findall(r"\]\(([^)#]+)\)", README):
+        assert (ROOT / target).exists(), target
