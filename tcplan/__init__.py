@@ -37,8 +37,8 @@ _HOMES = {
     "Option": "plan",
     "read_plan": "plan_file",
     "plan_json": "plan",
-    "make_plan": "workflow",
-    "write_plan": "workflow",
+    "make_plan": "workflow.planning",
+    "write_plan": "workflow.delivery",
 }
 
 __all__ = ["__version__", *_HOMES]

@@ -8,7 +8,7 @@ from makers import BRIEF, FILMS, brief
 from tcplan.errors import InputError
 from tcplan.plan import plan_json
 from tcplan.plan_file import plan_from_dict, read_plan
-from tcplan.workflow import make_plan
+from tcplan.workflow.planning import make_plan
 
 JUDGED = BRIEF.replace('drift = "6000 ppm"', 'drift = "6000 ppm"\njudge = "worst-case"')
 

@@ -11,7 +11,7 @@ from tcplan.cli.talk import say, say_json
 if TYPE_CHECKING:
     from tcplan.errors import Problem
     from tcplan.material.law import Polynomial
-    from tcplan.workflow import Coefficients
+    from tcplan.workflow.conversions import Coefficients
 
 DIGITS = 6
 CHORDS = ("cold", "cold_tcr", "hot", "hot_tcr")
@@ -55,7 +55,7 @@ def command(as_json: bool, **options: str | None) -> None:
 
     A chord TCR is what a data sheet calls TCR: [R(T)/R(reference) - 1] / (T - reference).
     """
-    from tcplan.workflow import coefficients_at
+    from tcplan.workflow.conversions import coefficients_at
 
     values = _values({name: text for name, text in options.items() if text is not None})
     law = _law(values)

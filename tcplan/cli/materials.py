@@ -36,7 +36,7 @@ def command(file: str | None, as_json: bool) -> None:
     if file is None:
         _published(as_json=as_json)
         return
-    from tcplan.workflow import materials_of
+    from tcplan.workflow.conversions import materials_of
 
     found = materials_of(file)
     if as_json:

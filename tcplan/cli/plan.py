@@ -46,7 +46,8 @@ def command(brief: str, output: str | None, force: bool, as_json: bool) -> int:
     network of these materials can meet it.
     """
     from tcplan.output import check_folder
-    from tcplan.workflow import PLAN_FILES, make_plan, write_plan
+    from tcplan.workflow.delivery import PLAN_FILES, write_plan
+    from tcplan.workflow.planning import make_plan
 
     asked, folder = _read(brief), _folder(brief, output, as_json=as_json)
     if folder is not None:
@@ -62,7 +63,7 @@ def command(brief: str, output: str | None, force: bool, as_json: bool) -> int:
 def _read(brief: str) -> Brief:
     from tcplan.brief import read_brief
     from tcplan.toml_input import MAX_BYTES
-    from tcplan.workflow import brief_from_bytes
+    from tcplan.workflow.conversions import brief_from_bytes
 
     if brief == STDIN:
         return brief_from_bytes(sys.stdin.buffer.read(MAX_BYTES + 1), Path())

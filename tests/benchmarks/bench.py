@@ -89,8 +89,8 @@ def search() -> None:
             ours = min(times)
             proof = option.proof
             print(
-                f"{kind}, {most} of 40: {proof.figure_ppm:.4g} ppm, {proof.kind}, gap {proof.gap_ppm:.1e} ppm, "
-                f"{ours * 1e3:.1f} ms with its proof"
+                f"{kind}, {most} of 40: {proof.figure_ppm:.4g} ppm, {proof.kind}, "
+                f"gap {proof.gap_ppm:.1e} ppm, {ours * 1e3:.1f} ms with its proof"
             )
             if most == 40:
                 slow, reached = differential_evolution_seconds(kind, ratios, proof.figure_ppm * 1e-6)

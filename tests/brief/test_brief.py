@@ -165,7 +165,8 @@ def test_refusals(change, says):
         ('[[fixed]]\nmaterial = "pp"\nvalue = "20 kohm"\nplace = "bridge"', "place"),
         ('[[fixed]]\nmaterial = "xx"\nvalue = "2 kohm"', "a material named"),
         (
-            '[[fixed]]\nmaterial = "pp"\nvalue = "2 kohm"\n[[fixed]]\nmaterial = "pp"\nvalue = "90 kohm"\nplace = "parallel"',
+            '[[fixed]]\nmaterial = "pp"\nvalue = "2 kohm"\n'
+            '[[fixed]]\nmaterial = "pp"\nvalue = "90 kohm"\nplace = "parallel"',
             "all of them in one place",
         ),
         (

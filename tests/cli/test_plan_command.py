@@ -19,7 +19,7 @@ import tcplan.workflow
 from tcplan.cli.main import cli
 from tcplan.errors import InternalError, Stopped
 from tcplan.plan_file import read_plan
-from tcplan.workflow import PLAN_FILES
+from tcplan.workflow.delivery import PLAN_FILES
 
 ROOT = Path(__file__).parents[2]
 WORST = BRIEF.replace('drift = "6000 ppm"', 'drift = "LIMIT"\njudge = "worst-case"')

@@ -26,7 +26,7 @@ from tcplan.material.law_parameters import LAW_KINDS
 from tcplan.plan import plan_json
 from tcplan.ranges import GRADES
 from tcplan.units import parse_quantity
-from tcplan.workflow import make_plan
+from tcplan.workflow.planning import make_plan
 
 ROOT = Path(__file__).parents[2]
 DOCS = sorted((ROOT / "docs").glob("*.md"))

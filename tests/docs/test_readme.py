@@ -18,7 +18,15 @@ def test_two_commands_do_all_the_set_up():
 
 def test_the_printed_screen_is_the_real_one(tmp_path):
     result = subprocess.run(
-        [sys.executable, "-m", "tcplan", "plan", "examples/brake_sensor_films/brief.toml", "-o", tmp_path / "o"],
+        [
+            sys.executable,
+            "-m",
+            "tcplan",
+            "plan",
+            "examples/brake_sensor_films/brief.toml",
+            "-o",
+            tmp_path / "o",
+        ],
         cwd=ROOT,
         capture_output=True,
         text=True,

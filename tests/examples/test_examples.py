@@ -13,7 +13,7 @@ from scipy.optimize import minimize_scalar
 
 from tcplan.brief import read_brief
 from tcplan.plan import plan_json
-from tcplan.workflow import make_plan
+from tcplan.workflow.planning import make_plan
 
 EXAMPLES = Path(__file__).parents[2] / "examples"
 BRIEFS = sorted(EXAMPLES.glob("*/brief.toml"))

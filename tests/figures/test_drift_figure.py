@@ -22,7 +22,7 @@ from tcplan.figures.style import (
     text_width,
 )
 from tcplan.plan import Plan
-from tcplan.workflow import make_plan
+from tcplan.workflow.planning import make_plan
 
 # name, TC1 ppm/K, TC2 ppm/K^2, own reference degC; all invented
 FILMS = (("hi", -1400.0, 3.0, 25.0), ("np", 150.0, 0.4, 25.0), ("pp", -120.0, 0.55, 27.0))

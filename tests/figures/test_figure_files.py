@@ -10,7 +10,7 @@ import pytest
 from makers import BRIEF, FILMS, brief
 
 from tcplan.figures.files import figure_files
-from tcplan.workflow import make_plan
+from tcplan.workflow.planning import make_plan
 
 LABEL = 'label = "</text><script>$\\\\frac{$ & x^2_3"\n'
 
@@ -86,7 +86,7 @@ def test_settings_are_left_as_they_were(plan) -> None:
 CODE = """
 import hashlib, sys
 from makers import BRIEF, FILMS, brief
-from tcplan.workflow import make_plan
+from tcplan.workflow.planning import make_plan
 plan = make_plan(brief(BRIEF + FILMS))
 loaded = [name for name in ("matplotlib", "matplotlib.pyplot") if name in sys.modules]
 from tcplan.figures.files import figure_files

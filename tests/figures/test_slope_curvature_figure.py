@@ -15,7 +15,7 @@ from tcplan.figures.files import slope_curvature_figure
 from tcplan.figures.slope_curvature import draw_slope_curvature, is_crowded
 from tcplan.figures.style import figure_style
 from tcplan.plan import Plan
-from tcplan.workflow import make_plan
+from tcplan.workflow.planning import make_plan
 
 SIX = tuple(film[:3] for film in SIX_FILMS)
 THREE = (("up", 300.0, 0.5), ("down", -280.0, 0.6), ("bent", 20.0, -0.4))

@@ -11,7 +11,7 @@ from tcplan.network import Parallel, Series, legs, resistance, shares, value
 from tcplan.plan import Space
 from tcplan.search.linear import search_space
 from tcplan.verify.option import Case, check
-from tcplan.workflow import make_plan
+from tcplan.workflow.planning import make_plan
 
 
 def test_nichrome_and_constantan_pair():

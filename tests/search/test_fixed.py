@@ -9,7 +9,7 @@ from tcplan.network import Leg, legs, value
 from tcplan.plan import Space
 from tcplan.search.linear import least_total, search_space
 from tcplan.verify.option import Case, check, nominal_figure
-from tcplan.workflow import make_plan
+from tcplan.workflow.planning import make_plan
 
 TEXT = """
 schema = 1

@@ -47,7 +47,10 @@ def test_six_films_nominal(kind, names, ppm, digits):
 
 
 def test_six_films_shares():
-    """Independent prototype: series pp 2/3, np 1/3; parallel conductances hi .101369, pp .824706, sp .073925."""
+    """Independent prototype.
+
+    Series pp 2/3, np 1/3; parallel conductances hi .101369, pp .824706, sp .073925.
+    """
     series, parallel = best("series", six_films(), most=6)[0], best("parallel", six_films(), most=6)[0]
     got = {
         leg.material: share for leg, share in zip(legs(series.network), shares(series.network), strict=True)

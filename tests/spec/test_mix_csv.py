@@ -11,7 +11,7 @@ from makers import BRIEF, FILMS, brief
 from tcplan.network import legs, shares
 from tcplan.plan import Plan
 from tcplan.spec.mix_csv import mix_csv, text_cell
-from tcplan.workflow import make_plan
+from tcplan.workflow.planning import make_plan
 
 
 @pytest.fixture(scope="module")

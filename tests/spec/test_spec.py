@@ -20,7 +20,8 @@ from tcplan.spec import numbers
 from tcplan.spec.formula import coefficients, composite_formula
 from tcplan.spec.markdown import code, escaped, spec_markdown
 from tcplan.spec.spec import spec_of
-from tcplan.workflow import make_plan, symbolic_formula
+from tcplan.workflow.conversions import symbolic_formula
+from tcplan.workflow.planning import make_plan
 
 WORST = BRIEF.replace('drift = "6000 ppm"', 'drift = "9000 ppm"\njudge = "worst-case"')
 EASY = WORST.replace("9000 ppm", "13000 ppm")

@@ -58,7 +58,8 @@ def test_slopes_of_one_sign_by_hand():
 
 
 def test_slopes_against_tanh_for_a_pair_of_temperatures():
-    """Slope bound: over a stretch of integral I the drift is at least tanh(|I|/2), here with a mask that leaves
+    """Slope bound: over a stretch of integral I the drift is at least tanh(|I|/2), here with a mask
+    that leaves
     the reference out."""
     from tcplan.goal import Window
 

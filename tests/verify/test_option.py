@@ -33,7 +33,8 @@ def test_nominal_figures_against_a_dense_grid(seed):
 
 
 def test_a_maximum_between_grid_nodes_is_not_missed():
-    """Independent prototype: 17 fixed nodes once read 196.33 ppm where the truth was 201.57; here by the vertex formula.
+    """Independent prototype: 17 fixed nodes once read 196.33 ppm where the truth was 201.57; here
+    by the vertex formula.
 
     drift = a x + b x^2 with its vertex inside: the peak is a^2/(4 b) at x = -a/(2 b).
     """
@@ -47,7 +48,10 @@ def test_a_maximum_between_grid_nodes_is_not_missed():
 
 
 def test_effective_coefficients_of_series_and_parallel():
-    """Second order about the reference: series A = sum w a, B = sum w b; parallel A = sum g a, B = sum g b - var(a)."""
+    """Second order about the reference.
+
+    Series A = sum w a, B = sum w b; parallel A = sum g a, B = sum g b - var(a).
+    """
     a, b, c, d = -400e-6, 0.7e-6, 900e-6, 0.3e-6
     films = by_name(film("p", a * 1e6, b * 1e6), film("q", c * 1e6, d * 1e6))
     w, g = 0.7, 0.7

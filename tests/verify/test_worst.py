@@ -38,7 +38,8 @@ def brute_worst(network, materials, T, steps=9):
     return worst
 
 
-# Independent prototype, six films, given mixes. The mix pp 2/3, np 1/3 by hand, at 150 degC, pp at 0.8 and TC1 -80, np at
+# Independent prototype, six films, given mixes. The mix pp 2/3, np 1/3 by hand, at 150 degC, pp at
+# 0.8 and TC1 -80, np at
 # 1.1 and TC1 +190 ppm/K: (0.8*2/3*(-1406.25) + 1.1/3*30000)/(0.9) = 11388.889 ppm. (The prototype's
 # 11387.8 is of a
 # mix rounded to five digits.) 8898.83 and 8014.34 are for unrounded shares, known here to 4-5 digits.
@@ -80,7 +81,10 @@ def test_a_mixed_network_designed_for_its_worst_case():
 
 
 def test_the_worst_point_can_lie_inside_the_box():
-    """Independent prototype: corners of the sheet factors alone would say less than the network really does."""
+    """Independent prototype.
+
+    Corners of the sheet factors alone would say less than the network really does.
+    """
     films, T = two_films(), grid(high=125.0, count=331)
     network = mixed(1.150851, 0.8433)
     worst = worst_case(network, films, spreads(films), need_of(high=125.0))
@@ -124,7 +128,9 @@ def test_no_random_device_is_above_the_bound(seed):
 
 
 def test_a_reference_of_its_own_widens_the_law():
-    """With its own reference 20 K away the range of the law at 3900 ppm/K differs; vertices of the box hold it."""
+    """With its own reference 20 K away the range of the law at 3900 ppm/K differs; vertices of the
+    box hold it.
+    """
     near = by_name(film("c", 3900, 0.0, value_percent=0, tc1_spread_ppm=50))
     far = by_name(film("c", 3900, 0.0, value_percent=0, tc1_spread_ppm=50, reference=278.15))
     single = leg("c", 1.0)

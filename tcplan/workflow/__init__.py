@@ -1,0 +1,1 @@
+"""The short compositions that users and the command line both call."""

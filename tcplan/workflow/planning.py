@@ -1,0 +1,174 @@
+"""From a brief to its plan: every proposal checked, ranked, and the floor of them all."""
+
+from __future__ import annotations
+
+from collections.abc import Sequence
+from dataclasses import replace
+
+from tcplan import __version__
+from tcplan.brief import Brief
+from tcplan.errors import NoAnswer
+from tcplan.goal import requirement
+from tcplan.network import legs, used_materials, value
+from tcplan.plan import LimitRecord, Option, Plan, RangeRecord, TargetRecord
+from tcplan.units import format_ppm, round_outward
+from tcplan.verify.floor import floor
+from tcplan.verify.option import Case, check, nominal_figure
+from tcplan.workflow.proposals import fixed_share, floor_evidence, proposals, spreads_of
+
+EQUAL = 1.01  # an option that a simpler one equals within this factor is dropped
+
+
+def judged_ppm(option: Option, judge: str) -> float:
+    """Return the figure that the brief judges [ppm]; infinite where there is no worst case."""
+    if judge == "nominal":
+        return option.proof.figure_ppm
+    return option.worst_case.peak_ppm if option.worst_case else float("inf")
+
+
+def _shortlist(options: Sequence[Option], judge: str) -> tuple[Option, ...]:
+    """Return the options worth showing, best first.
+
+    Dropped: a network that is there already, and one that a simpler one equals within 1 %.
+    """
+    order = sorted(
+        options, key=lambda o: (judged_ppm(o, judge), o.proof.figure_ppm, len(legs(o.network)), o.id)
+    )
+    kept: list[Option] = []
+    for option in order:
+        figure = (judged_ppm(option, judge), option.proof.figure_ppm)
+        simpler = [o for o in order if len(legs(o.network)) < len(legs(option.network)) and not o.role]
+        beaten = any(
+            judged_ppm(o, judge) <= EQUAL * figure[0] and o.proof.figure_ppm <= EQUAL * figure[1]
+            for o in simpler
+        )
+        same = any(o.network == option.network for o in kept)
+        if option.role or not (beaten or same):
+            kept.append(option)
+    return tuple(kept)
+
+
+def _chosen(options: Sequence[Option], judge: str) -> Option:
+    """Return the simplest option that meets the limit, else the best one."""
+    met = [o for o in options if o.verdict == "MET"]
+    totals = [o for o in met if o.role in ("least total", "greatest total")]
+    if totals:
+        return totals[0]
+    if met:
+        return min(met, key=lambda o: (len(legs(o.network)), judged_ppm(o, judge)))
+    return options[0]
+
+
+# --- the plan -------------------------------------------------------------------------------------
+
+
+def make_plan(brief: Brief) -> Plan:
+    """Return the plan of a brief: searched, or given, and every option checked.
+
+    Raises
+    ------
+    NoAnswer
+        When no network fits the brief at all.
+    """
+    need = requirement(brief.goal, brief.over)
+    case = Case(materials=brief.by_name, spreads=spreads_of(brief), over=brief.over, need=need)
+    found = proposals(brief, need, case)
+    if not found:
+        raise NoAnswer(
+            "No network of these materials fits the brief: what min_share and the fixed members ask "
+            "for adds up to more than the whole."
+        )
+    best = min(nominal_figure(proposal.network, case) for proposal in found)
+    evidence = floor_evidence(brief, need, best)
+    names = {*evidence.materials, *(leg.material for leg in evidence.fixed)}
+    stated = case.spreads if names <= case.spreads.keys() else None
+    bottom = floor(evidence, need, case.materials, stated, best)
+    case = replace(case, floor_ppm=bottom.nominal_ppm)
+    options = _shortlist(
+        [check(proposal, case, str(n)) for n, proposal in enumerate(found, 1)], brief.goal.judge
+    )
+    options = tuple(replace(option, id=_option_id(options, n)) for n, option in enumerate(options))
+    return Plan(
+        tcplan=__version__,
+        brief=brief.to_dict(),
+        range=_range_record(brief),
+        target=_target_record(brief),
+        limit=LimitRecord(
+            kind=need.kind,
+            drift_ppm=None if need.scale is None else need.scale * 1e6,
+            judge=brief.goal.judge,
+        ),
+        materials=brief.materials,
+        floor=bottom,
+        chosen=_chosen(options, brief.goal.judge).id,
+        options=options,
+        notes=_one_more(brief, case, options),
+    )
+
+
+def _one_more(brief: Brief, case: Case, options: Sequence[Option]) -> tuple[str, ...]:
+    """Return a line on what one more material would give, when that is better by more than 1 %."""
+    rules = brief.rules
+    most = min(rules.max_materials, rules.max_legs) + 1
+    low, high = fixed_share(brief)
+    if brief.given is not None or most > len(rules.use) or low != high:
+        return ()
+    wider = replace(brief, rules=replace(rules, max_materials=most, max_legs=most))
+    judge = brief.goal.judge
+    best = min(judged_ppm(option, judge) for option in options)
+    found = [
+        check(proposal, case, "more")
+        for proposal in proposals(wider, case.need, case, 1)
+        if len(legs(proposal.network)) - len(brief.fixed) == most
+    ]
+    better = [option for option in found if judged_ppm(option, judge) * EQUAL < best]
+    if not better:
+        return (f"One more material ({most}) gives no better {judge} figure in the networks searched.",)
+    option = min(better, key=lambda o: judged_ppm(o, judge))
+    names = ", ".join(used_materials(option.network))
+    return (f"One more material ({most}): {option.arrangement} of {names} reaches {_both(option)}.",)
+
+
+def _both(option: Option) -> str:
+    """Return the nominal and the worst figure in words.
+
+    The first is never said alone where both are known.
+    """
+    nominal = f"{format_ppm(round_outward(option.proof.figure_ppm * 1e-6))} nominal"
+    if option.worst_case is None:
+        return f"{nominal}, its worst case not stated"
+    return f"{nominal}, {format_ppm(round_outward(option.worst_case.peak_ppm * 1e-6))} worst case"
+
+
+def _option_id(options: Sequence[Option], position: int) -> str:
+    """Return an id such as parallel-2: the arrangement, and its rank among its own."""
+    option = options[position]
+    if option.role == "given":
+        return "given"
+    same = [o for o in options[: position + 1] if o.arrangement == option.arrangement]
+    return f"{option.arrangement}-{len(same)}"
+
+
+def _range_record(brief: Brief) -> RangeRecord:
+    over = brief.over
+    return RangeRecord(
+        name=over.name,
+        low_degC=over.low_degC,
+        high_degC=over.high_degC,
+        reference_degC=over.reference_degC,
+        rise_K=over.rise,
+    )
+
+
+def _target_record(brief: Brief) -> TargetRecord:
+    wanted = brief.goal.wanted
+    tc1, tc2 = wanted.taylor(brief.over.reference, 2) if wanted else (0.0, 0.0)
+    return TargetRecord(
+        ohms=brief.target.ohms if brief.target.ohms is not None else _own_total(brief),
+        tc1_ppm_per_K=tc1 * 1e6,
+        tc2_ppm_per_K2=tc2 * 1e6,
+    )
+
+
+def _own_total(brief: Brief) -> float | None:
+    return value(brief.given) if brief.given is not None else None

@@ -1,0 +1,128 @@
+"""What is put forward for a brief: the searches it asks for, or the network that it gives."""
+
+from __future__ import annotations
+
+from tcplan.brief import Brief
+from tcplan.goal import Requirement
+from tcplan.material.spread import Spread
+from tcplan.network import arrangement, used_materials
+from tcplan.plan import FloorEvidence, Proposal, Space
+from tcplan.search.floor import floor_evidence as sandwich_evidence
+from tcplan.search.linear import least_total, search_space
+from tcplan.verify.option import Case, spread_figures
+
+FEW = 3
+TINY_SHARE = 1e-4  # of the fixed members, when the total is free
+
+
+def spreads_of(brief: Brief) -> dict[str, Spread]:
+    """Return the spread of each material that states one, over the range of the brief."""
+    found = {m.name: m.effective_spread(brief.over.low, brief.over.high) for m in brief.materials}
+    return {name: spread for name, spread in found.items() if spread is not None}
+
+
+def spaces(brief: Brief) -> tuple[Space, ...]:
+    """Return the sets of networks that the brief asks to search, one an arrangement."""
+    rules, fixed = brief.rules, tuple(member.leg for member in brief.fixed)
+    return tuple(
+        Space(
+            arrangement=kind,
+            materials=rules.use,
+            most=1 if kind == "single" else min(rules.max_materials, rules.max_legs),
+            min_share=0.0 if kind == "single" else rules.min_share,
+            fixed=fixed,
+            fixed_share=fixed_share(brief),
+        )
+        for kind in rules.arrangements
+    )
+
+
+def fixed_share(brief: Brief) -> tuple[float, float]:
+    """Return the least and the greatest share of the fixed members together."""
+    if not brief.fixed:
+        return 0.0, 0.0
+    total, bound = brief.target.ohms, brief.target.at_most
+    if brief.fixed[0].place == "series":
+        own = sum(member.leg.ohms for member in brief.fixed)
+        if total is not None:
+            return own / total, own / total
+        return (own / bound if bound is not None else TINY_SHARE), 1.0
+    own = 1.0 / sum(1.0 / member.leg.ohms for member in brief.fixed)
+    if total is not None:
+        return total / own, total / own
+    return TINY_SHARE, min(1.0, bound / own) if bound is not None else 1.0
+
+
+# --- proposals ------------------------------------------------------------------------------------
+
+
+def proposals(brief: Brief, need: Requirement, case: Case, few: int = FEW) -> list[Proposal]:
+    """Return what the search, or the user, puts forward: the best few of each arrangement."""
+    if brief.given is not None:
+        return [Proposal(network=brief.given, role="given")]
+    found: list[Proposal] = []
+    for space in spaces(brief):
+        low, high = space.fixed_share
+        parallel = space.arrangement == "parallel"
+        bounded = not brief.fixed or low == high or (brief.target.at_most is not None and not parallel)
+        if bounded:
+            mixes = search_space(space, need, case.materials, brief.target.ohms, few)
+            # A mix that has shrunk to one leg is what the single arrangement is for.
+            alone = "single" in brief.rules.arrangements and space.arrangement != "single"
+            found.extend(m for m in mixes if not (alone and arrangement(m.network) == "single"))
+        if brief.fixed and low != high and need.scale is not None:
+            extreme = _least_total(space, need, case, need.scale)
+            if extreme is not None:
+                found.append(extreme)
+            elif not bounded:  # no total meets the limit: show how near the best one comes
+                found.extend(search_space(space, need, case.materials, None, 1))
+    return found
+
+
+def _least_total(space: Space, need: Requirement, case: Case, limit: float) -> Proposal | None:
+    """Return the least (in parallel the greatest) total that meets the limit as it is judged.
+
+    Judged on the worst case, the nominal limit that the search works to is lowered until the
+    guaranteed worst case meets the limit; it is found by halving, so it is the best of these.
+    """
+    first = least_total(space, need, case.materials, limit)
+    if first is None or need.goal.judge == "nominal" or _worst(first, case) <= limit:
+        return first
+    best, low, high = None, 0.0, limit
+    for _ in range(14):
+        middle = 0.5 * (low + high)
+        proposal = least_total(space, need, case.materials, middle)
+        if proposal is not None and _worst(proposal, case) > limit:
+            high = middle
+        else:  # none at all: the limit is below what any total reaches
+            best, low = proposal or best, middle
+        if high - low <= 1e-3 * limit:
+            break
+    return best
+
+
+def _worst(proposal: Proposal, case: Case) -> float:
+    worst = spread_figures(proposal.network, case)
+    return float("inf") if worst is None else worst.upper_bound_ppm * 1e-6
+
+
+def floor_evidence(brief: Brief, need: Requirement, figure: float) -> FloorEvidence:
+    """Return the evidence for the floor of every network of the brief's materials.
+
+    Parameters
+    ----------
+    brief : Brief
+    need : Requirement
+    figure : float
+        A figure that one of these networks reaches (a fraction).
+    """
+    names = used_materials(brief.given) if brief.given is not None else brief.rules.use
+    space = Space(
+        arrangement=brief.fixed[0].place if brief.fixed else "series",
+        materials=tuple(names),
+        most=len(names),
+        min_share=0.0,
+        fixed=tuple(member.leg for member in brief.fixed),
+        fixed_share=fixed_share(brief),
+    )
+    return sandwich_evidence(space, need, brief.by_name, figure)
