@@ -15,7 +15,7 @@ import pytest
 from click.testing import CliRunner, Result
 from makers import BRIEF, FILMS
 
-import tcplan.workflow
+import tcplan.workflow.planning
 from tcplan.cli.main import cli
 from tcplan.errors import InternalError, Stopped
 from tcplan.plan_file import read_plan
@@ -115,7 +115,7 @@ def test_faults_have_their_codes(
     def failing(brief: object) -> None:
         raise fault
 
-    monkeypatch.setattr(tcplan.workflow, "make_plan", failing)
+    monkeypatch.setattr(tcplan.workflow.planning, "make_plan", failing)
     result = plan(MET)
     assert result.exit_code == code
     assert said in result.stderr
@@ -129,7 +129,7 @@ def test_a_fault_shows_where_it_happened_when_asked(folder: Path, monkeypatch: p
         raise ZeroDivisionError("x")
 
     monkeypatch.setenv("TCPLAN_TRACEBACK", "1")
-    monkeypatch.setattr(tcplan.workflow, "make_plan", failing)
+    monkeypatch.setattr(tcplan.workflow.planning, "make_plan", failing)
     assert isinstance(plan(MET).exception, ZeroDivisionError)
 
 
