@@ -2,14 +2,30 @@
 
 from __future__ import annotations
 
+import html
 import io
 
 from matplotlib.figure import Figure
 
 from tcplan.figures.drift import draw_drift
+from tcplan.figures.network import draw_network, sketch_of
 from tcplan.figures.slope_curvature import draw_slope_curvature, is_crowded
-from tcplan.figures.style import DRIFT_INCHES, PLANE_INCHES, PNG_DPI, figure_style
+from tcplan.figures.style import (
+    DRIFT_INCHES,
+    PLANE_INCHES,
+    PNG_DPI,
+    SMALL_SIZE,
+    TEXT_SIZE,
+    figure_style,
+    number_text,
+    shortened,
+    text_width,
+)
+from tcplan.network import network_text, value
 from tcplan.plan import Plan
+from tcplan.units import format_ohms
+
+NETWORK_TITLE = 380.0  # points that the title of the network may take
 
 
 def figure_files(plan: Plan) -> dict[str, bytes]:
@@ -22,17 +38,36 @@ def figure_files(plan: Plan) -> dict[str, bytes]:
     Returns
     -------
     dict of str to bytes
-        drift.svg, drift.png, slope-curvature.svg and slope-curvature.png.
+        network, drift and slope-curvature, each as .svg and .png.
     """
     found: dict[str, bytes] = {}
+    words = _words(plan)
     with figure_style():
         for name, figure in (
+            ("network", network_figure(plan)),
             ("drift", drift_figure(plan)),
             ("slope-curvature", slope_curvature_figure(plan)),
         ):
-            found[f"{name}.svg"] = _svg(figure)
+            found[f"{name}.svg"] = _svg(figure, *words[name])
             found[f"{name}.png"] = _png(figure)
     return found
+
+
+def network_figure(plan: Plan) -> Figure:
+    """Return the schematic of the chosen option, on a page no larger than it needs."""
+    option, reference = plan.best, number_text(plan.range.reference_degC)
+    sketch = sketch_of(option.network)
+    title = f"{option.id}: {format_ohms(value(option.network))} at {reference} \N{DEGREE SIGN}C"
+    title = shortened(title, NETWORK_TITLE)
+    below, above, side = (24.0 if sketch.note else 8.0), 24.0, 9.0  # points
+    words = max(text_width(title), text_width(sketch.note, SMALL_SIZE)) + 8.0
+    across, up = max(sketch.size[0], words), sketch.size[1]
+    width, height = across + 2.0 * side, below + up + above
+    figure = Figure(figsize=(width / 72.0, height / 72.0))
+    ax = figure.add_axes((side / width, below / height, across / width, up / height))
+    draw_network(ax, option)
+    ax.set_title(title, loc="left", fontsize=TEXT_SIZE, parse_math=False)
+    return figure
 
 
 def drift_figure(plan: Plan) -> Figure:
@@ -58,10 +93,33 @@ def _png(figure: Figure) -> bytes:
     return content.getvalue()
 
 
-def _svg(figure: Figure) -> bytes:
-    """Return SVG without date, writer's version, or a document type that points to a web address."""
+def _svg(figure: Figure, title: str, description: str) -> bytes:
+    """Return SVG with words for those who do not see it.
+
+    It has no date, writer's version, or document type that points to a web address.
+    """
     content = io.StringIO()
     nothing = dict.fromkeys(("Date", "Creator", "Format", "Type"))
     figure.savefig(content, format="svg", metadata=nothing)
     text = content.getvalue()
-    return ('<?xml version="1.0" encoding="utf-8"?>\n' + text[text.index("<svg") :]).encode()
+    start = text.index("<svg")
+    inside = text.index(">", start) + 1
+    words = f"\n <title>{html.escape(title)}</title>\n <desc>{html.escape(description)}</desc>"
+    return (f'<?xml version="1.0" encoding="utf-8"?>\n{text[start:inside]}{words}{text[inside:]}').encode()
+
+
+def _words(plan: Plan) -> dict[str, tuple[str, str]]:
+    """Return the title and the description of each figure."""
+    network = network_text(plan.best.network, lambda leg: f"{leg.material} {format_ohms(leg.ohms)}")
+    chosen = "".join(letter for letter in plan.chosen if letter.isprintable())  # XML has no control characters
+    return {
+        "network": (f"Network of {chosen}", f"Schematic of {network}; + is series, || is parallel."),
+        "drift": (
+            f"Drift over temperature of {chosen}",
+            "Drift of each material alone and of the options; below, the chosen option at its own scale.",
+        ),
+        "slope-curvature": (
+            "Slope and curvature of the materials and of the options",
+            "TC1 and TC2 of materials and options, with contours of equal peak drift.",
+        ),
+    }

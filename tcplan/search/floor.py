@@ -12,7 +12,7 @@ from tcplan.goal import Requirement
 from tcplan.material.model import Material
 from tcplan.plan import FloorEvidence, Space
 from tcplan.search.columns import Programme, Rows, vertex_weights
-from tcplan.search.minimax import solve_fractional
+from tcplan.minimax import solve_fractional
 
 NODES = 41
 

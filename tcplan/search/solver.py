@@ -12,7 +12,7 @@ import numpy as np
 
 from tcplan.arrays import FloatArray, IntArray
 from tcplan.search.columns import GRID, START, Programme, Rows, vertex_weights
-from tcplan.search.minimax import solve_fractional
+from tcplan.minimax import solve_fractional
 
 RELATIVE, ABSOLUTE = 1e-7, 1e-13
 EXCHANGES = 25

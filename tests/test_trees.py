@@ -5,7 +5,7 @@ from itertools import product
 import numpy as np
 import pytest
 
-from tcplan.search.trees import assigned_trees, is_mixed, leaves, shape_of, shapes
+from tcplan.trees import assigned_trees, is_mixed, leaves, shape_of, shapes
 
 
 # Number of series-parallel networks with n unlabelled edges: sequence A000084 of the OEIS (from memory).

@@ -8,6 +8,7 @@ legs of one material in one node are one leg, so a node holds each material at m
 from __future__ import annotations
 
 from collections.abc import Iterator
+from dataclasses import dataclass
 from functools import lru_cache
 from typing import TypeAlias, Union
 
@@ -136,3 +137,35 @@ def shape_of(tree: Tree) -> Tree:
         return node[0], tuple(numbered(child) for child in node[1])
 
     return numbered(tree)
+
+
+@dataclass(frozen=True, slots=True)
+class Pair:
+    """Two members and the position of the share of the first."""
+
+    series: bool
+    share: int
+    first: Pair | int
+    second: Pair | int
+
+
+def paired(shape: Tree) -> Pair | int:
+    """Return a shape (leaves numbered from the left) as nested pairs; shares numbered from the root."""
+    count = 0
+
+    def node(tree: Tree) -> Pair | int:
+        nonlocal count
+        if isinstance(tree, int):
+            return tree
+        kind, children = tree
+        return nested(kind == SERIES, list(children))
+
+    def nested(series: bool, children: list[Tree]) -> Pair | int:
+        nonlocal count
+        if len(children) == 1:
+            return node(children[0])
+        mine, count = count, count + 1
+        first = node(children[0])
+        return Pair(series, mine, first, nested(series, children[1:]))
+
+    return node(shape)

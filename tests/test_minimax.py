@@ -4,7 +4,7 @@ import numpy as np
 import pytest
 from scipy.optimize import linprog
 
-from tcplan.search.minimax import solve_fractional, solve_game
+from tcplan.minimax import solve_fractional, solve_game
 
 
 def highs_value(payoff):

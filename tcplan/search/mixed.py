@@ -1,0 +1,249 @@
+"""Mixed networks: a grid over the inner shares with the outer share exact, then a polish.
+
+Every tree of a shape is searched at once: the inner shares on a grid that is dense at its ends, the
+outermost share by golden section (the figure is quasi-convex in it). The best grid minima of each
+shape are polished by linear programmes with a trust region and node exchange. No random starts.
+"""
+
+from __future__ import annotations
+
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass
+from itertools import groupby, product
+
+import numpy as np
+
+from tcplan.arrays import FloatArray, IntArray
+from tcplan.goal import Requirement
+from tcplan.material.model import Material
+from tcplan.search.curves import Path, log_ohms, log_shares, paths, ratio
+from tcplan.trees import Pair, Tree, leaves, paired, shape_of
+
+NODES = 13  # Chebyshev nodes a piece in the grid stage
+POINTS = {0: 1, 1: 16, 2: 12, 3: 6, 4: 4}  # grid points a share, by the number of inner shares
+GOLDEN = 0.5 * (5**0.5 - 1.0)
+SECTIONS = 18
+KEPT = 10  # grid minima that are polished, a shape
+CHUNK = 400_000  # numbers in one array of a chunk, about
+STEEP = 10.0  # of a violated limit (in ln) against the figure
+
+
+@dataclass(frozen=True, slots=True)
+class Sizes:
+    """Limits on every leg: its least share of the whole, and ln(ohms/total) by material.
+
+    ``lowest`` and ``highest`` follow the names of the materials; infinite where nothing is asked.
+    """
+
+    min_share: float
+    lowest: tuple[float, ...]
+    highest: tuple[float, ...]
+
+    @classmethod
+    def none(cls, count: int, min_share: float = 0.0) -> Sizes:
+        """Return no limit but the least share."""
+        return cls(min_share, (-np.inf,) * count, (np.inf,) * count)
+
+    def excess(self, path: Path, material: IntArray, shares: FloatArray) -> FloatArray:
+        """Return by how much (in ln) a leg breaks its limits; below zero inside them.
+
+        ``shares`` has the shares on its first axis, the trees of ``material`` on the next.
+        """
+        worst = np.full(shares.shape[1:], -np.inf)
+        if self.min_share > 0:
+            worst = np.maximum(worst, np.log(self.min_share) - log_shares(path, shares))
+        low, high = np.array(self.lowest)[material], np.array(self.highest)[material]
+        if np.isfinite(low).any() or np.isfinite(high).any():
+            own = log_ohms(path, shares)
+            grown = material.reshape(material.shape + (1,) * (own.ndim - material.ndim)).shape
+            worst = np.maximum(worst, np.maximum(low.reshape(grown) - own, own - high.reshape(grown)))
+        return worst
+
+
+@dataclass(frozen=True, slots=True)
+class Field:
+    """The goal at some temperatures, and the ratio of every material there."""
+
+    need: Requirement
+    names: tuple[str, ...]
+    piece: IntArray
+    T: FloatArray
+    weight: FloatArray
+    free: FloatArray
+    wanted: FloatArray
+    ratios: FloatArray
+
+    def figures(self, curve: FloatArray) -> FloatArray:
+        """Return the figure of ratios R(T)/R(T_ref), temperature last."""
+        drift = curve - self.wanted
+        plain = self.free == 0
+        out = np.zeros(curve.shape[:-1])
+        if plain.any():
+            out = np.max(np.abs(drift[..., plain]) / self.weight[plain], axis=-1)
+        if not plain.all():
+            band = np.ptp(drift[..., ~plain], axis=-1) / (2.0 * self.weight[~plain][0])
+            out = np.maximum(out, band)
+        return out
+
+
+def field_at(
+    need: Requirement, materials: Mapping[str, Material], names: tuple[str, ...], piece: IntArray, T: FloatArray
+) -> Field:
+    """Return the field at these pieces and temperatures [K]."""
+    pieces = need.pieces
+    return Field(
+        need,
+        names,
+        piece,
+        T,
+        np.array([p.weight for p in pieces])[piece],
+        np.array([1.0 if p.centred else 0.0 for p in pieces])[piece],
+        need.wanted(T),
+        np.stack([materials[name].ratio(T, need.reference) for name in names]),
+    )
+
+
+def spread_points(need: Requirement, count: int, *, chebyshev: bool) -> tuple[IntArray, FloatArray]:
+    """Return pieces and temperatures [K]: ``count`` over each piece, its ends included."""
+    z = np.cos(np.pi * np.arange(count) / (count - 1)) if chebyshev else np.linspace(1.0, -1.0, count)
+    pieces, T = [], []
+    for k, piece in enumerate(need.pieces):
+        points = np.unique(0.5 * (piece.low + piece.high) - 0.5 * (piece.high - piece.low) * z)
+        T.append(np.clip(points, piece.low, piece.high))
+        pieces.append(np.full(len(points), k))
+    return np.concatenate(pieces), np.concatenate(T)
+
+
+@dataclass(frozen=True, slots=True)
+class Start:
+    """One grid minimum: its tree, the materials of its legs, its shares and its figure."""
+
+    tree: Tree
+    shares: tuple[float, ...]
+    figure: float
+
+
+def inner_grid(count: int) -> FloatArray:
+    """Return points of ``count`` inner shares, shape (count, points), dense near 0 and 1."""
+    points = POINTS[count]
+    axis = np.sin(0.5 * np.pi * (np.arange(points) + 0.5) / points) ** 2
+    return np.array(list(product(axis, repeat=count))).T.reshape(count, -1)
+
+
+def by_shape(trees: Sequence[Tree]) -> Iterator[tuple[Tree, list[Tree]]]:
+    """Yield each shape and its trees, in a fixed order."""
+    ordered = sorted(trees, key=lambda tree: (repr(shape_of(tree)), repr(tree)))
+    for shape, group in groupby(ordered, key=shape_of):
+        yield shape, list(group)
+
+
+def _outer_exact(
+    pair: Pair, legs: list[FloatArray], inner: FloatArray, field: Field, excess: _Excess
+) -> tuple[FloatArray, FloatArray]:
+    """Return the best outermost share and its figure, both of shape (trees, points)."""
+    shares = [np.zeros((1, 1, 1)), *(row[None, :, None] for row in inner)]
+    first, second = ratio(pair.first, legs, shares), ratio(pair.second, legs, shares)
+    if not pair.series:
+        first, second = 1.0 / first, 1.0 / second
+
+    def figure(x: FloatArray) -> FloatArray:
+        mixed = x[..., None] * first + (1.0 - x[..., None]) * second
+        value = field.figures(mixed if pair.series else 1.0 / mixed)
+        return value + STEEP * np.maximum(excess.at(x), 0.0)
+
+    shape = np.broadcast_shapes(first.shape[:-1], second.shape[:-1])
+    low, high = np.full(shape, 1e-6), np.full(shape, 1.0 - 1e-6)
+    a, b = high - GOLDEN * (high - low), low + GOLDEN * (high - low)
+    fa, fb = figure(a), figure(b)
+    for _ in range(SECTIONS):
+        left = fa < fb
+        high, low = np.where(left, b, high), np.where(left, low, a)
+        new = np.where(left, high - GOLDEN * (high - low), low + GOLDEN * (high - low))
+        f_new = figure(new)
+        a, b = np.where(left, new, b), np.where(left, a, new)
+        fa, fb = np.where(left, f_new, fb), np.where(left, fa, f_new)
+    best = np.where(fa < fb, a, b)
+    return best, np.minimum(fa, fb)
+
+
+@dataclass(frozen=True, slots=True)
+class _Excess:
+    """How far the legs of many trees break their limits, as a function of the outermost share."""
+
+    routes: tuple[Path, ...]
+    materials: IntArray
+    inner: FloatArray
+    sizes: Sizes
+
+    def at(self, x: FloatArray) -> FloatArray:
+        shares = np.empty((len(self.inner) + 1, *x.shape))
+        shares[0] = x
+        shares[1:] = self.inner[:, None, :]
+        worst = np.full(x.shape, -np.inf)
+        for leg, path in enumerate(self.routes):
+            worst = np.maximum(worst, self.sizes.excess(path, self.materials[:, leg], shares))
+        return worst
+
+
+def _grid_minima(values: FloatArray, count: int) -> FloatArray:
+    """Return which points of a grid over ``count`` shares are not above any neighbour."""
+    if count == 0:
+        return np.ones_like(values, dtype=bool)
+    points = POINTS[count]
+    cube = values.reshape(-1, *([points] * count))
+    least = np.ones_like(cube, dtype=bool)
+    for axis in range(1, count + 1):
+        pad = [(0, 0)] * cube.ndim
+        pad[axis] = (1, 1)
+        wide = np.pad(cube, pad, constant_values=np.inf)
+        before = np.take(wide, range(points), axis=axis)
+        after = np.take(wide, range(2, points + 2), axis=axis)
+        least &= (cube <= before) & (cube <= after)
+    return least.reshape(values.shape)
+
+
+def grid_starts(trees: Sequence[Tree], field: Field, sizes: Sizes, kept: int = KEPT) -> list[Start]:
+    """Return the best grid minima of every shape, best first.
+
+    Parameters
+    ----------
+    trees : sequence of Tree
+        Of two legs at least.
+    field : Field
+        The goal at a few temperatures.
+    sizes : Sizes
+    kept : int
+        How many a shape.
+    """
+    found: list[Start] = []
+    for shape, group in by_shape(trees):
+        pair = paired(shape)
+        if isinstance(pair, int):
+            continue
+        inner = inner_grid(len(leaves(shape)) - 2)
+        own: list[Start] = []
+        step = max(1, CHUNK // (inner.shape[1] * len(field.T)))
+        for k in range(0, len(group), step):
+            own.extend(_chunk_starts(pair, group[k : k + step], inner, field, sizes, kept))
+        found.extend(sorted(own, key=lambda start: (start.figure, repr(start.tree)))[:kept])
+    return sorted(found, key=lambda start: (start.figure, repr(start.tree)))
+
+
+def _chunk_starts(
+    pair: Pair, group: list[Tree], inner: FloatArray, field: Field, sizes: Sizes, kept: int
+) -> list[Start]:
+    materials = np.array([leaves(tree) for tree in group])
+    legs = [field.ratios[materials[:, leg]][:, None, :] for leg in range(materials.shape[1])]
+    excess = _Excess(paths(pair), materials, inner, sizes)
+    outer, figure = _outer_exact(pair, legs, inner, field, excess)
+    outer, figure = np.broadcast_arrays(outer, figure)
+    candidates = np.where(_grid_minima(figure, len(inner)), figure, np.inf).ravel()
+    order = np.argsort(candidates, kind="stable")[: 2 * kept]
+    starts = []
+    for at in order:
+        if not np.isfinite(candidates[at]):
+            break
+        tree, point = divmod(int(at), figure.shape[1])
+        shares = (float(outer[tree, point]), *inner[:, point].tolist())
+        starts.append(Start(group[tree], shares, float(figure[tree, point])))
+    return starts
