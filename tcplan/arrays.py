@@ -12,3 +12,6 @@ FloatArray: TypeAlias = npt.NDArray[np.float64]
 
 IntArray: TypeAlias = npt.NDArray[np.intp]
 """Array of positions."""
+
+BoolArray: TypeAlias = npt.NDArray[np.bool_]
+"""Array of truth values."""

@@ -32,19 +32,45 @@ Parameter: TypeAlias = Literal["ohm_per_square", "tc1", "tc2"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
-class Space:
-    """A set of one-node networks: which materials, how many, and the least share of each.
+class Sizes:
+    """What can be made: limits on the value of a leg by material, and on the area of all legs.
 
-    ``fixed`` are members that are given. Together they hold a share of the whole inside
-    ``fixed_share`` (0, 0 when there are none); the chosen legs hold the rest.
+    The tuples follow the materials of the space. Values are in ohm at the reference temperature,
+    infinite (or 0) where nothing is asked; ``area_per_ohm`` is in m^2/ohm, 0 where no area is known.
     """
 
-    arrangement: Literal["single", "series", "parallel"]
+    least_ohms: tuple[float, ...]
+    most_ohms: tuple[float, ...]
+    area_per_ohm: tuple[float, ...]
+    max_area: float = float("inf")
+
+    @property
+    def bounded(self) -> bool:
+        """Whether any limit is asked."""
+        values = any(v > 0 for v in self.least_ohms) or any(v < float("inf") for v in self.most_ohms)
+        return values or self.max_area < float("inf")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Space:
+    """A set of networks: which materials, how many of them and of legs, and what a leg may be.
+
+    ``fixed`` are members that are given. Together they hold a share of the whole inside
+    ``fixed_share`` (0, 0 when there are none); the chosen legs hold the rest. ``ohms`` is the total,
+    None when the share of the fixed members sets it. ``legs`` counts the chosen legs of a mixed network,
+    and ``fixed_in_parallel`` says where its fixed members are.
+    """
+
+    arrangement: Arrangement
     materials: tuple[str, ...]
     most: int
     min_share: float
     fixed: tuple[Leg, ...] = ()
     fixed_share: tuple[float, float] = (0.0, 0.0)
+    ohms: float | None = None
+    sizes: Sizes | None = None
+    legs: int = 1
+    fixed_in_parallel: bool = False
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -52,11 +78,13 @@ class Certificate:
     """Dual vectors that bound the figure of every network of a space.
 
     ``nodes`` are (piece of the requirement, temperature [K]); each row of ``weights`` holds one
-    signed weight a node. Any weights give a true bound; good ones give a tight one.
+    signed weight a node. Any weights give a true bound; good ones give a tight one. ``tangents`` are
+    (support, shares): points at which the area of a parallel mix, convex in its shares, is cut.
     """
 
     nodes: tuple[tuple[int, float], ...]
     weights: tuple[tuple[float, ...], ...]
+    tangents: tuple[tuple[tuple[int, ...], tuple[float, ...]], ...] = ()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -156,6 +184,7 @@ class Option:
     id: str
     network: Network
     squares: tuple[float | None, ...]
+    areas: tuple[float | None, ...]
     nominal: Nominal
     worst_case: WorstCase | None
     proof: Proof
@@ -167,10 +196,21 @@ class Option:
         """The kind of network."""
         return arrangement(self.network)
 
+    @property
+    def area(self) -> float | None:
+        """The area of all legs [m^2]; None when that of one is not known."""
+        known = [area for area in self.areas if area is not None]
+        return sum(known) if len(known) == len(self.areas) else None
+
     def to_dict(self) -> dict[str, Any]:
         """Return the option as plan.json holds it."""
         rows = zip(
-            leg_names(len(self.squares)), legs(self.network), shares(self.network), self.squares, strict=True
+            leg_names(len(self.squares)),
+            legs(self.network),
+            shares(self.network),
+            self.squares,
+            self.areas,
+            strict=True,
         )
         return {
             "id": self.id,
@@ -179,8 +219,15 @@ class Option:
             "network": network_text(self.network),
             "tree": tree(self.network),
             "legs": [
-                {"id": i, "material": leg.material, "ohms": leg.ohms, "share": share, "squares": squares}
-                for i, leg, share, squares in rows
+                {
+                    "id": i,
+                    "material": leg.material,
+                    "ohms": leg.ohms,
+                    "share": share,
+                    "squares": squares,
+                    "area_m2": area,
+                }
+                for i, leg, share, squares, area in rows
             ],
             "nominal": asdict(self.nominal),
             "worst_case": asdict(self.worst_case) if self.worst_case else None,

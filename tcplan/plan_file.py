@@ -36,6 +36,7 @@ class _LegRow:
     ohms: float
     share: float
     squares: float | None
+    area_m2: float | None
 
 
 @dataclass(frozen=True, slots=True)
@@ -81,6 +82,7 @@ def _option(row: _OptionRow, where: str) -> Option:
         role=row.role,
         network=network,
         squares=tuple(leg.squares for leg in row.legs),
+        areas=tuple(leg.area_m2 for leg in row.legs),
         nominal=row.nominal,
         worst_case=row.worst_case,
         proof=row.proof,

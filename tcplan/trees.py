@@ -10,9 +10,9 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass
 from functools import lru_cache
-from typing import TypeAlias, Union
+from typing import TypeAlias
 
-Tree: TypeAlias = Union[int, tuple[str, tuple["Tree", ...]]]
+Tree: TypeAlias = int | tuple[str, tuple["Tree", ...]]
 SERIES, PARALLEL = "series", "parallel"
 
 
@@ -118,6 +118,13 @@ def assigned_trees(size: int, materials: int, most: int) -> tuple[Tree, ...]:
         *_nodes(SERIES, size, materials, most, True),
         *_nodes(PARALLEL, size, materials, most, True),
     )
+
+
+def with_fixed(tree: Tree, kind: str, fixed: int) -> Tree:
+    """Return a tree with the fixed members (a leaf) as first child of a top node of a kind."""
+    if not isinstance(tree, int) and tree[0] == kind:
+        return kind, (fixed, *tree[1])
+    return kind, (fixed, tree)
 
 
 def is_mixed(tree: Tree) -> bool:

@@ -54,7 +54,7 @@ def test_the_keys_are_those_of_the_design(plan):
         "proof",
         "verdict",
     }
-    assert set(option["legs"][0]) == {"id", "material", "ohms", "share", "squares"}
+    assert set(option["legs"][0]) == {"id", "material", "ohms", "share", "squares", "area_m2"}
     assert set(option["nominal"]) == {
         "peak_ppm",
         "at_degC",

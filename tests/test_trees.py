@@ -17,9 +17,7 @@ def test_shapes_are_those_of_the_known_sequence(size, count):
 
 # Independent prototype: six materials 30 / 220 / 1260 trees of 2 / 3 / 4 legs (at most 3 materials), twelve 132 /
 # 2024 / 12672.
-@pytest.mark.parametrize(
-    ("materials", "counts"), [(6, (30, 220, 1260)), (12, (132, 2024))]
-)
+@pytest.mark.parametrize(("materials", "counts"), [(6, (30, 220, 1260)), (12, (132, 2024))])
 def test_assignments(materials, counts):
     for size, count in enumerate(counts, start=2):
         trees = assigned_trees(size, materials, 3)

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
+from typing import Any
 
 from tcplan.brief.model import SEARCHED, Fixed, Place, Searched, SearchRules, Target
 from tcplan.goal import Goal
@@ -60,6 +61,7 @@ def read_rules(
     share = table.quantity("min_share", "1") if table.has("min_share") else 0.0
     if share is not None and not 0 <= share <= 0.5:
         table.refuse("min_share", f"{share * 100:g} %", "0 % to 50 %")
+    sizes = _sizes(table)
     fixed_names = {member.leg.material for member in fixed}
     chosen = use or tuple(name for name in materials if name not in fixed_names)
     return SearchRules(
@@ -68,21 +70,38 @@ def read_rules(
         max_materials=int(table.number("max_materials") or 2),
         max_legs=int(table.number("max_legs") or 3),
         min_share=share or 0.0,
+        **sizes,
     )
+
+
+def _sizes(table: TableReader) -> dict[str, Any]:
+    """Return what the brief says of sizes, by the names of the rules; defaults stay out."""
+    found: dict[str, Any] = {}
+    for key in ("min_squares", "max_squares"):
+        if (number := table.number(key)) is not None:
+            found[key] = number
+    if found.get("min_squares", 5.0) >= found.get("max_squares", 3000.0):
+        table.refuse(
+            "max_squares", "max_squares not above min_squares", "more than min_squares (5 by default)"
+        )
+    for key, unit in (("min_length", "m"), ("max_area", "m^2")):
+        if table.has(key) and (size := table.above_zero(key, unit)) is not None:
+            found[key] = size
+    values = table.tuple_of(table.table.get("stock_values"), ("ohm", "ohm"), "stock_values")
+    if values is not None:
+        if not 0 < values[0] < values[1]:
+            table.refuse(
+                "stock_values", "values that do not rise from above zero", "the least, then the largest"
+            )
+        found["stock_values"] = values
+    return found
 
 
 def _arrangements(table: TableReader, fixed: tuple[Fixed, ...]) -> tuple[Searched, ...]:
     """Return the arrangements to search; a fixed member leaves only the one that holds it."""
     listed = table.texts("arrangements") or SEARCHED
-    if "mixed" in listed:
-        table.refuse(
-            "arrangements",
-            '"mixed"',
-            "single, series or parallel",
-            "This version searches one-node networks; a mixed network is checked under [given].",
-        )
     for name in listed:
-        if name not in (*SEARCHED, "mixed"):
+        if name not in SEARCHED:
             near = nearest_name(name, SEARCHED)
             table.refuse(
                 "arrangements",
@@ -94,9 +113,10 @@ def _arrangements(table: TableReader, fixed: tuple[Fixed, ...]) -> tuple[Searche
     if not fixed:
         return tuple(kept)
     place = fixed[0].place
-    if kept and place not in kept:
-        table.refuse("arrangements", ", ".join(kept), f"{place}: that is where the fixed member is")
-    return (place,)
+    possible: tuple[Searched, ...] = tuple(name for name in kept if name in (place, "mixed"))
+    if kept and not possible:
+        table.refuse("arrangements", ", ".join(kept), f"{place} or mixed: that is where the fixed member is")
+    return possible
 
 
 def read_given(reader: TableReader, materials: Mapping[str, Material], target: Target) -> Network | None:

@@ -11,8 +11,8 @@ from tcplan.network import Leg, Network, network_text
 from tcplan.ranges import TemperatureRange
 from tcplan.units import to_celsius
 
-Searched: TypeAlias = Literal["single", "series", "parallel"]
-SEARCHED: tuple[Searched, ...] = ("single", "series", "parallel")
+Searched: TypeAlias = Literal["single", "series", "parallel", "mixed"]
+SEARCHED: tuple[Searched, ...] = ("single", "series", "parallel", "mixed")
 Place: TypeAlias = Literal["series", "parallel"]
 
 
@@ -34,13 +34,22 @@ class Fixed:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class SearchRules:
-    """What the search may use. ``max_materials`` and ``max_legs`` count chosen ones only."""
+    """What the search may use. ``max_materials`` and ``max_legs`` count chosen ones only.
+
+    Sizes: squares of a film leg, length [m] of a wire leg, values [ohm] of a stock part, and the area
+    [m^2] of all film legs together.
+    """
 
     arrangements: tuple[Searched, ...] = SEARCHED
     use: tuple[str, ...] = ()
     max_materials: int = 2
     max_legs: int = 3
     min_share: float = 0.0
+    min_squares: float = 5.0
+    max_squares: float = 3000.0
+    min_length: float = 0.0
+    stock_values: tuple[float, float] = (1.0, 10e6)
+    max_area: float | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -80,6 +89,11 @@ class Brief:
                 "max_materials": rules.max_materials,
                 "max_legs": rules.max_legs,
                 "min_share": rules.min_share,
+                "min_squares": rules.min_squares,
+                "max_squares": rules.max_squares,
+                "min_length_m": rules.min_length,
+                "stock_values_ohms": list(rules.stock_values),
+                "max_area_m2": rules.max_area,
             },
             "fixed": [{"material": f.leg.material, "ohms": f.leg.ohms, "place": f.place} for f in self.fixed],
             "given": network_text(self.given) if self.given else None,

@@ -58,6 +58,11 @@ class _SearchShape(_Shape):
     max_materials: Annotated[int, Field(ge=1, le=12)] | None = None
     max_legs: Annotated[int, Field(ge=1, le=12)] | None = None
     min_share: str | None = _text("3 %")
+    min_squares: Annotated[float, Field(gt=0, le=1e6)] | None = None
+    max_squares: Annotated[float, Field(gt=0, le=1e9)] | None = None
+    min_length: str | None = _text("20 mm")
+    stock_values: _Pair | None = Field(default=None, examples=['["1 ohm", "10 Mohm"]'])
+    max_area: str | None = _text("0.02 mm^2")
 
 
 class _FixedShape(_Shape):

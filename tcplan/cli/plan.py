@@ -39,8 +39,8 @@ Examples:
 def command(brief: str, output: str | None, force: bool, as_json: bool) -> int:
     """Find the mix of materials for BRIEF (a TOML file; - is stdin), check it and write the result.
 
-    Writes plan.json, mix.csv, spec.md and the figures drift and slope-curvature (SVG and PNG), all of
-    them or none. The options and the verdict go to stdout, everything else to stderr.
+    Writes plan.json, mix.csv, spec.md and the figures network, drift and slope-curvature (SVG and PNG),
+    all of them or none. The options and the verdict go to stdout, everything else to stderr.
 
     Exit code 0: the limit is met, or none was given. 1: not met, or not judged. 3: proved that no
     network of these materials can meet it.

@@ -15,7 +15,7 @@ from tcplan.goal import Goal
 from tcplan.material.law import law_from_parameters
 from tcplan.material.spread import shifted_ratio
 from tcplan.network import deviated, resistance, used_materials, value
-from tcplan.plan import Plan
+from tcplan.plan import Option, Plan
 from tcplan.units import from_celsius, to_celsius
 
 SAMPLES = 201
@@ -62,9 +62,9 @@ def material_drift(plan: Plan, name: str) -> Curve:
     return _less_wanted(lambda T: material.ratio(T, at), plan)
 
 
-def chosen_drift(plan: Plan) -> Curve:
-    """Return the drift (a fraction) of the chosen option, all materials nominal."""
-    return _less_wanted(ratio_curve(plan.best.network, plan.by_name, reference(plan)), plan)
+def option_drift(plan: Plan, option: Option) -> Curve:
+    """Return the drift (a fraction) of an option, all materials nominal."""
+    return _less_wanted(ratio_curve(option.network, plan.by_name, reference(plan)), plan)
 
 
 def worst_drift(plan: Plan) -> Curve | None:

@@ -1,4 +1,4 @@
-"""Drift against temperature: each material alone with the chosen option, and that option's residue."""
+"""Drift against temperature: materials alone, the chosen option and the best others; then its residue."""
 
 from __future__ import annotations
 
@@ -13,14 +13,16 @@ from matplotlib.ticker import FuncFormatter
 
 from tcplan.arrays import FloatArray
 from tcplan.drift import Curve
+from tcplan.figures.alternatives import best_of_each, draw_alternatives, worth_enlarging
 from tcplan.figures.curves import (
     bounds,
     celsius,
-    chosen_drift,
     material_drift,
+    option_drift,
     temperatures,
     worst_drift,
 )
+from tcplan.figures.labels import page_box
 from tcplan.figures.limits import Unit, draw_limits, unit_of, view_of
 from tcplan.figures.style import (
     CHOSEN,
@@ -39,16 +41,23 @@ from tcplan.network import used_materials
 from tcplan.plan import Plan
 from tcplan.units import from_celsius
 
+LEGEND_LINE = 1.1  # height of a line of a legend, in sizes of its text
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class DriftArtists:
-    """What was drawn; ``others`` are the materials beyond those that have a colour."""
+    """What was drawn; ``others`` are the materials beyond those that have a colour.
+
+    ``options`` are the best of each arrangement by kind; ``residual_options`` those drawn below too.
+    """
 
     materials: dict[str, Line2D]
     others: tuple[Line2D, ...]
+    options: dict[str, Line2D]
     chosen: Line2D
     limits: tuple[Line2D | PolyCollection, ...]
     residual: Line2D
+    residual_options: dict[str, Line2D]
     worst: Line2D | None
     residual_limits: tuple[Line2D | PolyCollection, ...]
     peaks: tuple[Line2D, ...]
@@ -57,14 +66,15 @@ class DriftArtists:
 
 
 def draw_drift(ax: Axes, residual_ax: Axes, plan: Plan) -> DriftArtists:
-    """Draw the drift of every material alone and of the chosen option, and below it that option alone.
+    """Draw the drift of every material alone and of the options, and below it the chosen option.
 
     Parameters
     ----------
     ax : Axes
         For all curves on one scale. Legends go to the right of the axes, outside.
     residual_ax : Axes
-        For the chosen option at its own scale, with its verified peak and its worst case.
+        For the chosen option at its own scale, with its verified peak and its worst case; and for
+        the options that cannot be told from it above, as far as they fit.
     plan : Plan
 
     Returns
@@ -72,24 +82,30 @@ def draw_drift(ax: Axes, residual_ax: Axes, plan: Plan) -> DriftArtists:
     DriftArtists
     """
     T = temperatures(plan)
-    own, worst = chosen_drift(plan), worst_drift(plan)
+    own, worst, best = option_drift(plan, plan.best), worst_drift(plan), best_of_each(plan)
     singles = {material.name: material_drift(plan, material.name)(T) for material in plan.materials}
+    drifts = {kind: option_drift(plan, option)(T) for kind, option in best.items()}
     limits = bounds(plan, own)
-    view = view_of([*singles.values(), own(T)], limits)
+    view = view_of([*singles.values(), *drifts.values(), own(T)], limits)
     unit = unit_of(view)
     material_lines, others = _draw_singles(ax, plan, celsius(T), singles, unit)
+    option_lines = draw_alternatives(ax, best, celsius(T), drifts, unit)
     (chosen,) = ax.plot(celsius(T), own(T) * unit.factor, color=CHOSEN, lw=2.8, zorder=5)
     chosen.set_label(f"{plan.chosen} (chosen)")
     upper_limits = draw_limits(ax, limits, unit, view)
-    _finish(ax, plan, unit, view, "Each material alone, and the chosen option")
+    title = "the chosen option and the best others" if best else "and the chosen option"
+    _finish(ax, plan, unit, view, f"Each material alone, {title}")
     ax.set_xlabel("")
     ax.tick_params(labelbottom=False)
 
     judged = worst if worst and plan.limit.judge == "worst-case" else own
     limits = bounds(plan, judged)
-    view = view_of([own(T), *([worst(T)] if worst else [])], limits)
+    shown = [own(T), *([worst(T)] if worst else [])]
+    near = worth_enlarging(drifts, own(T), view, view_of(shown, limits))
+    view = view_of([*shown, *near.values()], limits)
     unit = unit_of(view)
     residual, worst_line, peaks = _draw_residual(residual_ax, plan, T, (own, worst), unit)
+    near_lines = draw_alternatives(residual_ax, best, celsius(T), near, unit)
     lower_limits = draw_limits(
         residual_ax, limits, unit, view, "around the worst case" if judged is worst else ""
     )
@@ -98,9 +114,11 @@ def draw_drift(ax: Axes, residual_ax: Axes, plan: Plan) -> DriftArtists:
     return DriftArtists(
         materials=material_lines,
         others=others,
+        options=option_lines,
         chosen=chosen,
         limits=upper_limits,
         residual=residual,
+        residual_options=near_lines,
         worst=worst_line,
         residual_limits=lower_limits,
         peaks=peaks,
@@ -141,7 +159,7 @@ def _draw_residual(
     """Draw the chosen option, its worst device, and a mark at the peak of each."""
     own, worst = curves
     (residual,) = ax.plot(
-        celsius(T), own(T) * unit.factor, color=CHOSEN, lw=2.0, zorder=5, label="materials nominal"
+        celsius(T), own(T) * unit.factor, color=CHOSEN, lw=2.4, zorder=5, label="materials nominal"
     )
     peaks = [_mark(ax, own, plan.best.nominal.at_degC, unit, filled=True)]
     line = None
@@ -200,7 +218,9 @@ def _finish(ax: Axes, plan: Plan, unit: Unit, view: tuple[float, float], title: 
 
 
 def _legend(ax: Axes) -> Legend:
-    """Put the legend to the right of the axes, where it covers no curve."""
+    """Put the legend to the right of the axes, where it covers no curve; a long one is set closer."""
+    lines, page = sum(1 + label.count("\n") for label in ax.get_legend_handles_labels()[1]), page_box(ax)
+    room = (page.top - page.bottom) / (lines * SMALL_SIZE) - LEGEND_LINE
     legend = ax.legend(
         loc="upper left",
         bbox_to_anchor=(1.015, 1.0),
@@ -208,6 +228,7 @@ def _legend(ax: Axes) -> Legend:
         frameon=False,
         fontsize=SMALL_SIZE,
         handlelength=2.8,
+        labelspacing=min(0.5, max(0.0, room)),
     )
     for text in legend.get_texts():
         text.set_parse_math(False)

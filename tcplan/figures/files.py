@@ -59,14 +59,14 @@ def network_figure(plan: Plan) -> Figure:
     sketch = sketch_of(option.network)
     title = f"{option.id}: {format_ohms(value(option.network))} at {reference} \N{DEGREE SIGN}C"
     title = shortened(title, NETWORK_TITLE)
-    below, above, side = (24.0 if sketch.note else 8.0), 24.0, 9.0  # points
+    below, above, side = (24.0 if sketch.note else 8.0), 28.0, 9.0  # points
     words = max(text_width(title), text_width(sketch.note, SMALL_SIZE)) + 8.0
     across, up = max(sketch.size[0], words), sketch.size[1]
     width, height = across + 2.0 * side, below + up + above
     figure = Figure(figsize=(width / 72.0, height / 72.0))
     ax = figure.add_axes((side / width, below / height, across / width, up / height))
     draw_network(ax, option)
-    ax.set_title(title, loc="left", fontsize=TEXT_SIZE, parse_math=False)
+    ax.set_title(title, loc="left", fontsize=TEXT_SIZE, pad=9.0, parse_math=False)
     return figure
 
 
@@ -111,15 +111,18 @@ def _svg(figure: Figure, title: str, description: str) -> bytes:
 def _words(plan: Plan) -> dict[str, tuple[str, str]]:
     """Return the title and the description of each figure."""
     network = network_text(plan.best.network, lambda leg: f"{leg.material} {format_ohms(leg.ohms)}")
-    chosen = "".join(letter for letter in plan.chosen if letter.isprintable())  # XML has no control characters
     return {
-        "network": (f"Network of {chosen}", f"Schematic of {network}; + is series, || is parallel."),
+        "network": (
+            "Network of the chosen option",
+            f"Schematic of {network}, where + is series and || is parallel.",
+        ),
         "drift": (
-            f"Drift over temperature of {chosen}",
-            "Drift of each material alone and of the options; below, the chosen option at its own scale.",
+            "Drift over temperature",
+            "Each material alone, the chosen option and the best others; below, the chosen option at its "
+            "own scale, with its limits and its worst case.",
         ),
         "slope-curvature": (
-            "Slope and curvature of the materials and of the options",
-            "TC1 and TC2 of materials and options, with contours of equal peak drift.",
+            "Slope and curvature",
+            "TC1 and TC2 of the materials and the options, with contours of equal peak drift.",
         ),
     }

@@ -64,9 +64,7 @@ def sketch_of(network: Network) -> Sketch:
             return trial
     if trial is not None and trial.scale >= LEAST_SCALE:
         return trial
-    ids = tuple(
-        Label(above=name, below="", width=text_width(name)) for name in leg_names(len(legs(network)))
-    )
+    ids = tuple(Label(above=name, below="", width=text_width(name)) for name in leg_names(len(legs(network))))
     return _sketch(network, ids, IDS_NOTE)
 
 
@@ -95,7 +93,9 @@ def draw_network(ax: Axes, option: Option) -> NetworkArtists:
     wires.set_capstyle("projecting")
     ax.add_collection(wires, autolim=False)
     return NetworkArtists(
-        boxes={name: _box(ax, leg.corner, leg.size, scale) for name, leg in zip(names, plan.legs, strict=True)},
+        boxes={
+            name: _box(ax, leg.corner, leg.size, scale) for name, leg in zip(names, plan.legs, strict=True)
+        },
         words={
             name: tuple(_word(ax, at, text, scale) for text, at in leg.lines)
             for name, leg in zip(names, plan.legs, strict=True)
@@ -152,6 +152,7 @@ def _fit(ax: Axes, drawing: Schematic) -> float:
 
 def _box(ax: Axes, corner: Point, size: tuple[float, float], scale: float) -> Rectangle:
     box = Rectangle(corner, *size, facecolor="white", edgecolor=CHOSEN, linewidth=1.0 * scale, zorder=3)
+    box.set_clip_on(False)
     ax.add_artist(box)
     return box
 
@@ -171,6 +172,7 @@ def _word(ax: Axes, at: Point, text: str, scale: float) -> Text:
 
 def _circles(ax: Axes, points: tuple[Point, ...], size: float, colour: str) -> Line2D:
     (circles,) = ax.plot(*zip(*points, strict=True) if points else ([], []), linestyle="none", zorder=4)
+    circles.set_clip_on(False)
     circles.set(marker="o", markersize=size, markerfacecolor=colour, markeredgecolor=CHOSEN)
     circles.set_markeredgewidth(size / 5.0)
     return circles

@@ -8,7 +8,7 @@ is opened: the drawing shows which wires meet, and that is the same. Nothing her
 from __future__ import annotations
 
 from collections import Counter
-from collections.abc import Iterator, Sequence
+from collections.abc import Collection, Iterator, Sequence
 from dataclasses import dataclass, field
 from itertools import accumulate, pairwise
 from typing import TypeAlias
@@ -22,12 +22,14 @@ BOX = (33.0, 11.0)  # a resistor is a plain rectangle, three times as long as hi
 SMALL_BOX = (15.0, 6.0)  # under an id alone
 LINE = 9.6  # height of a line of text of 8 points
 CLEAR = 2.0  # between a box and its words
-STUB = 6.0  # of wire at each end of a box, at least
-APART = 4.0  # from words to the end of their cell
+STUB = 9.0  # of wire at each end of a box, at least
+SMALL_STUB = 4.5
+APART = 6.0  # from words to the end of their cell
 LEAD = 9.0  # of wire outside the rails
 RUNG_GAP = 7.0  # between the words of one rung and of the next
 SNAP = 12.0  # a lead this near to a rung is drawn level with it
 TERMINAL = 2.4  # radius
+EDGE = 1.0  # around all
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -90,19 +92,32 @@ def schematic(network: Network, labels: Sequence[Label]) -> Schematic:
         No box, line of words or wire covers another.
     """
     block = _block(network, iter(labels))
-    y, left = block.below, 2.0 * TERMINAL
+    y, left = block.below + EDGE, 2.0 * TERMINAL + EDGE
     right = left + block.width
     drawn = _Pieces()
     block.place(drawn, left, right, y)
     ends = Counter(end for wire in drawn.wires for end in wire)
+    dots = tuple(point for point, count in ends.items() if count > 2)
     return Schematic(
         legs=tuple(drawn.legs),
-        wires=tuple(drawn.wires),
-        dots=tuple(point for point, count in ends.items() if count > 2),
+        wires=_joined(drawn.wires, dots),
+        dots=dots,
         terminals=((left - TERMINAL, y), (right + TERMINAL, y)),
         width=right + left,
-        height=block.above + block.below,
+        height=block.above + block.below + 2.0 * EDGE,
     )
+
+
+def _joined(wires: Sequence[Wire], dots: Collection[Point]) -> tuple[Wire, ...]:
+    """Return the wires with level ones that meet away from a dot made one, so that no seam is seen."""
+    upright = [wire for wire in wires if wire[0][0] == wire[1][0]]
+    whole: list[Wire] = []
+    for start, end in sorted(set(wires) - set(upright), key=lambda wire: (wire[0][1], wire[0][0])):
+        if whole and whole[-1][1] == start and start not in dots:
+            whole[-1] = (whole[-1][0], end)
+        else:
+            whole.append((start, end))
+    return (*whole, *upright)
 
 
 # --- blocks: a width, and what lies above and below the line through them ----------------------------
@@ -116,8 +131,9 @@ class _Pieces:
     wires: list[Wire] = field(default_factory=list)
 
     def wire(self, start: Point, end: Point) -> None:
+        """Add a wire, to the right or upwards, unless it has no length."""
         if start != end:
-            self.wires.append((start, end))
+            self.wires.append((min(start, end), max(start, end)))
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -194,10 +210,10 @@ def _opened(network: Series | Parallel) -> Iterator[Network]:
 
 
 def _leg_block(label: Label) -> _LegBlock:
-    size = BOX if label.below else SMALL_BOX
+    size, stub = (BOX, STUB) if label.below else (SMALL_BOX, SMALL_STUB)
     half, words = 0.5 * size[1], CLEAR + LINE
     return _LegBlock(
-        width=max(size[0] + 2.0 * STUB, label.width + 2.0 * APART),
+        width=max(size[0] + 2.0 * stub, label.width + 2.0 * APART),
         above=half + words,
         below=half + (words if label.below else 0.0),
         label=label,

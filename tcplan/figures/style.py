@@ -41,6 +41,13 @@ LIMIT_FILL = "#f6dde1"
 WORST = "#336688"
 OTHER = "#8c8c8c"
 FAINT = "#d9d9d9"
+OPTION = "#808080"
+OPTION_DASHES: dict[str, Dash] = {
+    "series": (0.0, (8.0, 2.0)),
+    "parallel": (0.0, (3.0, 1.3)),
+    "mixed": (0.0, (6.0, 1.3, 1.2, 1.3)),
+    "given": (0.0, (1.2, 1.2)),
+}
 WORST_DASH: Dash = (0.0, (4.0, 2.0))
 LIMIT_DASHES: tuple[Dash, ...] = (
     (0.0, (7.0, 2.0, 1.5, 2.0)),

@@ -175,6 +175,17 @@ class Material:
             return None
         return self._own_value(ohms, reference) / self.ohm_per_metre
 
+    def area(self, ohms: float, reference: float) -> float | None:
+        """Return the area [m^2] of a film for a value [ohm] at ``reference`` [K]; ``None`` if unknown.
+
+        Squares times the drawn width times the pitch (width and spacing); ends and dummies not included.
+        """
+        squares = self.squares(ohms, reference)
+        if squares is None or self.film is None:
+            return None
+        width = self.film.preferred_width or self.film.min_width
+        return squares * width * (width + (self.film.spacing or 0.0))
+
     def to_dict(self) -> dict[str, Any]:
         """Return JSON data that need nothing else; the inverse of `material_from_dict`."""
         return {

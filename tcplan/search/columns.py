@@ -12,7 +12,7 @@ where a piece is not centred). The last column stands for the fixed members toge
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
@@ -20,7 +20,8 @@ import numpy as np
 from tcplan.arrays import FloatArray, IntArray
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
-from tcplan.network import Network, Parallel, Series, resistance, value
+from tcplan.mixes import fixed_group
+from tcplan.network import resistance, value
 from tcplan.plan import Space
 
 GRID = 129  # points a piece on which violations are looked for before they are refined
@@ -103,29 +104,3 @@ class Programme:
             temperatures.append(points)
             pieces.append(np.full(len(points), index))
         return self.rows(np.concatenate(pieces), np.concatenate(temperatures))
-
-
-def fixed_group(space: Space) -> Network | None:
-    """Return the fixed members as one network, or None."""
-    if len(space.fixed) < 2:
-        return space.fixed[0] if space.fixed else None
-    return Parallel(space.fixed) if space.arrangement == "parallel" else Series(space.fixed)
-
-
-def vertex_weights(space: Space, support: Sequence[int], count: int) -> FloatArray:
-    """Return the vertices of the shares that a support allows, shape (count + 1, vertices).
-
-    Every leg of the support holds at least ``min_share``, the fixed members a share u between
-    their bounds, and one leg at a time holds the rest.
-    """
-    columns = []
-    for u in sorted(set(space.fixed_share)):
-        rest = 1.0 - u - len(support) * space.min_share
-        for i in support:
-            column = np.zeros(count + 1)
-            column[list(support)] = space.min_share
-            column[i] += rest
-            column[count] = u
-            if rest >= -1e-12:
-                columns.append(column)
-    return np.stack(columns, axis=1) if columns else np.zeros((count + 1, 0))

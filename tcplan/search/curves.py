@@ -61,7 +61,7 @@ def paths(pair: Pair | int) -> tuple[Path, ...]:
     """Return the path of every leg from left to right."""
     if isinstance(pair, int):
         return (Path(()),)
-    found = []
+    found: list[Path] = []
     for member, first in ((pair.first, True), (pair.second, False)):
         found.extend(Path(((pair.share, first, pair.series), *path.steps)) for path in paths(member))
     return tuple(found)

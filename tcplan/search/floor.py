@@ -3,16 +3,16 @@
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import replace
 
 import numpy as np
 
 from tcplan.arrays import FloatArray
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
-from tcplan.plan import FloorEvidence, Space
-from tcplan.search.columns import Programme, Rows, vertex_weights
 from tcplan.minimax import solve_fractional
+from tcplan.mixes import simplex_vertices
+from tcplan.plan import FloorEvidence, Space
+from tcplan.search.columns import Programme, Rows
 
 NODES = 41
 
@@ -39,7 +39,7 @@ def floor_evidence(
     programme = Programme(space, need, materials, names)
     rows = programme.spread_rows(NODES, chebyshev=True)
     r = programme.ratios(rows.temperature)
-    weights = vertex_weights(replace(space, min_share=0.0), range(len(names)), len(names))
+    weights = simplex_vertices(space, range(len(names)), least_share=False).T
     limit = next((p.weight * figure for p in need.pieces if p.centred), 0.0)
     sides = [_side(r, need, rows, c) for c in {-limit, limit}]
     numerator = np.hstack([n @ weights for n, _ in sides])

@@ -10,19 +10,17 @@ import numpy as np
 from tcplan.arrays import FloatArray
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
+from tcplan.mixes import fixed_group
 from tcplan.network import Leg, Network, Parallel, Series, value
 from tcplan.plan import Certificate, Proposal, Space
-from tcplan.search.columns import Programme, fixed_group
+from tcplan.search.columns import Programme
 from tcplan.search.solver import VANISHED, Mix, Solver
 from tcplan.search.supports import best_mixes
 
 
-def network_of(programme: Programme, shares: FloatArray, ohms: float | None) -> Network:
-    """Return the network that has these shares; the fixed members keep their own values.
-
-    ``ohms`` is the total; None when the share of the fixed members sets it.
-    """
-    space = programme.space
+def network_of(programme: Programme, shares: FloatArray) -> Network:
+    """Return the network that has these shares; the fixed members keep their own values."""
+    space, ohms = programme.space, programme.space.ohms
     parallel = space.arrangement == "parallel"
     group = fixed_group(space)
     if group is not None:
@@ -50,11 +48,26 @@ def certificate(solver: Solver) -> Certificate:
     size = len(rows.temperature)
     nodes = tuple((int(p), float(t)) for p, t in zip(rows.piece, rows.temperature, strict=True))
     weights = tuple(tuple(np.pad(y, (0, size - len(y))).tolist()) for y in solver.bank)
-    return Certificate(nodes=nodes, weights=weights)
+    tangents = tuple((support, at) for support, points in solver.tangents.items() for at in points)
+    return Certificate(nodes=nodes, weights=weights, tangents=tangents)
+
+
+def in_order(space: Space) -> Space:
+    """Return the space with its materials sorted by name, so that their order does not matter."""
+    order = sorted(range(len(space.materials)), key=lambda i: space.materials[i])
+    sizes = space.sizes
+    if sizes is not None:
+        sizes = replace(
+            sizes,
+            least_ohms=tuple(sizes.least_ohms[i] for i in order),
+            most_ohms=tuple(sizes.most_ohms[i] for i in order),
+            area_per_ohm=tuple(sizes.area_per_ohm[i] for i in order),
+        )
+    return replace(space, materials=tuple(space.materials[i] for i in order), sizes=sizes)
 
 
 def search_space(
-    space: Space, need: Requirement, materials: Mapping[str, Material], ohms: float | None, few: int = 3
+    space: Space, need: Requirement, materials: Mapping[str, Material], few: int = 3
 ) -> tuple[Proposal, ...]:
     """Return the best few networks of a space, best first, with the evidence for all of them.
 
@@ -63,17 +76,16 @@ def search_space(
     space : Space
     need : Requirement
     materials : mapping of name to Material
-    ohms : float or None
-        The total [ohm]; None when fixed members and their share set it.
     few : int
         How many are wanted.
     """
-    solver = Solver(Programme(space, need, materials, tuple(sorted(space.materials))))
+    space = in_order(space)
+    solver = Solver(Programme(space, need, materials, space.materials))
     mixes, complete = best_mixes(solver, few)
-    covered = space if complete else replace(space, most=len(space.materials), min_share=0.0)
+    covered = space if complete else replace(space, most=len(space.materials), min_share=0.0, sizes=None)
     evidence = certificate(solver)
     return tuple(
-        Proposal(network=network_of(solver.programme, mix.shares, ohms), space=covered, certificate=evidence)
+        Proposal(network=network_of(solver.programme, mix.shares), space=covered, certificate=evidence)
         for mix in mixes
     )
 
@@ -86,11 +98,12 @@ def least_total(
     In series that is the least total, in parallel the greatest. The least figure over shares
     of at least u never falls as u rises, so u is found by bisection. None when no share does.
     """
+    space = in_order(space)
     low, high = space.fixed_share
 
     def best(u: float) -> tuple[Solver, Mix | None]:
         tight = replace(space, fixed_share=(u, high))
-        solver = Solver(Programme(tight, need, materials, tuple(sorted(space.materials))))
+        solver = Solver(Programme(tight, need, materials, space.materials))
         mixes, _ = best_mixes(solver, 1)
         return solver, (mixes[0] if mixes else None)
 
@@ -113,7 +126,7 @@ def least_total(
             above, last_above = guess, (mix.figure - limit if mix else None)
     solver, mix = fits
     return Proposal(
-        network=network_of(solver.programme, mix.shares, None),
+        network=network_of(solver.programme, mix.shares),
         space=solver.programme.space,
         certificate=certificate(solver),
         role="least total" if space.arrangement == "series" else "greatest total",

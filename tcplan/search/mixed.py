@@ -16,7 +16,11 @@ import numpy as np
 from tcplan.arrays import FloatArray, IntArray
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
-from tcplan.search.curves import Path, log_ohms, log_shares, paths, ratio
+from tcplan.mixes import fixed_group
+from tcplan.network import resistance, value
+from tcplan.plan import Space
+from tcplan.search.curves import Path, paths, ratio
+from tcplan.search.limits import LegLimits
 from tcplan.trees import Pair, Tree, leaves, paired, shape_of
 
 NODES = 13  # Chebyshev nodes a piece in the grid stage
@@ -29,43 +33,9 @@ STEEP = 10.0  # of a violated limit (in ln) against the figure
 
 
 @dataclass(frozen=True, slots=True)
-class Sizes:
-    """Limits on every leg: its least share of the whole, and ln(ohms/total) by material.
-
-    ``lowest`` and ``highest`` follow the names of the materials; infinite where nothing is asked.
-    """
-
-    min_share: float
-    lowest: tuple[float, ...]
-    highest: tuple[float, ...]
-
-    @classmethod
-    def none(cls, count: int, min_share: float = 0.0) -> Sizes:
-        """Return no limit but the least share."""
-        return cls(min_share, (-np.inf,) * count, (np.inf,) * count)
-
-    def excess(self, path: Path, material: IntArray, shares: FloatArray) -> FloatArray:
-        """Return by how much (in ln) a leg breaks its limits; below zero inside them.
-
-        ``shares`` has the shares on its first axis, the trees of ``material`` on the next.
-        """
-        worst = np.full(shares.shape[1:], -np.inf)
-        if self.min_share > 0:
-            worst = np.maximum(worst, np.log(self.min_share) - log_shares(path, shares))
-        low, high = np.array(self.lowest)[material], np.array(self.highest)[material]
-        if np.isfinite(low).any() or np.isfinite(high).any():
-            own = log_ohms(path, shares)
-            grown = material.reshape(material.shape + (1,) * (own.ndim - material.ndim)).shape
-            worst = np.maximum(worst, np.maximum(low.reshape(grown) - own, own - high.reshape(grown)))
-        return worst
-
-
-@dataclass(frozen=True, slots=True)
 class Field:
     """The goal at some temperatures, and the ratio of every material there."""
 
-    need: Requirement
-    names: tuple[str, ...]
     piece: IntArray
     T: FloatArray
     weight: FloatArray
@@ -86,20 +56,43 @@ class Field:
         return out
 
 
-def field_at(
-    need: Requirement, materials: Mapping[str, Material], names: tuple[str, ...], piece: IntArray, T: FloatArray
-) -> Field:
-    """Return the field at these pieces and temperatures [K]."""
-    pieces = need.pieces
+@dataclass(frozen=True, slots=True)
+class Source:
+    """Where curves come from: the goal, the materials on offer, and the fixed members if there are any."""
+
+    need: Requirement
+    materials: Mapping[str, Material]
+    space: Space
+
+    def ratios(self, T: FloatArray, kinds: Sequence[int] | None = None) -> FloatArray:
+        """Return R(T)/R(T_ref) of every material and last of the fixed members, shape (.., T).
+
+        With ``kinds`` only these rows are worked out; the others are 1.
+        """
+        names, reference = self.space.materials, self.need.reference
+        out = np.ones((len(names) + 1, len(T)))
+        for k in range(len(names)) if kinds is None else kinds:
+            if k < len(names):
+                out[k] = self.materials[names[k]].ratio(T, reference)
+        group = fixed_group(self.space)
+        if group is not None:
+            fixed = {
+                leg.material: self.materials[leg.material].ratio(T, reference) for leg in self.space.fixed
+            }
+            out[-1] = resistance(group, fixed) / value(group)
+        return out
+
+
+def field_at(source: Source, piece: IntArray, T: FloatArray, kinds: Sequence[int] | None = None) -> Field:
+    """Return the field at these pieces and temperatures [K], of all materials or some."""
+    pieces = source.need.pieces
     return Field(
-        need,
-        names,
         piece,
         T,
         np.array([p.weight for p in pieces])[piece],
         np.array([1.0 if p.centred else 0.0 for p in pieces])[piece],
-        need.wanted(T),
-        np.stack([materials[name].ratio(T, need.reference) for name in names]),
+        source.need.wanted(T),
+        source.ratios(T, kinds),
     )
 
 
@@ -138,9 +131,17 @@ def by_shape(trees: Sequence[Tree]) -> Iterator[tuple[Tree, list[Tree]]]:
 
 
 def _outer_exact(
-    pair: Pair, legs: list[FloatArray], inner: FloatArray, field: Field, excess: _Excess
+    pair: Pair,
+    legs: list[FloatArray],
+    inner: FloatArray,
+    field: Field,
+    excess: _Excess,
+    outermost: float | None,
 ) -> tuple[FloatArray, FloatArray]:
-    """Return the best outermost share and its figure, both of shape (trees, points)."""
+    """Return the best outermost share and its figure, both of shape (trees, points).
+
+    With ``outermost`` that share is given, as it is for a fixed member of a given total.
+    """
     shares = [np.zeros((1, 1, 1)), *(row[None, :, None] for row in inner)]
     first, second = ratio(pair.first, legs, shares), ratio(pair.second, legs, shares)
     if not pair.series:
@@ -152,6 +153,9 @@ def _outer_exact(
         return value + STEEP * np.maximum(excess.at(x), 0.0)
 
     shape = np.broadcast_shapes(first.shape[:-1], second.shape[:-1])
+    if outermost is not None:
+        given = np.full(shape, outermost)
+        return given, figure(given)
     low, high = np.full(shape, 1e-6), np.full(shape, 1.0 - 1e-6)
     a, b = high - GOLDEN * (high - low), low + GOLDEN * (high - low)
     fa, fb = figure(a), figure(b)
@@ -168,21 +172,21 @@ def _outer_exact(
 
 @dataclass(frozen=True, slots=True)
 class _Excess:
-    """How far the legs of many trees break their limits, as a function of the outermost share."""
+    """How far many trees break their limits, as a function of the outermost share."""
 
     routes: tuple[Path, ...]
     materials: IntArray
     inner: FloatArray
-    sizes: Sizes
+    limits: LegLimits
 
     def at(self, x: FloatArray) -> FloatArray:
+        """Return the excess (in ln), shape of ``x`` (trees, points)."""
+        if not self.limits.any:
+            return np.full(x.shape, -np.inf)
         shares = np.empty((len(self.inner) + 1, *x.shape))
         shares[0] = x
         shares[1:] = self.inner[:, None, :]
-        worst = np.full(x.shape, -np.inf)
-        for leg, path in enumerate(self.routes):
-            worst = np.maximum(worst, self.sizes.excess(path, self.materials[:, leg], shares))
-        return worst
+        return self.limits.excess(self.routes, self.materials, shares)
 
 
 def _grid_minima(values: FloatArray, count: int) -> FloatArray:
@@ -202,7 +206,13 @@ def _grid_minima(values: FloatArray, count: int) -> FloatArray:
     return least.reshape(values.shape)
 
 
-def grid_starts(trees: Sequence[Tree], field: Field, sizes: Sizes, kept: int = KEPT) -> list[Start]:
+def grid_starts(
+    trees: Sequence[Tree],
+    field: Field,
+    limits: LegLimits,
+    kept: int = KEPT,
+    outermost: float | None = None,
+) -> list[Start]:
     """Return the best grid minima of every shape, best first.
 
     Parameters
@@ -211,9 +221,11 @@ def grid_starts(trees: Sequence[Tree], field: Field, sizes: Sizes, kept: int = K
         Of two legs at least.
     field : Field
         The goal at a few temperatures.
-    sizes : Sizes
+    limits : LegLimits
     kept : int
         How many a shape.
+    outermost : float, optional
+        The share of the first member of every tree, when it is given.
     """
     found: list[Start] = []
     for shape, group in by_shape(trees):
@@ -224,18 +236,24 @@ def grid_starts(trees: Sequence[Tree], field: Field, sizes: Sizes, kept: int = K
         own: list[Start] = []
         step = max(1, CHUNK // (inner.shape[1] * len(field.T)))
         for k in range(0, len(group), step):
-            own.extend(_chunk_starts(pair, group[k : k + step], inner, field, sizes, kept))
+            own.extend(_chunk_starts(pair, group[k : k + step], inner, field, limits, kept, outermost))
         found.extend(sorted(own, key=lambda start: (start.figure, repr(start.tree)))[:kept])
     return sorted(found, key=lambda start: (start.figure, repr(start.tree)))
 
 
 def _chunk_starts(
-    pair: Pair, group: list[Tree], inner: FloatArray, field: Field, sizes: Sizes, kept: int
+    pair: Pair,
+    group: list[Tree],
+    inner: FloatArray,
+    field: Field,
+    limits: LegLimits,
+    kept: int,
+    outermost: float | None,
 ) -> list[Start]:
     materials = np.array([leaves(tree) for tree in group])
     legs = [field.ratios[materials[:, leg]][:, None, :] for leg in range(materials.shape[1])]
-    excess = _Excess(paths(pair), materials, inner, sizes)
-    outer, figure = _outer_exact(pair, legs, inner, field, excess)
+    excess = _Excess(paths(pair), materials, inner, limits)
+    outer, figure = _outer_exact(pair, legs, inner, field, excess, outermost)
     outer, figure = np.broadcast_arrays(outer, figure)
     candidates = np.where(_grid_minima(figure, len(inner)), figure, np.inf).ravel()
     order = np.argsort(candidates, kind="stable")[: 2 * kept]

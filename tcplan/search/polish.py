@@ -8,17 +8,15 @@ more place than there are free shares, or limits hold the rest.
 
 from __future__ import annotations
 
-from collections.abc import Mapping
 from dataclasses import dataclass
 
 import numpy as np
 
-from tcplan.arrays import FloatArray, IntArray
-from tcplan.goal import Requirement
-from tcplan.material.model import Material
-from tcplan.search.curves import log_ohms, log_shares, path_slopes, paths, ratio, ratio_and_slopes
+from tcplan.arrays import FloatArray
 from tcplan.minimax import solve_game
-from tcplan.search.mixed import Field, Sizes, field_at, spread_points
+from tcplan.search.curves import paths, ratio, ratio_and_slopes
+from tcplan.search.limits import LegLimits
+from tcplan.search.mixed import Field, Source, field_at, spread_points
 from tcplan.trees import Pair
 
 GRID = 97
@@ -27,7 +25,8 @@ EDGE = 1e-9  # shares stay this far inside (0, 1)
 SMALLEST_STEP = 1e-10
 HARD = 1e3  # what a violated limit (in ln) counts as a figure
 SAFE = 1e-7  # limits (in ln) are kept with this to spare
-NEAR_PEAK = 1e-6
+PATIENCE, HOPELESS = 10, 1.5
+SLOW = 1e-7  # relative gain of a step; three such steps in a row end the polish
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,11 +45,10 @@ class Polisher:
 
     pair: Pair
     leg_materials: tuple[int, ...]
-    names: tuple[str, ...]
-    materials: Mapping[str, Material]
-    need: Requirement
-    sizes: Sizes
+    source: Source
+    limits: LegLimits
     grid: Field
+    outermost: float | None = None
 
     def _legs(self, field: Field) -> list[FloatArray]:
         return [field.ratios[m] for m in self.leg_materials]
@@ -60,68 +58,34 @@ class Polisher:
         return ratio(self.pair, self._legs(field), list(x))
 
     def peaks(self, x: FloatArray) -> Field:
-        """Return the field at the extremes of the drift, refined by parabolas."""
+        """Return the field at the extremes of the drift, placed by parabolas through the grid.
+
+        Where the peak lies is known to the square of the grid's step, and how high it is to the
+        fourth power, since the drift is flat there.
+        """
         drift = self.curve(self.grid, x) - self.grid.wanted
         piece, T = self.grid.piece, self.grid.T
-        edge = np.r_[True, piece[1:] != piece[:-1], True]
-        left, right = np.r_[np.nan, drift[:-1]], np.r_[drift[1:], np.nan]
-        left[edge[:-1]], right[edge[1:]] = np.nan, np.nan
-        extreme = ~((left > drift) | (right > drift)) | ~((left < drift) | (right < drift))
-        inside = extreme & ~np.isnan(left) & ~np.isnan(right)
-        ends = extreme & ~inside
-        moved = self._refined(x, piece[inside], T[inside])
-        return field_at(
-            self.need, self.materials, self.names, np.r_[piece[ends], piece[inside]], np.r_[T[ends], moved]
-        )
+        edge = np.concatenate([[True], piece[1:] != piece[:-1], [True]])
+        left, right = np.roll(drift, 1), np.roll(drift, -1)
+        left, right = np.where(edge[:-1], drift, left), np.where(edge[1:], drift, right)
+        extreme = ((left <= drift) & (right <= drift)) | ((left >= drift) & (right >= drift))
+        inner = extreme & ~edge[:-1] & ~edge[1:]
+        bend = left - 2.0 * drift + right
+        move = np.where(inner & (bend != 0), 0.5 * (left - right) / np.where(bend == 0, 1.0, bend), 0.0)
+        step = np.where(inner, np.roll(T, -1) - T, 0.0)
+        at = (T + step * np.clip(move, -1.0, 1.0))[extreme]
+        return field_at(self.source, piece[extreme], at, sorted(set(self.leg_materials)))
 
-    def _refined(self, x: FloatArray, piece: IntArray, T: FloatArray) -> FloatArray:
-        span = np.array([p.high - p.low for p in self.need.pieces])[piece] / (GRID - 1)
-        centre = T.copy()
-        for shrink in (1.0, 0.05):
-            if not len(T):
-                break
-            h = span * shrink
-            three = field_at(
-                self.need, self.materials, self.names, np.tile(piece, 3), np.concatenate([T - h, T, T + h])
-            )
-            f0, f1, f2 = np.split(self.curve(three, x) - three.wanted, 3)
-            bend = f0 - 2.0 * f1 + f2
-            move = np.where(np.abs(bend) > 1e-18, 0.5 * (f0 - f2) / np.where(bend == 0, 1.0, bend), 0.0)
-            T = T + h * np.clip(move, -1.0, 1.0)
-        return np.clip(T, centre - span, centre + span)
-
-    def excess(self, x: FloatArray) -> FloatArray:
-        """Return by how much (in ln) each limit of each leg is broken; below zero inside."""
-        rows = []
-        for leg, path in enumerate(paths(self.pair)):
-            if self.sizes.min_share > 0:
-                rows.append(np.log(self.sizes.min_share) - log_shares(path, x))
-            low, high = (side[self.leg_materials[leg]] for side in (self.sizes.lowest, self.sizes.highest))
-            if np.isfinite(low):
-                rows.append(low - log_ohms(path, x))
-            if np.isfinite(high):
-                rows.append(log_ohms(path, x) - high)
-        return np.array(rows)
-
-    def excess_slopes(self, x: FloatArray) -> FloatArray:
-        """Return the derivative of :meth:`excess` by the shares, shape (limits, shares)."""
-        rows = []
-        for leg, path in enumerate(paths(self.pair)):
-            if self.sizes.min_share > 0:
-                rows.append(-path_slopes(path, x, of_ohms=False))
-            low, high = (side[self.leg_materials[leg]] for side in (self.sizes.lowest, self.sizes.highest))
-            if np.isfinite(low):
-                rows.append(-path_slopes(path, x, of_ohms=True))
-            if np.isfinite(high):
-                rows.append(path_slopes(path, x, of_ohms=True))
-        return np.array(rows).reshape(-1, len(x))
+    def limit_rows(self, x: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Return by how much (in ln) each limit is broken, and the derivatives by the shares."""
+        return self.limits.rows(paths(self.pair), self.leg_materials, x)
 
     def merit(self, x: FloatArray) -> tuple[float, Field, float]:
         """Return the figure with broken limits added, the extremes that set it, and the excess."""
         peaks = self.peaks(x)
         figure = float(self.grid.figures(self.curve(self.grid, x)))
         figure = max(figure, float(peaks.figures(self.curve(peaks, x))))
-        rows = self.excess(x)
+        rows, _ = self.limit_rows(x)
         worst = float(rows.max()) + SAFE if len(rows) else -np.inf
         return figure + HARD * max(0.0, worst), peaks, worst
 
@@ -140,7 +104,10 @@ class Polisher:
         by_share = [slopes[k] / field.weight for k in range(len(x))]
         up = np.minimum(radius, 1.0 - EDGE - x)
         down = np.minimum(radius, x - EDGE)
-        limits, limit_slopes = (self.excess(x) + SAFE) * HARD, self.excess_slopes(x) * HARD
+        if self.outermost is not None:
+            up[0] = down[0] = 0.0
+        rows, row_slopes = self.limit_rows(x)
+        limits, limit_slopes = (rows + SAFE) * HARD, row_slopes * HARD
         columns = [np.r_[base, -base, limits]]
         for k, slope in enumerate(by_share):
             for reach in (up[k], -down[k]):
@@ -155,22 +122,29 @@ class Polisher:
         mix = solve_game(np.stack(columns, axis=1)).mix
         return np.array([mix[1 + 2 * k] * up[k] - mix[2 + 2 * k] * down[k] for k in range(len(x))])
 
-    def run(self, start: FloatArray) -> Polished:
-        """Return the polished shares."""
+    def run(self, start: FloatArray, promising: float = np.inf) -> Polished:
+        """Return the polished shares; after some rounds a figure far above ``promising`` is left."""
         x = np.clip(start, EDGE, 1.0 - EDGE)
+        if self.outermost is not None:
+            x[0] = self.outermost
         best, peaks, excess = self.merit(x)
-        radius = 0.1
-        for _ in range(ROUNDS):
+        radius, slow = 0.1, 0
+        for turn in range(ROUNDS):
+            if turn == PATIENCE and best > HOPELESS * promising:
+                break
             move = self.step(x, _joined(self.grid, peaks), radius)
             if float(np.max(np.abs(move), initial=0.0)) < SMALLEST_STEP:
                 break
             trial = np.clip(x + move, EDGE, 1.0 - EDGE)
+            if self.outermost is not None:
+                trial[0] = self.outermost
             merit, fresh, worst = self.merit(trial)
             if merit < best * (1.0 - 1e-12):
                 gain = (best - merit) / best
                 x, best, peaks, excess = trial, merit, fresh, worst
                 radius = min(0.5, radius * 2.0)
-                if gain < 1e-9:
+                slow = slow + 1 if gain < SLOW else 0
+                if slow == 3:
                     break
             else:
                 radius = 0.25 * min(radius, float(np.max(np.abs(move))))
@@ -184,18 +158,17 @@ class Polisher:
         banded = peaks.free > 0
         centre = 0.5 * (drift[banded].max() + drift[banded].min()) if banded.any() else 0.0
         reached = np.abs(drift - centre * peaks.free) / peaks.weight >= figure * (1.0 - 1e-4)
-        rows = self.excess(x)
+        rows, _ = self.limit_rows(x)
         active = int((rows > -1e-4).sum()) if len(rows) else 0
         ends = int(((x < 1e-6) | (x > 1.0 - 1e-6)).sum())
-        return int(reached.sum()) + active + ends >= len(x) + 1 or figure < 1e-12
+        given = 0 if self.outermost is None else 1
+        return int(reached.sum()) + active + ends + given >= len(x) + 1 or figure < 1e-12
 
 
 def _joined(one: Field, other: Field) -> Field:
     """Return the temperatures of both fields (a third of the first is enough beside the extremes)."""
     thin = slice(None, None, 3)
     return Field(
-        one.need,
-        one.names,
         np.r_[one.piece[thin], other.piece],
         np.r_[one.T[thin], other.T],
         np.r_[one.weight[thin], other.weight],
@@ -205,8 +178,6 @@ def _joined(one: Field, other: Field) -> Field:
     )
 
 
-def polishing_grid(
-    need: Requirement, materials: Mapping[str, Material], names: tuple[str, ...]
-) -> Field:
+def polishing_grid(source: Source) -> Field:
     """Return the field on which peaks are looked for before they are refined."""
-    return field_at(need, materials, names, *spread_points(need, GRID, chebyshev=False))
+    return field_at(source, *spread_points(source.need, GRID, chebyshev=False))

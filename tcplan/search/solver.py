@@ -11,12 +11,15 @@ from dataclasses import dataclass, field, replace
 import numpy as np
 
 from tcplan.arrays import FloatArray, IntArray
-from tcplan.search.columns import GRID, START, Programme, Rows, vertex_weights
 from tcplan.minimax import solve_fractional
+from tcplan.mixes import area_of, share_vertices, simplex_vertices
+from tcplan.search.columns import GRID, START, Programme, Rows
 
 RELATIVE, ABSOLUTE = 1e-7, 1e-13
 EXCHANGES = 25
 VANISHED = 1e-10
+TANGENTS = 40
+FITS = 1.0 + 1e-9
 
 
 @dataclass(frozen=True, slots=True)
@@ -46,6 +49,7 @@ class Solver:
     nodes: Rows = field(init=False)
     grid: Rows = field(init=False)
     bank: list[FloatArray] = field(default_factory=list)
+    tangents: dict[tuple[int, ...], list[tuple[float, ...]]] = field(default_factory=dict)
     centre_limit: float = 0.0
 
     def __post_init__(self) -> None:
@@ -64,13 +68,16 @@ class Solver:
 
         The drift is 0 at the reference, so a centre further off than the half-band is beaten.
         """
-        figures = []
         space = self.programme.space
-        for i in range(self.count):
-            for vertex in vertex_weights(replace(space, min_share=0.0), [i], self.count).T:
-                figures.append(self.reach(vertex)[0])
+        figures = [
+            self.reach(vertex)[0]
+            for i in range(self.count)
+            for vertex in simplex_vertices(space, [i], least_share=False)
+        ]
         weight = next(p.weight for p in self.programme.need.pieces if p.centred)
-        return 1.001 * weight * min(figures)
+        # A single material may be too large or too small to be made: then any of them may be best.
+        sized = space.sizes is not None and space.sizes.bounded
+        return 1.001 * weight * (max(figures) if sized else min(figures))
 
     # --- what a mix reaches -------------------------------------------------------------------
 
@@ -132,9 +139,20 @@ class Solver:
         share.
         """
         space = self.programme.space
-        weights = vertex_weights(replace(space, min_share=0.0) if relaxed else space, support, self.count)
-        if not weights.shape[1]:
-            return None
+        if relaxed:
+            return self._solved(simplex_vertices(space, support, least_share=False).T, enough)
+        tangents = self.tangents.setdefault(support, [])
+        for _ in range(TANGENTS):
+            weights = share_vertices(space, support, tangents).T
+            mix = self._solved(weights, enough) if weights.shape[1] else None
+            most = space.sizes.max_area if space.sizes else np.inf
+            if mix is None or space.arrangement != "parallel" or area_of(space, mix.shares) <= most * FITS:
+                return mix
+            tangents.append(tuple(float(mix.shares[i]) for i in support))
+        return mix
+
+    def _solved(self, weights: FloatArray, enough: float) -> Mix:
+        """Return the best mix of these vertices of the shares."""
         x = weights.mean(axis=1)
         best = Mix(x, float("inf"), 0.0)
         mine = np.arange(len(self.nodes.temperature))

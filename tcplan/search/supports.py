@@ -6,27 +6,17 @@ solved first; every solve adds duals that rule out others, so few of the support
 
 from __future__ import annotations
 
-from itertools import combinations
 from math import comb
 
 import numpy as np
 
 from tcplan.arrays import FloatArray, IntArray
-from tcplan.plan import Space
+from tcplan.mixes import all_supports, share_vertices
 from tcplan.search.solver import Mix, Solver
 
 MOST_SUPPORTS = 300_000
 MOST_SOLVES = 400
-
-
-def _all_supports(space: Space, count: int) -> list[IntArray]:
-    """Return the supports to be searched, one array (supports, size) a size.
-
-    Without a least share a larger support holds the smaller ones, so one size is enough.
-    """
-    most = min(space.most, count)
-    sizes = range(1, most + 1) if space.min_share > 0 else [most]
-    return [np.array(list(combinations(range(count), k))) for k in sizes]
+RECENT = 60  # dual vectors that are tried on a support before it is solved
 
 
 def _bank_bounds(solver: Solver, y: FloatArray, supports: IntArray) -> FloatArray:
@@ -55,13 +45,15 @@ def best_mixes(solver: Solver, few: int) -> tuple[list[Mix], bool]:
     start = solver.solve(tuple(range(solver.count)), relaxed=True)
     if comb(solver.count, most) > MOST_SUPPORTS:
         return _trimmed(solver, start, few), False
-    groups = _all_supports(space, solver.count)
+    groups = [np.array(group) for group in all_supports(space)]
     bounds = [np.zeros(len(group)) for group in groups]
     seen = 0
     found: dict[frozenset[int], Mix] = {}
-    if start is not None and len(start.used) <= most and space.min_share == 0:
+    sized = space.sizes is not None and space.sizes.bounded
+    if start is not None and len(start.used) <= most and space.min_share == 0 and not sized:
         found[start.used] = start
-    for _ in range(MOST_SOLVES):
+    solves = 0
+    while solves < MOST_SOLVES:
         for y in solver.bank[seen:]:
             for group, bound in zip(groups, bounds, strict=True):
                 np.maximum(bound, _bank_bounds(solver, y, group), out=bound)
@@ -72,11 +64,24 @@ def best_mixes(solver: Solver, few: int) -> tuple[list[Mix], bool]:
         worst_kept = ranked[few - 1] if len(ranked) >= few else np.inf
         if bounds[which][at] >= worst_kept or not np.isfinite(bounds[which][at]):
             break
-        mix = solver.solve(tuple(int(i) for i in groups[which][at]), enough=worst_kept)
+        support = tuple(int(i) for i in groups[which][at])
+        if sized and _ruled_out(solver, support, worst_kept):
+            bounds[which][at] = np.inf
+            continue
+        solves += 1
+        mix = solver.solve(support, enough=worst_kept)
         bounds[which][at] = np.inf
         if mix is not None and (mix.used not in found or mix.figure < found[mix.used].figure):
             found[mix.used] = mix
     return sorted(found.values(), key=lambda mix: mix.figure)[:few], True
+
+
+def _ruled_out(solver: Solver, support: tuple[int, ...], worst_kept: float) -> bool:
+    """Whether a support can not be made, or the bank proves that it is not among the best."""
+    weights = share_vertices(solver.programme.space, support).T
+    return not weights.shape[1] or (
+        bool(solver.bank) and solver.bound_of(weights, solver.bank[-RECENT:]) >= worst_kept
+    )
 
 
 def _trimmed(solver: Solver, start: Mix | None, few: int) -> list[Mix]:

@@ -13,19 +13,20 @@ from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
-from itertools import combinations
 
 import numpy as np
 
 from tcplan.arrays import FloatArray, IntArray
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
+from tcplan.mixes import all_supports, share_vertices
 from tcplan.network import Leg, Parallel, Series, resistance, value
 from tcplan.plan import Certificate, FloorEvidence, Space
 
 MARGIN = 1e-13  # floating point without directed rounding
 CELLS = 400
 CHUNK = 20_000
+MOST_EXACT = 5_000  # supports of a chunk that are bounded one by one
 
 
 @dataclass(frozen=True, slots=True)
@@ -90,16 +91,21 @@ def _value(line: Line, space: Space, support: IntArray, centre: float) -> FloatA
     return lowest
 
 
-def _over_centre(lines: Sequence[Line], space: Space, support: IntArray, limit: float) -> float:
-    """Return the least over |c| <= limit of the best line for one support.
+def _of_support(lines: Sequence[Line], vertices: FloatArray, limit: float) -> float:
+    """Return the least over |c| <= limit of the best line, over the vertices of one support.
 
     A line is concave in c, hence at least the lesser of its ends on a cell; the loosest cell is
-    halved until the bound no longer rises.
+    halved until the bound no longer rises. Infinite for a support that can not be made.
     """
+    if not len(vertices):
+        return float("inf")
+    n, b, d = (np.stack([getattr(line, part) for line in lines]) @ vertices.T for part in "nbd")
 
     def at(c: float) -> FloatArray:
-        return np.array([_value(line, space, support, c)[0] for line in lines])
+        return np.asarray(np.min((n - c * b) / d, axis=1))
 
+    if limit == 0:
+        return float(np.max(at(0.0)))
     cells = [(-limit, at(-limit), limit, at(limit))]
     for _ in range(CELLS):
         bounds = [float(np.max(np.minimum(left, right))) for _, left, _, right in cells]
@@ -113,22 +119,11 @@ def _over_centre(lines: Sequence[Line], space: Space, support: IntArray, limit: 
     return min(float(np.max(np.minimum(left, right))) for _, left, _, right in cells)
 
 
-def _supports(space: Space) -> Iterator[IntArray]:
-    """Yield all supports in chunks of one size; without a least share one size holds the smaller."""
-    count = len(space.materials)
-    most = min(space.most, count)
-    if space.min_share == 0 and most == count:
-        yield np.arange(count)[None, :]
-        return
-    for size in range(1, most + 1) if space.min_share > 0 else [most]:
-        chunk: list[tuple[int, ...]] = []
-        for support in combinations(range(count), size):
-            chunk.append(support)
-            if len(chunk) == CHUNK:
-                yield np.array(chunk)
-                chunk = []
-        if chunk:
-            yield np.array(chunk)
+def _chunks(space: Space) -> Iterator[IntArray]:
+    """Yield all supports in chunks of one size."""
+    for group in all_supports(space):
+        for k in range(0, len(group), CHUNK):
+            yield np.array(group[k : k + CHUNK])
 
 
 def arrangement_bound(
@@ -154,15 +149,20 @@ def arrangement_bound(
     limit = next((p.weight * figure for p in need.pieces if p.centred), 0.0)
     if not lines:
         return 0.0
+    tangents: dict[tuple[int, ...], list[tuple[float, ...]]] = {}
+    for support, shares in evidence.tangents:
+        tangents.setdefault(support, []).append(shares)
     lowest = np.inf
-    for chunk in _supports(space):
+    for chunk in _chunks(space):
         best = np.full(len(chunk), -np.inf)
         for line in lines:
             ends = [_value(line, space, chunk, c) for c in {-limit, limit}]
             np.maximum(best, np.minimum.reduce(ends), out=best)
-        if limit:
-            for k in np.nonzero(best < figure * (1 - 1e-7))[0]:
-                best[k] = _over_centre(lines, space, chunk[k : k + 1], limit)
+        # What the quick bound leaves open is bounded by the vertices of its own shares.
+        for k in np.nonzero(best < figure * (1 - 1e-7))[0][:MOST_EXACT] if limit or space.sizes else []:
+            support = tuple(int(i) for i in chunk[k])
+            vertices = share_vertices(space, support, tangents.get(support, ()))
+            best[k] = max(float(best[k]), _of_support(lines, vertices, limit))
         lowest = min(lowest, float(best.min()))
     return float(min(max(0.0, lowest - MARGIN), figure))
 

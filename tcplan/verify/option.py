@@ -47,7 +47,9 @@ class Case:
     """What an option is checked against.
 
     ``spreads`` holds the spread of each material that has one, over this range; ``floor_ppm`` is
-    the nominal floor, which bounds an option that comes without evidence of its own.
+    the nominal floor, which bounds an option that comes without evidence of its own, ``mixed_ppm``
+    the bound of the mixed networks searched, and ``gap`` the relative gap at which these count as
+    proved.
     """
 
     materials: Mapping[str, Material]
@@ -55,6 +57,8 @@ class Case:
     over: TemperatureRange
     need: Requirement
     floor_ppm: float = 0.0
+    mixed_ppm: float = 0.0
+    gap: float = 0.01
 
 
 def nominal_figures(network: Network, case: Case) -> Nominal:
@@ -163,11 +167,15 @@ def verdict(need: Requirement, figure: float, worst: WorstCase | None) -> Verdic
 def _proof(proposal: Proposal, figure: float, case: Case) -> Proof:
     """Return the bound that the evidence proves; without evidence, the floor of all networks."""
     bound = min(case.floor_ppm * 1e-6, figure)
-    if proposal.space is not None and proposal.certificate is not None:
+    closed = max(CLOSED_PPM * 1e-6, CLOSED_RELATIVE * figure)
+    if proposal.space is not None and proposal.space.arrangement == "mixed":
+        bound = max(bound, min(case.mixed_ppm * 1e-6, figure))
+        closed = max(closed, figure * case.gap * (1.0 + 1e-9))
+    elif proposal.space is not None and proposal.certificate is not None:
         own = arrangement_bound(proposal.space, proposal.certificate, case.need, case.materials, figure)
         bound = max(bound, own)
     gap = max(0.0, figure - bound)
-    proved = proposal.space is not None and gap * 1e6 <= max(CLOSED_PPM, CLOSED_RELATIVE * figure * 1e6)
+    proved = proposal.space is not None and gap <= closed
     return Proof(
         kind="global" if proved else "searched",
         of="nominal",
@@ -201,6 +209,7 @@ def check(proposal: Proposal, case: Case, name: str) -> Option:
         id=name,
         network=network,
         squares=tuple(case.materials[leg.material].squares(leg.ohms, reference) for leg in legs(network)),
+        areas=tuple(case.materials[leg.material].area(leg.ohms, reference) for leg in legs(network)),
         nominal=nominal_figures(network, case),
         worst_case=worst,
         proof=_proof(proposal, figure, case),

@@ -1,25 +1,32 @@
 """Proof for mixed networks: no tree of these materials stays within a limit that is asked.
 
-Each tree starts as one cell, its inner shares anywhere; the shares of its top node are free. Over a
-cell the children of the top node are hulls, the goal at a limit U is linear in the top shares, and one
-vector y >= 0 that is positive on every (shifted) column proves that no top shares work: the cell is gone.
-Vectors that worked are tried on all cells at once, a small game makes a new one where none works, and
-what is left is cut in two along its widest share. When no cell is left, no network is within U.
+Each tree starts as one cell, its shares anywhere. Over a cell the subtrees are hulls; with the shares of
+the top node left free, the goal at a limit U is linear in them, and one vector y >= 0 that is positive
+on every (shifted) column proves that no top shares work: the cell is gone. Vectors that worked are tried
+on all cells at once, a small game makes a new one where none works, and what is left is cut in two along
+its widest share. When no cell is left, no network is within U.
+
+Where legs are limited in size, the top shares are part of the cells too: a cell whose legs can not be
+made is gone as well.
 """
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, field
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass, field, replace
 from itertools import groupby
 
 import numpy as np
 
-from tcplan.arrays import FloatArray, IntArray
+from tcplan.arrays import BoolArray, FloatArray, IntArray
+from tcplan.drift import breakpoints, panels, ratio_curve, stationary_points
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
 from tcplan.minimax import solve_game
-from tcplan.trees import Pair, Tree, leaves, paired, shape_of
+from tcplan.mixes import fixed_group
+from tcplan.network import Network, resistance, used_materials, value
+from tcplan.plan import Space
+from tcplan.trees import Pair, Tree, assigned_trees, is_mixed, leaves, paired, shape_of, with_fixed
 from tcplan.verify.hull import Cells, hull_of, shares_in, top_members
 
 NODES = 17  # temperatures a piece
@@ -27,31 +34,45 @@ MARGIN = 1e-12  # floating point without directed rounding
 BATCH = 2048
 GAMES = 48  # new vectors a batch
 OLD = 400  # vectors kept in a bank
-EDGE = 0.0
+MOST_CELLS = 400_000
+WEAKER = (1.0, 0.98, 0.95, 0.9, 0.8, 0.65, 0.5)  # limits that are tried in turn, of the first
 
 
 @dataclass(frozen=True, slots=True)
 class Question:
-    """The goal at a limit, on nodes: is any network within it?"""
+    """The goal at a limit, on nodes, and what is asked: is any network of a space within it.
 
-    T: FloatArray
+    ``ratios`` has a row for each material and a last one for the fixed members, whose share of the
+    whole is ``fixed_share`` (0 when there are none). Logarithms of ohms are of ohms over the total.
+    """
+
     high: FloatArray
     low: FloatArray
     free: FloatArray
     ratios: FloatArray
     reach: float
     min_share: float
+    fixed_share: float
+    least_ohms: FloatArray
+    most_ohms: FloatArray
+    area: FloatArray
+    max_area: float
+
+    @property
+    def sized(self) -> bool:
+        """Whether the size of a leg is limited."""
+        values = bool(np.isfinite(self.least_ohms).any() or np.isfinite(self.most_ohms).any())
+        return values or self.max_area < np.inf
 
 
 def question(
+    space: Space,
     need: Requirement,
     materials: Mapping[str, Material],
-    names: Sequence[str],
     limit: float,
-    min_share: float,
     more: Sequence[float] = (),
 ) -> Question:
-    """Return the question whether a network is within ``limit`` (a figure, as a fraction).
+    """Return the question whether a network of a space is within ``limit`` (a figure, as a fraction).
 
     ``more`` are temperatures [K] that join the nodes.
     """
@@ -64,65 +85,100 @@ def question(
         T.append(points)
         weight.append(np.full(len(points), piece.weight))
         free.append(np.full(len(points), 1.0 if piece.centred else 0.0))
-    at, w, f = np.concatenate(T), np.concatenate(weight), np.concatenate(free)
+    at, w = np.concatenate(T), np.concatenate(weight)
     wanted = need.wanted(at)
-    reach = next((p.weight * limit for p in need.pieces if p.centred), 0.0)
-    ratios = np.stack([materials[name].ratio(at, need.reference) for name in names])
-    return Question(at, wanted + limit * w, wanted - limit * w, f, ratios, reach, min_share)
+    low, high, area, max_area = _sizes(space)
+    return Question(
+        high=wanted + limit * w,
+        low=wanted - limit * w,
+        free=np.concatenate(free),
+        ratios=_ratios(space, need, materials, at),
+        reach=next((p.weight * limit for p in need.pieces if p.centred), 0.0),
+        min_share=space.min_share,
+        fixed_share=space.fixed_share[0] if space.fixed else 0.0,
+        least_ohms=low,
+        most_ohms=high,
+        area=area,
+        max_area=max_area,
+    )
 
 
-@dataclass(slots=True)
-class Bank:
-    """Vectors that proved something, newest last; each of shape (2 nodes,)."""
-
-    rows: list[FloatArray] = field(default_factory=list)
-
-    def add(self, y: FloatArray) -> None:
-        """Keep a vector; the oldest goes when there are many."""
-        self.rows.append(y)
-        del self.rows[:-OLD]
+def _ratios(space: Space, need: Requirement, materials: Mapping[str, Material], T: FloatArray) -> FloatArray:
+    own = [materials[name].ratio(T, need.reference) for name in space.materials]
+    group = fixed_group(space)
+    if group is None:
+        return np.stack([*own, np.ones_like(T)])
+    fixed = {leg.material: materials[leg.material].ratio(T, need.reference) for leg in space.fixed}
+    return np.stack([*own, resistance(group, fixed) / value(group)])
 
 
-@dataclass(frozen=True, slots=True)
-class Answer:
-    """Whether all cells are gone, and how many were looked at."""
+def _sizes(space: Space) -> tuple[FloatArray, FloatArray, FloatArray, float]:
+    count = len(space.materials)
+    low, high, area = np.full(count + 1, -np.inf), np.full(count + 1, np.inf), np.zeros(count + 1)
+    if space.sizes is None or space.ohms is None:
+        return low, high, area, np.inf
+    with np.errstate(divide="ignore"):
+        low[:count] = np.log(np.array(space.sizes.least_ohms) / space.ohms)
+        high[:count] = np.log(np.array(space.sizes.most_ohms) / space.ohms)
+    area[:count] = np.array(space.sizes.area_per_ohm) * space.ohms
+    return low, high, area, space.sizes.max_area
 
-    proved: bool
-    cells: int
+
+# --- columns --------------------------------------------------------------------------------------
 
 
-def _columns(pair: Pair, cells: Cells, ask: Question, centre: FloatArray) -> list[FloatArray]:
-    """Return for each child of the top node its columns, shape (cells, vertices, 2 nodes).
+def _outside(ask: Question, centre: FloatArray, lowest: FloatArray, highest: FloatArray) -> FloatArray:
+    """Return by how much curves are outside the goal at least, shape (cells, vertices, 2 nodes).
 
-    A column is by how much a child alone is outside the goal at each node, at least: above it in
-    the first half, below it in the second. ``centre`` holds the cells' bounds on the centre of a band.
+    Above it in the first half of the nodes, below it in the second.
     """
+    high = (ask.high + centre[:, 1:2] * ask.free)[:, None, :]
+    low = (ask.low + centre[:, 0:1] * ask.free)[:, None, :]
+    return np.concatenate([lowest - high, low - highest], axis=2)
+
+
+def _outside_inverse(
+    ask: Question, centre: FloatArray, lowest: FloatArray, highest: FloatArray
+) -> FloatArray:
+    """Return the same for inverse curves: R <= h asks 1 <= h/R, and R >= l asks l/R <= 1."""
+    high = (ask.high + centre[:, 1:2] * ask.free)[:, None, :]
+    low = (ask.low + centre[:, 0:1] * ask.free)[:, None, :]
+    below = np.where(low > 0, low * lowest - 1.0, -1.0)
+    return np.concatenate([1.0 - high * highest, below], axis=2)
+
+
+def _columns(
+    pair: Pair, cells: Cells, ask: Question, centre: FloatArray, *, free_top: bool
+) -> list[FloatArray]:
+    """Return the columns of every cell, one array (cells, vertices, 2 nodes) a child of the top node.
+
+    A column is by how much a child alone is outside the goal at each node, at least. Without a free
+    top the whole tree is the only child. A fixed member, the first child, is mixed into all others.
+    """
+    members = top_members(pair) if free_top else (pair,)
     found = []
-    high = ask.high + centre[:, 1:2] * ask.free
-    low = ask.low + centre[:, 0:1] * ask.free
-    for member in top_members(pair):
-        hull = hull_of(member, cells, conductance=not pair.series)
+    for member in members:
+        hull = hull_of(member, cells, conductance=free_top and not pair.series)
         lowest = hull.vertices - hull.below[:, None, :]
         highest = hull.vertices + hull.above[:, None, :]
-        if pair.series:
-            above, below = lowest - high[:, None, :], low[:, None, :] - highest
-        else:
-            above = 1.0 - high[:, None, :] * highest
-            below = np.where(low[:, None, :] > 0, low[:, None, :] * lowest - 1.0, -1.0)
-        found.append(np.nan_to_num(np.concatenate([above, below], axis=2), posinf=-1e6, neginf=-1e6))
+        side = _outside_inverse if free_top and not pair.series else _outside
+        found.append(np.nan_to_num(side(ask, centre, lowest, highest), nan=-1e6, posinf=1e6, neginf=-1e6))
+    u = ask.fixed_share
+    if u > 0 and free_top:
+        return [u * found[0] + (1.0 - u) * other for other in found[1:]]
     return found
 
 
-def _least_shares(pair: Pair, cells: Cells, ask: Question) -> FloatArray:
-    """Return the least share of each child of the top node, shape (cells, children).
+def _least_shares(pair: Pair, cells: Cells, ask: Question) -> FloatArray | None:
+    """Return the least share of each child of a free top node, shape (cells, children).
 
     Every leg holds ``min_share`` of the whole, and at most the product of the highest shares on its
-    way of its child.
+    way of its child. None where that is not asked, or fixed members make the shares others.
     """
-    found = []
-    for member in top_members(pair):
-        found.append(_least_share(member, cells, np.ones(len(cells.low)), ask.min_share))
-    return np.stack(found, axis=1)
+    if ask.min_share <= 0 or ask.fixed_share > 0:
+        return None
+    one = np.ones(len(cells.low))
+    return np.stack([_least_share(m, cells, one, ask.min_share) for m in top_members(pair)], axis=1)
 
 
 def _least_share(member: Pair | int, cells: Cells, most: FloatArray, min_share: float) -> FloatArray:
@@ -137,32 +193,81 @@ def _least_share(member: Pair | int, cells: Cells, most: FloatArray, min_share: 
     )
 
 
-def _gone(columns: list[FloatArray], least: FloatArray | None, bank: FloatArray) -> FloatArray:
+def _gone(columns: list[FloatArray], least: FloatArray | None, bank: FloatArray) -> BoolArray:
     """Return which cells some vector of the bank rules out, shape (cells,)."""
     worst = np.stack([np.min(c @ bank.T, axis=1) for c in columns], axis=1)
     if least is None:
-        value = worst.min(axis=1)
-    else:
-        rest = np.maximum(0.0, 1.0 - least.sum(axis=1))
-        value = np.einsum("cj,cjm->cm", least, worst) + rest[:, None] * worst.min(axis=1)
-    return np.asarray((value > MARGIN).any(axis=1))
+        ruled: BoolArray = (worst.min(axis=1) > MARGIN).any(axis=1)
+        return ruled
+    rest = np.maximum(0.0, 1.0 - least.sum(axis=1))
+    mixed = np.einsum("cj,cjm->cm", least, worst) + rest[:, None] * worst.min(axis=1)
+    by_share: BoolArray = (mixed > MARGIN).any(axis=1)
+    return by_share
 
 
-@dataclass(slots=True)
+# --- sizes ----------------------------------------------------------------------------------------
+
+
+def _legs(
+    node: Pair | int, cells: Cells, low: FloatArray, high: FloatArray, most: FloatArray
+) -> Iterator[tuple[int, FloatArray, FloatArray, FloatArray]]:
+    """Yield each leg with bounds on ln(ohms/total) and an upper bound on ln(share), by cell."""
+    if isinstance(node, int):
+        yield node, low, high, most
+        return
+    with np.errstate(divide="ignore"):
+        x_low, x_high = np.log(cells.low[:, node.share]), np.log(cells.high[:, node.share])
+        y_low, y_high = np.log(1.0 - cells.high[:, node.share]), np.log(1.0 - cells.low[:, node.share])
+    for member, least, greatest in ((node.first, x_low, x_high), (node.second, y_low, y_high)):
+        down, up = (least, greatest) if node.series else (-greatest, -least)
+        yield from _legs(member, cells, low + down, high + up, most + greatest)
+
+
+def _can_be_made(pair: Pair, group: IntArray, cells: Cells, ask: Question) -> BoolArray:
+    """Return which cells may hold a network whose legs can be made, shape (cells,)."""
+    zero = np.zeros(len(cells.low))
+    fine = np.ones(len(zero), dtype=bool)
+    area = np.zeros(len(zero))
+    slack = 1e-9
+    for leg, low, high, most in _legs(pair, cells, zero, zero, zero):
+        kind = group[:, leg]
+        fine &= (high >= ask.least_ohms[kind] - slack) & (low <= ask.most_ohms[kind] + slack)
+        chosen = kind < len(ask.area) - 1
+        if ask.min_share > 0:
+            fine &= ~chosen | (most >= np.log(ask.min_share) - slack)
+        area += np.where(chosen, ask.area[kind] * np.exp(np.maximum(low, -700.0)), 0.0)
+    return fine & (area <= ask.max_area * (1.0 + slack))
+
+
+# --- cells ----------------------------------------------------------------------------------------
+
+
+@dataclass(frozen=True, slots=True)
+class Answer:
+    """Whether all cells are gone, and how many were looked at."""
+
+    proved: bool
+    cells: int
+
+
+@dataclass(frozen=True, slots=True)
 class _Open:
-    """Cells of one shape that are still open."""
+    """Cells of one shape that are still open: the tree, the box of its shares, and that of the centre."""
 
     tree: IntArray
     low: FloatArray
     high: FloatArray
     centre: FloatArray
 
+    def take(self, where: IntArray | BoolArray | slice) -> _Open:
+        return _Open(self.tree[where], self.low[where], self.high[where], self.centre[where])
+
 
 def _start(count: int, shares: int, ask: Question) -> _Open:
-    centre = np.tile([-ask.reach, ask.reach], (count, 1))
-    return _Open(
-        np.arange(count), np.full((count, shares), EDGE), np.full((count, shares), 1.0 - EDGE), centre
-    )
+    low, high = np.zeros((count, shares)), np.ones((count, shares))
+    if ask.fixed_share > 0:
+        low[:, 0] = high[:, 0] = ask.fixed_share
+    return _Open(np.arange(count), low, high, np.tile([-ask.reach, ask.reach], (count, 1)))
 
 
 def _cut(cells: _Open, inner: tuple[int, ...], reach: float) -> _Open:
@@ -189,50 +294,73 @@ def _cut(cells: _Open, inner: tuple[int, ...], reach: float) -> _Open:
     )
 
 
-def _sift(pair: Pair, group: IntArray, cells: _Open, ask: Question, bank: Bank) -> FloatArray:
-    """Return which of a batch of cells are left, after the bank and some new vectors."""
-    legs = tuple(ask.ratios[group[cells.tree, leg]] for leg in range(group.shape[1]))
-    boxes = Cells(legs, cells.low, cells.high)
-    columns = _columns(pair, boxes, ask, cells.centre)
-    least = _least_shares(pair, boxes, ask) if ask.min_share > 0 else None
-    left = np.ones(len(cells.tree), dtype=bool)
-    if least is not None:
-        left &= least.sum(axis=1) <= 1.0 + 1e-12
-    if bank.rows:
-        at = np.nonzero(left)[0]
-        left[at] = ~_gone([c[at] for c in columns], None if least is None else least[at], np.stack(bank.rows))
-    for _ in range(GAMES):
-        at = np.nonzero(left)[0]
-        if not len(at):
-            break
-        chosen = at[len(at) // 2]
-        payoff = np.concatenate([c[chosen] for c in columns]).T
-        game = solve_game(payoff)
-        left[chosen] = False
-        if game.lower <= MARGIN:
-            cells_left = left.copy()
-            cells_left[chosen] = True
-            left = cells_left
-            break
-        bank.add(game.rows)
+@dataclass(slots=True)
+class _Sieve:
+    """One shape: its trees, what is asked, and the vectors that worked so far."""
+
+    pair: Pair
+    group: IntArray
+    ask: Question
+    free_top: bool
+    bank: list[FloatArray]
+
+    def left(self, cells: _Open) -> BoolArray:
+        """Return which cells of a batch are left, after the bank and some new vectors."""
+        group = self.group[cells.tree]
+        legs = tuple(self.ask.ratios[group[:, leg]] for leg in range(group.shape[1]))
+        boxes = Cells(legs, cells.low, cells.high)
+        left = np.ones(len(group), dtype=bool)
+        if not self.free_top:
+            left &= _can_be_made(self.pair, group, boxes, self.ask)
+        columns = _columns(self.pair, boxes, self.ask, cells.centre, free_top=self.free_top)
+        least = _least_shares(self.pair, boxes, self.ask) if self.free_top else None
+        if least is not None:
+            left &= least.sum(axis=1) <= 1.0 + 1e-12
+        if self.bank:
+            self._sift(left, columns, least, np.stack(self.bank))
+        for _ in range(GAMES):
+            at = np.nonzero(left)[0]
+            if not len(at):
+                break
+            chosen = at[len(at) // 2]
+            game = solve_game(np.concatenate([c[chosen] for c in columns]).T)
+            if game.lower <= MARGIN:
+                break
+            self.bank.append(game.rows)
+            del self.bank[:-OLD]
+            left[chosen] = False
+            self._sift(left, columns, least, game.rows[None, :])
+        return left
+
+    def _sift(
+        self, left: BoolArray, columns: list[FloatArray], least: FloatArray | None, rows: FloatArray
+    ) -> None:
+        """Strike out of ``left``, in place, the cells that some of the rows rule out."""
         at = np.nonzero(left)[0]
         if len(at):
-            left[at] = ~_gone([c[at] for c in columns], None if least is None else least[at], game.rows[None, :])
-    return left
+            left[at] = ~_gone([c[at] for c in columns], None if least is None else least[at], rows)
 
 
 def none_within(
-    trees: Sequence[Tree], ask: Question, bank: dict[bool, Bank], most_cells: int
+    trees: Sequence[Tree],
+    ask: Question,
+    bank: dict[str, list[FloatArray]],
+    *,
+    free_top: bool = True,
+    most_cells: int = MOST_CELLS,
 ) -> Answer:
     """Return whether every tree is ruled out.
 
     Parameters
     ----------
     trees : sequence of Tree
-        Of two legs at least; leaves are positions among the materials of the question.
+        Of two legs at least; leaves are positions among the rows of ``ask.ratios``.
     ask : Question
-    bank : dict of bool to Bank
-        Vectors for a series top (True) and a parallel top; they grow.
+    bank : dict
+        Vectors that worked, by kind of column; they grow.
+    free_top : bool
+        Whether the shares of the top node are left free, which makes far fewer cells; sizes are
+        looked at only when they are not.
     most_cells : int
         After so many cells the answer is "not proved".
     """
@@ -244,22 +372,108 @@ def none_within(
             continue
         group = np.array([leaves(tree) for tree in members])
         own = shares_in(pair)
-        inner = tuple(k for member in top_members(pair) for k in shares_in(member))
+        given = {0} if ask.fixed_share > 0 else set()
+        within = [k for m in top_members(pair) for k in shares_in(m)] if free_top else own
+        inner = tuple(k for k in within if k not in given)
+        kind = ("series" if pair.series else "parallel") if free_top else "whole"
+        sieve = _Sieve(pair, group, ask, free_top, bank.setdefault(kind, []))
         cells = _start(len(group), len(own), ask)
         while len(cells.tree):
             count += len(cells.tree)
             if count > most_cells:
                 return Answer(False, count)
-            kept = []
-            for k in range(0, len(cells.tree), BATCH):
-                part = _Open(*(side[k : k + BATCH] for side in (cells.tree, cells.low, cells.high, cells.centre)))
-                kept.append(_sift(pair, group, part, ask, bank.setdefault(pair.series, Bank())))
-            left = np.concatenate(kept)
-            if not left.any():
-                break
-            if not inner and ask.reach == 0:
+            steps = range(0, len(cells.tree), BATCH)
+            left = np.concatenate([sieve.left(cells.take(slice(k, k + BATCH))) for k in steps])
+            if left.any() and not inner and ask.reach == 0:
                 return Answer(False, count)
-            cells = _cut(
-                _Open(cells.tree[left], cells.low[left], cells.high[left], cells.centre[left]), inner, ask.reach
-            )
+            cells = cells.take(left)
+            if len(cells.tree):
+                cells = _cut(cells, inner, ask.reach)
     return Answer(True, count)
+
+
+# --- the bound of a space -------------------------------------------------------------------------
+
+
+def space_trees(space: Space) -> tuple[Tree, ...]:
+    """Return the mixed trees of a space; the fixed members are the leaf after the last material."""
+    count = len(space.materials)
+    kind = "parallel" if space.fixed_in_parallel else "series"
+    whole = (
+        with_fixed(tree, kind, count) if space.fixed else tree
+        for size in range(1, space.legs + 1)
+        for tree in assigned_trees(size, count, space.most)
+    )
+    return tuple(tree for tree in whole if is_mixed(tree))
+
+
+@dataclass(slots=True)
+class MixedBound:
+    """Lower bounds on the figure of the mixed networks of one space; vectors are kept between them."""
+
+    space: Space
+    need: Requirement
+    materials: Mapping[str, Material]
+    more: tuple[float, ...] = ()
+    bank: dict[str, list[FloatArray]] = field(default_factory=dict)
+
+    def below(self, figure: float, gap: float, most_cells: int = MOST_CELLS) -> float:
+        """Return a figure that no mixed network of the space is within, at most ``figure (1 - gap)``.
+
+        Weaker limits are tried in turn; 0 when none of them closes.
+        """
+        trees = space_trees(self.space)
+        for part in WEAKER:
+            limit = figure * (1.0 - gap) * part
+            ask = question(self.space, self.need, self.materials, limit, self.more)
+            relaxed = replace(ask, max_area=np.inf)
+            if none_within(trees, relaxed, self.bank, most_cells=most_cells // 4).proved:
+                return limit
+            if ask.sized and none_within(trees, ask, self.bank, free_top=False, most_cells=most_cells).proved:
+                return limit
+        return 0.0
+
+
+def _extremes_of(network: Network, need: Requirement, materials: Mapping[str, Material]) -> list[float]:
+    """Return the temperatures [K] where the drift of a network is stationary, and the ends."""
+    ratio = ratio_curve(network, materials, need.reference)
+    splits = (*breakpoints(materials, used_materials(network)), *need.breakpoints())
+
+    def drift(T: FloatArray) -> FloatArray:
+        return ratio(T) - need.wanted(T)
+
+    return [
+        at
+        for piece in need.pieces
+        for low, high in panels(piece.low, piece.high, splits)
+        for at in stationary_points(drift, low, high)
+    ]
+
+
+def mixed_bound(
+    space: Space,
+    need: Requirement,
+    materials: Mapping[str, Material],
+    networks: Sequence[Network],
+    figure: float,
+    gap: float,
+) -> float:
+    """Return a figure that no mixed network of a space is within (a fraction).
+
+    Parameters
+    ----------
+    space : Space
+        With its materials in the order of its sizes.
+    need : Requirement
+    materials : mapping of name to Material
+    networks : sequence of Network
+        The best ones known: the temperatures of their extremes join the nodes.
+    figure : float
+        The best figure known.
+    gap : float
+        Relative gap that is tried first.
+    """
+    more: list[float] = []
+    for network in networks:
+        more.extend(_extremes_of(network, need, materials))
+    return MixedBound(space, need, materials, tuple(sorted(set(more)))).below(figure, gap)

@@ -11,6 +11,8 @@ PLAN_FILES = (
     "plan.json",
     "mix.csv",
     "spec.md",
+    "network.svg",
+    "network.png",
     "drift.svg",
     "drift.png",
     "slope-curvature.svg",

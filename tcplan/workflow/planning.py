@@ -10,10 +10,11 @@ from tcplan.brief import Brief
 from tcplan.errors import NoAnswer
 from tcplan.goal import requirement
 from tcplan.network import legs, used_materials, value
-from tcplan.plan import LimitRecord, Option, Plan, RangeRecord, TargetRecord
+from tcplan.plan import LimitRecord, Option, Plan, Proposal, RangeRecord, TargetRecord
 from tcplan.units import format_ppm, round_outward
 from tcplan.verify.floor import floor
 from tcplan.verify.option import Case, check, nominal_figure
+from tcplan.verify.tree_bound import mixed_bound
 from tcplan.workflow.proposals import fixed_share, floor_evidence, proposals, spreads_of
 
 EQUAL = 1.01  # an option that a simpler one equals within this factor is dropped
@@ -24,6 +25,17 @@ def judged_ppm(option: Option, judge: str) -> float:
     if judge == "nominal":
         return option.proof.figure_ppm
     return option.worst_case.peak_ppm if option.worst_case else float("inf")
+
+
+def _mixed_ppm(found: Sequence[Proposal], case: Case, gap: float) -> float:
+    """Return the bound of the mixed networks that were searched [ppm]; 0 when there are none."""
+    mixed = [p for p in found if p.space is not None and p.space.arrangement == "mixed"]
+    if not mixed or mixed[0].space is None:
+        return 0.0
+    ranked = sorted(mixed, key=lambda p: nominal_figure(p.network, case))
+    networks = [p.network for p in ranked[:4]]
+    best = nominal_figure(networks[0], case)
+    return mixed_bound(mixed[0].space, case.need, case.materials, networks, best, gap) * 1e6
 
 
 def _shortlist(options: Sequence[Option], judge: str) -> tuple[Option, ...]:
@@ -62,8 +74,14 @@ def _chosen(options: Sequence[Option], judge: str) -> Option:
 # --- the plan -------------------------------------------------------------------------------------
 
 
-def make_plan(brief: Brief) -> Plan:
+def make_plan(brief: Brief, *, gap: float = 0.01) -> Plan:
     """Return the plan of a brief: searched, or given, and every option checked.
+
+    Parameters
+    ----------
+    brief : Brief
+    gap : float
+        Relative gap within which mixed networks are to be proved; smaller takes longer.
 
     Raises
     ------
@@ -83,7 +101,7 @@ def make_plan(brief: Brief) -> Plan:
     names = {*evidence.materials, *(leg.material for leg in evidence.fixed)}
     stated = case.spreads if names <= case.spreads.keys() else None
     bottom = floor(evidence, need, case.materials, stated, best)
-    case = replace(case, floor_ppm=bottom.nominal_ppm)
+    case = replace(case, floor_ppm=bottom.nominal_ppm, gap=gap, mixed_ppm=_mixed_ppm(found, case, gap))
     options = _shortlist(
         [check(proposal, case, str(n)) for n, proposal in enumerate(found, 1)], brief.goal.judge
     )

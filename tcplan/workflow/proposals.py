@@ -2,16 +2,19 @@
 
 from __future__ import annotations
 
-from tcplan.brief import Brief
+from tcplan.brief import Brief, SearchRules
 from tcplan.goal import Requirement
+from tcplan.material.model import Material
 from tcplan.material.spread import Spread
 from tcplan.network import arrangement, used_materials
-from tcplan.plan import FloorEvidence, Proposal, Space
+from tcplan.plan import FloorEvidence, Proposal, Sizes, Space
 from tcplan.search.floor import floor_evidence as sandwich_evidence
 from tcplan.search.linear import least_total, search_space
+from tcplan.search.mixed_search import mixed_proposals
 from tcplan.verify.option import Case, spread_figures
 
 FEW = 3
+MOST_MIXED_LEGS = 6
 TINY_SHARE = 1e-4  # of the fixed members, when the total is free
 
 
@@ -24,17 +27,54 @@ def spreads_of(brief: Brief) -> dict[str, Spread]:
 def spaces(brief: Brief) -> tuple[Space, ...]:
     """Return the sets of networks that the brief asks to search, one an arrangement."""
     rules, fixed = brief.rules, tuple(member.leg for member in brief.fixed)
+    few = min(rules.max_materials, rules.max_legs)
+    most = {"single": 1, "mixed": rules.max_materials}
     return tuple(
         Space(
             arrangement=kind,
             materials=rules.use,
-            most=1 if kind == "single" else min(rules.max_materials, rules.max_legs),
+            most=most.get(kind, few),
             min_share=0.0 if kind == "single" else rules.min_share,
+            legs=min(rules.max_legs, MOST_MIXED_LEGS) if kind == "mixed" else few,
+            fixed_in_parallel=bool(brief.fixed) and brief.fixed[0].place == "parallel",
             fixed=fixed,
             fixed_share=fixed_share(brief),
+            ohms=total_of(brief),
+            sizes=sizes_of(brief),
         )
         for kind in rules.arrangements
     )
+
+
+def total_of(brief: Brief) -> float | None:
+    """Return the total [ohm]; None when the share of the fixed members sets it."""
+    low, high = fixed_share(brief)
+    return brief.target.ohms if not brief.fixed or low == high else None
+
+
+def sizes_of(brief: Brief) -> Sizes:
+    """Return what can be made of each material that may be chosen, in the order of ``rules.use``."""
+    rules, reference = brief.rules, brief.over.reference
+    limits = [_leg_limits(brief.by_name[name], rules, reference) for name in rules.use]
+    areas = [brief.by_name[name].area(1.0, reference) or 0.0 for name in rules.use]
+    return Sizes(
+        least_ohms=tuple(least for least, _ in limits),
+        most_ohms=tuple(most for _, most in limits),
+        area_per_ohm=tuple(areas),
+        max_area=rules.max_area if rules.max_area is not None else float("inf"),
+    )
+
+
+def _leg_limits(material: Material, rules: SearchRules, reference: float) -> tuple[float, float]:
+    """Return the least and the largest value [ohm] of a leg of a material at ``reference`` [K]."""
+    squares, length = material.squares(1.0, reference), material.length(1.0, reference)
+    if squares is not None:
+        return rules.min_squares / squares, rules.max_squares / squares
+    if length is not None:
+        return rules.min_length / length, float("inf")
+    if material.series is not None:
+        return rules.stock_values
+    return 0.0, float("inf")
 
 
 def fixed_share(brief: Brief) -> tuple[float, float]:
@@ -63,10 +103,14 @@ def proposals(brief: Brief, need: Requirement, case: Case, few: int = FEW) -> li
     found: list[Proposal] = []
     for space in spaces(brief):
         low, high = space.fixed_share
+        if space.arrangement == "mixed":
+            if low == high and space.legs + len(space.fixed) >= 3:
+                found.extend(mixed_proposals(space, need, case.materials, few))
+            continue
         parallel = space.arrangement == "parallel"
         bounded = not brief.fixed or low == high or (brief.target.at_most is not None and not parallel)
         if bounded:
-            mixes = search_space(space, need, case.materials, brief.target.ohms, few)
+            mixes = search_space(space, need, case.materials, few)
             # A mix that has shrunk to one leg is what the single arrangement is for.
             alone = "single" in brief.rules.arrangements and space.arrangement != "single"
             found.extend(m for m in mixes if not (alone and arrangement(m.network) == "single"))
@@ -75,7 +119,7 @@ def proposals(brief: Brief, need: Requirement, case: Case, few: int = FEW) -> li
             if extreme is not None:
                 found.append(extreme)
             elif not bounded:  # no total meets the limit: show how near the best one comes
-                found.extend(search_space(space, need, case.materials, None, 1))
+                found.extend(search_space(space, need, case.materials, 1))
     return found
 
 

@@ -16,11 +16,13 @@ from tcplan.figures.style import (
     CHOSEN,
     LIMIT,
     MATERIAL_COLOURS,
+    OPTION,
     OTHER,
     figure_style,
     number_text,
     text_width,
 )
+from tcplan.network import Leg, Parallel, Series, mapped
 from tcplan.plan import Plan
 from tcplan.workflow.planning import make_plan
 
@@ -139,6 +141,103 @@ def test_the_worst_case_line_is_the_drift_of_the_worst_device() -> None:
     assert artists.worst.get_linestyle() != artists.residual.get_linestyle()
 
 
+# --- the best option of each arrangement --------------------------------------------------------
+
+SERIES = Series((Leg(material="np", ohms=1e3), Leg(material="pp", ohms=1.2e3)))
+PARALLEL = Parallel((Leg(material="np", ohms=1e3), Leg(material="pp", ohms=0.8e3)))
+MIXED = Series((PARALLEL, Leg(material="hi", ohms=20.0)))
+
+
+def option_like(plan, network, name, role=""):
+    return replace(plan.best, id=name, network=network, role=role)
+
+
+def with_options(plan, *options):
+    """Return the plan with these options, best first, its own chosen one and a worse one of each kind."""
+    worse = [
+        option_like(plan, network, f"worse-{n}")
+        for n, network in enumerate((SERIES, PARALLEL, MIXED, Leg(material="np", ohms=1e3)))
+    ]
+    return replace(plan, options=(*options, plan.best, *worse))
+
+
+def test_the_best_of_each_arrangement_is_drawn_beside_the_chosen_option() -> None:
+    plan = plan_of(spread=False)
+    best = {
+        "series": option_like(plan, SERIES, "series-9"),
+        "parallel": option_like(plan, PARALLEL, "parallel-9"),
+        "mixed": option_like(plan, MIXED, "mixed-9"),
+        "given": option_like(plan, MIXED, "given", "given"),
+    }
+    ax, _, artists = drawn(with_options(plan, *best.values()))
+    assert list(artists.options) == list(best)
+    labels = [line.get_label() for line in artists.options.values()]
+    assert labels == [
+        "best series: series-9",
+        "best parallel: parallel-9",
+        "best mixed: mixed-9",
+        "given",
+    ]
+    degC, drift = xy(artists.options["mixed"], ax)
+    r = {film[0]: ratio(film, degC) for film in FILMS}
+    ohms = 1.0 / (1.0 / (1e3 * r["np"]) + 1.0 / (0.8e3 * r["pp"])) + 20.0 * r["hi"]
+    np.testing.assert_allclose(drift, ohms / (1.0 / (1 / 1e3 + 1 / 0.8e3) + 20.0) - 1, rtol=0, atol=1e-12)
+    assert len({str(line._dash_pattern) for line in artists.options.values()}) == 4  # no public way
+    assert all(line.get_linewidth() < artists.chosen.get_linewidth() for line in artists.options.values())
+
+
+def test_the_chosen_option_and_single_materials_are_not_drawn_twice() -> None:
+    plan = plan_of(spread=False)
+    (chosen,) = (o for o in plan.options if o.id == plan.chosen)
+    single = option_like(plan, Leg(material="np", ohms=1e3), "single-9")
+    _, _, artists = drawn(replace(plan, options=(single, chosen)))
+    assert artists.options == artists.residual_options == {}
+
+
+BIG = ("big", 9000.0, 0.0, 25.0)  # a film that makes the panel of all as high as the whole value
+
+
+def against(plan, network):
+    """Return what is drawn of one more option beside a chosen one, here PARALLEL, and how they compare."""
+    options = (option_like(plan, network, "more"), option_like(plan, PARALLEL, plan.chosen))
+    ax, residual_ax, artists = drawn(replace(plan, options=options))
+    (line,) = artists.options.values()
+    away = np.max(np.abs(np.subtract(line.get_ydata(), artists.chosen.get_ydata())))
+    times = np.max(np.abs(line.get_ydata())) / np.max(np.abs(artists.chosen.get_ydata()))
+    low, high = ax.get_ylim()
+    return artists, residual_ax, times, away / (high - low)
+
+
+def test_what_cannot_be_told_from_the_chosen_one_is_drawn_below_too() -> None:
+    plan = plan_of(films=(*FILMS, BIG), spread=False)
+    artists, residual_ax, times, away = against(plan, Series((PARALLEL, Leg(material="hi", ohms=50.0))))
+    assert away < 0.03
+    assert 1.0 < times < 4.0
+    degC, drift = xy(artists.residual_options["mixed"], residual_ax)
+    expected = xy(artists.options["mixed"], artists.chosen.axes)[1]
+    np.testing.assert_allclose(drift, expected, rtol=1e-12)
+    assert (degC[0], degC[-1]) == residual_ax.get_xlim()
+    low, high = (edge * scale(residual_ax) for edge in residual_ax.get_ylim())
+    assert low < drift.min() < drift.max() < high
+
+
+def test_what_would_flatten_the_chosen_one_is_left_out_below() -> None:
+    plan = plan_of(films=(*FILMS, BIG), spread=False)
+    artists, _, times, away = against(plan, Series((PARALLEL, Leg(material="hi", ohms=220.0))))
+    assert away < 0.03
+    assert times > 5.0
+    assert artists.residual_options == {}
+
+
+def test_what_stands_apart_above_is_not_drawn_again_below() -> None:
+    plan = plan_of(films=FILMS[1:], spread=False)
+    apart = Series((Leg(material="np", ohms=3e3), Leg(material="pp", ohms=1e3)))
+    artists, _, times, away = against(plan, apart)
+    assert away > 0.05
+    assert times < 4.0
+    assert artists.residual_options == {}
+
+
 def test_without_a_spread_there_is_no_worst_case_line() -> None:
     _, _, artists = drawn(plan_of(spread=False))
     assert artists.worst is None
@@ -250,7 +349,7 @@ def test_beyond_nine_materials_the_rest_are_grey_under_one_entry() -> None:
     assert {line.get_color() for line in artists.others} == {OTHER}
     texts = [text.get_text() for text in artists.legends[0].get_texts()]
     assert [text for text in texts if "other" in text] == ["5 other materials"]
-    assert len(texts) == 9 + 1 + 3  # the chosen option, the limit, the reference
+    assert len(texts) == 9 + 1 + len(artists.options) + 3  # the chosen option, the limit, the reference
     looks = [(line.get_color(), line.get_marker()) for line in artists.materials.values()]
     assert len({colour for colour, _ in looks}) == len({marker for _, marker in looks}) == 9
 
@@ -271,8 +370,20 @@ def test_long_names_are_cut_in_the_middle_and_stay_apart() -> None:
 def test_legends_cover_no_curve_and_stay_on_the_page() -> None:
     stem = "WWWWWWWWWWWWWWWWWWWWWWWWWWWWWWWWWWWWW"
     films = [(f"{stem}{n:02d}", -900.0 + 130.0 * n, 0.1 * (n % 7) - 0.2, 25.0) for n in range(14)]
-    goal = 'drift = "600 ppm"\nchord_tcr = "1234.56 ppm/K"\njudge = "worst-case"'
-    ax, residual_ax, artists = drawn(plan_of(goal, films))
+    goal = 'drift = "600 ppm"\nchord_tcr = "1234.56 ppm/K"\nband = "900 ppm"\nbox_tcr = "5 ppm/K"\n'
+    goal += 'judge = "worst-case"'
+    plan = plan_of(goal, films)
+    more = [
+        option_like(plan, network, f"W{stem}-{n}", role)
+        for n, (network, role) in enumerate(((SERIES, ""), (PARALLEL, ""), (MIXED, ""), (MIXED, "given")))
+    ]
+    films_of = {"hi": films[0][0], "np": films[6][0], "pp": films[13][0]}
+    more = [
+        replace(o, network=mapped(o.network, lambda g: Leg(material=films_of[g.material], ohms=g.ohms)))
+        for o in more
+    ]
+    ax, residual_ax, artists = drawn(replace(plan, options=(*more, *plan.options)))
+    assert len(artists.options) == 4
     renderer = ax.figure.canvas.get_renderer()
     ax.figure.draw(renderer)
     page = ax.figure.bbox
@@ -336,7 +447,7 @@ def linear(colour):
 
 def test_line_colours_have_a_contrast_of_three_to_one_on_white() -> None:
     # WCAG 2.1: relative luminance and contrast ratio, coefficients from memory.
-    for colour in (*MATERIAL_COLOURS, CHOSEN, LIMIT, OTHER):
+    for colour in (*MATERIAL_COLOURS, CHOSEN, LIMIT, OPTION, OTHER):
         luminance = linear(colour) @ [0.2126, 0.7152, 0.0722]
         assert 1.05 / (luminance + 0.05) >= 3.0, colour
 

@@ -4,6 +4,7 @@ import re
 import subprocess
 import sys
 import xml.etree.ElementTree as ET
+from dataclasses import replace
 
 import matplotlib
 import pytest
@@ -26,8 +27,11 @@ def files(plan):
     return figure_files(plan)
 
 
-def test_the_four_files(files) -> None:
-    assert list(files) == ["drift.svg", "drift.png", "slope-curvature.svg", "slope-curvature.png"]
+FIGURES = ("network", "drift", "slope-curvature")
+
+
+def test_the_six_files(files) -> None:
+    assert list(files) == [f"{name}.{kind}" for name in FIGURES for kind in ("svg", "png")]
     assert all(isinstance(content, bytes) for content in files.values())
 
 
@@ -45,7 +49,7 @@ def test_png_signature_size_and_resolution(files, name: str, inches: tuple[float
     assert len(content) < 300_000
 
 
-@pytest.mark.parametrize("name", ["drift.svg", "slope-curvature.svg"])
+@pytest.mark.parametrize("name", [f"{name}.svg" for name in FIGURES])
 def test_svg_is_well_formed_and_points_nowhere(files, name: str) -> None:
     text = files[name].decode()
     root = ET.fromstring(text)
@@ -65,11 +69,30 @@ def test_svg_is_well_formed_and_points_nowhere(files, name: str) -> None:
     assert len(text) < 200_000
 
 
-@pytest.mark.parametrize("name", ["drift.svg", "slope-curvature.svg"])
+@pytest.mark.parametrize("name", [f"{name}.svg" for name in FIGURES])
 def test_svg_text_is_drawn_as_paths_so_that_it_needs_no_font(files, name: str) -> None:
     root = ET.fromstring(files[name])
     assert not list(root.iter("{http://www.w3.org/2000/svg}text"))
     assert b"font-family" not in files[name]
+
+
+@pytest.mark.parametrize("name", FIGURES)
+def test_svg_says_in_words_what_it_shows(plan, files, name: str) -> None:
+    # SVG 2, 5.8: a title is the first child of what it names, for those who do not see it.
+    root = ET.fromstring(files[f"{name}.svg"])
+    space = "{http://www.w3.org/2000/svg}"
+    assert [element.tag for element in root][:2] == [f"{space}title", f"{space}desc"]
+    assert all(len(element.text) > 10 for element in root[:2])
+    if name == "network":
+        assert all(leg["material"] in root[1].text for leg in plan.best.to_dict()["legs"])
+
+
+def test_no_id_of_an_option_becomes_markup(plan) -> None:
+    # The id of an option in a plan file can be any text.
+    odd = "</title><script>alert(1)</script> & $x^{$"
+    options = tuple(replace(o, id=odd if o.id == plan.chosen else o.id) for o in plan.options)
+    for content in figure_files(replace(plan, chosen=odd, options=options)).values():
+        assert b"<script" not in content
 
 
 def test_the_bytes_are_the_same_every_time_whatever_the_settings(plan, files) -> None:

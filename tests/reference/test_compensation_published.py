@@ -1,5 +1,7 @@
 """The main job against published values: zero-TC pairs, swamped coils, minimax residuals, identities."""
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from makers import brief, by_name, film, grid, leg, need_of, over
@@ -46,11 +48,11 @@ def test_zero_tc_pair_of_a_physics_exercise():
     room = temperature_range(263.15, 313.15, 273.15)
     need = requirement(Goal(), room)
     space = Space(arrangement="series", materials=("carbon", "wire"), most=2, min_share=0.0)
-    network = search_space(space, need, films, 6500.0, 1)[0].network
+    network = search_space(replace(space, ohms=6500.0), need, films, 1)[0].network
     ohms = {one.material: one.ohms for one in legs(network)}
     assert ohms == pytest.approx({"carbon": 2888.89, "wire": 3611.11}, rel=1e-5)
     option = check(
-        next(iter(search_space(space, need, films, 6500.0, 1))),
+        next(iter(search_space(replace(space, ohms=6500.0), need, films, 1))),
         Case(materials=films, spreads={}, over=room, need=need),
         "x",
     )
@@ -74,7 +76,7 @@ def test_least_band_of_a_quadratic_residual(curvature, low, high):
     films = by_name(film("up", 600, curvature), film("down", -600, curvature))
     need = need_of(Limit(kind="band", value=0.01), low=low, high=high)
     space = Space(arrangement="series", materials=("down", "up"), most=2, min_share=0.0)
-    proposal = search_space(space, need, films, 1.0, 1)[0]
+    proposal = search_space(replace(space, ohms=1.0), need, films, 1)[0]
     option = check(proposal, Case(materials=films, spreads={}, over=over(low, high), need=need), "x")
     assert option.nominal.band_ppm == pytest.approx(curvature * (high - low) ** 2 / 4, rel=1e-9)
     slope = -curvature * ((low - 25) + (high - 25))

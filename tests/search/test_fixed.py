@@ -159,6 +159,6 @@ def test_bisection_agrees_with_a_scan_of_the_share(kind):
     case = Case(materials=films, spreads={}, over=over(), need=need)
     for step, meets in ((0.999, True), (1.001, False)):
         at = replace(space, fixed_share=(u * step, u * step))
-        network = search_space(at, need, films, None, 1)[0].network
+        network = search_space(at, need, films, 1)[0].network
         assert (nominal_figure(network, case) <= 0.02) == meets
     assert check(found, case, "x").verdict == "MET"

@@ -21,7 +21,7 @@ def space(kind, names, most=3, min_share=0.0, **more):
 
 def best(kind, materials, need=None, most=3, min_share=0.0, few=1):
     need = need or need_of()
-    found = search_space(space(kind, materials, most, min_share), need, materials, 1000.0, few)
+    found = search_space(space(kind, materials, most, min_share, ohms=1000.0), need, materials, few)
     case = Case(materials=materials, spreads={}, over=over(), need=need)
     return [check(proposal, case, "x") for proposal in found]
 
@@ -199,7 +199,9 @@ def test_scaling_the_target_changes_no_figure(kind):
     films = six_films()
     need = need_of()
     case = Case(materials=films, spreads={}, over=over(), need=need)
-    small, large = (search_space(space(kind, films), need, films, ohms, 1)[0].network for ohms in (1.0, 1e6))
+    small, large = (
+        search_space(space(kind, films, ohms=ohms), need, films, 1)[0].network for ohms in (1.0, 1e6)
+    )
     assert value(small) == pytest.approx(1.0, rel=1e-12)
     assert value(large) == pytest.approx(1e6, rel=1e-12)
     assert nominal_figure(small, case) == pytest.approx(nominal_figure(large, case), rel=1e-12)
@@ -259,7 +261,7 @@ def test_a_certificate_with_wrong_weights_still_proves_only_what_is_true():
     from dataclasses import replace
 
     films, need = six_films(), need_of()
-    proposal = search_space(space("parallel", films), need, films, 1.0, 1)[0]
+    proposal = search_space(space("parallel", films, ohms=1.0), need, films, 1)[0]
     optimum = best("parallel", films)[0].proof.figure_ppm * 1e-6
     rng = np.random.default_rng(0)
     count = len(proposal.certificate.nodes)

@@ -251,7 +251,7 @@ def test_the_sheet_has_its_parts(judged: Plan) -> None:
     assert judged.brief["sha256"] in html
     for caution in ("confirmed on silicon or hardware", "ageing, humidity", "can burn", "licensed practice"):
         assert caution in html
-    assert re.findall(r'src="([^"]+)"', html) == ["drift.svg", "slope-curvature.svg"]
+    assert re.findall(r'src="([^"]+)"', html) == ["network.svg", "drift.svg", "slope-curvature.svg"]
 
 
 def test_the_sheet_has_no_date_and_is_the_same_every_time(judged: Plan) -> None:
@@ -268,7 +268,7 @@ def test_no_text_of_the_user_becomes_markup() -> None:
     html = rendered(spec_markdown(plan))
     assert "<script" not in html
     assert "<a " not in html
-    assert html.count("<img") == 2
+    assert html.count("<img") == 3
     shown = re.sub(r"<[^>]+>", "", html).replace("&lt;", "<").replace("&gt;", ">").replace("&amp;", "&")
     assert shown.count(HOSTILE) == 3  # title, label and source are read as they were written
 

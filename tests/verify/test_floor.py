@@ -1,5 +1,7 @@
 """The floor: below every network that can be built, and equal to the optimum where that is known."""
 
+from dataclasses import replace
+
 import numpy as np
 import pytest
 from makers import brute_ratio, by_name, film, grid, leg, need_of, over, random_films, random_tree
@@ -29,7 +31,7 @@ def test_films_of_falling_curvature():
     films = by_name(*(film(f"f{k}", a, b) for k, (a, b) in enumerate(rows)))
     need = need_of()
     space = Space(arrangement="series", materials=tuple(films), most=4, min_share=0.0)
-    series = search_space(space, need, films, 1.0, 1)[0].network
+    series = search_space(replace(space, ohms=1.0), need, films, 1)[0].network
     case = Case(materials=films, spreads={}, over=over(), need=need)
     assert floor_of(films).nominal_ppm == pytest.approx(3457.4, abs=0.1)
     assert nominal_figure(series, case) * 1e6 == pytest.approx(3457.4, abs=0.1)
@@ -118,7 +120,9 @@ def test_floor_of_a_band_is_below_the_best_band():
     figures = []
     for kind in ("series", "parallel"):
         space = Space(arrangement=kind, materials=tuple(films), most=4, min_share=0.0)
-        figures.append(nominal_figure(search_space(space, need, films, 1.0, 1)[0].network, case))
+        figures.append(
+            nominal_figure(search_space(replace(space, ohms=1.0), need, films, 1)[0].network, case)
+        )
     bottom = floor_of(films, need, min(figures))
     assert bottom.nominal_ppm <= min(figures) * 1e6
 

@@ -1,0 +1,171 @@
+"""The best mixed networks of a space, as proposals: grid, polish, and what is left of each tree."""
+
+from __future__ import annotations
+
+from collections.abc import Mapping
+from dataclasses import dataclass
+
+import numpy as np
+
+from tcplan.goal import Requirement
+from tcplan.material.model import Material
+from tcplan.mixes import fixed_group
+from tcplan.network import Leg, Network, arrangement, legs, mapped, shares, simplified
+from tcplan.plan import Proposal, Space
+from tcplan.search.curves import network_at
+from tcplan.search.limits import LegLimits, limits_of
+from tcplan.search.linear import in_order
+from tcplan.search.mixed import NODES, Field, Source, Start, field_at, grid_starts, spread_points
+from tcplan.search.polish import Polished, Polisher, polishing_grid
+from tcplan.trees import Pair, Tree, assigned_trees, is_mixed, leaves, paired, shape_of, with_fixed
+
+VANISHED = 1e-7  # share of a leg that is left out
+
+
+def mixed_trees(space: Space) -> tuple[Tree, ...]:
+    """Return the mixed trees of a space; the fixed members are the leaf after the last material."""
+    count = len(space.materials)
+    found: list[Tree] = []
+    for size in range(1, space.legs + 1):
+        for tree in assigned_trees(size, count, space.most):
+            whole = with_fixed(tree, fixed_kind(space), count) if space.fixed else tree
+            if is_mixed(whole):
+                found.append(whole)
+    return tuple(found)
+
+
+def fixed_kind(space: Space) -> str:
+    """Return where the fixed members of a mixed space are."""
+    return "parallel" if space.fixed_in_parallel else "series"
+
+
+@dataclass(frozen=True, slots=True)
+class Task:
+    """Some starts of one space, polished together; a task can run in another process."""
+
+    source: Source
+    limits: LegLimits
+    starts: tuple[Start, ...]
+    outermost: float | None
+
+    def run(self) -> tuple[Polished, ...]:
+        """Return the polished starts, in their order."""
+        grid = polishing_grid(self.source)
+        found: list[Polished] = []
+        promising = np.inf
+        for start in self.starts:
+            pair = paired(shape_of(start.tree))
+            if not isinstance(pair, Pair):
+                continue
+            polisher = Polisher(pair, leaves(start.tree), self.source, self.limits, grid, self.outermost)
+            polished = polisher.run(np.array(start.shares), promising)
+            promising = min(promising, polished.figure)
+            found.append(polished)
+        return tuple(found)
+
+
+def _network(space: Space, tree: Tree, polished: Polished) -> Network | None:
+    """Return the network of a polished tree, without legs that have vanished; None if it is not mixed."""
+    names = tuple((*space.materials, "")[leaf] for leaf in leaves(tree))
+    if space.ohms is None:
+        return None
+    whole = network_at(paired(shape_of(tree)), names, polished.shares, space.ohms)
+    group = fixed_group(space)
+    network = _without_vanished(whole)
+    if network is None:
+        return None
+    if group is not None:
+        network = _put_fixed(network, group)
+    simple = simplified(network) if group is None else _opened(network)
+    return simple if arrangement(simple) == "mixed" else None
+
+
+def _without_vanished(network: Network) -> Network | None:
+    """Return the network without the legs whose share is next to nothing."""
+    keep = iter([share > VANISHED for share in shares(network)])
+
+    def node(part: Network) -> Network | None:
+        if isinstance(part, Leg):
+            return part if next(keep) else None
+        left = tuple(child for child in map(node, part.children) if child is not None)
+        if len(left) < 2:
+            return left[0] if left else None
+        return type(part)(left)
+
+    return node(network)
+
+
+def _put_fixed(network: Network, group: Network) -> Network:
+    """Return the network with the fixed members, at their own values, in place of the unnamed leg."""
+    if isinstance(network, Leg):
+        return group if network.material == "" else network
+    return type(network)(tuple(_put_fixed(child, group) for child in network.children))
+
+
+def _opened(network: Network) -> Network:
+    """Return the network with nested equal nodes opened; legs stay as they are."""
+    if isinstance(network, Leg):
+        return network
+    kind = type(network)
+    children: list[Network] = []
+    for child in map(_opened, network.children):
+        children.extend(child.children if isinstance(child, kind) else (child,))
+    return kind(tuple(children))
+
+
+def tasks_of(space: Space, need: Requirement, materials: Mapping[str, Material]) -> tuple[Task, ...]:
+    """Return the polishing tasks of a space, one a shape of tree: the grid stage is done here."""
+    source, limits = Source(need, materials, space), limits_of(space)
+    field: Field = field_at(source, *spread_points(need, NODES, chebyshev=True))
+    outermost = space.fixed_share[0] if space.fixed else None
+    starts = grid_starts(mixed_trees(space), field, limits, outermost=outermost)
+    by_shape: dict[Tree, list[Start]] = {}
+    for start in starts:
+        by_shape.setdefault(shape_of(start.tree), []).append(start)
+    return tuple(Task(source, limits, tuple(group), outermost) for group in by_shape.values())
+
+
+def mixed_proposals(
+    space: Space, need: Requirement, materials: Mapping[str, Material], few: int = 3
+) -> tuple[Proposal, ...]:
+    """Return the best few mixed networks of each number of legs, best first.
+
+    Parameters
+    ----------
+    space : Space
+        Of given total; its fixed members, if any, hold a given share.
+    need : Requirement
+    materials : mapping of name to Material
+    few : int
+        How many are wanted of each number of legs.
+    """
+    space = in_order(space)
+    done = [(task, task.run()) for task in tasks_of(space, need, materials)]
+    ranked = sorted(
+        (
+            (polished.figure, repr(start.tree), start.tree, polished)
+            for task, results in done
+            for start, polished in zip(task.starts, results, strict=True)
+            if polished.excess <= 0
+        ),
+        key=lambda row: row[:2],
+    )
+    found: dict[int, list[Network]] = {}
+    for _, _, tree, polished in ranked:
+        network = _network(space, tree, polished)
+        if network is None:
+            continue
+        group = found.setdefault(len(legs(network)), [])
+        if len(group) < few and not any(_alike(network, other) for other in group):
+            group.append(network)
+    return tuple(Proposal(network=network, space=space) for size in sorted(found) for network in found[size])
+
+
+def _alike(one: Network, other: Network) -> bool:
+    """Whether two networks have the same tree and values within 1 part in 10^4."""
+
+    def form(network: Network) -> str:
+        return repr(mapped(network, lambda leg: Leg(material=leg.material, ohms=1.0)))
+
+    values = zip(legs(one), legs(other), strict=False)
+    return form(one) == form(other) and all(abs(a.ohms / b.ohms - 1.0) < 1e-4 for a, b in values)
