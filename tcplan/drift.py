@@ -1,6 +1,6 @@
 """Drift of any network over a continuous range: extremes, band and temperature coefficients.
 
-Extremes are those of a Chebyshev interpolant that is accepted only when its tail and 64 points off
+Extremes are those of a Chebyshev interpolant that is accepted only when its tail and 192 points off
 its nodes agree with the function; the roots of its derivative and the ends of the range are the
 candidates. A maximum over a grid is never reported.
 """
@@ -17,7 +17,7 @@ import numpy as np
 from numpy.polynomial import chebyshev
 
 from tcplan.arrays import FloatArray
-from tcplan.errors import InternalError
+from tcplan.errors import InputError, InternalError, Problem
 from tcplan.material.model import Material
 from tcplan.network import Network, resistance, taylor, used_materials, value
 
@@ -26,6 +26,8 @@ Curve: TypeAlias = Callable[[FloatArray], FloatArray]
 
 TAIL = 1e-13
 DEGREES = (16, 32, 64)
+MOST_PANELS = 4000
+CHECKS = 192  # points off the nodes at which an interpolant must agree
 SMALLEST_PANEL = 1e-7  # K; below this a kink is taken as resolved
 
 
@@ -74,8 +76,8 @@ def _chebyshev_points(degree: int) -> tuple[FloatArray, FloatArray]:
 
 @lru_cache(maxsize=8)
 def _check_points(degree: int) -> tuple[FloatArray, FloatArray]:
-    """Return 64 points off the nodes and the Chebyshev values there."""
-    points = np.cos(np.pi * (np.arange(64) + 0.37) / 64.0)
+    """Return points off the nodes, evenly over the panel, and the Chebyshev values there."""
+    points = -1.0 + 2.0 * (np.arange(CHECKS) + 0.37) / CHECKS
     return points, np.asarray(chebyshev.chebvander(points, degree), dtype=np.float64)
 
 
@@ -104,15 +106,37 @@ def _candidates(coefficients: FloatArray, low: float, high: float) -> list[float
 
 
 def stationary_points(curve: Curve, low: float, high: float) -> list[float]:
-    """Return the ends and all stationary temperatures [K] of a smooth curve on one panel."""
-    if high - low <= SMALLEST_PANEL:
-        return [low, high]
-    for degree in DEGREES:
-        coefficients = _interpolant(curve, low, high, degree)
-        if coefficients is not None:
-            return _candidates(coefficients, low, high)
-    middle = 0.5 * (low + high)
-    return [*stationary_points(curve, low, middle), *stationary_points(curve, middle, high)]
+    """Return the ends and all stationary temperatures [K] of a curve on one panel.
+
+    Raises
+    ------
+    InputError
+        When the curve is too rough to be followed: after many halvings no interpolant holds it.
+    """
+    found: list[float] = []
+    panels_left = [(low, high)]
+    for _ in range(MOST_PANELS):
+        if not panels_left:
+            return found
+        left, right = panels_left.pop()
+        accepted = None
+        if right - left > SMALLEST_PANEL:
+            for degree in DEGREES:
+                if (accepted := _interpolant(curve, left, right, degree)) is not None:
+                    break
+            else:
+                middle = 0.5 * (left + right)
+                panels_left += [(middle, right), (left, middle)]
+                continue
+        found += [left, right] if accepted is None else _candidates(accepted, left, right)
+    raise InputError(
+        Problem(
+            where="law",
+            found=f"a curve that is rough between {low - 273.15:.4g} and {high - 273.15:.4g} degC",
+            expected="a law that is smooth, but for a few kinks",
+            todo="A formula should not take differences of nearly equal numbers.",
+        )
+    )
 
 
 def extremes(curve: Curve, over: Sequence[tuple[float, float]]) -> Extremes:

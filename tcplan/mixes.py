@@ -28,6 +28,18 @@ def fixed_group(space: Space) -> Network | None:
     return Parallel(space.fixed) if parallel else Series(space.fixed)
 
 
+def fixed_ends(space: Space, taken: float) -> tuple[float, ...]:
+    """Return the least and the greatest share of the fixed members beside legs that take this much.
+
+    Empty when there is no room for the least.
+    """
+    low, high = space.fixed_share
+    high = min(high, 1.0 - taken)
+    if low > high + INSIDE:
+        return ()
+    return (low,) if high <= low else (low, high)
+
+
 def simplex_vertices(space: Space, support: Sequence[int], *, least_share: bool = True) -> FloatArray:
     """Return the vertices without the limits of size, shape (vertices, materials + 1).
 
@@ -36,15 +48,14 @@ def simplex_vertices(space: Space, support: Sequence[int], *, least_share: bool 
     count = len(space.materials)
     least = space.min_share if least_share else 0.0
     found = []
-    for u in sorted(set(space.fixed_share)):
+    for u in fixed_ends(space, len(support) * least):
         rest = 1.0 - u - len(support) * least
         for i in support:
             point = np.zeros(count + 1)
             point[list(support)] = least
             point[i] += rest
             point[count] = u
-            if rest >= -INSIDE:
-                found.append(point)
+            found.append(point)
     return np.array(found).reshape(-1, count + 1)
 
 

@@ -44,7 +44,8 @@ def _mask(
     if over is not None and not any(low <= over.high and high >= over.low for low, high, _ in rows):
         table.refuse("mask", "no line inside the temperature range", f"lines inside {over.text()}")
         return None
-    windows = tuple(Window(low=low, high=high, limit=limit) for low, high, limit in rows)
+    inside = [row for row in rows if over is None or (row[0] <= over.high and row[1] >= over.low)]
+    windows = tuple(Window(low=low, high=high, limit=limit) for low, high, limit in inside)
     if any(w.low >= w.high or w.limit <= 0 for w in windows):
         return None
     return Limit(kind="mask", value=min(w.limit for w in windows), windows=windows)

@@ -10,7 +10,7 @@ import numpy as np
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
 from tcplan.mixes import fixed_group
-from tcplan.network import Leg, Network, arrangement, legs, mapped, shares, simplified
+from tcplan.network import Leg, Network, arrangement, legs, shares, simplified
 from tcplan.plan import Proposal, Space
 from tcplan.search.curves import network_at
 from tcplan.search.limits import LegLimits, limits_of
@@ -20,6 +20,7 @@ from tcplan.search.polish import Polished, Polisher, polishing_grid
 from tcplan.trees import Pair, Tree, assigned_trees, is_mixed, leaves, paired, shape_of, with_fixed
 
 VANISHED = 1e-7  # share of a leg that is left out
+SAME = 1e-5  # relative difference of the figures of two forms of one resistor
 
 
 def mixed_trees(space: Space) -> tuple[Tree, ...]:
@@ -151,21 +152,15 @@ def mixed_proposals(
         key=lambda row: row[:2],
     )
     found: dict[int, list[Network]] = {}
-    for _, _, tree, polished in ranked:
+    seen: list[tuple[tuple[str, ...], float]] = []
+    for figure, _, tree, polished in ranked:
         network = _network(space, tree, polished)
         if network is None:
             continue
         group = found.setdefault(len(legs(network)), [])
-        if len(group) < few and not any(_alike(network, other) for other in group):
+        # Two trees of the same legs often are the same resistor: they reach the same figure.
+        used = tuple(sorted(leg.material for leg in legs(network)))
+        if len(group) < few and not any(used == u and abs(figure - f) <= SAME * f for u, f in seen):
             group.append(network)
+            seen.append((used, figure))
     return tuple(Proposal(network=network, space=space) for size in sorted(found) for network in found[size])
-
-
-def _alike(one: Network, other: Network) -> bool:
-    """Whether two networks have the same tree and values within 1 part in 10^4."""
-
-    def form(network: Network) -> str:
-        return repr(mapped(network, lambda leg: Leg(material=leg.material, ohms=1.0)))
-
-    values = zip(legs(one), legs(other), strict=False)
-    return form(one) == form(other) and all(abs(a.ohms / b.ohms - 1.0) < 1e-4 for a, b in values)

@@ -11,7 +11,7 @@ from math import comb
 import numpy as np
 
 from tcplan.arrays import FloatArray, IntArray
-from tcplan.mixes import all_supports, share_vertices
+from tcplan.mixes import all_supports, fixed_ends, share_vertices
 from tcplan.search.solver import Mix, Solver
 
 MOST_SUPPORTS = 300_000
@@ -26,10 +26,8 @@ def _bank_bounds(solver: Solver, y: FloatArray, supports: IntArray) -> FloatArra
     n, b, d = solver._line(y, np.eye(solver.count + 1))
     lowest = np.full(len(supports), np.inf)
     centres = (-solver.centre_limit, solver.centre_limit) if solver.centre_limit else (0.0,)
-    for u in set(space.fixed_share):
+    for u in fixed_ends(space, size * space.min_share):
         rest = 1.0 - u - size * space.min_share
-        if rest < -1e-12:
-            continue
         for c in centres:
             top = n - c * b
             whole = space.min_share * top[supports].sum(axis=1)[:, None] + rest * top[supports] + u * top[-1]

@@ -37,6 +37,7 @@ def worst(figure_ppm: float, limit_ppm: float | None = None) -> str:
 
     Where outward rounding alone would pass a limit that the figure keeps, more digits are printed.
     """
+    figure_ppm = _kept(figure_ppm, limit_ppm)
     for digits in range(WORST_DIGITS, MOST_DIGITS):
         rounded = round_outward(figure_ppm, digits)
         if limit_ppm is None or not figure_ppm <= limit_ppm < rounded:
@@ -61,12 +62,20 @@ def nominal(figure_ppm: float, spread_ppm: float | None, limit_ppm: float | None
 
     With the limit that it is judged by, rounding never puts it on the other side of the limit.
     """
+    figure_ppm = _kept(figure_ppm, limit_ppm)
     printed, most = _nominal(figure_ppm, spread_ppm)
     if limit_ppm is not None and figure_ppm <= limit_ppm < most:
         return f"under {stated(limit_ppm)}"
     if limit_ppm is not None and most <= limit_ppm < figure_ppm:
         return f"over {stated(limit_ppm)}"
     return printed
+
+
+def _kept(figure_ppm: float, limit_ppm: float | None) -> float:
+    """Return the limit for a figure that passes it by rounding only: such a figure meets it."""
+    if limit_ppm is not None and limit_ppm < figure_ppm <= limit_ppm * (1.0 + ROUNDING):
+        return limit_ppm
+    return figure_ppm
 
 
 def _nominal(figure_ppm: float, spread_ppm: float | None) -> tuple[str, float]:

@@ -17,9 +17,10 @@ from dataclasses import dataclass
 import numpy as np
 
 from tcplan.arrays import FloatArray, IntArray
+from tcplan.errors import InternalError
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
-from tcplan.mixes import all_supports, share_vertices
+from tcplan.mixes import all_supports, fixed_ends, share_vertices
 from tcplan.network import Leg, Parallel, Series, resistance, value
 from tcplan.plan import Certificate, FloorEvidence, Space
 
@@ -77,10 +78,8 @@ def _value(line: Line, space: Space, support: IntArray, centre: float) -> FloatA
     size = support.shape[1]
     top = line.n - centre * line.b
     lowest = np.full(len(support), np.inf)
-    for u in set(space.fixed_share):
+    for u in fixed_ends(space, size * space.min_share):
         rest = 1.0 - u - size * space.min_share
-        if rest < -1e-12:
-            continue
         above = space.min_share * top[support].sum(axis=1, keepdims=True) + rest * top[support] + u * top[-1]
         below = (
             space.min_share * line.d[support].sum(axis=1, keepdims=True)
@@ -164,6 +163,8 @@ def arrangement_bound(
             vertices = share_vertices(space, support, tangents.get(support, ()))
             best[k] = max(float(best[k]), _of_support(lines, vertices, limit))
         lowest = min(lowest, float(best.min()))
+    if lowest > figure * (1.0 + 1e-9) + 1e-12:
+        raise InternalError(f"a bound of {lowest} is above a figure of {figure} that was reached")
     return float(min(max(0.0, lowest - MARGIN), figure))
 
 

@@ -27,14 +27,16 @@ def _faces(half: FloatArray) -> Iterator[tuple[FloatArray, FloatArray]]:
     """Yield (centre, half-width) of the faces on which one factor is at its upper limit.
 
     The ratio does not change when all factors are scaled together, and any point scales up until
-    its first factor reaches its limit: these faces hold every ratio of the box.
+    its first factor reaches its limit: these faces hold every ratio of the box. A factor that does
+    not move is at its limit from the start, so with one of them the whole box is its only face.
     """
-    for k in np.nonzero(half > 0)[0]:
+    if (half == 0).any():
+        yield np.ones_like(half), half
+        return
+    for k in range(len(half)):
         centre, width = np.ones_like(half), half.copy()
         centre[k], width[k] = 1.0 + half[k], 0.0
         yield centre, width
-    if not (half > 0).any():
-        yield np.ones_like(half), half
 
 
 def _cell_values(
@@ -115,7 +117,8 @@ class Found:
     """The worst point that the cells found, and the bound on all of them.
 
     ``factors`` follow the materials of the box; ``sign`` is 1 when all laws are at their highest;
-    ``at`` is the position on the grid.
+    ``at`` is the position on the grid. ``reach`` and ``by_temperature`` hold, for all laws high and
+    all low, what the cells' centres reach at each temperature, and the factors that reach it.
     """
 
     figure: float
@@ -123,6 +126,8 @@ class Found:
     factors: FloatArray
     sign: int
     at: int
+    reach: FloatArray
+    by_temperature: FloatArray
 
 
 def excursions(box: Box, centre: FloatArray, width: FloatArray, grid: Grid) -> tuple[float, float]:
@@ -138,8 +143,29 @@ def _examined(box: Box, centre: FloatArray, width: FloatArray, grid: Grid) -> tu
     bound = np.maximum((top - t) / weight, (t - bottom) / weight).max(axis=1)
     reach = np.stack([(high - t) / weight, (t - low) / weight])
     side, cell, at = np.unravel_index(int(np.argmax(reach)), reach.shape)
-    found = Found(float(reach[side, cell, at]), 0.0, centre[cell].copy(), 1 if side == 0 else -1, int(at))
+    found = Found(
+        figure=float(reach[side, cell, at]),
+        upper=0.0,
+        factors=centre[cell].copy(),
+        sign=1 if side == 0 else -1,
+        at=int(at),
+        reach=reach.max(axis=1),
+        by_temperature=centre[reach.argmax(axis=1)],
+    )
     return bound, _at_vertices(box, found, width[cell], grid)
+
+
+def _better(best: Found | None, found: Found) -> Found:
+    """Return the worse of two findings, with the worst of both at each temperature."""
+    if best is None:
+        return found
+    better = found.reach > best.reach
+    one = found if found.figure > best.figure else best
+    return replace(
+        one,
+        reach=np.maximum(found.reach, best.reach),
+        by_temperature=np.where(better[..., None], found.by_temperature, best.by_temperature),
+    )
 
 
 def _at_vertices(box: Box, found: Found, width: FloatArray, grid: Grid) -> Found:
@@ -174,7 +200,7 @@ def cell_search(box: Box, grid: Grid) -> Found:
         for k in range(0, len(centre), BATCH):
             c, w = centre[k : k + BATCH], width[k : k + BATCH]
             bound, found = _examined(box, c, w, grid)
-            best = found if best is None or found.figure > best.figure else best
+            best = _better(best, found)
             open_cells = (bound > best.figure * (1.0 + GAP)) & (count < MOST_CELLS)
             closed = max(closed, float(bound[~open_cells].max(initial=0.0)))
             keep.append((c[open_cells], w[open_cells]))

@@ -9,6 +9,7 @@ from typing import Protocol
 import numpy as np
 
 from tcplan.arrays import FloatArray
+from tcplan.errors import InternalError
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
 from tcplan.material.spread import Spread, law_bounds
@@ -158,6 +159,10 @@ def floor(
     group = [materials[name] for name in names]
     sandwich = sandwich_bound(evidence, need, materials, figure)
     slopes, (low, high) = slope_bound(need, group, figure)
+    if max(sandwich, slopes) > figure * (1.0 + 1e-9) + 1e-12:
+        raise InternalError(
+            f"a floor of {max(sandwich, slopes)} is above a figure of {figure} that was reached"
+        )
     nominal = min(max(sandwich, slopes), figure)
     if nominal <= 0:
         why = "the nominal laws alone set no floor above zero"

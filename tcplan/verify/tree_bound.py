@@ -13,7 +13,7 @@ made is gone as well.
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass, field, replace
+from dataclasses import dataclass, field
 from itertools import groupby
 
 import numpy as np
@@ -34,7 +34,7 @@ MARGIN = 1e-12  # floating point without directed rounding
 BATCH = 2048
 GAMES = 48  # new vectors a batch
 OLD = 400  # vectors kept in a bank
-MOST_CELLS = 400_000
+BASE_CELLS, CELLS_A_TREE = 20_000, 40
 WEAKER = (1.0, 0.98, 0.95, 0.9, 0.8, 0.65, 0.5)  # limits that are tried in turn, of the first
 
 
@@ -347,7 +347,7 @@ def none_within(
     bank: dict[str, list[FloatArray]],
     *,
     free_top: bool = True,
-    most_cells: int = MOST_CELLS,
+    most_cells: int,
 ) -> Answer:
     """Return whether every tree is ruled out.
 
@@ -417,19 +417,22 @@ class MixedBound:
     more: tuple[float, ...] = ()
     bank: dict[str, list[FloatArray]] = field(default_factory=dict)
 
-    def below(self, figure: float, gap: float, most_cells: int = MOST_CELLS) -> float:
+    def below(self, figure: float, gap: float) -> float:
         """Return a figure that no mixed network of the space is within, at most ``figure (1 - gap)``.
 
-        Weaker limits are tried in turn; 0 when none of them closes.
+        The limit itself is tried first, then with the sizes of legs looked at, and then weaker
+        limits; 0 when none of them closes. The work is bounded by a count of cells, so that the answer
+        does not depend on the machine.
         """
         trees = space_trees(self.space)
+        most = BASE_CELLS + CELLS_A_TREE * len(trees)
         for part in WEAKER:
             limit = figure * (1.0 - gap) * part
             ask = question(self.space, self.need, self.materials, limit, self.more)
-            relaxed = replace(ask, max_area=np.inf)
-            if none_within(trees, relaxed, self.bank, most_cells=most_cells // 4).proved:
+            if none_within(trees, ask, self.bank, most_cells=most).proved:
                 return limit
-            if ask.sized and none_within(trees, ask, self.bank, free_top=False, most_cells=most_cells).proved:
+            first = part == WEAKER[0] and ask.sized
+            if first and none_within(trees, ask, self.bank, free_top=False, most_cells=4 * most).proved:
                 return limit
         return 0.0
 

@@ -25,13 +25,14 @@ from tcplan.material.model import Material
 from tcplan.material.spread import Spread, law_vertices
 from tcplan.network import Network, arrangement
 from tcplan.verify.box import Box, Device, Worst
-from tcplan.verify.cells import cell_search, excursions, grid_of, halved, start_cells
+from tcplan.verify.cells import Found, cell_search, excursions, grid_of, halved, start_cells
 from tcplan.verify.factors import one_node_factors
 
 GRID = 65
 CELL_GRID = 33
 STARTS = 3
 NEAR = 0.97
+BAND_CELLS = 512
 
 
 def _temperatures(need: Requirement, count: int) -> tuple[FloatArray, FloatArray]:
@@ -88,9 +89,10 @@ def _local_maxima(values: FloatArray) -> list[int]:
 
 
 def _mixed(box: Box) -> Worst:
-    """Return the worst case of a mixed network: cells over the factors, then the temperature.
+    """Return the worst case of a mixed network: cells over the factors, then the temperatures.
 
-    The temperature that the worst device moves to joins the grid, until it no longer moves.
+    Every temperature near the worst is followed to where its device is worst; these join the grid,
+    until none of them moves the figure.
     """
     T, weight = _temperatures(box.need, CELL_GRID)
     best: tuple[Device, Judged] | None = None
@@ -98,17 +100,34 @@ def _mixed(box: Box) -> Worst:
     for _ in range(4):
         found = cell_search(box, grid_of(box, T, weight))
         upper = max(upper, found.upper)
-        factors = dict(zip(box.names, found.factors.tolist(), strict=True))
-        settled = _settled(box, Device(factors, box.shifts_at(float(T[found.at]), found.sign)))
-        if best is not None and settled[1].figure <= best[1].figure * (1 + 1e-6):
+        ends = [_settled(box, device) for device in _suspects(box, found, T)]
+        worst = max(ends, key=lambda pair: pair[1].figure)
+        if best is not None and worst[1].figure <= best[1].figure * (1 + 1e-6):
             break
-        best = settled
-        at = settled[1].at
-        tightest = min(p.weight for p in box.need.pieces if p.low <= at <= p.high)
-        T, weight = np.r_[T, at], np.r_[weight, tightest]
+        best = worst
+        fresh = [at for at in {judged.at for _, judged in ends} if np.abs(T - at).min() > 1e-6]
+        tightest = [min(p.weight for p in box.need.pieces if p.low <= at <= p.high) for at in fresh]
+        T, weight = np.r_[T, fresh], np.r_[weight, tightest]
     if best is None:
         raise InternalError("a worst case without a device")
     return Worst(best[0], best[1], max(upper, best[1].figure), "cells")
+
+
+def _suspects(box: Box, found: Found, T: FloatArray) -> list[Device]:
+    """Return the worst device of the cells, and those of the other temperatures that come near it."""
+
+    def device(factors: FloatArray, at: int, sign: int) -> Device:
+        named = dict(zip(box.names, factors.tolist(), strict=True))
+        return Device(named, box.shifts_at(float(T[at]), sign))
+
+    order = np.argsort(T, kind="stable")
+    devices = [device(found.factors, found.at, found.sign)]
+    for row, sign in ((0, 1), (1, -1)):
+        for k in _local_maxima(found.reach[row][order])[:STARTS]:
+            at = int(order[k])
+            if found.reach[row, at] >= NEAR * found.figure:
+                devices.append(device(found.by_temperature[row, at], at, sign))
+    return devices
 
 
 # --- bands ------------------------------------------------------------------------------------------
@@ -158,7 +177,7 @@ def _band_bound(box: Box) -> float:
         down = float((grid.wanted - one_node_factors(box, grid.lo, -1)[0]).max())
     else:
         centre, width = start_cells(box)
-        for _ in range(2 * len(box.names)):
+        while len(centre) < BAND_CELLS and width.max() > 0:
             centre, width = halved(centre, width)
         up, down = excursions(box, centre, width, grid)
     band = min(p.weight for p in box.need.pieces if p.centred)

@@ -41,23 +41,34 @@ def _mixed_ppm(found: Sequence[Proposal], case: Case, gap: float) -> float:
 def _shortlist(options: Sequence[Option], judge: str) -> tuple[Option, ...]:
     """Return the options worth showing, best first.
 
-    Dropped: a network that is there already, and one that a simpler one equals within 1 %.
+    Dropped: a network that is there already, one that a simpler one equals within 1 %, and one that
+    another beats in all of judged figure, area, legs and materials. One that meets the limit never
+    gives way to one that does not.
     """
     order = sorted(
         options, key=lambda o: (judged_ppm(o, judge), o.proof.figure_ppm, len(legs(o.network)), o.id)
     )
     kept: list[Option] = []
-    for option in order:
-        figure = (judged_ppm(option, judge), option.proof.figure_ppm)
-        simpler = [o for o in order if len(legs(o.network)) < len(legs(option.network)) and not o.role]
-        beaten = any(
-            judged_ppm(o, judge) <= EQUAL * figure[0] and o.proof.figure_ppm <= EQUAL * figure[1]
-            for o in simpler
-        )
+    for option in sorted(order, key=lambda o: len(legs(o.network))):  # simpler ones first
         same = any(o.network == option.network for o in kept)
-        if option.role or not (beaten or same):
+        if option.role or not (same or any(_makes_needless(o, option, judge) for o in kept)):
             kept.append(option)
-    return tuple(kept)
+    return tuple(option for option in order if option in kept)
+
+
+def _makes_needless(other: Option, option: Option, judge: str) -> bool:
+    """Whether a kept option leaves no reason to show another one."""
+    if option.verdict == "MET" and other.verdict != "MET":
+        return False
+    judged = judged_ppm(other, judge), judged_ppm(option, judge)
+    nominal = other.proof.figure_ppm, option.proof.figure_ppm
+    fewer = len(legs(other.network)) < len(legs(option.network))
+    equals = judged[0] <= EQUAL * judged[1] and nominal[0] <= EQUAL * nominal[1]
+    if fewer and equals:
+        return True
+    smaller = other.area is not None and option.area is not None and other.area < option.area
+    fewer_materials = len(used_materials(other.network)) < len(used_materials(option.network))
+    return fewer and smaller and fewer_materials and judged[0] < judged[1]
 
 
 def _chosen(options: Sequence[Option], judge: str) -> Option:

@@ -161,12 +161,14 @@ def floor_evidence(brief: Brief, need: Requirement, figure: float) -> FloorEvide
         A figure that one of these networks reaches (a fraction).
     """
     names = used_materials(brief.given) if brief.given is not None else brief.rules.use
+    low, high = fixed_share(brief)
     space = Space(
         arrangement=brief.fixed[0].place if brief.fixed else "series",
         materials=tuple(names),
         most=len(names),
         min_share=0.0,
         fixed=tuple(member.leg for member in brief.fixed),
-        fixed_share=fixed_share(brief),
+        fixed_share=(low if low == high or brief.target.at_most is not None else 0.0, high),
+        fixed_in_parallel=bool(brief.fixed) and brief.fixed[0].place == "parallel",
     )
     return sandwich_evidence(space, need, brief.by_name, figure)
