@@ -10,10 +10,12 @@ from __future__ import annotations
 from collections.abc import Iterator
 from dataclasses import dataclass
 from functools import lru_cache
+from math import comb
 from typing import TypeAlias
 
 Tree: TypeAlias = int | tuple[str, tuple["Tree", ...]]
 SERIES, PARALLEL = "series", "parallel"
+MOST_COUNTED = 300_000
 
 
 def opposite(kind: str) -> str:
@@ -125,6 +127,13 @@ def with_fixed(tree: Tree, kind: str, fixed: int) -> Tree:
     if not isinstance(tree, int) and tree[0] == kind:
         return kind, (fixed, *tree[1])
     return kind, (fixed, tree)
+
+
+def tree_count(size: int, materials: int, most: int) -> int:
+    """Return the number of trees of ``size`` legs; an upper estimate where it is large."""
+    subsets = sum(comb(materials, k) * k**size for k in range(1, min(most, size, materials) + 1))
+    estimate: int = len(shapes(size)) * subsets
+    return estimate if estimate > MOST_COUNTED else len(assigned_trees(size, materials, most))
 
 
 def is_mixed(tree: Tree) -> bool:

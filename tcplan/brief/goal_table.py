@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import numpy as np
+
 from tcplan.brief.shape import MOST_ROWS
 from tcplan.goal import KINDS, Goal, Judge, Limit, LimitKind, Window
 from tcplan.material.law import Expression, Law, Polynomial, Table, check_positive
@@ -87,4 +89,19 @@ def _wanted_table(
         )
         return None
     points = tuple((temperature, 1.0 + drift) for temperature, drift in rows)
-    return table.guarded(lambda: Table(points=points, reference=over.reference))
+    law = table.guarded(lambda: Table(points=points, reference=over.reference))
+    if law is not None and abs(_value_of(points, law, over.reference) - 1.0) > 1e-6:
+        off = (_value_of(points, law, over.reference) - 1.0) * 100
+        table.refuse(
+            "table",
+            f"a drift of {off:.4g} % at the reference, {format_celsius(over.reference)}",
+            "0 % there: drift is counted from the reference",
+        )
+        return None
+    return law
+
+
+def _value_of(points: tuple[tuple[float, float], ...], law: Table, reference: float) -> float:
+    """Return what the table itself says at the reference, before it is referred to it."""
+    temperature, value = points[0]
+    return float(value / law.ratio(np.array([temperature]))[0] * law.ratio(np.array([reference]))[0])

@@ -14,6 +14,8 @@ from tcplan.network_text import parse_network
 from tcplan.table_reader import TableReader
 from tcplan.units import format_ohms
 
+MOST_MATERIALS = 300
+
 
 def _known(table: TableReader, key: str, name: str | None, materials: Mapping[str, Material]) -> bool:
     if name is None or name in materials:
@@ -56,14 +58,19 @@ def read_rules(
     use = table.texts("use")
     for name in use:
         _known(table, "use", name, materials)
+    fixed_names = {member.leg.material for member in fixed}
+    chosen = use or tuple(name for name in materials if name not in fixed_names)
     if len(set(use)) < len(use):
         table.refuse("use", "a name twice", "each name once")
+    if len(chosen) > MOST_MATERIALS:
+        found = f"{len(chosen)} materials"
+        table.refuse("use", found, f"{MOST_MATERIALS} at most", "List those to be searched under use.")
+    if fixed and not chosen and materials:
+        table.refuse("use", "no material beside the fixed ones", "one to choose", "Or write [given].")
     share = table.quantity("min_share", "1") if table.has("min_share") else 0.0
     if share is not None and not 0 <= share <= 0.5:
         table.refuse("min_share", f"{share * 100:g} %", "0 % to 50 %")
     sizes = _sizes(table)
-    fixed_names = {member.leg.material for member in fixed}
-    chosen = use or tuple(name for name in materials if name not in fixed_names)
     return SearchRules(
         arrangements=_arrangements(table, fixed),
         use=tuple(sorted(set(chosen))),
@@ -151,7 +158,7 @@ def check_agreement(
     resistor = reader.inner("resistor") or TableReader({}, f"{reader.where}: resistor", reader.problems)
     free = target.ohms is None
     asked = resistor.has("value") and resistor.text("value") != "free"
-    if given is None and free and not asked and not fixed:
+    if not reader.has("given") and free and not asked and not fixed:
         resistor.refuse("value", "no value", 'the value, such as "18 kohm" (free only beside [[fixed]])')
     unlimited = goal is not None and not goal.limits
     bounded = resistor.has("at_most") and all(member.place == "series" for member in fixed)

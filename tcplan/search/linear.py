@@ -17,6 +17,8 @@ from tcplan.search.columns import Programme
 from tcplan.search.solver import VANISHED, Mix, Solver
 from tcplan.search.supports import best_mixes
 
+NEEDLESS = 1e-8  # share of a leg beside fixed members that is left out
+
 
 def network_of(programme: Programme, shares: FloatArray) -> Network:
     """Return the network that has these shares; the fixed members keep their own values."""
@@ -34,7 +36,7 @@ def network_of(programme: Programme, shares: FloatArray) -> Network:
             ((share, name) for share, name in zip(shares[:-1], programme.names, strict=True)),
             key=lambda pair: (-pair[0], pair[1]),
         )
-        if share > VANISHED
+        if share > (NEEDLESS if space.fixed else VANISHED)
     ]
     members = (*space.fixed, *chosen)
     if len(members) == 1:

@@ -6,6 +6,7 @@ solved first; every solve adds duals that rule out others, so few of the support
 
 from __future__ import annotations
 
+from dataclasses import replace
 from math import comb
 
 import numpy as np
@@ -14,7 +15,7 @@ from tcplan.arrays import FloatArray, IntArray
 from tcplan.mixes import all_supports, fixed_ends, share_vertices
 from tcplan.search.solver import Mix, Solver
 
-MOST_SUPPORTS = 300_000
+MOST_SUPPORTS = 80_000
 MOST_SOLVES = 400
 RECENT = 60  # dual vectors that are tried on a support before it is solved
 
@@ -42,7 +43,7 @@ def best_mixes(solver: Solver, few: int) -> tuple[list[Mix], bool]:
     most = min(space.most, solver.count)
     start = solver.solve(tuple(range(solver.count)), relaxed=True)
     if comb(solver.count, most) > MOST_SUPPORTS:
-        return _trimmed(solver, start, few), False
+        return _grown(solver, few), False
     groups = [np.array(group) for group in all_supports(space)]
     bounds = [np.zeros(len(group)) for group in groups]
     seen = 0
@@ -82,13 +83,34 @@ def _ruled_out(solver: Solver, support: tuple[int, ...], worst_kept: float) -> b
     )
 
 
-def _trimmed(solver: Solver, start: Mix | None, few: int) -> list[Mix]:
-    """Return mixes of the largest shares of the whole programme: too many supports for all."""
-    most = min(solver.programme.space.most, solver.count)
-    if start is None:
-        return []
-    order = [int(i) for i in np.argsort(-start.shares[:-1])]
-    picks = {tuple(sorted(order[:most]))}
-    picks |= {tuple(sorted([*order[: most - 1], other])) for other in order[most : most + 8]}
-    mixes = [mix for pick in sorted(picks) if (mix := solver.solve(pick)) is not None]
-    return sorted(mixes, key=lambda mix: mix.figure)[:few]
+def _grown(solver: Solver, few: int) -> list[Mix]:
+    """Return good mixes where the supports are too many for all: grown from the best pairs.
+
+    All pairs are searched exactly when they are not too many themselves (else those of the materials
+    that the unlimited optimum uses), and the best supports take in one more material at a time, the
+    best of all that are on offer.
+    """
+    space = solver.programme.space
+    most = min(space.most, solver.count)
+    pairs = Solver(replace(solver.programme, space=replace(space, most=min(2, most))))
+    if comb(solver.count, min(2, most)) <= MOST_SUPPORTS:
+        best, _ = best_mixes(pairs, few)
+    else:
+        start = pairs.solve(tuple(range(solver.count)), relaxed=True)
+        used = sorted(start.used) if start is not None else []
+        found = [pairs.solve(tuple(sorted({i, j}))) for i in used for j in range(solver.count) if i != j]
+        best = sorted((mix for mix in found if mix is not None), key=lambda mix: mix.figure)[:few]
+    for size in range(3, most + 1):
+        wider: dict[tuple[int, ...], Mix] = {}
+        for mix in best:
+            for other in range(solver.count):
+                support = tuple(sorted({*mix.used, other}))
+                if len(support) <= size and support not in wider:
+                    taken = solver.solve(support, enough=best[0].figure)
+                    if taken is not None:
+                        wider[support] = taken
+        best = sorted([*best, *wider.values()], key=lambda mix: mix.figure)[:few]
+    distinct: dict[frozenset[int], Mix] = {}
+    for mix in best:
+        distinct.setdefault(mix.used, mix)
+    return list(distinct.values())

@@ -130,10 +130,10 @@ class Found:
     by_temperature: FloatArray
 
 
-def excursions(box: Box, centre: FloatArray, width: FloatArray, grid: Grid) -> tuple[float, float]:
-    """Return bounds on how far any device of the cells goes above and below the wanted ratio."""
+def excursions(box: Box, centre: FloatArray, width: FloatArray, grid: Grid) -> tuple[FloatArray, FloatArray]:
+    """Return bounds on how far any device of the cells goes above and below the wanted ratio, by T."""
     top, bottom, _, _ = _cell_values(box, centre, width, grid.lo, grid.hi)
-    return float((top - grid.wanted).max()), float((grid.wanted - bottom).max())
+    return (top - grid.wanted).max(axis=0), (grid.wanted - bottom).max(axis=0)
 
 
 def _examined(box: Box, centre: FloatArray, width: FloatArray, grid: Grid) -> tuple[FloatArray, Found]:

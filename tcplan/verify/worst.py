@@ -170,19 +170,24 @@ def _neighbours(box: Box, device: Device, half: Mapping[str, float]) -> Iterator
 
 
 def _band_bound(box: Box) -> float:
-    """Return a bound on the figure: the worst excursions of all devices, up and down, together."""
-    grid = grid_of(box, *_temperatures(box.need, CELL_GRID))
+    """Return a bound on the figure where a band is asked, other limits judged by themselves.
+
+    A band is at most the worst excursions of all devices, up and down, together.
+    """
+    T, weight = _temperatures(box.need, CELL_GRID)
+    free = np.concatenate([np.full(CELL_GRID if p.high > p.low else 1, p.centred) for p in box.need.pieces])
+    grid = grid_of(box, T, weight)
     if arrangement(box.network) != "mixed":
-        up = float((one_node_factors(box, grid.hi, 1)[0] - grid.wanted).max())
-        down = float((grid.wanted - one_node_factors(box, grid.lo, -1)[0]).max())
+        up = one_node_factors(box, grid.hi, 1)[0] - grid.wanted
+        down = grid.wanted - one_node_factors(box, grid.lo, -1)[0]
     else:
         centre, width = start_cells(box)
         while len(centre) < BAND_CELLS and width.max() > 0:
             centre, width = halved(centre, width)
         up, down = excursions(box, centre, width, grid)
-    band = min(p.weight for p in box.need.pieces if p.centred)
-    plain = [max(up, down) / p.weight for p in box.need.pieces if not p.centred]
-    return max([0.5 * (up + down) / band, *plain])
+    band = 0.5 * (up[free].max() + down[free].max()) / weight[free][0]
+    plain = np.maximum(up, down)[~free] / weight[~free]
+    return float(max(band, plain.max(initial=0.0)))
 
 
 def worst_case(

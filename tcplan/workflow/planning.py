@@ -17,6 +17,7 @@ from tcplan.verify.option import Case, check, nominal_figure
 from tcplan.verify.tree_bound import mixed_bound
 from tcplan.workflow.proposals import fixed_share, floor_evidence, proposals, spreads_of
 
+MOST_FOR_MORE = 20  # materials up to which one more is tried as well
 EQUAL = 1.01  # an option that a simpler one equals within this factor is dropped
 
 
@@ -140,7 +141,8 @@ def _one_more(brief: Brief, case: Case, options: Sequence[Option]) -> tuple[str,
     rules = brief.rules
     most = min(rules.max_materials, rules.max_legs) + 1
     low, high = fixed_share(brief)
-    if brief.given is not None or most > len(rules.use) or low != high:
+    many = len(rules.use) > MOST_FOR_MORE
+    if brief.given is not None or most > len(rules.use) or low != high or many:
         return ()
     wider = replace(brief, rules=replace(rules, max_materials=most, max_legs=most))
     judge = brief.goal.judge

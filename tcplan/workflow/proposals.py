@@ -2,6 +2,9 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+from dataclasses import replace
+
 from tcplan.brief import Brief, SearchRules
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
@@ -11,10 +14,12 @@ from tcplan.plan import FloorEvidence, Proposal, Sizes, Space
 from tcplan.search.floor import floor_evidence as sandwich_evidence
 from tcplan.search.linear import least_total, search_space
 from tcplan.search.mixed_search import mixed_proposals
+from tcplan.trees import tree_count
 from tcplan.verify.option import Case, spread_figures
 
 FEW = 3
 MOST_MIXED_LEGS = 6
+MOST_TREES = 15_000  # more would take minutes
 TINY_SHARE = 1e-4  # of the fixed members, when the total is free
 
 
@@ -44,6 +49,34 @@ def spaces(brief: Brief) -> tuple[Space, ...]:
         )
         for kind in rules.arrangements
     )
+
+
+def searchable(space: Space, found: Sequence[Proposal]) -> Space:
+    """Return a mixed space that is not too large to be searched.
+
+    Legs are given up first, down to three; then materials, those of the best one-node mixes kept
+    first. Of what is left out nothing is proved, and the options say so.
+    """
+    legs_, names = space.legs, space.materials
+    while legs_ > 3 and tree_count(legs_, len(names), space.most) > MOST_TREES:
+        legs_ -= 1
+    order = list(dict.fromkeys(n for p in found for n in used_materials(p.network) if n in names))
+    order += [name for name in names if name not in order]
+    keep = len(names)
+    if tree_count(legs_, keep, space.most) > MOST_TREES:
+        keep = min(keep, 40)
+    while keep > 2 and tree_count(legs_, keep, space.most) > MOST_TREES:
+        keep -= 1
+    chosen = [i for i, name in enumerate(names) if name in order[:keep]]
+    sizes = space.sizes
+    if sizes is not None:
+        sizes = replace(
+            sizes,
+            least_ohms=tuple(sizes.least_ohms[i] for i in chosen),
+            most_ohms=tuple(sizes.most_ohms[i] for i in chosen),
+            area_per_ohm=tuple(sizes.area_per_ohm[i] for i in chosen),
+        )
+    return replace(space, legs=legs_, materials=tuple(names[i] for i in chosen), sizes=sizes)
 
 
 def total_of(brief: Brief) -> float | None:
@@ -105,7 +138,11 @@ def proposals(brief: Brief, need: Requirement, case: Case, few: int = FEW) -> li
         low, high = space.fixed_share
         if space.arrangement == "mixed":
             if low == high and space.legs + len(space.fixed) >= 3:
-                found.extend(mixed_proposals(space, need, case.materials, few))
+                part = searchable(space, found)
+                mixed = mixed_proposals(part, need, case.materials, few)
+                # Of a part of the space nothing is proved about the whole.
+                whole = part == space
+                found.extend(mixed if whole else [replace(p, space=None) for p in mixed])
             continue
         parallel = space.arrangement == "parallel"
         bounded = not brief.fixed or low == high or (brief.target.at_most is not None and not parallel)
