@@ -313,6 +313,9 @@ def _wrong_unit(text: str, unit_text: str, kind: _Kind, where: str) -> UnitError
     unit = _pint_unit(unit_text)
     if unit is None:
         near = nearest_name(unit_text, kind.exponents)
+        # The first letter can be a prefix: its case is the difference of milli and mega.
+        alike = [unit for unit in kind.exponents if unit.casefold() == unit_text.casefold()]
+        near = next((unit for unit in alike if unit[:1] == unit_text[:1]), near)
         todo = f'Did you mean "{near}"?' if near else "Check the unit."
         return _refused(kind, where, f"{shown(text)}, with an unknown unit {shown(unit_text)}", todo)
     dimension = _dimension(unit)

@@ -114,7 +114,7 @@ LIMITS = {
         "min_share": 0.03,
     },
     "fixed, total given": {
-        "sizes": sizes(least=100.0, most=400.0),
+        "sizes": sizes(least=80.0, most=500.0),
         "ohms": 1000.0,
         "fixed": COILS,
         "fixed_share": (0.4, 0.4),

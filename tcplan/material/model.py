@@ -12,7 +12,7 @@ import numpy as np
 
 from tcplan.arrays import FloatArray
 from tcplan.errors import InputError, Problem
-from tcplan.material.law import Law, check_positive, law_from_parameters
+from tcplan.material.law import Law, Table, check_positive, law_from_parameters
 from tcplan.material.spread import Spread, spread_from_dict
 from tcplan.names import nearest_name, shown
 from tcplan.preferred import SERIES
@@ -279,6 +279,7 @@ def _data_problems(material: Material) -> Iterator[Problem]:
     where = f"material.{material.name if NAME.fullmatch(material.name) else shown(material.name)}"
     yield from _range_problems(material, where)
     yield from _size_problems(material, where)
+    yield from _table_problems(material, where)
     if material.film is not None and material.kind != "film":
         yield Problem(
             where=f"{where}.film",
@@ -293,6 +294,19 @@ def _range_problems(material: Material, where: str) -> Iterator[Problem]:
     for key, interval in (("valid", material.valid), ("extrapolate_to", material.extrapolated)):
         if interval is not None and (problem := interval_problem(f"{where}.{key}", interval)):
             yield problem
+
+
+def _table_problems(material: Material, where: str) -> Iterator[Problem]:
+    """A table says nothing outside its points: its range must lie inside them."""
+    if not isinstance(material.law, Table) or interval_problem(where, material.valid):
+        return
+    low, high = material.law.points[0][0], material.law.points[-1][0]
+    if material.usable[0] < low - 1e-9 or material.usable[1] > high + 1e-9:
+        yield Problem(
+            where=f"{where}.valid",
+            found=f"{_temperature(material.usable[0])} to {_temperature(material.usable[1])}",
+            expected=f"a range inside the points, {_temperature(low)} to {_temperature(high)}",
+        )
 
 
 def _size_problems(material: Material, where: str) -> Iterator[Problem]:

@@ -2,12 +2,16 @@
 
 from __future__ import annotations
 
+from collections.abc import Sequence
+
 from tcplan.plan import Plan
 from tcplan.spec import numbers
 from tcplan.spec.asked import figure_text, wanted_text
 from tcplan.units import from_celsius
 
 NOT_INCLUDED = "package stress, ageing, humidity, self-heating, mismatch"
+
+MOST_NAMES = 12
 
 
 def assumptions(plan: Plan) -> tuple[str, ...]:
@@ -31,17 +35,22 @@ def _spreads(plan: Plan) -> list[str]:
     sigma = [name for name, spread in stated.items() if spread.meaning == "sigma"]
     none = [m.name for m in plan.materials if m.spread is None]
     parts = [
-        f"{', '.join(limits)} as stated limits" if limits else "",
-        f"{', '.join(sigma)} at 3 times the stated sigma" if sigma else "",
+        f"{named(limits)} as stated limits" if limits else "",
+        f"{named(sigma)} at 3 times the stated sigma" if sigma else "",
     ]
     found = []
     if stated:
         box = "; ".join(part for part in parts if part)
         found.append(f"The worst case takes every deviation at once: {box}.")
     if none:
-        found.append(f"No spread is stated for {', '.join(none)}.")
+        found.append(f"No spread is stated for {named(none)}.")
     found.extend(_counted_as_zero(plan))
     return found
+
+
+def named(names: Sequence[str]) -> str:
+    """Return names in words; of many only how many they are."""
+    return ", ".join(names) if len(names) <= MOST_NAMES else f"{len(names)} materials"
 
 
 def _counted_as_zero(plan: Plan) -> list[str]:
@@ -49,7 +58,7 @@ def _counted_as_zero(plan: Plan) -> list[str]:
     for part, words in (("value", "value"), ("tc1", "TC1"), ("tc2", "TC2")):
         names = [m.name for m in plan.materials if m.spread is not None and part in m.spread.unstated]
         if names:
-            found.append(f"{words} of {', '.join(names)}")
+            found.append(f"{words} of {named(names)}")
     return [f"No half-width stated, so counted as 0: {'; '.join(found)}."] if found else []
 
 
@@ -58,7 +67,10 @@ def _designed(plan: Plan) -> str:
     option = plan.best
     if option.proof.of == plan.limit.judge or option.role == "given":
         return ""
-    return "Designed for nominal drift, judged on the worst case."
+    return (
+        "Designed for nominal drift, judged on the worst case: a mix that is worse at nominal may be "
+        "better there."
+    )
 
 
 def extrapolated(plan: Plan) -> tuple[str, ...]:

@@ -33,7 +33,7 @@ def test_a_plain_brief():
     assert (made.over.low, made.over.high, made.over.reference) == (233.15, 423.15, 298.15)
     assert made.goal.limits[0].value == pytest.approx(0.006)
     assert made.goal.judge == "nominal"
-    assert made.rules.arrangements == ("single", "series", "parallel")
+    assert made.rules.arrangements == ("single", "series", "parallel", "mixed")
     assert [m.name for m in made.materials] == ["np", "pp"]
     assert len(made.sha256) == 64
 
@@ -159,7 +159,6 @@ def test_refusals(change, says):
         ("[search]\nmin_share = 3", "text in quotes"),
         ("[search]\nmax_materials = 0", "1 or more"),
         ("[search]\nmax_materials = 2.5", "whole number"),
-        ('[search]\narrangements = ["mixed"]', "[given]"),
         ('[search]\narrangements = ["serial"]', "Did you mean"),
         ('[[fixed]]\nmaterial = "pp"\nvalue = "20 kohm"', "more than the fixed"),
         ('[[fixed]]\nmaterial = "pp"\nvalue = "20 kohm"\nplace = "bridge"', "place"),

@@ -134,7 +134,7 @@ SAME = ("", "")
         (BEYOND, "EXTRAPOLATED beyond its valid range: np"),
         (SAME, "No half-width stated, so counted as 0: TC2 of np, pp."),
         (SAME, "Not included: package stress, ageing, humidity, self-heating, mismatch."),
-        (SAME, "Designed for nominal drift, judged on the worst case."),
+        (SAME, "Designed for nominal drift, judged on the worst case: "),
     ],
 )
 def test_assumptions_are_told(change: tuple[str, str], said: str) -> None:
