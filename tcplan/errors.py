@@ -65,7 +65,11 @@ class NoAnswer(TcplanError):
 
 
 class Stopped(TcplanError):
-    """The work was ended before it had an answer."""
+    """The work was ended before its end; ``best`` is the best answer so far, a plan, or None."""
+
+    def __init__(self, message: str = "", best: object = None) -> None:
+        self.best = best
+        super().__init__(message)
 
 
 class InternalError(TcplanError):

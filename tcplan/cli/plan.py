@@ -36,7 +36,18 @@ Examples:
 )
 @click.option("--force", is_flag=True, help="Replace files that exist.")
 @click.option("--json", "as_json", is_flag=True, help="Print plan.json; write files only with -o.")
-def command(brief: str, output: str | None, force: bool, as_json: bool) -> int:
+@click.option("--gap", metavar="PERCENT", help='How near mixed networks are to be proved; "1 %".')
+@click.option("--workers", type=click.IntRange(1, 64), default=1, help="Processes for the mixed search.")
+@click.option("--scheduler", metavar="ADDRESS", help="A Dask scheduler for the mixed search.")
+def command(
+    brief: str,
+    output: str | None,
+    force: bool,
+    as_json: bool,
+    gap: str | None,
+    workers: int,
+    scheduler: str | None,
+) -> int:
     """Find the mix of materials for BRIEF (a TOML file; - is stdin), check it and write the result.
 
     Writes plan.json, mix.csv, spec.md and the figures network, drift and slope-curvature (SVG and PNG),
@@ -45,19 +56,52 @@ def command(brief: str, output: str | None, force: bool, as_json: bool) -> int:
     Exit code 0: the limit is met, or none was given. 1: not met, or not judged. 3: proved that no
     network of these materials can meet it.
     """
+    from tcplan.errors import Stopped
     from tcplan.output import check_folder
+    from tcplan.plan import Plan
     from tcplan.workflow.delivery import PLAN_FILES, write_plan
-    from tcplan.workflow.planning import make_plan
 
     asked, folder = _read(brief), _folder(brief, output, as_json=as_json)
     if folder is not None:
         check_folder(folder, PLAN_FILES, force=force)
-    plan = make_plan(asked)
+    try:
+        plan = _planned(asked, _gap(gap), workers, scheduler)
+    except Stopped as stopped:
+        if isinstance(stopped.best, Plan):
+            _show(stopped.best, as_json=as_json)
+        raise
     paths = write_plan(plan, folder, force=force) if folder is not None else ()
     _show(plan, as_json=as_json)
     if paths:
         complain(f"wrote {len(paths)} files to {folder}: {', '.join(path.name for path in paths)}")
     return _code(plan)
+
+
+def _planned(asked: Brief, gap: float, workers: int, scheduler: str | None) -> Plan:
+    from tcplan.cli.progress import Progress
+    from tcplan.effort import Effort
+    from tcplan.workflow.executors import executor_for
+    from tcplan.workflow.planning import make_plan
+
+    progress = Progress()
+    try:
+        with executor_for(workers, scheduler) as executor:
+            return make_plan(asked, gap=gap, effort=Effort(executor=executor, report=progress))
+    finally:
+        progress.close()
+
+
+def _gap(text: str | None) -> float:
+    """Return the relative gap at which mixed networks count as proved."""
+    from tcplan.errors import InputError, Problem
+    from tcplan.units import parse_quantity
+
+    if text is None:
+        return 0.01
+    gap = parse_quantity(text, "1", where="--gap")
+    if not 1e-5 <= gap <= 0.5:
+        raise InputError(Problem(where="--gap", found=text, expected="0.001 % to 50 %"))
+    return gap
 
 
 def _read(brief: str) -> Brief:

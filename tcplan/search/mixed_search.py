@@ -7,6 +7,7 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from tcplan.effort import Effort
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
 from tcplan.mixes import fixed_group
@@ -15,7 +16,16 @@ from tcplan.plan import Proposal, Space
 from tcplan.search.curves import network_at
 from tcplan.search.limits import LegLimits, limits_of
 from tcplan.search.linear import in_order
-from tcplan.search.mixed import NODES, Field, Source, Start, field_at, grid_starts, spread_points
+from tcplan.search.mixed import (
+    NODES,
+    Field,
+    Source,
+    Start,
+    by_shape,
+    field_at,
+    grid_starts,
+    spread_points,
+)
 from tcplan.search.polish import Polished, Polisher, polishing_grid
 from tcplan.trees import Pair, Tree, assigned_trees, is_mixed, leaves, paired, shape_of, with_fixed
 
@@ -42,26 +52,32 @@ def fixed_kind(space: Space) -> str:
 
 @dataclass(frozen=True, slots=True)
 class Task:
-    """Some starts of one space, polished together; a task can run in another process."""
+    """The trees of one shape, searched and polished together, here or in another process."""
 
     source: Source
     limits: LegLimits
-    starts: tuple[Start, ...]
+    trees: tuple[Tree, ...]
     outermost: float | None
 
-    def run(self) -> tuple[Polished, ...]:
-        """Return the polished starts, in their order."""
+    @property
+    def name(self) -> str:
+        """What the task is called when it fails."""
+        return f"{len(self.trees)} trees of {len(leaves(self.trees[0]))} legs"
+
+    def run(self) -> tuple[tuple[Start, Polished], ...]:
+        """Return the best starts of the shape, and what polishing made of them."""
+        field: Field = field_at(self.source, *spread_points(self.source.need, NODES, chebyshev=True))
         grid = polishing_grid(self.source)
-        found: list[Polished] = []
+        found: list[tuple[Start, Polished]] = []
         promising = np.inf
-        for start in self.starts:
+        for start in grid_starts(self.trees, field, self.limits, outermost=self.outermost):
             pair = paired(shape_of(start.tree))
             if not isinstance(pair, Pair):
                 continue
             polisher = Polisher(pair, leaves(start.tree), self.source, self.limits, grid, self.outermost)
             polished = polisher.run(np.array(start.shares), promising)
             promising = min(promising, polished.figure)
-            found.append(polished)
+            found.append((start, polished))
         return tuple(found)
 
 
@@ -115,19 +131,20 @@ def _opened(network: Network) -> Network:
 
 
 def tasks_of(space: Space, need: Requirement, materials: Mapping[str, Material]) -> tuple[Task, ...]:
-    """Return the polishing tasks of a space, one a shape of tree: the grid stage is done here."""
+    """Return the tasks of a space, one a shape of tree; those with most legs first."""
     source, limits = Source(need, materials, space), limits_of(space)
-    field: Field = field_at(source, *spread_points(need, NODES, chebyshev=True))
     outermost = space.fixed_share[0] if space.fixed else None
-    starts = grid_starts(mixed_trees(space), field, limits, outermost=outermost)
-    by_shape: dict[Tree, list[Start]] = {}
-    for start in starts:
-        by_shape.setdefault(shape_of(start.tree), []).append(start)
-    return tuple(Task(source, limits, tuple(group), outermost) for group in by_shape.values())
+    groups = [tuple(group) for _, group in by_shape(mixed_trees(space))]
+    groups.sort(key=lambda group: -len(leaves(group[0])))
+    return tuple(Task(source, limits, group, outermost) for group in groups)
 
 
 def mixed_proposals(
-    space: Space, need: Requirement, materials: Mapping[str, Material], few: int = 3
+    space: Space,
+    need: Requirement,
+    materials: Mapping[str, Material],
+    few: int = 3,
+    effort: Effort | None = None,
 ) -> tuple[Proposal, ...]:
     """Return the best few mixed networks of each number of legs, best first.
 
@@ -139,14 +156,16 @@ def mixed_proposals(
     materials : mapping of name to Material
     few : int
         How many are wanted of each number of legs.
+    effort : Effort, optional
+        Who does the work; when it is stopped, the best of what was done is returned.
     """
     space = in_order(space)
-    done = [(task, task.run()) for task in tasks_of(space, need, materials)]
+    done = (effort or Effort()).results(tasks_of(space, need, materials))
     ranked = sorted(
         (
             (polished.figure, repr(start.tree), start.tree, polished)
-            for task, results in done
-            for start, polished in zip(task.starts, results, strict=True)
+            for results in done
+            for start, polished in results
             if polished.excess <= 0
         ),
         key=lambda row: row[:2],

@@ -9,7 +9,7 @@ from tcplan.network import leg_names, legs, shares
 from tcplan.plan import Plan
 from tcplan.units import from_celsius
 
-COLUMNS = ("leg", "material", "ohms", "share", "squares", "tc1_ppm_per_K", "tc2_ppm_per_K2")
+COLUMNS = ("leg", "material", "ohms", "share", "squares", "area_m2", "tc1_ppm_per_K", "tc2_ppm_per_K2")
 _RISKY = ("=", "+", "-", "@", "\t", "\r", "\n")
 
 
@@ -38,12 +38,13 @@ def mix_csv(plan: Plan) -> str:
         legs(option.network),
         shares(option.network),
         option.squares,
+        option.areas,
         strict=True,
     )
-    for name, leg, share, squares in rows:
+    for name, leg, share, squares, area in rows:
         tc1, tc2 = plan.by_name[leg.material].referred_taylor(reference, 2)
-        size = "" if squares is None else repr(squares)
-        cells = (repr(leg.ohms), repr(share), size, repr(tc1 * 1e6), repr(tc2 * 1e6))
+        sizes = ("" if size is None else repr(size) for size in (squares, area))
+        cells = (repr(leg.ohms), repr(share), *sizes, repr(tc1 * 1e6), repr(tc2 * 1e6))
         writer.writerow((name, text_cell(leg.material), *cells))
     return stream.getvalue()
 

@@ -68,7 +68,7 @@ def option_row(plan: Plan, option: Option) -> OptionRow:
     return OptionRow(
         id=option.id,
         network=network_text(option.network, lambda leg: f"{leg.material} {format_ohms(leg.ohms)}"),
-        sizes=", ".join(size or "-" for size in sizes) if any(sizes) else "",
+        sizes=", ".join([*(size or "-" for size in sizes), *_area(option)]) if any(sizes) else "",
         nominal=nominal_text(plan, option),
         worst_case=worst_text(plan, option),
         verdict=option.verdict if plan.limit.drift_ppm is not None else "no limit",
@@ -84,6 +84,13 @@ def leg_sizes(plan: Plan, option: Option) -> tuple[str, ...]:
         text = f"{numbers.number(squares)} squares" if squares is not None else ""
         found.append(format_si(length, "m") if length is not None else text)
     return tuple(found)
+
+
+def _area(option: Option) -> list[str]:
+    """Return the area of all legs in words, when it is known."""
+    if option.area is None:
+        return []
+    return [f"{numbers.number(option.area * 1e6, 3)} mm^2 in all"]
 
 
 def leg_rows(plan: Plan, option: Option) -> tuple[LegRow, ...]:

@@ -9,7 +9,8 @@ import numpy as np
 
 from tcplan import __version__
 from tcplan.brief import Brief
-from tcplan.errors import InputError, NoAnswer, Problem
+from tcplan.effort import Effort
+from tcplan.errors import InputError, NoAnswer, Problem, Stopped
 from tcplan.goal import requirement
 from tcplan.material.spread import law_bounds, value_half_width
 from tcplan.network import legs, used_materials, value
@@ -20,6 +21,8 @@ from tcplan.verify.option import Case, check, nominal_figure
 from tcplan.verify.tree_bound import mixed_bound
 from tcplan.workflow.proposals import fixed_share, floor_evidence, proposals, spreads_of
 
+STOPPED = "Stopped early: the best of what was searched until then."
+MOST_LEGS_FOR_MORE = 4  # mixed networks of more legs than that are long work
 MOST_FOR_MORE = 20  # materials up to which one more is tried as well
 EQUAL = 1.01  # an option that a simpler one equals within this factor is dropped
 
@@ -89,7 +92,7 @@ def _chosen(options: Sequence[Option], judge: str) -> Option:
 # --- the plan -------------------------------------------------------------------------------------
 
 
-def make_plan(brief: Brief, *, gap: float = 0.01) -> Plan:
+def make_plan(brief: Brief, *, gap: float = 0.01, effort: Effort | None = None) -> Plan:
     """Return the plan of a brief: searched, or given, and every option checked.
 
     Parameters
@@ -97,16 +100,21 @@ def make_plan(brief: Brief, *, gap: float = 0.01) -> Plan:
     brief : Brief
     gap : float
         Relative gap within which mixed networks are to be proved; smaller takes longer.
+    effort : Effort, optional
+        Who does the work of the mixed search, and who is told of its progress.
 
     Raises
     ------
     NoAnswer
         When no network fits the brief at all.
+    Stopped
+        When the mixed search was interrupted; it carries the plan of the best so far.
     """
+    effort = effort or Effort()
     need = requirement(brief.goal, brief.over)
     _check_spreads(brief)
     case = Case(materials=brief.by_name, spreads=spreads_of(brief), over=brief.over, need=need)
-    found = proposals(brief, need, case)
+    found = proposals(brief, need, case, effort=effort)
     if not found:
         raise NoAnswer(
             "No network of these materials fits the brief: what min_share and the fixed members ask "
@@ -117,12 +125,18 @@ def make_plan(brief: Brief, *, gap: float = 0.01) -> Plan:
     names = {*evidence.materials, *(leg.material for leg in evidence.fixed)}
     stated = case.spreads if names <= case.spreads.keys() else None
     bottom = floor(evidence, need, case.materials, stated, best)
-    case = replace(case, floor_ppm=bottom.nominal_ppm, gap=gap, mixed_ppm=_mixed_ppm(found, case, gap))
+    case = replace(
+        case,
+        floor_ppm=bottom.nominal_ppm,
+        gap=gap,
+        mixed_ppm=0.0 if effort.stopped else _mixed_ppm(found, case, gap),
+    )
     options = _shortlist(
         [check(proposal, case, str(n)) for n, proposal in enumerate(found, 1)], brief.goal.judge
     )
     options = tuple(replace(option, id=_option_id(options, n)) for n, option in enumerate(options))
-    return Plan(
+    more = () if effort.stopped else _one_more(brief, case, options)
+    plan = Plan(
         tcplan=__version__,
         brief=brief.to_dict(),
         range=_range_record(brief),
@@ -136,8 +150,11 @@ def make_plan(brief: Brief, *, gap: float = 0.01) -> Plan:
         floor=bottom,
         chosen=_chosen(options, brief.goal.judge).id,
         options=options,
-        notes=(*_one_more(brief, case, options), *_largest_total(brief, options)),
+        notes=(*([STOPPED] if effort.stopped else []), *more, *_largest_total(brief, options)),
     )
+    if effort.stopped:
+        raise Stopped("the best so far is shown", best=plan)
+    return plan
 
 
 def _largest_total(brief: Brief, options: Sequence[Option]) -> tuple[str, ...]:
@@ -166,27 +183,35 @@ def _check_spreads(brief: Brief) -> None:
 
 
 def _one_more(brief: Brief, case: Case, options: Sequence[Option]) -> tuple[str, ...]:
-    """Return a line on what one more material would give, when that is better by more than 1 %."""
-    rules = brief.rules
-    most = min(rules.max_materials, rules.max_legs) + 1
+    """Return a line on what one more leg, of one more material, would give; none where that is long work."""
+    rules, judge = brief.rules, brief.goal.judge
     low, high = fixed_share(brief)
-    many = len(rules.use) > MOST_FOR_MORE
-    if brief.given is not None or most > len(rules.use) or low != high or many:
+    if brief.given is not None or low != high or len(rules.use) > MOST_FOR_MORE:
         return ()
-    wider = replace(brief, rules=replace(rules, max_materials=most, max_legs=most))
-    judge = brief.goal.judge
+    one_node = tuple(kind for kind in rules.arrangements if kind != "mixed")
+    wider = replace(
+        brief,
+        rules=replace(
+            rules,
+            max_materials=rules.max_materials + 1,
+            max_legs=rules.max_legs + 1,
+            arrangements=rules.arrangements if rules.max_legs < MOST_LEGS_FOR_MORE else one_node,
+        ),
+    )
+    shown = {option.network for option in options}
     best = min(judged_ppm(option, judge) for option in options)
     found = [
         check(proposal, case, "more")
         for proposal in proposals(wider, case.need, case, 1)
-        if len(legs(proposal.network)) - len(brief.fixed) == most
+        if proposal.network not in shown
     ]
     better = [option for option in found if judged_ppm(option, judge) * EQUAL < best]
     if not better:
-        return (f"One more material ({most}) gives no better {judge} figure in the networks searched.",)
+        return (f"One more leg, of one more material, gives no better {judge} figure of those searched.",)
     option = min(better, key=lambda o: judged_ppm(o, judge))
     names = ", ".join(used_materials(option.network))
-    return (f"One more material ({most}): {option.arrangement} of {names} reaches {_both(option)}.",)
+    size = f"{len(legs(option.network))} legs of {names}"
+    return (f"With one more leg and one more material: {option.arrangement}, {size}, {_both(option)}.",)
 
 
 def _both(option: Option) -> str:

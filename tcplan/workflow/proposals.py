@@ -6,6 +6,7 @@ from collections.abc import Sequence
 from dataclasses import replace
 
 from tcplan.brief import Brief, SearchRules
+from tcplan.effort import Effort
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
 from tcplan.material.spread import Spread
@@ -129,7 +130,9 @@ def fixed_share(brief: Brief) -> tuple[float, float]:
 # --- proposals ------------------------------------------------------------------------------------
 
 
-def proposals(brief: Brief, need: Requirement, case: Case, few: int = FEW) -> list[Proposal]:
+def proposals(
+    brief: Brief, need: Requirement, case: Case, few: int = FEW, effort: Effort | None = None
+) -> list[Proposal]:
     """Return what the search, or the user, puts forward: the best few of each arrangement."""
     if brief.given is not None:
         return [Proposal(network=brief.given, role="given")]
@@ -139,7 +142,7 @@ def proposals(brief: Brief, need: Requirement, case: Case, few: int = FEW) -> li
         if space.arrangement == "mixed":
             if low == high and space.legs + len(space.fixed) >= 3:
                 part = searchable(space, found)
-                mixed = mixed_proposals(part, need, case.materials, few)
+                mixed = mixed_proposals(part, need, case.materials, few, effort)
                 # Of a part of the space nothing is proved about the whole.
                 whole = part == space
                 found.extend(mixed if whole else [replace(p, space=None) for p in mixed])

@@ -112,7 +112,7 @@ def test_no_network_at_all_is_three(folder: Path) -> None:
 def test_faults_have_their_codes(
     folder: Path, monkeypatch: pytest.MonkeyPatch, fault: BaseException, code: int, said: str
 ) -> None:
-    def failing(brief: object) -> None:
+    def failing(brief: object, **_: object) -> None:
         raise fault
 
     monkeypatch.setattr(tcplan.workflow.planning, "make_plan", failing)
@@ -125,7 +125,7 @@ def test_faults_have_their_codes(
 
 
 def test_a_fault_shows_where_it_happened_when_asked(folder: Path, monkeypatch: pytest.MonkeyPatch) -> None:
-    def failing(brief: object) -> None:
+    def failing(brief: object, **_: object) -> None:
         raise ZeroDivisionError("x")
 
     monkeypatch.setenv("TCPLAN_TRACEBACK", "1")

@@ -16,16 +16,21 @@ import pytest
 from makers import SIX_FILMS, brief
 
 import tcplan
-from tcplan import errors
+from tcplan import drift, errors
 from tcplan.brief import read_brief
 from tcplan.brief.shape import _BriefShape
 from tcplan.cli import exits
 from tcplan.goal import KINDS
 from tcplan.material.files import _MaterialShape, published, published_names, read_materials
 from tcplan.material.law_parameters import LAW_KINDS
+from tcplan.network import legs
 from tcplan.plan import plan_json
 from tcplan.ranges import GRADES
+from tcplan.search import mixed, mixed_search, polish, solver, supports
+from tcplan.trees import assigned_trees, shapes
 from tcplan.units import parse_quantity
+from tcplan.verify import cells, tree_bound, worst
+from tcplan.workflow import proposals
 from tcplan.workflow.planning import make_plan
 
 ROOT = Path(__file__).parents[2]
@@ -164,6 +169,7 @@ def test_units_in_the_table_are_read():
         "TC3": "1/K^3",
         "ratio": "1",
         "length": "m",
+        "area": "m^2",
         "resistance per length": "ohm/m",
         "resistance times length": "ohm*m",
         "matching": "1*m",
@@ -290,7 +296,11 @@ def test_the_point_is_a_factor_and_two_shifts(plan):
 # --- method.md ----------------------------------------------------------------------------------
 
 
-def six_films_brief():
+ONE_NODE = 'arrangements = ["single", "series", "parallel"]\nmax_materials = 6\nmax_legs = 6'
+MIXED = 'arrangements = ["mixed"]\nmax_materials = 3\nmax_legs = 3'
+
+
+def six_films_brief(search=ONE_NODE):
     """Return a brief over the six films of method.md, as its table states them."""
     rows = [row for row in tables("docs/method.md") if len(row) == 5 and row[0] in {n for n, *_ in SIX_FILMS}]
     assert len(rows) == 6
@@ -304,7 +314,7 @@ def six_films_brief():
     return (
         'schema = 1\ntitle = "six"\n[resistor]\nvalue = "10 kohm"\n'
         '[temperature]\nlow = "-40 degC"\nhigh = "150 degC"\n[goal]\ndrift = "6000 ppm"\n'
-        f"[search]\nmax_materials = 6\nmax_legs = 6\n{films}"
+        f"[search]\n{search}\n{films}"
     )
 
 
@@ -321,6 +331,102 @@ def test_the_six_films_are_as_worked_out():
         assert option.worst_case.peak_ppm == pytest.approx(float(row[3]), abs=0.06)
     assert plan.floor.worst_case_ppm == pytest.approx(4878.05, abs=5e-3)
     assert "4878.05 ppm" in text("docs/method.md")
+
+
+def in_one_line(name):
+    return re.sub(r"\s+", " ", text(name))
+
+
+def test_the_mixed_networks_are_as_worked_out():
+    """635.2908 and 1232.9379: scipy's Nelder-Mead on 3001 temperatures, without any of the package."""
+    row = next(row for row in tables("docs/method.md") if row[0] == "mixed, 3 legs")
+    best = make_plan(brief(six_films_brief(MIXED))).options[0]
+    assert best.proof.kind == "global"
+    assert float(row[2]) == pytest.approx(635.2908, abs=1e-3)
+    assert best.proof.figure_ppm == pytest.approx(635.2908, rel=1e-5)
+    assert f"none is below {best.proof.lower_bound_ppm:.3f}" in in_one_line("docs/method.md")
+    assert best.worst_case.peak_ppm == pytest.approx(float(row[3]), rel=1e-4)
+    kohms = {leg.material: leg.ohms / 1e3 for leg in legs(best.network)}
+    assert kohms == {name: pytest.approx(ohms, rel=2e-4) for ohms, name in legs_of_the_row(row)}
+
+
+def legs_of_the_row(row):
+    return [(float(ohms), name) for name, ohms in re.findall(r"(\w+) ([\d.]+) kohm", row[1])]
+
+
+def test_two_films_as_worked_out():
+    """18442 and 12967 from the independent program that fixed the six films beforehand."""
+    search = 'use = ["hi", "sp"]\nmax_materials = 2\nmax_legs = 3'
+    plan = make_plan(brief(six_films_brief(search)))
+    expected = {"series": 18442.1, "parallel": 12967.2, "mixed": 1232.938}
+    for kind, figure in expected.items():
+        option = next(o for o in plan.options if o.arrangement == kind)
+        assert option.proof.kind == "global"
+        assert option.proof.figure_ppm == pytest.approx(figure, rel=5e-6)
+    assert "18442.1 ppm in series, 12967.2 in parallel, and 1232.94 as hi + (hi || sp)" in in_one_line(
+        "docs/method.md"
+    )
+
+
+def test_the_sized_mix_by_hand():
+    """Of 20 kohm at most, two legs in parallel are both 20 kohm: the harmonic mean of their laws."""
+    search = ONE_NODE + "\nmax_squares = 200"
+    plan = make_plan(brief(six_films_brief(search)))
+    option = next(o for o in plan.options if o.arrangement == "parallel")
+    hi, nd = 1 - 1400e-6 * 125 + 3e-6 * 125**2, 1 + 1500e-6 * 125 + 0.6e-6 * 125**2
+    by_hand = (2 / (1 / hi + 1 / nd) - 1) * 1e6
+    assert f"2/(1/{hi:.6f} + 1/{nd:.6f}) - 1" in text("docs/method.md")
+    assert f"{by_hand:.2f} ppm" in text("docs/method.md")
+    assert option.proof.figure_ppm == pytest.approx(by_hand, rel=1e-9)
+    assert option.squares == pytest.approx((200.0, 200.0), rel=1e-9)
+    series = next(o for o in plan.options if o.arrangement == "series")
+    assert series.squares == pytest.approx((66.7, 33.3), abs=0.05)
+
+
+def test_the_bend_of_an_inverse():
+    """Brute force over the mixes of 0.8 and 1.25."""
+    mixes = [k / 1000 for k in range(1001)]
+    bend = max(w / 0.8 + (1 - w) / 1.25 - 1 / (w * 0.8 + (1 - w) * 1.25) for w in mixes)
+    assert bend == pytest.approx(0.05, abs=1e-6)
+    assert "For m = 0.8 and M = 1.25 the first term is 0.05." in in_one_line("docs/method.md")
+
+
+def test_the_counts_of_trees():
+    """1, 2, 4, 10, 24, 66: two-terminal series-parallel networks, Riordan and Shannon 1942 (from memory)."""
+    assert "1, 2, 4, 10, 24 and 66" in in_one_line("docs/method.md")
+    assert [len(shapes(size)) for size in range(1, 7)] == [1, 2, 4, 10, 24, 66]
+    assert "give 30, 220 and 1260 trees of 2, 3 and 4 legs" in in_one_line("docs/method.md")
+    assert [len(assigned_trees(size, 6, 3)) for size in (2, 3, 4)] == [30, 220, 1260]
+
+
+def spaced(number):
+    return f"{number:,}".replace(",", " ")
+
+
+def test_numbers_of_the_program_that_the_method_states():
+    weaker = [f"{part:g}" for part in tree_bound.WEAKER[1:]]
+    said = in_one_line("docs/method.md")
+    for phrase in (
+        f"at {drift.CHECKS} points, evenly spaced",
+        f"after {drift.MOST_PANELS} panels",
+        f"Above {spaced(supports.MOST_SUPPORTS)} supports",
+        f"after {supports.MOST_SOLVES} solves",
+        f"at most {solver.TANGENTS} times",
+        f"about {spaced(proposals.MOST_TREES)} trees",
+        f"{proposals.MOST_MIXED_LEGS} at most, of at most max_materials",
+        f"at {mixed.NODES} Chebyshev nodes a piece",
+        f"a grid of {mixed.POINTS[1]} points for one share, {mixed.POINTS[2]} each for two",
+        f"a third of {polish.GRID} points a piece",
+        f"falls below {mixed_search.VANISHED:.0e}".replace("e-0", "e-"),
+        f"The rows are {tree_bound.NODES} Chebyshev nodes",
+        f"{spaced(tree_bound.BASE_CELLS)} and {tree_bound.CELLS_A_TREE} more for each tree",
+        f"the limits {', '.join(weaker[:-1])} and {weaker[-1]} of U",
+        f"after {spaced(cells.MOST_CELLS)} cells",
+        f"over {worst.BAND_CELLS} cells or more",
+    ):
+        assert phrase in said, phrase
+    assert mixed.KEPT == 10
+    assert "The ten best grid minima of a shape" in said
 
 
 def test_the_worst_case_of_the_series_mix_by_hand():

@@ -107,7 +107,7 @@ LAWS: tuple[Law, ...] = (
     Thermistor(reference=298.15, beta=3435.0),
     # constants published widely, for (5 degC, 25000 ohm), (25, 10000), (45, 4000)
     SteinhartHart(reference=298.15, a=2.108508173e-3, b=0.7979204727e-4, c=6.535076315e-7),
-    Table(reference=298.15, points=((210.0, 0.9), (298.15, 1.0), (430.0, 1.2))),
+    Table(reference=298.15, points=((210.0, 0.9), (298.15, 1.0), (440.0, 1.2))),
     Expression(reference=298.15, text="exp(B*(1/T - 1/T0))", constants=(("B", 1234.5),)),
 )
 
