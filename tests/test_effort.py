@@ -44,7 +44,12 @@ def test_a_real_dask_cluster_gives_the_same_answer(alone):
 
     with (
         LocalCluster(
-            n_workers=1, threads_per_worker=1, processes=False, protocol="tcp://", dashboard_address="127.0.0.1:0", host="127.0.0.1"
+            n_workers=1,
+            threads_per_worker=1,
+            processes=False,
+            protocol="tcp://",
+            dashboard_address="127.0.0.1:0",
+            host="127.0.0.1",
         ) as cluster,
         executor_for(1, cluster.scheduler_address) as executor,
     ):

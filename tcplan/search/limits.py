@@ -56,6 +56,8 @@ class LegLimits:
         self, routes: tuple[Path, ...], materials: tuple[int, ...], x: FloatArray
     ) -> tuple[FloatArray, FloatArray]:
         """Return every excess (in ln) of one tree, and its derivatives by the shares."""
+        if not self.any:
+            return np.zeros(0), np.zeros((0, len(x)))
         values: list[float] = []
         slopes: list[FloatArray] = []
         area, area_slope = 0.0, np.zeros(len(x))

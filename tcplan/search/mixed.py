@@ -23,11 +23,11 @@ from tcplan.search.curves import Path, paths, ratio
 from tcplan.search.limits import LegLimits
 from tcplan.trees import Pair, Tree, leaves, paired, shape_of
 
-NODES = 13  # Chebyshev nodes a piece in the grid stage
+NODES = 9  # Chebyshev nodes a piece in the grid stage
 POINTS = {0: 1, 1: 16, 2: 12, 3: 6, 4: 4}  # grid points a share, by the number of inner shares
 GOLDEN = 0.5 * (5**0.5 - 1.0)
-SECTIONS = 18
-KEPT = 10  # grid minima that are polished, a shape
+SECTIONS = 11
+KEPT = 8  # grid minima that are polished, a shape
 CHUNK = 400_000  # numbers in one array of a chunk, about
 STEEP = 10.0  # of a violated limit (in ln) against the figure
 

@@ -95,31 +95,32 @@ class Polisher:
         Columns of the game: no step, and a step of at most the radius up or down along each share
         and, for a band, of its centre.
         """
-        legs = self._legs(field)
-        curve, slopes = ratio_and_slopes(self.pair, legs, x)
+        curve, slopes = ratio_and_slopes(self.pair, self._legs(field), x)
         drift = curve - field.wanted
         banded = field.free > 0
         centre = 0.5 * (drift[banded].max() + drift[banded].min()) if banded.any() else 0.0
         base = (drift - centre * field.free) / field.weight
-        by_share = [slopes[k] / field.weight for k in range(len(x))]
         up = np.minimum(radius, 1.0 - EDGE - x)
         down = np.minimum(radius, x - EDGE)
         if self.outermost is not None:
             up[0] = down[0] = 0.0
         rows, row_slopes = self.limit_rows(x)
-        limits, limit_slopes = (rows + SAFE) * HARD, row_slopes * HARD
-        columns = [np.r_[base, -base, limits]]
-        for k, slope in enumerate(by_share):
-            for reach in (up[k], -down[k]):
-                columns.append(
-                    np.r_[base + reach * slope, -base - reach * slope, limits + reach * limit_slopes[:, k]]
-                )
+        count, nodes = len(x), len(base)
+        columns = np.empty((2 * nodes + len(rows), 1 + 2 * count + (2 if banded.any() else 0)))
+        columns[:nodes] = base[:, None]
+        columns[nodes : 2 * nodes] = -base[:, None]
+        columns[2 * nodes :] = (rows + SAFE)[:, None] * HARD
+        for k in range(count):
+            slope = slopes[k] / field.weight
+            for column, reach in ((1 + 2 * k, up[k]), (2 + 2 * k, -down[k])):
+                columns[:nodes, column] += reach * slope
+                columns[nodes : 2 * nodes, column] -= reach * slope
+                columns[2 * nodes :, column] += reach * row_slopes[:, k] * HARD
         if banded.any():
             width = float(np.max(np.abs(base))) + 1e-12
-            for shift in (width, -width):
-                moved = base - shift * field.free
-                columns.append(np.r_[moved, -moved, limits])
-        mix = solve_game(np.stack(columns, axis=1)).mix
+            columns[:nodes, -2:] += np.outer(field.free, [-width, width])
+            columns[nodes : 2 * nodes, -2:] -= np.outer(field.free, [-width, width])
+        mix = solve_game(columns).mix
         return np.array([mix[1 + 2 * k] * up[k] - mix[2 + 2 * k] * down[k] for k in range(len(x))])
 
     def run(self, start: FloatArray, promising: float = np.inf) -> Polished:
@@ -166,16 +167,14 @@ class Polisher:
 
 
 def _joined(one: Field, other: Field) -> Field:
-    """Return the temperatures of both fields (a third of the first is enough beside the extremes)."""
-    thin = slice(None, None, 3)
-    return Field(
-        np.r_[one.piece[thin], other.piece],
-        np.r_[one.T[thin], other.T],
-        np.r_[one.weight[thin], other.weight],
-        np.r_[one.free[thin], other.free],
-        np.r_[one.wanted[thin], other.wanted],
-        np.hstack([one.ratios[:, thin], other.ratios]),
-    )
+    """Return the temperatures of both fields; a few of the first are enough beside the extremes."""
+    thin = slice(None, None, 8)
+
+    def both(name: str) -> FloatArray:
+        return np.concatenate([getattr(one, name)[thin], getattr(other, name)])
+
+    ratios = np.concatenate([one.ratios[:, thin], other.ratios], axis=1)
+    return Field(one.piece, both("T"), both("weight"), both("free"), both("wanted"), ratios)
 
 
 def polishing_grid(source: Source) -> Field:

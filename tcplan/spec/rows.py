@@ -90,6 +90,8 @@ def _area(option: Option) -> list[str]:
     """Return the area of all legs in words, when it is known."""
     if option.area is None:
         return []
+    if option.area < 1e-8:
+        return [f"{numbers.number(option.area * 1e12, 3)} um^2 in all"]
     return [f"{numbers.number(option.area * 1e6, 3)} mm^2 in all"]
 
 

@@ -101,6 +101,105 @@ def search() -> None:
                 )
 
 
+def slsqp_seconds(trees: list, films: dict, need: object, starts: int = 8) -> tuple[float, float]:
+    """Return the time of SLSQP in epigraph form with random starts, and the best figure [ppm]."""
+    from makers import grid as temperatures
+    from scipy.optimize import minimize
+
+    from tcplan.search.curves import ratio
+    from tcplan.trees import leaves, paired, shape_of
+
+    T = temperatures(count=41)
+    names = sorted(films)
+    ratios = [films[name].ratio(T, 298.15) for name in names]
+    rng = np.random.default_rng(3)
+    best, begin = np.inf, time.perf_counter()
+    for tree in trees:
+        pair, own = paired(shape_of(tree)), [ratios[leaf] for leaf in leaves(tree)]
+        shares = len(own) - 1
+
+        def drift(z: np.ndarray, pair: object = pair, own: list = own) -> np.ndarray:
+            return ratio(pair, own, list(z[:-1])) - 1.0  # type: ignore[arg-type]
+
+        sides = [
+            {"type": "ineq", "fun": lambda z, d=drift: z[-1] - d(z)},
+            {"type": "ineq", "fun": lambda z, d=drift: z[-1] + d(z)},
+        ]
+        for _ in range(starts):
+            start = np.r_[rng.uniform(0.05, 0.95, shares), 0.1]
+            bounds = [(1e-6, 1 - 1e-6)] * shares + [(0.0, None)]
+            found = minimize(
+                lambda z: z[-1],
+                start,
+                method="SLSQP",
+                bounds=bounds,
+                constraints=sides,
+                options={"maxiter": 60},
+            )
+            if found.success:
+                best = min(best, float(np.max(np.abs(drift(found.x)))) * 1e6)
+    return time.perf_counter() - begin, best
+
+
+def mixed() -> None:
+    import resource
+
+    from makers import need_of, over, random_films, six_films
+
+    from tcplan.effort import Effort
+    from tcplan.plan import Space
+    from tcplan.search.mixed_search import mixed_proposals, mixed_trees
+    from tcplan.verify.option import Case, nominal_figure
+    from tcplan.verify.tree_bound import mixed_bound
+    from tcplan.workflow.executors import executor_for
+
+    need = need_of()
+
+    def timed(films: dict, legs: int, most: int, proof: bool = True, effort: Effort | None = None) -> float:
+        names = tuple(sorted(films))
+        space = Space(arrangement="mixed", materials=names, most=most, min_share=0.0, legs=legs, ohms=1e4)
+        case = Case(materials=films, spreads={}, over=over(), need=need)
+        start = time.perf_counter()
+        found = mixed_proposals(space, need, films, 3, effort)
+        ranked = sorted(found, key=lambda p: nominal_figure(p.network, case))
+        best = nominal_figure(ranked[0].network, case)
+        bound = mixed_bound(space, need, films, [p.network for p in ranked[:4]], best, 0.01) if proof else 0.0
+        spent = time.perf_counter() - start
+        gap = f"proved to {100 * (1 - bound / best):.2g} %" if proof else "search alone"
+        print(
+            f"{len(names)} films, {legs} legs, {most} materials: {best * 1e6:.5g} ppm, {gap}, {spent:.2f} s"
+        )
+        return spent
+
+    six = six_films()
+    ours = timed(six, 4, 3)
+    space = Space(arrangement="mixed", materials=tuple(sorted(six)), most=3, min_share=0.0, legs=4, ohms=1e4)
+    trees = list(mixed_trees(space))
+    part = trees[:: max(1, len(trees) // 48)]
+    slow, reached = slsqp_seconds(part, six, need)
+    whole = slow * len(trees) / len(part)
+    print(
+        f"SLSQP, 8 starts, {len(part)} of {len(trees)} candidates in {slow:.1f} s: all of them / ours, proof "
+        f"included: {whole / ours:.0f} (limit 50); its best of these {reached:.5g} ppm"
+    )
+    counts = (6, 8, 12)
+    times = [timed(random_films(5, count), 4, 3) for count in counts]
+    slope = np.polyfit(np.log(counts), np.log(times), 1)[0]
+    print(f"time against films, 4 legs: log-log slope {slope:.2f}; twelve films limit 30 s")
+    legs = (3, 4, 5)
+    by_legs = [timed(six, count, 3, proof=False) for count in legs]
+    print(
+        f"time against legs, six films: log-log slope {np.polyfit(np.log(legs), np.log(by_legs), 1)[0]:.2f}"
+    )
+    with executor_for(2, None) as pool:
+        timed(six, 3, 2, proof=False, effort=Effort(executor=pool))  # starts the workers
+        two = timed(six, 5, 3, proof=False, effort=Effort(executor=pool))
+    print(f"one worker / two workers, 5 legs: {by_legs[-1] / two:.2f} (limit 1.6)")
+    memory = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024
+    print(f"most memory of this process: {memory:.0f} MB (limit 500)")
+
+
 if __name__ == "__main__":
     start_up()
+    mixed()
     search()

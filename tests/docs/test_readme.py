@@ -40,3 +40,16 @@ def test_the_printed_screen_is_the_real_one(tmp_path):
 def test_links_lead_somewhere():
     for target in re.findall(r"\]\(([^)#]+)\)", README):
         assert (ROOT / target).exists(), target
+
+
+def test_the_mixing_table_is_the_real_one():
+    from tcplan.brief import read_brief
+    from tcplan.workflow.planning import make_plan
+
+    plan = make_plan(read_brief(ROOT / "examples" / "flat_mixed_films" / "brief.toml"))
+    for kind in ("single", "series", "parallel", "mixed"):
+        option = next(o for o in plan.options if o.arrangement == kind)
+        figures = option.nominal.peak_ppm, option.worst_case.peak_ppm, option.area * 1e12
+        row = re.search(rf"^\| {kind} \|(.*)\|$", README, flags=re.M).group(1)
+        printed = [float(cell) for cell in row.split("|")]
+        assert printed == [float(f"{figure:.0f}") for figure in figures]

@@ -22,6 +22,7 @@ EXPECTED = {
     "bridge_check": "MET",
     "cabinet_reference_wire": "MET",
     "coil_swamp": "MET",
+    "flat_mixed_films": "MET",
 }
 REL = 1e-6
 

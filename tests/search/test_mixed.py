@@ -95,9 +95,7 @@ def figure_by_hand(kind, drift, T):
         return np.maximum(np.abs(drift[..., 0]) / 65.0, np.abs(drift[..., -1]) / 125.0) * 125.0
     if kind == "mask":
         inner = (T >= 273.15 - 1e-9) & (T <= 343.15 + 1e-9)
-        return np.maximum(
-            np.max(np.abs(drift[..., inner]), axis=-1), np.max(np.abs(drift), axis=-1) / 4.0
-        )
+        return np.maximum(np.max(np.abs(drift[..., inner]), axis=-1), np.max(np.abs(drift), axis=-1) / 4.0)
     return np.max(np.abs(drift), axis=-1)
 
 
@@ -161,7 +159,11 @@ def test_the_best_three_and_four_legs_of_six_films():
     four = [k for k, (_, network) in enumerate(found) if len(legs(network)) == 4]
     assert materials[four[0]] == ["hi", "hi", "pp", "sp"]
     assert any(figure * 1e6 == pytest.approx(632.80, abs=0.01) for figure, _ in found)
-    assert sorted(p.material for p in legs(ranked(space(six_films()), six_films())[0][1])) == ["hi", "pp", "sp"]
+    assert sorted(p.material for p in legs(ranked(space(six_films()), six_films())[0][1])) == [
+        "hi",
+        "pp",
+        "sp",
+    ]
 
 
 def test_two_films_on_few_nodes_and_on_the_whole_range():
@@ -169,7 +171,9 @@ def test_two_films_on_few_nodes_and_on_the_whole_range():
     films, names = six_films(), ("hi", "sp")
     nodes = 328.15 - 95.0 * np.cos(np.pi * np.arange(17) / 16)
     assert best_by_hand(films, names, 2, T=nodes) * 1e6 == pytest.approx(1231.00, abs=0.01)
-    assert best_by_hand(films, names, 2, T=grid(count=4001), kept=2) * 1e6 == pytest.approx(1232.938, abs=0.002)
+    assert best_by_hand(films, names, 2, T=grid(count=4001), kept=2) * 1e6 == pytest.approx(
+        1232.938, abs=0.002
+    )
 
 
 # --- random films against twins ----------------------------------------------------------------
@@ -264,7 +268,7 @@ def test_slsqp_from_many_starts_never_beats_the_search(seed):
 
 
 @pytest.mark.parametrize(
-    ("place", "seed"), [("series", 10), ("series", 12), ("parallel", 10), ("parallel", 6)]
+    ("place", "seed"), [("series", 10), ("series", 12), ("parallel", 10), ("parallel", 12)]
 )
 def test_two_legs_beside_a_coil_against_a_scan(place, seed):
     """The one free share, on a scan made fine: (a || b) + coil, or (a + b) || coil."""
@@ -373,5 +377,7 @@ def test_nothing_to_search():
     films = random_films(8, 3)
     assert mixed_proposals(space(films, size=2), need_of(), films) == ()
     assert mixed_trees(space(films, most=1)) == ()
-    free = replace(space(films, size=2, fixed=(Leg(material="m00", ohms=5.0),), fixed_share=(0.1, 0.9)), ohms=None)
+    free = replace(
+        space(films, size=2, fixed=(Leg(material="m00", ohms=5.0),), fixed_share=(0.1, 0.9)), ohms=None
+    )
     assert mixed_proposals(free, need_of(), films) == ()

@@ -21,7 +21,7 @@ def plan() -> Plan:
 
 def test_the_columns_and_the_line_ends(plan: Plan) -> None:
     lines = mix_csv(plan).split("\r\n")
-    assert lines[0] == "leg,material,ohms,share,squares,tc1_ppm_per_K,tc2_ppm_per_K2"
+    assert lines[0] == "leg,material,ohms,share,squares,area_m2,tc1_ppm_per_K,tc2_ppm_per_K2"
     assert lines[-1] == ""  # RFC 4180, 2: each record on a line of its own, ended by CR LF
     assert "\n" not in "".join(lines)
 
