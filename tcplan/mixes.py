@@ -13,11 +13,13 @@ from itertools import combinations
 
 import numpy as np
 
-from tcplan.arrays import FloatArray
+from tcplan.arrays import BoolArray, FloatArray, IntArray
 from tcplan.network import Network, Parallel, Series, value
 from tcplan.plan import Space
 
 INSIDE = 1e-12
+MOST_VERTICES = 150  # beyond which tangents are left out
+LEAST_TANGENT = 1e-9  # share at which the area of a parallel leg is cut at least
 
 
 def fixed_group(space: Space) -> Network | None:
@@ -87,6 +89,8 @@ def size_rows(space: Space, support: Sequence[int]) -> list[tuple[FloatArray, fl
     total = space.ohms if space.ohms is not None else own
     for i in support:
         least, most = sizes.least_ohms[i], sizes.most_ohms[i]
+        if sizes.area_per_ohm[i] > 0:  # no leg alone may take more than all of the area
+            most = min(most, sizes.max_area / sizes.area_per_ohm[i])
         if space.arrangement == "parallel":
             least, most = (
                 (total * total / most if most < np.inf else 0.0),
@@ -110,7 +114,8 @@ def tangent_row(space: Space, support: Sequence[int], at: Sequence[float]) -> tu
     if sizes is None or space.ohms is None:
         raise ValueError("a tangent needs a limit of area and a given total")
     row, bound = np.zeros(count + 1), sizes.max_area
-    for i, g in zip(support, at, strict=True):
+    for i, share in zip(support, at, strict=True):
+        g = max(float(share), LEAST_TANGENT)
         a = sizes.area_per_ohm[i] * space.ohms
         row[i] = -a / g**2
         bound -= 2.0 * a / g
@@ -130,55 +135,64 @@ def area_of(space: Space, shares: FloatArray) -> float:
     return total
 
 
-def cut(points: FloatArray, row: FloatArray, bound: float) -> FloatArray:
-    """Return the vertices of a polytope cut by row x <= bound; empty when nothing is left."""
-    excess = points @ row - bound
-    tolerance = INSIDE * max(1.0, float(np.max(np.abs(row))), abs(bound))
-    inside = excess <= tolerance
+def cut(
+    points: FloatArray, row: FloatArray, bound: float, walls: Sequence[tuple[FloatArray, float]] = ()
+) -> FloatArray:
+    """Return the vertices of a polytope cut by row x <= bound; empty when nothing is left.
+
+    ``walls`` are the half-spaces that the polytope has so far: only two vertices on enough walls in
+    common can be the ends of an edge, and only edges cross the cut in a vertex.
+    """
+    # In the unit of the shares, whatever that of the row is (areas are tiny, values are large).
+    unit = float(np.max(np.abs(row))) or 1.0
+    excess = (points @ row - bound) / unit
+    inside = excess <= INSIDE
     if inside.all():
         return points
-    kept, lost = points[inside], points[~inside]
-    a, b = excess[inside][:, None, None], excess[~inside][None, :, None]
+    kept, lost = np.nonzero(inside)[0], np.nonzero(~inside)[0]
+    pairs = np.stack(np.meshgrid(kept, lost, indexing="ij"), axis=-1).reshape(-1, 2)
+    pairs = pairs[_may_be_edges(points, pairs, walls)]
+    a, b = excess[pairs[:, 0]][:, None], excess[pairs[:, 1]][:, None]
     step = np.clip(-a / (b - a), 0.0, 1.0)
-    crossing = (kept[:, None, :] + step * (lost[None, :, :] - kept[:, None, :])).reshape(-1, points.shape[1])
-    return np.concatenate([kept, _extreme(crossing)])
+    crossing = points[pairs[:, 0]] + step * (points[pairs[:, 1]] - points[pairs[:, 0]])
+    return _distinct(np.concatenate([points[kept], crossing]))
 
 
-def _extreme(points: FloatArray) -> FloatArray:
-    """Return the extreme points among points of one face: all of them where that is not easy."""
-    if len(points) < 2:
-        return points
-    points = np.unique(points.round(14), axis=0)
+def _may_be_edges(
+    points: FloatArray, pairs: IntArray, walls: Sequence[tuple[FloatArray, float]]
+) -> BoolArray:
+    """Return which pairs of vertices lie on as many walls in common as an edge must."""
+    if not walls or not len(pairs):
+        return np.ones(len(pairs), dtype=bool)
+    rows = np.array([wall / np.max(np.abs(wall)) for wall, _ in walls])
+    bounds = np.array([limit / np.max(np.abs(wall)) for wall, limit in walls])
+    tight = np.abs(points @ rows.T - bounds) <= 1e-9
+    tight = tight[:, ~tight.all(axis=0)]  # a wall that holds them all parts none of them
     centred = points - points.mean(axis=0)
-    _, singular, axes = np.linalg.svd(centred, full_matrices=False)
-    rank = int((singular > 1e-12).sum())
-    if rank == 0:
-        return points[:1]
-    if rank == 1:
-        along = centred @ axes[0]
-        return points[[int(np.argmin(along)), int(np.argmax(along))]]
-    if rank == 2:
-        return points[_hull_of_plane(centred @ axes[:2].T)]
-    return points
+    size = int(np.linalg.matrix_rank(centred, tol=1e-10))
+    common = (tight[pairs[:, 0]] & tight[pairs[:, 1]]).sum(axis=1)
+    enough: BoolArray = common >= size - 1
+    return enough
 
 
-def _hull_of_plane(points: FloatArray) -> list[int]:
-    """Return the positions of the convex hull of points in a plane (monotone chain)."""
-    order = sorted(range(len(points)), key=lambda k: (points[k][0], points[k][1]))
+def _distinct(points: FloatArray) -> FloatArray:
+    """Return the points, each once."""
+    _, first = np.unique(points.round(12), axis=0, return_index=True)
+    return points[np.sort(first)]
 
-    def turn(o: int, a: int, b: int) -> float:
-        u, v = points[a] - points[o], points[b] - points[o]
-        return float(u[0] * v[1] - u[1] * v[0])
 
-    def chain(sequence: list[int]) -> list[int]:
-        found: list[int] = []
-        for k in sequence:
-            while len(found) >= 2 and turn(found[-2], found[-1], k) <= 0:
-                found.pop()
-            found.append(k)
-        return found[:-1]
-
-    return chain(order) + chain(order[::-1])
+def _walls(space: Space, support: Sequence[int]) -> list[tuple[FloatArray, float]]:
+    """Return the half-spaces of the shares without sizes: least shares, and bounds of the fixed one."""
+    count = len(space.materials)
+    walls = []
+    for i in support:
+        row = np.zeros(count + 1)
+        row[i] = -1.0
+        walls.append((row, -space.min_share))
+    last = np.zeros(count + 1)
+    last[count] = 1.0
+    low, high = space.fixed_share
+    return [*walls, (last, high), (-last, -low)]
 
 
 def share_vertices(
@@ -203,11 +217,15 @@ def share_vertices(
         polytope holds all mixes that can be made, and more tangents make it tighter.
     """
     points = simplex_vertices(space, support)
-    rows = [*size_rows(space, support), *(tangent_row(space, support, at) for at in tangents)]
-    for row, bound in rows:
-        if not len(points):
+    walls = _walls(space, support)
+    sizes = size_rows(space, support)
+    rows = [*sizes, *(tangent_row(space, support, at) for at in tangents)]
+    for position, (row, bound) in enumerate(rows):
+        # A tangent that is left out leaves a larger polytope: still one that holds every mix.
+        if not len(points) or (position >= len(sizes) and len(points) > MOST_VERTICES):
             break
-        points = cut(points, row, bound)
+        points = cut(points, row, bound, walls)
+        walls.append((row, bound))
     return points
 
 

@@ -113,7 +113,7 @@ def _arrangements(table: TableReader, fixed: tuple[Fixed, ...]) -> tuple[Searche
             table.refuse(
                 "arrangements",
                 shown(name),
-                "single, series or parallel",
+                "single, series, parallel or mixed",
                 f"Did you mean {near}?" if near else "",
             )
     kept = [name for name in SEARCHED if name in listed]
@@ -166,6 +166,7 @@ def check_agreement(
         resistor.refuse("value", "no value and no limit", "a value, or a limit in [goal] to bound it")
     if fixed:
         _room(resistor, target, fixed)
+    _total_needed(reader, target, fixed)
 
 
 def _room(resistor: TableReader, target: Target, fixed: tuple[Fixed, ...]) -> None:
@@ -185,3 +186,16 @@ def _room(resistor: TableReader, target: Target, fixed: tuple[Fixed, ...]) -> No
             format_ohms(total),
             f"{side} than the fixed members' {format_ohms(own)} in {fixed[0].place}",
         )
+
+
+def _total_needed(reader: TableReader, target: Target, fixed: tuple[Fixed, ...]) -> None:
+    """Refuse what can be searched only with a given total."""
+    search = reader.inner("search")
+    if search is None or not fixed or target.ohms is not None:
+        return
+    if set(search.texts("arrangements")) == {"mixed"}:
+        search.refuse(
+            "arrangements", "mixed alone, without a value", "a value in [resistor], or series or parallel"
+        )
+    if search.has("max_area"):
+        search.refuse("max_area", "max_area without a value", "a value in [resistor]")

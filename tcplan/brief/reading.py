@@ -58,6 +58,7 @@ def parse_brief(text: str, name: str, folder: Path) -> Brief:
     used = _used(rules, materials, fixed, given)
     if over is not None:
         _validity(reader, used, over)
+        _areas(reader, used, over)
     if reader.problems or over is None or goal is None:
         raise InputError(reader.problems)
     return Brief(
@@ -156,6 +157,20 @@ def _used(
         return [materials[name] for name in used_materials(given) if name in materials]
     names = dict.fromkeys((*rules.use, *(member.leg.material for member in fixed)))
     return [materials[name] for name in names if name in materials]
+
+
+def _areas(reader: TableReader, used: list[Material], over: TemperatureRange) -> None:
+    """Refuse a limit of area beside a film whose area is not known."""
+    search = reader.inner("search")
+    if search is None or not search.has("max_area"):
+        return
+    for material in used:
+        if material.kind == "film" and material.area(1.0, over.reference) is None:
+            search.refuse(
+                "max_area",
+                f"max_area, and no width of {material.name}",
+                f"[material.{material.name}.film] with min_width",
+            )
 
 
 def _validity(reader: TableReader, used: list[Material], over: TemperatureRange) -> None:

@@ -11,12 +11,13 @@ from tcplan.effort import Effort
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
 from tcplan.mixes import fixed_group
-from tcplan.network import Leg, Network, arrangement, legs, shares, simplified
+from tcplan.network import Leg, Network, arrangement, legs, scaled, shares, simplified, value
 from tcplan.plan import Proposal, Space
 from tcplan.search.curves import network_at
 from tcplan.search.limits import LegLimits, limits_of
 from tcplan.search.linear import in_order
 from tcplan.search.mixed import (
+    KEPT,
     NODES,
     Field,
     Source,
@@ -70,7 +71,9 @@ class Task:
         grid = polishing_grid(self.source)
         found: list[tuple[Start, Polished]] = []
         promising = np.inf
-        for start in grid_starts(self.trees, field, self.limits, outermost=self.outermost):
+        # Limits make corners, and a corner more than one minimum.
+        kept = 3 * KEPT if self.limits.any else KEPT
+        for start in grid_starts(self.trees, field, self.limits, kept, self.outermost):
             pair = paired(shape_of(start.tree))
             if not isinstance(pair, Pair):
                 continue
@@ -94,6 +97,8 @@ def _network(space: Space, tree: Tree, polished: Polished) -> Network | None:
     if group is not None:
         network = _put_fixed(network, group)
     simple = simplified(network) if group is None else _opened(network)
+    if group is None:  # what has vanished was next to nothing, and the total is exact
+        simple = scaled(simple, space.ohms / value(simple))
     return simple if arrangement(simple) == "mixed" else None
 
 

@@ -9,6 +9,7 @@ more place than there are free shares, or limits hold the rest.
 from __future__ import annotations
 
 from dataclasses import dataclass
+from typing import Any
 
 import numpy as np
 
@@ -136,9 +137,7 @@ class Polisher:
             move = self.step(x, _joined(self.grid, peaks), radius)
             if float(np.max(np.abs(move), initial=0.0)) < SMALLEST_STEP:
                 break
-            trial = np.clip(x + move, EDGE, 1.0 - EDGE)
-            if self.outermost is not None:
-                trial[0] = self.outermost
+            trial = self._restored(x + move)
             merit, fresh, worst = self.merit(trial)
             if merit < best * (1.0 - 1e-12):
                 gain = (best - merit) / best
@@ -152,6 +151,22 @@ class Polisher:
                 if radius < SMALLEST_STEP:
                     break
         return Polished(x, best, excess, self._stationary(x, peaks, best))
+
+    def _restored(self, x: FloatArray) -> FloatArray:
+        """Return shares moved back inside the limits: along a curved limit a straight step leaves it."""
+        for _ in range(4):
+            x = np.clip(x, EDGE, 1.0 - EDGE)
+            if self.outermost is not None:
+                x[0] = self.outermost
+            rows, slopes = self.limit_rows(x)
+            worst = int(np.argmax(rows)) if len(rows) else 0
+            if not len(rows) or rows[worst] <= -SAFE:
+                break
+            slope = slopes[worst].copy()
+            if self.outermost is not None:
+                slope[0] = 0.0
+            x = x - (rows[worst] + 2.0 * SAFE) * slope / max(float(slope @ slope), 1e-12)
+        return np.clip(x, EDGE, 1.0 - EDGE)
 
     def _stationary(self, x: FloatArray, peaks: Field, figure: float) -> bool:
         """Whether the peak is reached at one more place than there are shares, or limits hold."""
@@ -170,11 +185,11 @@ def _joined(one: Field, other: Field) -> Field:
     """Return the temperatures of both fields; a few of the first are enough beside the extremes."""
     thin = slice(None, None, 8)
 
-    def both(name: str) -> FloatArray:
+    def both(name: str) -> Any:
         return np.concatenate([getattr(one, name)[thin], getattr(other, name)])
 
     ratios = np.concatenate([one.ratios[:, thin], other.ratios], axis=1)
-    return Field(one.piece, both("T"), both("weight"), both("free"), both("wanted"), ratios)
+    return Field(both("piece"), both("T"), both("weight"), both("free"), both("wanted"), ratios)
 
 
 def polishing_grid(source: Source) -> Field:

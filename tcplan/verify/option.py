@@ -170,7 +170,7 @@ def _proof(proposal: Proposal, figure: float, case: Case) -> Proof:
     closed = max(CLOSED_PPM * 1e-6, CLOSED_RELATIVE * figure)
     if proposal.space is not None and proposal.space.arrangement == "mixed":
         bound = max(bound, min(case.mixed_ppm * 1e-6, figure))
-        closed = max(closed, figure * case.gap * (1.0 + 1e-9))
+        closed = max(closed, figure * case.gap * (1.0 + 1e-4))
     elif proposal.space is not None and proposal.certificate is not None:
         own = arrangement_bound(proposal.space, proposal.certificate, case.need, case.materials, figure)
         bound = max(bound, own)

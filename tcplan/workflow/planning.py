@@ -117,8 +117,8 @@ def make_plan(brief: Brief, *, gap: float = 0.01, effort: Effort | None = None) 
     found = proposals(brief, need, case, effort=effort)
     if not found:
         raise NoAnswer(
-            "No network of these materials fits the brief: what min_share and the fixed members ask "
-            "for adds up to more than the whole."
+            "No network of these materials fits the brief: what is asked of shares, sizes and area, and "
+            "of the fixed members, leaves nothing in the arrangements searched."
         )
     best = min(nominal_figure(proposal.network, case) for proposal in found)
     evidence = floor_evidence(brief, need, best)
@@ -189,6 +189,8 @@ def _one_more(brief: Brief, case: Case, options: Sequence[Option]) -> tuple[str,
     if brief.given is not None or low != high or len(rules.use) > MOST_FOR_MORE:
         return ()
     one_node = tuple(kind for kind in rules.arrangements if kind != "mixed")
+    if rules.max_legs >= MOST_LEGS_FOR_MORE and not one_node:
+        return ()
     wider = replace(
         brief,
         rules=replace(

@@ -330,8 +330,8 @@ def test_scaling_the_target_scales_the_legs():
 
 def test_what_vanishes_is_left_out():
     """Films whose series mix is flat: no mixed network with a leg of next to nothing is put forward."""
-    films = by_name(film("a", -400, -0.3), film("b", 300, -0.4), film("c", 20, 0.9))
-    for films in (films, random_films(7, 3), random_films(32, 4)):
+    flat = by_name(film("a", -400, -0.3), film("b", 300, -0.4), film("c", 20, 0.9))
+    for films in (flat, random_films(7, 3), random_films(32, 4)):
         for size in (3, 4):
             for proposal in mixed_proposals(space(films, size=size), need_of(), films):
                 assert min(shares(proposal.network)) > 1e-8

@@ -1,7 +1,7 @@
 """What can be made: limits on the legs' values and on their area, against values tried one by one."""
 
 from dataclasses import replace
-from itertools import combinations
+from itertools import combinations, pairwise
 
 import numpy as np
 import pytest
@@ -223,7 +223,7 @@ def test_area_against_a_grid(kind, seed, part):
     if not got:
         assert slow == INF
         return
-    figure, proposal = got[0]
+    figure, _ = got[0]
     assert all(within(of, p.network, 1e-6) for _, p in got)
     assert figure <= slow * (1 + 2e-4)
     assert slow <= figure * (1 + 1e-2)
@@ -296,7 +296,7 @@ def test_looser_limits_are_never_worse():
             found(space(kind, names, replace(FREE, least_ohms=(least,) * 3)), films)[0][0]
             for least in (300.0, 200.0, 100.0, 50.0, 0.0)
         ]
-        assert all(b <= a * (1 + 1e-9) for a, b in zip(figures, figures[1:], strict=False))
+        assert all(b <= a * (1 + 1e-9) for a, b in pairwise(figures))
 
 
 # --- mixed -------------------------------------------------------------------------------------
@@ -306,7 +306,7 @@ BUNDLES = ("series of a bundle", "bundle of a series")
 
 
 @pytest.mark.parametrize(
-    ("name", "seed"), [("wide", 8), ("least", 8), ("most", 8), ("both", 9), ("both", 12), ("least", 11)]
+    ("name", "seed"), [("wide", 8), ("least", 8), ("most", 8), ("both", 9), ("both", 12), ("least", 9)]
 )
 def test_values_of_mixed_legs_against_a_grid(name, seed):
     films, sizes = random_films(seed, 3), LIMITS[name]
@@ -314,7 +314,7 @@ def test_values_of_mixed_legs_against_a_grid(name, seed):
     of = space("mixed", names, sizes)
     got = found(of, films)
     assert all(within(of, p.network, 1e-6) for _, p in got)
-    slow = three_by_hand(BUNDLES, names, films, sizes)
+    slow = three_by_hand(BUNDLES, names, films, sizes, kept=12)
     assert got[0][0] <= slow * (1 + 2e-3)
     assert slow <= got[0][0] * (1 + 2e-2)
 
@@ -326,7 +326,7 @@ def test_area_of_mixed_legs_against_a_grid(seed, area):
     of = space("mixed", names, sizes)
     got = found(of, films)
     assert all(within(of, p.network, 1e-6) for _, p in got)
-    slow = three_by_hand(BUNDLES, names, films, sizes)
+    slow = three_by_hand(BUNDLES, names, films, sizes, kept=12)
     assert got[0][0] <= slow * (1 + 2e-3)
     assert slow <= got[0][0] * (1 + 2e-2)
 
