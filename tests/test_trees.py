@@ -15,7 +15,8 @@ def test_shapes_are_those_of_the_known_sequence(size, count):
     assert len(set(shapes(size))) == count
 
 
-# Independent prototype: six materials 30 / 220 / 1260 trees of 2 / 3 / 4 legs (at most 3 materials), twelve 132 /
+# Independent prototype: six materials 30 / 220 / 1260 trees of 2 / 3 / 4 legs (at most 3
+# materials), twelve 132 /
 # 2024 / 12672.
 @pytest.mark.parametrize(("materials", "counts"), [(6, (30, 220, 1260)), (12, (132, 2024))])
 def test_assignments(materials, counts):

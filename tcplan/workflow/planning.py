@@ -41,7 +41,8 @@ def _mixed_ppm(found: Sequence[Proposal], case: Case, gap: float) -> float:
         return 0.0
     ranked = sorted(mixed, key=lambda p: nominal_figure(p.network, case))
     networks = [p.network for p in ranked[:4]]
-    best = nominal_figure(networks[0], case)
+    # The limits of mixed networks are the simple ones: the best of all is what can be proved.
+    best = min(nominal_figure(p.network, case) for p in found)
     return mixed_bound(mixed[0].space, case.need, case.materials, networks, best, gap) * 1e6
 
 
