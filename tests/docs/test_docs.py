@@ -29,7 +29,7 @@ from tcplan.ranges import GRADES
 from tcplan.search import mixed, mixed_search, polish, solver, supports
 from tcplan.trees import assigned_trees, shapes
 from tcplan.units import parse_quantity
-from tcplan.verify import cells, tree_bound, worst
+from tcplan.verify import cells, question, tree_bound, worst
 from tcplan.workflow import proposals
 from tcplan.workflow.planning import make_plan
 
@@ -419,7 +419,7 @@ def test_numbers_of_the_program_that_the_method_states():
         f"The {mixed.KEPT} best grid minima of a shape",
         f"found on {polish.GRID} points a piece",
         f"falls below {mixed_search.VANISHED:.0e}".replace("e-0", "e-"),
-        f"The rows are {tree_bound.NODES} Chebyshev nodes",
+        f"The rows are {question.NODES} Chebyshev nodes",
         f"{spaced(tree_bound.BASE_CELLS)} and {tree_bound.CELLS_A_TREE} more for each tree",
         f"the limits {', '.join(weaker[:-1])} and {weaker[-1]} of U",
         f"after {spaced(cells.MOST_CELLS)} cells",

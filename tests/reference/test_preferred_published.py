@@ -43,5 +43,5 @@ def test_e192_exception_and_index_91() -> None:
 def test_against_eseries(series: str) -> None:
     import eseries  # type: ignore[import-untyped]
 
-    # eseries 1.2.1 (PyPI), which holds the tables of IEC 60063 digit by digit.
+    # eseries 1.2.1, which holds the tables of IEC 60063 digit by digit.
     assert preferred_values(series) == tuple(eseries.series(getattr(eseries, series)))
