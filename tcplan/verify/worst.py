@@ -79,7 +79,7 @@ def _one_node(box: Box) -> Worst:
     near = [device for figure, device in starts if figure >= NEAR * highest]
     device, reached = max((_settled(box, device) for device in near), key=lambda pair: pair[1].figure)
     # The margin is rounding: the worst device at each temperature is exact.
-    return Worst(device, reached, max(reached.figure, highest) * (1 + 1e-9), "exact")
+    return Worst(device, reached, max(reached.figure, highest) * (1 + 1e-10), "exact")
 
 
 def _local_maxima(values: FloatArray) -> list[int]:
