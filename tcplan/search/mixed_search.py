@@ -71,8 +71,8 @@ class Task:
         grid = polishing_grid(self.source)
         found: list[tuple[Start, Polished]] = []
         promising = np.inf
-        # Limits make corners, and a corner more than one minimum.
-        kept = 3 * KEPT if self.limits.any else KEPT
+        # A limit of area is curved, and may part what is allowed: more minima are worth a polish.
+        kept = 3 * KEPT if self.limits.max_area < np.inf else KEPT
         for start in grid_starts(self.trees, field, self.limits, kept, self.outermost):
             pair = paired(shape_of(start.tree))
             if not isinstance(pair, Pair):

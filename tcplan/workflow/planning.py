@@ -184,23 +184,24 @@ def _check_spreads(brief: Brief) -> None:
 
 
 def _one_more(brief: Brief, case: Case, options: Sequence[Option]) -> tuple[str, ...]:
-    """Return a line on what one more leg, of one more material, would give; none where that is long work."""
+    """Return a line on what one more material would give; none where that is long work."""
     rules, judge = brief.rules, brief.goal.judge
     low, high = fixed_share(brief)
-    if brief.given is not None or low != high or len(rules.use) > MOST_FOR_MORE:
+    if (
+        brief.given is not None
+        or low != high
+        or not 0 < rules.max_materials < len(rules.use) <= MOST_FOR_MORE
+    ):
         return ()
-    one_node = tuple(kind for kind in rules.arrangements if kind != "mixed")
-    if rules.max_legs >= MOST_LEGS_FOR_MORE and not one_node:
-        return ()
+    most = rules.max_materials + 1
+    quick = rules.max_legs < MOST_LEGS_FOR_MORE
+    kinds = tuple(kind for kind in rules.arrangements if quick or kind != "mixed")
     wider = replace(
         brief,
-        rules=replace(
-            rules,
-            max_materials=rules.max_materials + 1,
-            max_legs=rules.max_legs + 1,
-            arrangements=rules.arrangements if rules.max_legs < MOST_LEGS_FOR_MORE else one_node,
-        ),
+        rules=replace(rules, max_materials=most, max_legs=max(rules.max_legs, most), arrangements=kinds),
     )
+    if not kinds:
+        return ()
     shown = {option.network for option in options}
     best = min(judged_ppm(option, judge) for option in options)
     found = [
@@ -210,11 +211,11 @@ def _one_more(brief: Brief, case: Case, options: Sequence[Option]) -> tuple[str,
     ]
     better = [option for option in found if judged_ppm(option, judge) * EQUAL < best]
     if not better:
-        return (f"One more leg, of one more material, gives no better {judge} figure of those searched.",)
+        return (f"One more material ({most}) gives no better {judge} figure of those searched.",)
     option = min(better, key=lambda o: judged_ppm(o, judge))
     names = ", ".join(used_materials(option.network))
     size = f"{len(legs(option.network))} legs of {names}"
-    return (f"With one more leg and one more material: {option.arrangement}, {size}, {_both(option)}.",)
+    return (f"With one more material ({most}): {option.arrangement}, {size}, {_both(option)}.",)
 
 
 def _both(option: Option) -> str:
