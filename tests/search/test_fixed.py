@@ -162,3 +162,18 @@ def test_bisection_agrees_with_a_scan_of_the_share(kind):
         network = search_space(at, need, films, 1)[0].network
         assert (nominal_figure(network, case) <= 0.02) == meets
     assert check(found, case, "x").verdict == "MET"
+
+
+def test_a_least_share_beside_fixed_members_of_free_share():
+    """Copper 100 ohm with 390 ohm of -1000 ppm/K has no drift: it is inside a total of 2 kohm."""
+    films = by_name(film("cu", 3900), film("neg", -1000))
+    space = Space(
+        arrangement="series",
+        materials=("neg",),
+        most=1,
+        min_share=0.03,
+        fixed=(Leg(material="cu", ohms=100.0),),
+        fixed_share=(100 / 2000, 1.0),
+    )
+    network = search_space(space, need_of(), films, 1)[0].network
+    assert {one.material: one.ohms for one in legs(network)}["neg"] == pytest.approx(390.0, rel=1e-6)

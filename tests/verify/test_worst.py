@@ -171,3 +171,26 @@ def test_without_any_spread_the_worst_case_is_the_nominal():
     worst = worst_case(network, films, spreads(films), need_of())
     nominal = np.max(np.abs(brute_ratio(network, films, grid(count=1001)) - 1))
     assert worst.judged.figure == pytest.approx(nominal, rel=1e-6)
+
+
+@pytest.mark.parametrize("seed", range(8))
+def test_a_film_without_a_value_spread_hides_no_device(seed):
+    """A factor that does not move is at its limit from the start: the others are searched all over."""
+    rng = np.random.default_rng(seed)
+    films = random_films(seed, 3)
+    still = film("m00", 300.0, 0.5, value_percent=0.0, tc1_spread_ppm=1.0)
+    films = {**films, "m00": still}
+    network = random_tree(rng, tuple(films), int(rng.integers(3, 6)))
+    worst = worst_case(network, films, spreads(films), need_of())
+    brute = brute_worst(network, films, grid(count=191))
+    assert worst.upper >= brute * (1 - 1e-12)
+    assert worst.judged.figure >= brute * (1 - 1e-4)
+
+
+def test_a_false_met_of_a_film_without_a_value_spread():
+    """(A 1 kohm || B 1 kohm) + A 3 kohm, -40..125 degC: the device with A at 0.8 reaches 14199 ppm."""
+    films = by_name(film("A", 200, value_percent=20), film("B", -600, value_percent=0, tc1_spread_ppm=1.0))
+    network = Series((Parallel((leg("A", 1000.0), leg("B", 1000.0))), leg("A", 3000.0)))
+    worst = worst_case(network, films, spreads(films), need_of(high=125.0))
+    assert worst.device.factors["A"] == pytest.approx(0.8)
+    assert worst.judged.figure * 1e6 == pytest.approx(14199, abs=0.5)
