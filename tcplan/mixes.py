@@ -8,14 +8,16 @@ outside add the points where they cross.
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from itertools import combinations
 
 import numpy as np
 
 from tcplan.arrays import BoolArray, FloatArray, IntArray
-from tcplan.network import Network, Parallel, Series, value
+from tcplan.material.model import Material
+from tcplan.network import Network, Parallel, Series, resistance, value
 from tcplan.plan import Space
+from tcplan.trees import PARALLEL, SERIES, Tree, assigned_trees, is_mixed, with_fixed
 
 INSIDE = 1e-12
 MOST_VERTICES = 150  # beyond which tangents are left out
@@ -28,6 +30,29 @@ def fixed_group(space: Space) -> Network | None:
         return space.fixed[0] if space.fixed else None
     parallel = space.arrangement == "parallel" or space.fixed_in_parallel
     return Parallel(space.fixed) if parallel else Series(space.fixed)
+
+
+def fixed_ratio(
+    space: Space, materials: Mapping[str, Material], reference: float, T: FloatArray
+) -> FloatArray:
+    """Return R(T)/R(T_ref) of the fixed members together; 1 when there are none."""
+    group = fixed_group(space)
+    if group is None:
+        return np.ones_like(T)
+    ratios = {leg.material: materials[leg.material].ratio(T, reference) for leg in space.fixed}
+    return resistance(group, ratios) / value(group)
+
+
+def mixed_trees(space: Space) -> tuple[Tree, ...]:
+    """Return the mixed trees of a space; the fixed members are the leaf after the last material."""
+    count = len(space.materials)
+    kind = PARALLEL if space.fixed_in_parallel else SERIES
+    whole = (
+        with_fixed(tree, kind, count) if space.fixed else tree
+        for size in range(1, space.legs + 1)
+        for tree in assigned_trees(size, count, space.most)
+    )
+    return tuple(tree for tree in whole if is_mixed(tree))
 
 
 def fixed_ends(space: Space, taken: float) -> tuple[float, ...]:

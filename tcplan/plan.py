@@ -7,7 +7,8 @@ A :class:`Proposal` is a claim with the evidence for it; only ``verify`` turns i
 from __future__ import annotations
 
 import json
-from dataclasses import asdict, dataclass, field
+from collections.abc import Sequence
+from dataclasses import asdict, dataclass, field, replace
 from typing import Any, Literal, TypeAlias
 
 from tcplan.material.model import Material
@@ -50,6 +51,15 @@ class Sizes:
         values = any(v > 0 for v in self.least_ohms) or any(v < float("inf") for v in self.most_ohms)
         return values or self.max_area < float("inf")
 
+    def taken(self, positions: Sequence[int]) -> Sizes:
+        """Return the sizes of the materials at these positions, in their order."""
+        return replace(
+            self,
+            least_ohms=tuple(self.least_ohms[i] for i in positions),
+            most_ohms=tuple(self.most_ohms[i] for i in positions),
+            area_per_ohm=tuple(self.area_per_ohm[i] for i in positions),
+        )
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Space:
@@ -71,6 +81,14 @@ class Space:
     sizes: Sizes | None = None
     legs: int = 1
     fixed_in_parallel: bool = False
+
+    def taken(self, positions: Sequence[int]) -> Space:
+        """Return the space of the materials at these positions, in their order."""
+        return replace(
+            self,
+            materials=tuple(self.materials[i] for i in positions),
+            sizes=self.sizes.taken(positions) if self.sizes is not None else None,
+        )
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -101,16 +119,14 @@ class Proposal:
 class FloorEvidence:
     """Where and with what weights a bound on every network whatever is to be evaluated.
 
-    The fixed members, all in one ``place``, are one member of every network.
+    Of the ``space`` only the materials and the fixed members matter; these are one member of every
+    network.
     """
 
-    materials: tuple[str, ...]
+    space: Space
     nodes: tuple[tuple[int, float], ...]
     upper: tuple[float, ...]
     lower: tuple[float, ...]
-    place: Literal["series", "parallel"] = "series"
-    fixed: tuple[Leg, ...] = ()
-    fixed_share: tuple[float, float] = (0.0, 0.0)
 
 
 # --- records, named as in plan.json -----------------------------------------------------------

@@ -1,7 +1,8 @@
 """Bounded reading of a TOML file, and mistakes in its shape told in our words.
 
 Used for every file that a user writes. Nothing here imports pydantic: `shape_problems` takes what
-pydantic found as plain data, so that only the readers themselves load it.
+pydantic found as plain data, so that only the readers themselves load it. Long, since each mistake has
+words of its own.
 """
 
 from __future__ import annotations

@@ -20,8 +20,7 @@ import numpy as np
 from tcplan.arrays import FloatArray, IntArray
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
-from tcplan.mixes import fixed_group
-from tcplan.network import resistance, value
+from tcplan.mixes import fixed_ratio
 from tcplan.plan import Space
 
 GRID = 129  # points a piece on which violations are looked for before they are refined
@@ -70,7 +69,7 @@ class Programme:
         """Return R(T)/R(T_ref) of every column, shape (rows, materials + 1)."""
         reference = self.need.reference
         own = [self.materials[name].ratio(temperature, reference) for name in self.names]
-        return np.stack([*own, self._fixed_ratio(temperature)], axis=1)
+        return np.stack([*own, fixed_ratio(self.space, self.materials, reference, temperature)], axis=1)
 
     def rows(self, piece: IntArray, temperature: FloatArray) -> Rows:
         """Return the rows at these pieces and temperatures [K], both of shape (rows,)."""
@@ -81,18 +80,6 @@ class Programme:
         base = 1.0 / r if self.space.arrangement == "parallel" else np.ones_like(r)
         n = 1.0 - t * base if self.space.arrangement == "parallel" else r - t
         return Rows(piece, temperature, n, weight * base, free * base)
-
-    def _fixed_ratio(self, temperature: FloatArray) -> FloatArray:
-        """Return R(T)/R(T_ref) of the fixed members together; 1 when there are none."""
-        fixed = fixed_group(self.space)
-        if fixed is None:
-            return np.ones_like(temperature)
-        reference = self.need.reference
-        ratios = {
-            leg.material: self.materials[leg.material].ratio(temperature, reference)
-            for leg in self.space.fixed
-        }
-        return resistance(fixed, ratios) / value(fixed)
 
     def spread_rows(self, count: int, *, chebyshev: bool) -> Rows:
         """Return ``count`` rows over every piece, its ends included (one row for a point)."""

@@ -35,7 +35,7 @@ def floor_evidence(
     figure : float
         A figure that one of these networks reaches.
     """
-    names = tuple(sorted(space.materials))
+    names = space.materials
     programme = Programme(space, need, materials, names)
     rows = programme.spread_rows(NODES, chebyshev=True)
     r = programme.ratios(rows.temperature)
@@ -47,13 +47,10 @@ def floor_evidence(
     dual = solve_fractional(numerator, denominator).rows
     upper, lower = np.split(dual, 2)
     return FloorEvidence(
-        materials=names,
+        space=space,
         nodes=tuple((int(p), float(t)) for p, t in zip(rows.piece, rows.temperature, strict=True)),
         upper=tuple(upper.tolist()),
         lower=tuple(lower.tolist()),
-        place="parallel" if space.arrangement == "parallel" else "series",
-        fixed=space.fixed,
-        fixed_share=space.fixed_share,
     )
 
 

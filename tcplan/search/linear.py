@@ -17,7 +17,7 @@ from tcplan.search.columns import Programme
 from tcplan.search.solver import VANISHED, Mix, Solver
 from tcplan.search.supports import best_mixes
 
-NEEDLESS = 1e-8  # share of a leg beside fixed members that is left out
+NEEDLESS = 1e-8  # share of a leg that is left out where the total is free
 
 
 def network_of(programme: Programme, shares: FloatArray) -> Network:
@@ -36,7 +36,7 @@ def network_of(programme: Programme, shares: FloatArray) -> Network:
             ((share, name) for share, name in zip(shares[:-1], programme.names, strict=True)),
             key=lambda pair: (-pair[0], pair[1]),
         )
-        if share > (NEEDLESS if space.fixed else VANISHED)
+        if share > (NEEDLESS if space.ohms is None else VANISHED)
     ]
     members = (*space.fixed, *chosen)
     if len(members) == 1:
@@ -56,16 +56,7 @@ def certificate(solver: Solver) -> Certificate:
 
 def in_order(space: Space) -> Space:
     """Return the space with its materials sorted by name, so that their order does not matter."""
-    order = sorted(range(len(space.materials)), key=lambda i: space.materials[i])
-    sizes = space.sizes
-    if sizes is not None:
-        sizes = replace(
-            sizes,
-            least_ohms=tuple(sizes.least_ohms[i] for i in order),
-            most_ohms=tuple(sizes.most_ohms[i] for i in order),
-            area_per_ohm=tuple(sizes.area_per_ohm[i] for i in order),
-        )
-    return replace(space, materials=tuple(space.materials[i] for i in order), sizes=sizes)
+    return space.taken(sorted(range(len(space.materials)), key=lambda i: space.materials[i]))
 
 
 def search_space(

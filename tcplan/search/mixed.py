@@ -16,8 +16,7 @@ import numpy as np
 from tcplan.arrays import FloatArray, IntArray
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
-from tcplan.mixes import fixed_group
-from tcplan.network import resistance, value
+from tcplan.mixes import fixed_ratio
 from tcplan.plan import Space
 from tcplan.search.curves import Path, paths, ratio
 from tcplan.search.limits import LegLimits
@@ -74,12 +73,7 @@ class Source:
         for k in range(len(names)) if kinds is None else kinds:
             if k < len(names):
                 out[k] = self.materials[names[k]].ratio(T, reference)
-        group = fixed_group(self.space)
-        if group is not None:
-            fixed = {
-                leg.material: self.materials[leg.material].ratio(T, reference) for leg in self.space.fixed
-            }
-            out[-1] = resistance(group, fixed) / value(group)
+        out[-1] = fixed_ratio(self.space, self.materials, reference, T)
         return out
 
 

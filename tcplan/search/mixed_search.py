@@ -10,8 +10,8 @@ import numpy as np
 from tcplan.effort import Effort
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
-from tcplan.mixes import fixed_group
-from tcplan.network import Leg, Network, arrangement, legs, scaled, shares, simplified, value
+from tcplan.mixes import fixed_group, mixed_trees
+from tcplan.network import Leg, Network, Series, arrangement, legs, scaled, shares, simplified, value
 from tcplan.plan import Proposal, Space
 from tcplan.search.curves import network_at
 from tcplan.search.limits import LegLimits, limits_of
@@ -28,27 +28,10 @@ from tcplan.search.mixed import (
     spread_points,
 )
 from tcplan.search.polish import Polished, Polisher, polishing_grid
-from tcplan.trees import Pair, Tree, assigned_trees, is_mixed, leaves, paired, shape_of, with_fixed
+from tcplan.trees import Pair, Tree, leaves, paired, shape_of
 
 VANISHED = 1e-7  # share of a leg that is left out
 SAME = 1e-5  # relative difference of the figures of two forms of one resistor
-
-
-def mixed_trees(space: Space) -> tuple[Tree, ...]:
-    """Return the mixed trees of a space; the fixed members are the leaf after the last material."""
-    count = len(space.materials)
-    found: list[Tree] = []
-    for size in range(1, space.legs + 1):
-        for tree in assigned_trees(size, count, space.most):
-            whole = with_fixed(tree, fixed_kind(space), count) if space.fixed else tree
-            if is_mixed(whole):
-                found.append(whole)
-    return tuple(found)
-
-
-def fixed_kind(space: Space) -> str:
-    """Return where the fixed members of a mixed space are."""
-    return "parallel" if space.fixed_in_parallel else "series"
 
 
 @dataclass(frozen=True, slots=True)
@@ -90,15 +73,15 @@ def _network(space: Space, tree: Tree, polished: Polished) -> Network | None:
     if space.ohms is None:
         return None
     whole = network_at(paired(shape_of(tree)), names, polished.shares, space.ohms)
-    group = fixed_group(space)
-    network = _without_vanished(whole)
-    if network is None:
+    left = _without_vanished(whole)
+    if left is None:
         return None
-    if group is not None:
-        network = _put_fixed(network, group)
-    simple = simplified(network) if group is None else _opened(network)
-    if group is None:  # what has vanished was next to nothing, and the total is exact
+    group = fixed_group(space)
+    if group is None:
+        simple = simplified(left)
         simple = scaled(simple, space.ohms / value(simple))
+    else:
+        simple = _opened(_put_fixed(_rest_exact(left, group, space.ohms), group))
     return simple if arrangement(simple) == "mixed" else None
 
 
@@ -117,10 +100,31 @@ def _without_vanished(network: Network) -> Network | None:
     return node(network)
 
 
+def _rest_exact(network: Network, group: Network, ohms: float) -> Network:
+    """Return the network with its chosen legs scaled so that, beside the fixed ones, the total is exact.
+
+    What has vanished was next to nothing, but a total is a promise.
+    """
+    if isinstance(network, Leg):
+        return network
+    rest = [value(child) for child in network.children if not _is_fixed(child)]
+    if isinstance(network, Series):
+        factor = (ohms - value(group)) / sum(rest)
+    else:
+        factor = sum(1.0 / ohm for ohm in rest) / (1.0 / ohms - 1.0 / value(group))
+    return type(network)(
+        tuple(child if _is_fixed(child) else scaled(child, factor) for child in network.children)
+    )
+
+
+def _is_fixed(network: Network) -> bool:
+    return isinstance(network, Leg) and network.material == ""
+
+
 def _put_fixed(network: Network, group: Network) -> Network:
     """Return the network with the fixed members, at their own values, in place of the unnamed leg."""
     if isinstance(network, Leg):
-        return group if network.material == "" else network
+        return group if _is_fixed(network) else network
     return type(network)(tuple(_put_fixed(child, group) for child in network.children))
 
 

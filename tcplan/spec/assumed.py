@@ -45,6 +45,9 @@ def _spreads(plan: Plan) -> list[str]:
     if none:
         found.append(f"No spread is stated for {named(none)}.")
     found.extend(_counted_as_zero(plan))
+    reference = from_celsius(plan.range.reference_degC)
+    if any(m.spread is not None and m.spread.value and m.reference != reference for m in plan.materials):
+        found.append("Value spreads are carried to the reference of the brief, which widens them a little.")
     return found
 
 

@@ -45,16 +45,27 @@ def worst(figure_ppm: float, limit_ppm: float | None = None) -> str:
     return _ppm(round_outward(figure_ppm, MOST_DIGITS))
 
 
-def bound(figure_ppm: float) -> str:
-    """Return a lower bound [ppm], rounded down to 3 digits, so that the printed bound still holds."""
+def bound(figure_ppm: float, limit_ppm: float | None = None) -> str:
+    """Return a lower bound [ppm], rounded down to 3 digits, so that the printed bound still holds.
+
+    Where rounding would hide that the bound is above a limit, more digits are printed.
+    """
     if figure_ppm < SMALLEST_PPM:
         return "0"
+    for digits in range(WORST_DIGITS, MOST_DIGITS):
+        rounded = _down(figure_ppm, digits)
+        if limit_ppm is None or not rounded <= limit_ppm < figure_ppm:
+            return _ppm(rounded)
+    return _ppm(_down(figure_ppm, MOST_DIGITS))
+
+
+def _down(figure_ppm: float, digits: int) -> float:
     exact = Decimal(repr(float(figure_ppm)))
-    place = Decimal(1).scaleb(exact.adjusted() - WORST_DIGITS + 1)
+    place = Decimal(1).scaleb(exact.adjusted() - digits + 1)
     near = exact.quantize(place)
     if abs(near - exact) > exact * Decimal(repr(ROUNDING)):
         near = exact.quantize(place, rounding=ROUND_FLOOR)
-    return _ppm(float(near))
+    return float(near)
 
 
 def nominal(figure_ppm: float, spread_ppm: float | None, limit_ppm: float | None = None) -> str:

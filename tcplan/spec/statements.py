@@ -59,9 +59,8 @@ def outcome(plan: Plan) -> tuple[str, ...]:
     if limit is not None:
         found.append(_against_limit(plan, option, limit))
     if cannot_be_met(plan):
-        found.append(
-            f"No network of these materials can meet it: the floor is {numbers.bound(floor_ppm(plan))} ppm."
-        )
+        bottom = numbers.bound(floor_ppm(plan), limit)
+        found.append(f"No network of these materials can meet it: the floor is {bottom} ppm.")
     if option.verdict == "MET" and plan.limit.judge == "nominal":
         found.extend(_nominal_only(plan, option, limit))
     found.extend(_value_deviation(plan, option))
@@ -136,7 +135,9 @@ def reason(plan: Plan) -> str:
     if option.role == "given":
         return "the network that was given"
     if option.role:
-        return f"the {option.role} that meets the limit"
+        # Judged on the worst case it is found by halving a nominal limit: not proved to be the least.
+        found = " of those found" if plan.limit.judge == "worst-case" else ""
+        return f"the {option.role}{found} that meets the limit"
     if plan.limit.drift_ppm is None:
         return f"the least {'worst case' if plan.limit.judge == 'worst-case' else 'nominal figure'}"
     if option.verdict == "MET":

@@ -20,8 +20,7 @@ from tcplan.arrays import FloatArray, IntArray
 from tcplan.errors import InternalError
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
-from tcplan.mixes import all_supports, fixed_ends, share_vertices
-from tcplan.network import Leg, Parallel, Series, resistance, value
+from tcplan.mixes import all_supports, fixed_ends, fixed_ratio, share_vertices
 from tcplan.plan import Certificate, FloorEvidence, Space
 
 MARGIN = 1e-13  # floating point without directed rounding
@@ -39,18 +38,6 @@ class Line:
     d: FloatArray
 
 
-def ratio_of_fixed(
-    fixed: tuple[Leg, ...], parallel: bool, materials: Mapping[str, Material], reference: float, T: FloatArray
-) -> FloatArray:
-    """Return R(T)/R(T_ref) of the fixed members together; 1 when there are none."""
-    if not fixed:
-        return np.ones_like(T)
-    kind = Parallel if parallel else Series
-    group = fixed[0] if len(fixed) == 1 else kind(fixed)
-    ratios = {leg.material: materials[leg.material].ratio(T, reference) for leg in fixed}
-    return resistance(group, ratios) / value(group)
-
-
 def _lines(
     space: Space, evidence: Certificate, need: Requirement, materials: Mapping[str, Material]
 ) -> list[Line]:
@@ -60,7 +47,7 @@ def _lines(
     free = np.array([1.0 if need.pieces[p].centred else 0.0 for p, _ in evidence.nodes])
     parallel = space.arrangement == "parallel"
     columns = [materials[name].ratio(T, need.reference) for name in space.materials]
-    columns.append(ratio_of_fixed(space.fixed, parallel, materials, need.reference, T))
+    columns.append(fixed_ratio(space, materials, need.reference, T))
     t = need.wanted(T)
     y = np.array(evidence.weights)
     n = np.empty((len(y), len(columns)))
@@ -181,9 +168,9 @@ def sandwich_bound(
     free = np.array([1.0 if need.pieces[p].centred else 0.0 for p, _ in evidence.nodes])
     up, low = np.array(evidence.upper), np.array(evidence.lower)
     limit = next((p.weight * figure for p in need.pieces if p.centred), 0.0)
-    columns = [materials[name].ratio(T, need.reference) for name in evidence.materials]
-    parallel = evidence.place == "parallel"
-    last = ratio_of_fixed(evidence.fixed, parallel, materials, need.reference, T)
+    space = evidence.space
+    columns = [materials[name].ratio(T, need.reference) for name in space.materials]
+    last = fixed_ratio(space, materials, need.reference, T)
 
     def terms(r: FloatArray, c: float) -> tuple[float, float]:
         t = need.wanted(T) + c * free
@@ -194,6 +181,6 @@ def sandwich_bound(
         fixed_n, fixed_d = terms(last, c)
         for r in columns:
             n, d = terms(r, c)
-            for u in set(evidence.fixed_share):
+            for u in set(space.fixed_share):
                 lowest = min(lowest, ((1 - u) * n + u * fixed_n) / ((1 - u) * d + u * fixed_d))
     return float(max(0.0, lowest - MARGIN))

@@ -155,7 +155,7 @@ def floor(
     figure : float
         A figure that one of these networks reaches.
     """
-    names = dict.fromkeys((*evidence.materials, *(leg.material for leg in evidence.fixed)))
+    names = dict.fromkeys((*evidence.space.materials, *(leg.material for leg in evidence.space.fixed)))
     group = [materials[name] for name in names]
     sandwich = sandwich_bound(evidence, need, materials, figure)
     slopes, (low, high) = slope_bound(need, group, figure)

@@ -14,8 +14,7 @@ import numpy as np
 from tcplan.arrays import FloatArray
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
-from tcplan.mixes import fixed_group
-from tcplan.network import resistance, value
+from tcplan.mixes import fixed_ratio
 from tcplan.plan import Space
 from tcplan.trees import Pair
 from tcplan.verify.hull import Cells, hull_of, top_members
@@ -90,11 +89,7 @@ def question(
 
 def _ratios(space: Space, need: Requirement, materials: Mapping[str, Material], T: FloatArray) -> FloatArray:
     own = [materials[name].ratio(T, need.reference) for name in space.materials]
-    group = fixed_group(space)
-    if group is None:
-        return np.stack([*own, np.ones_like(T)])
-    fixed = {leg.material: materials[leg.material].ratio(T, need.reference) for leg in space.fixed}
-    return np.stack([*own, resistance(group, fixed) / value(group)])
+    return np.stack([*own, fixed_ratio(space, materials, need.reference, T)])
 
 
 def _sizes(space: Space) -> tuple[FloatArray, FloatArray, FloatArray, float]:

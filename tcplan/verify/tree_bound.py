@@ -23,9 +23,10 @@ from tcplan.drift import breakpoints, panels, ratio_curve, stationary_points
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
 from tcplan.minimax import solve_game
+from tcplan.mixes import mixed_trees
 from tcplan.network import Network, used_materials
 from tcplan.plan import Space
-from tcplan.trees import Pair, Tree, assigned_trees, is_mixed, leaves, paired, shape_of, with_fixed
+from tcplan.trees import Pair, Tree, leaves, paired, shape_of
 from tcplan.verify.hull import Cells, shares_in, top_members
 from tcplan.verify.question import Question, columns_of, question
 
@@ -266,18 +267,6 @@ def none_within(
 # --- the bound of a space -------------------------------------------------------------------------
 
 
-def space_trees(space: Space) -> tuple[Tree, ...]:
-    """Return the mixed trees of a space; the fixed members are the leaf after the last material."""
-    count = len(space.materials)
-    kind = "parallel" if space.fixed_in_parallel else "series"
-    whole = (
-        with_fixed(tree, kind, count) if space.fixed else tree
-        for size in range(1, space.legs + 1)
-        for tree in assigned_trees(size, count, space.most)
-    )
-    return tuple(tree for tree in whole if is_mixed(tree))
-
-
 @dataclass(slots=True)
 class MixedBound:
     """Lower bounds on the figure of the mixed networks of one space; vectors are kept between them."""
@@ -295,7 +284,7 @@ class MixedBound:
         limits; 0 when none of them closes. The work is bounded by a count of cells, so that the answer
         does not depend on the machine.
         """
-        trees = space_trees(self.space)
+        trees = mixed_trees(self.space)
         most = BASE_CELLS + CELLS_A_TREE * len(trees)
         for part in WEAKER:
             limit = figure * (1.0 - gap) * part

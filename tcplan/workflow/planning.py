@@ -19,7 +19,7 @@ from tcplan.units import format_ppm, round_outward
 from tcplan.verify.floor import floor
 from tcplan.verify.option import Case, check, nominal_figure
 from tcplan.verify.tree_bound import mixed_bound
-from tcplan.workflow.proposals import fixed_share, floor_evidence, proposals, spreads_of
+from tcplan.workflow.proposals import fixed_share, floor_evidence, left_out, proposals, spreads_of
 
 STOPPED = "Stopped early: the best of what was searched until then."
 MOST_LEGS_FOR_MORE = 4  # mixed networks of more legs than that are long work
@@ -123,7 +123,7 @@ def make_plan(brief: Brief, *, gap: float = 0.01, effort: Effort | None = None) 
         )
     best = min(nominal_figure(proposal.network, case) for proposal in found)
     evidence = floor_evidence(brief, need, best)
-    names = {*evidence.materials, *(leg.material for leg in evidence.fixed)}
+    names = {*evidence.space.materials, *(leg.material for leg in evidence.space.fixed)}
     stated = case.spreads if names <= case.spreads.keys() else None
     bottom = floor(evidence, need, case.materials, stated, best)
     case = replace(
@@ -151,7 +151,12 @@ def make_plan(brief: Brief, *, gap: float = 0.01, effort: Effort | None = None) 
         floor=bottom,
         chosen=_chosen(options, brief.goal.judge).id,
         options=options,
-        notes=(*([STOPPED] if effort.stopped else []), *more, *_largest_total(brief, options)),
+        notes=(
+            *([STOPPED] if effort.stopped else []),
+            *left_out(brief, found),
+            *more,
+            *_largest_total(brief, options),
+        ),
     )
     if effort.stopped:
         raise Stopped("the best so far is shown", best=plan)

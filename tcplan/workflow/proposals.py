@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Sequence
 from dataclasses import replace
+from math import comb
 
 from tcplan.brief import Brief, SearchRules
 from tcplan.effort import Effort
@@ -15,6 +16,7 @@ from tcplan.plan import FloorEvidence, Proposal, Sizes, Space
 from tcplan.search.floor import floor_evidence as sandwich_evidence
 from tcplan.search.linear import least_total, search_space
 from tcplan.search.mixed_search import mixed_proposals
+from tcplan.search.supports import MOST_SUPPORTS
 from tcplan.trees import tree_count
 from tcplan.verify.option import Case, spread_figures
 
@@ -56,7 +58,7 @@ def searchable(space: Space, found: Sequence[Proposal]) -> Space:
     """Return a mixed space that is not too large to be searched.
 
     Legs are given up first, down to three; then materials, those of the best one-node mixes kept
-    first. Of what is left out nothing is proved, and the options say so.
+    first. Of what is left out nothing is proved; the notes of the plan say so.
     """
     legs_, names = space.legs, space.materials
     while legs_ > 3 and tree_count(legs_, len(names), space.most) > MOST_TREES:
@@ -68,16 +70,26 @@ def searchable(space: Space, found: Sequence[Proposal]) -> Space:
         keep = min(keep, 40)
     while keep > 2 and tree_count(legs_, keep, space.most) > MOST_TREES:
         keep -= 1
-    chosen = [i for i, name in enumerate(names) if name in order[:keep]]
-    sizes = space.sizes
-    if sizes is not None:
-        sizes = replace(
-            sizes,
-            least_ohms=tuple(sizes.least_ohms[i] for i in chosen),
-            most_ohms=tuple(sizes.most_ohms[i] for i in chosen),
-            area_per_ohm=tuple(sizes.area_per_ohm[i] for i in chosen),
-        )
-    return replace(space, legs=legs_, materials=tuple(names[i] for i in chosen), sizes=sizes)
+    kept = set(order[:keep])
+    return replace(space.taken([i for i, name in enumerate(names) if name in kept]), legs=legs_)
+
+
+def left_out(brief: Brief, found: Sequence[Proposal]) -> tuple[str, ...]:
+    """Return what was not searched because there is too much of it, a sentence each."""
+    notes = []
+    for space in spaces(brief) if brief.given is None else ():
+        count, most = len(space.materials), min(space.most, len(space.materials))
+        if space.arrangement == "mixed":
+            part = searchable(space, found)
+            if part != space:
+                size = f"{part.legs} legs, {len(part.materials)} of {count} materials"
+                notes.append(f"Too many mixed networks to search them all: at most {size} were.")
+        elif comb(count, most) > MOST_SUPPORTS:
+            notes.append(
+                f"Too many {space.arrangement} mixes of {most} of {count} materials to search them all: "
+                "they were grown from pairs."
+            )
+    return tuple(notes)
 
 
 def total_of(brief: Brief) -> float | None:

@@ -299,3 +299,10 @@ def test_the_easy_limit_is_met_by_the_simplest() -> None:
     plan = plan_of(EASY + FILMS)
     assert plan.best.verdict == "MET"
     assert spec_of(plan).reason == "the simplest that meets the limit"
+
+
+def test_a_floor_above_the_limit_is_printed_above_it() -> None:
+    """6000.1 rounded down to 3 digits would read as the limit itself."""
+    assert float(numbers.bound(6000.1, 6000.0)) > 6000.0
+    assert numbers.bound(6000.1) == "6000"
+    assert numbers.bound(6543.2, 6000.0) == "6540"

@@ -8,11 +8,12 @@ from makers import grid, leg, need_of, over, random_films, six_films
 from scipy.optimize import minimize
 
 from tcplan.goal import Limit, Window
+from tcplan.mixes import mixed_trees
 from tcplan.plan import Sizes, Space
 from tcplan.search.mixed_search import mixed_proposals
 from tcplan.trees import assigned_trees, is_mixed, leaves
 from tcplan.verify.option import Case, nominal_figure
-from tcplan.verify.tree_bound import MixedBound, mixed_bound, none_within, question, space_trees
+from tcplan.verify.tree_bound import MixedBound, mixed_bound, none_within, question
 
 INF = float("inf")
 T = grid(count=96)  # 2 K apart, the reference and the edges of the mask among them
@@ -149,7 +150,7 @@ def test_six_films_are_proved_below_the_optimum_and_not_above(size, ppm, gap):
     """Independent prototype, grid and proof: 635.28 of 3 legs, 632.18 of 4, on its own nodes."""
     films, need = six_films(), need_of()
     of = space(films, legs=size)
-    trees = space_trees(of)
+    trees = mixed_trees(of)
     for limit, proved in ((ppm * (1 - gap), True), (ppm * 1.0005, False)):
         ask = question(of, need, films, limit * 1e-6)
         assert none_within(trees, ask, {}, most_cells=40_000).proved == proved
@@ -175,7 +176,7 @@ def test_a_question_that_can_not_be_closed_says_so():
     films, need = six_films(), need_of()
     of = space(films)
     ask = question(of, need, films, 634e-6)
-    answer = none_within(space_trees(of), ask, {}, most_cells=10)
+    answer = none_within(mixed_trees(of), ask, {}, most_cells=10)
     assert not answer.proved
     assert answer.cells > 10
 
@@ -183,10 +184,10 @@ def test_a_question_that_can_not_be_closed_says_so():
 def test_trees_of_a_space_with_fixed_members():
     """One leg beside a coil in series can not be mixed; of two legs, only a bundle beside it is."""
     coil = {"fixed": (leg("cu", 200.0),), "fixed_share": (0.2, 0.2)}
-    assert space_trees(space("ab", legs=1, **coil)) == ()
-    assert space_trees(space("ab", legs=2, **coil)) == (("series", (2, ("parallel", (0, 1)))),)
+    assert mixed_trees(space("ab", legs=1, **coil)) == ()
+    assert mixed_trees(space("ab", legs=2, **coil)) == (("series", (2, ("parallel", (0, 1)))),)
     beside = space("ab", legs=2, fixed_in_parallel=True, **coil)
-    assert space_trees(beside) == (("parallel", (2, ("series", (0, 1)))),)
+    assert mixed_trees(beside) == (("parallel", (2, ("series", (0, 1)))),)
 
 
 # --- every kind of goal and limit -------------------------------------------------------------
@@ -229,7 +230,7 @@ def test_no_network_is_below_a_proved_bound(kind, name, seed):
     names = tuple(sorted(films))
     films["cu"] = random_films(2, 1)["m00"]
     of = space(names, legs=2 if "coil" in name else 3, **SPACES[name])
-    trees = space_trees(of)
+    trees = mixed_trees(of)
     best = best_by_hand(trees, of, kind, laws_of(films, names))
     need = need_of(GOALS[kind])
     bounds = [MixedBound(of, need, films).below(best * part, 0.01) for part in (1.05, 1.0015)]
@@ -254,7 +255,7 @@ def test_random_networks_of_four_legs_are_not_below_the_bound():
     bound = MixedBound(of, need, films).below(632.27e-6, 0.01)
     assert bound == pytest.approx(0.99 * 632.27e-6, rel=1e-9)
     laws, rng = laws_of(films, of.materials), np.random.default_rng(1)
-    trees = space_trees(of)
+    trees = mixed_trees(of)
     for tree in trees[:: max(1, len(trees) // 100)]:
         numbers = rng.normal(0.0, 1.5, (len(leaves(tree)) - 1, 2000))
         assert costs(tree, numbers, of, "drift", laws).min() >= bound

@@ -1,8 +1,9 @@
 """Ranking: what is shown, what is chosen, and what must never be dropped."""
 
+import pytest
 from makers import BRIEF, brief
 
-from tcplan.network import legs
+from tcplan.network import legs, value
 from tcplan.workflow.planning import make_plan
 
 PAIR = """
@@ -41,3 +42,43 @@ def test_options_are_ranked_by_the_judged_figure():
     plan = make_plan(brief(BRIEF + PAIR))
     figures = [option.proof.figure_ppm for option in plan.options]
     assert figures == sorted(figures)
+
+
+def films(count):
+    return "".join(
+        f"""
+[material.m{k}]
+source = "invented"
+reference = "25 degC"
+valid = ["-60 degC", "160 degC"]
+tc1 = "{-900 + 40 * k} ppm/K"
+tc2 = "{0.2 + 0.01 * k:.2f} ppm/K^2"
+"""
+        for k in range(count)
+    )
+
+
+def test_what_is_too_much_to_search_is_said():
+    text = BRIEF + "[search]\nmax_legs = 6\nmax_materials = 3\n" + films(7)
+    note = next(note for note in make_plan(brief(text)).notes if note.startswith("Too many mixed"))
+    assert "at most 4 legs" in note or "at most 5 legs" in note
+
+
+def test_a_small_search_leaves_nothing_out():
+    assert not any("Too many" in note for note in make_plan(brief(BRIEF + PAIR)).notes)
+
+
+def test_the_total_beside_a_fixed_member_is_exact():
+    text = (
+        BRIEF
+        + '[search]\narrangements = ["mixed"]\n'
+        + films(4)
+        + '[[fixed]]\nmaterial = "m0"\nvalue = "2 kohm"\n'
+    )
+    for place in ("series", "parallel"):
+        total = "18 kohm" if place == "series" else "500 ohm"
+        made = make_plan(brief(text.replace("18 kohm", total) + f'place = "{place}"\n'))
+        assert {option.arrangement for option in made.options} == {"mixed"}
+        for option in made.options:
+            assert value(option.network) == pytest.approx(made.target.ohms, rel=1e-12)
+            assert any(leg.ohms == pytest.approx(2000.0, rel=1e-12) for leg in legs(option.network))
