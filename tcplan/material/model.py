@@ -1,6 +1,7 @@
 """A material: a resistive film, wire or part family with a law R(T), spreads, limits and a source.
 
-Long for a module of this package: what a material is, what it must satisfy and its plain form belong together.
+Long for a module of this package: what a material is, what it must satisfy and its plain form belong
+together.
 """
 
 from __future__ import annotations

@@ -7,6 +7,7 @@ from dataclasses import replace
 from math import comb
 
 from tcplan.brief import Brief, SearchRules
+from tcplan.brief.model import Searched
 from tcplan.effort import Effort
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
@@ -172,6 +173,14 @@ def proposals(
                 found.append(extreme)
             elif not bounded:  # no total meets the limit: show how near the best one comes
                 found.extend(search_space(space, need, case.materials, 1))
+    if not found and brief.rules.arrangements == ("mixed",):
+        # Every mixed network was best without its inner nodes: the simpler ones are the answer.
+        simple: tuple[Searched, ...] = ("single", "series", "parallel")
+        if brief.fixed:
+            simple = (brief.fixed[0].place,)
+        return proposals(
+            replace(brief, rules=replace(brief.rules, arrangements=simple)), need, case, few, effort
+        )
     return found
 
 

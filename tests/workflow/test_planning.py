@@ -51,7 +51,7 @@ def films(count):
 source = "invented"
 reference = "25 degC"
 valid = ["-60 degC", "160 degC"]
-tc1 = "{-900 + 40 * k} ppm/K"
+tc1 = "{-900 + 400 * k} ppm/K"
 tc2 = "{0.2 + 0.01 * k:.2f} ppm/K^2"
 """
         for k in range(count)
@@ -64,21 +64,27 @@ def test_what_is_too_much_to_search_is_said():
     assert "at most 4 legs" in note or "at most 5 legs" in note
 
 
+def test_a_mixed_network_that_is_best_without_its_nodes_falls_back():
+    """All slopes fall: the flattest film alone is the limit of every mixed network of them."""
+    falling = films(3).replace('tc1 = "300', 'tc1 = "-1300').replace('tc1 = "-100', 'tc1 = "-700')
+    assert 'tc1 = "-100' not in falling
+    plan = make_plan(brief(BRIEF + '[search]\narrangements = ["mixed"]\n' + falling))
+    single = make_plan(brief(BRIEF + '[search]\narrangements = ["single"]\n' + falling))
+    assert plan.best.proof.figure_ppm <= single.best.proof.figure_ppm * (1 + 1e-6)
+
+
 def test_a_small_search_leaves_nothing_out():
     assert not any("Too many" in note for note in make_plan(brief(BRIEF + PAIR)).notes)
 
 
 def test_the_total_beside_a_fixed_member_is_exact():
-    text = (
-        BRIEF
-        + '[search]\narrangements = ["mixed"]\n'
-        + films(4)
-        + '[[fixed]]\nmaterial = "m0"\nvalue = "2 kohm"\n'
-    )
-    for place in ("series", "parallel"):
-        total = "18 kohm" if place == "series" else "500 ohm"
+    text = BRIEF + films(5) + '[[fixed]]\nmaterial = "m0"\nvalue = "2 kohm"\n'
+    for place, total, kinds in (
+        ("series", "18 kohm", {"series", "mixed"}),
+        ("parallel", "500 ohm", {"parallel", "mixed"}),
+    ):
         made = make_plan(brief(text.replace("18 kohm", total) + f'place = "{place}"\n'))
-        assert {option.arrangement for option in made.options} == {"mixed"}
+        assert {option.arrangement for option in made.options} == kinds
         for option in made.options:
             assert value(option.network) == pytest.approx(made.target.ohms, rel=1e-12)
             assert any(leg.ohms == pytest.approx(2000.0, rel=1e-12) for leg in legs(option.network))
