@@ -15,7 +15,6 @@ from typing import TypeAlias
 
 Tree: TypeAlias = int | tuple[str, tuple["Tree", ...]]
 SERIES, PARALLEL = "series", "parallel"
-MOST_COUNTED = 300_000
 
 
 def opposite(kind: str) -> str:
@@ -130,10 +129,35 @@ def with_fixed(tree: Tree, kind: str, fixed: int) -> Tree:
 
 
 def tree_count(size: int, materials: int, most: int) -> int:
-    """Return the number of trees of ``size`` legs; an upper estimate where it is large."""
-    subsets = sum(comb(materials, k) * k**size for k in range(1, min(most, size, materials) + 1))
-    estimate: int = len(shapes(size)) * subsets
-    return estimate if estimate > MOST_COUNTED else len(assigned_trees(size, materials, most))
+    """Return the number of trees of ``size`` legs of at most ``most`` materials, without listing them."""
+    # With j materials each in use: all trees of j materials, less those of fewer (inclusion, exclusion).
+    total = 0
+    for j in range(1, min(most, size, materials) + 1):
+        in_use = sum((-1) ** (j - i) * comb(j, i) * _trees_of(size, i) for i in range(1, j + 1))
+        total += comb(materials, j) * in_use
+    return total
+
+
+def _trees_of(size: int, materials: int) -> int:
+    """Return the number of trees of ``size`` legs of any of the materials.
+
+    A series node is a set of materials and a multiset of parallel nodes: its generating function is
+    (1 + x)^m times the product of (1 - x^n)^-P(n), with P(n) the parallel nodes of n legs, of which there
+    are as many as series nodes.
+    """
+    if size == 1:
+        return materials
+    series = [comb(materials, n) for n in range(size + 1)]
+    for legs in range(2, size):
+        nodes = series[legs]  # no later factor changes it
+        times = [_multisets_of(nodes, n // legs) if n % legs == 0 else 0 for n in range(size + 1)]
+        series = [sum(series[n - k] * times[k] for k in range(n + 1)) for n in range(size + 1)]
+    return 2 * series[size]
+
+
+def _multisets_of(kinds: int, count: int) -> int:
+    """Return in how many ways ``count`` things are chosen of some kinds, each as often as wanted."""
+    return 1 if count == 0 else comb(kinds + count - 1, count) if kinds else 0
 
 
 def is_mixed(tree: Tree) -> bool:

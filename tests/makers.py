@@ -66,6 +66,18 @@ def six_films() -> dict[str, Material]:
     return by_name(*(film(n, a, b, value_percent=s, tc1_spread_ppm=u) for n, a, b, s, u in SIX_FILMS))
 
 
+def curved_films(seed: int, count: int) -> dict[str, Material]:
+    """Return films that all curve upwards, as those of one process mostly do."""
+    rng = np.random.default_rng(seed)
+    tc1, tc2 = rng.uniform(-1500, 3000, count), rng.uniform(0.3, 8.0, count)
+    return by_name(
+        *(
+            film(f"m{k:02d}", float(tc1[k]), float(tc2[k]), value_percent=10.0, tc1_spread_ppm=30.0)
+            for k in range(count)
+        )
+    )
+
+
 def random_films(seed: int, count: int) -> dict[str, Material]:
     """Return films with slopes of both signs and mostly positive curvature."""
     rng = np.random.default_rng(seed)

@@ -5,7 +5,7 @@ from itertools import product
 import numpy as np
 import pytest
 
-from tcplan.trees import assigned_trees, is_mixed, leaves, shape_of, shapes
+from tcplan.trees import assigned_trees, is_mixed, leaves, shape_of, shapes, tree_count
 
 
 # Number of series-parallel networks with n unlabelled edges: sequence A000084 of the OEIS (from memory).
@@ -72,3 +72,17 @@ def test_two_materials_merge_inside_a_node_only():
     assert len(trees) == 4
     for tree, _ in product(trees, range(2)):
         assert value_of(tree, rng.uniform(1, 9, 3)) > 0
+
+
+@pytest.mark.parametrize("size", [1, 2, 3, 4, 5])
+def test_the_count_is_that_of_the_list(size):
+    for materials in range(1, 6):
+        for most in range(1, 5):
+            listed = len(assigned_trees(size, materials, most))
+            assert tree_count(size, materials, most) == listed, (materials, most)
+
+
+def test_many_are_counted_without_a_list():
+    """Twelve films: 132, 2024 and 12672 trees of 2, 3 and 4 legs (an independent prototype)."""
+    assert [tree_count(size, 12, 3) for size in (2, 3, 4)] == [132, 2024, 12672]
+    assert tree_count(6, 300, 300) > 10**15

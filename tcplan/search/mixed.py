@@ -27,7 +27,7 @@ POINTS = {0: 1, 1: 16, 2: 12, 3: 6, 4: 4}  # grid points a share, by the number 
 GOLDEN = 0.5 * (5**0.5 - 1.0)
 SECTIONS = 11
 KEPT = 8  # grid minima that are polished, a shape
-CHUNK = 400_000  # numbers in one array of a chunk, about
+CHUNK = 60_000  # numbers in one array of a chunk, about
 STEEP = 10.0  # of a violated limit (in ln) against the figure
 
 
@@ -42,17 +42,24 @@ class Field:
     wanted: FloatArray
     ratios: FloatArray
 
+    @property
+    def banded(self) -> bool:
+        """Whether part of the goal is a band, which has a free centre."""
+        return bool(self.free.any())
+
     def figures(self, curve: FloatArray) -> FloatArray:
         """Return the figure of ratios R(T)/R(T_ref), temperature last."""
         drift = curve - self.wanted
+        if not self.banded:
+            np.abs(drift, out=drift)
+            drift /= self.weight
+            return np.asarray(np.max(drift, axis=-1))
         plain = self.free == 0
         out = np.zeros(curve.shape[:-1])
         if plain.any():
             out = np.max(np.abs(drift[..., plain]) / self.weight[plain], axis=-1)
-        if not plain.all():
-            band = np.ptp(drift[..., ~plain], axis=-1) / (2.0 * self.weight[~plain][0])
-            out = np.maximum(out, band)
-        return out
+        band = np.ptp(drift[..., ~plain], axis=-1) / (2.0 * self.weight[~plain][0])
+        return np.asarray(np.maximum(out, band))
 
 
 @dataclass(frozen=True, slots=True)

@@ -27,7 +27,7 @@ from tcplan.search.mixed import (
     grid_starts,
     spread_points,
 )
-from tcplan.search.polish import Polished, Polisher, polishing_grid
+from tcplan.search.polish import Polished, Polisher, polish, polishing_grid
 from tcplan.trees import Pair, Tree, leaves, paired, shape_of
 
 VANISHED = 1e-7  # share of a leg that is left out
@@ -52,19 +52,18 @@ class Task:
         """Return the best starts of the shape, and what polishing made of them."""
         field: Field = field_at(self.source, *spread_points(self.source.need, NODES, chebyshev=True))
         grid = polishing_grid(self.source)
-        found: list[tuple[Start, Polished]] = []
-        promising = np.inf
         # A limit of area is curved, and may part what is allowed: more minima are worth a polish.
         kept = 3 * KEPT if self.limits.max_area < np.inf else KEPT
-        for start in grid_starts(self.trees, field, self.limits, kept, self.outermost):
-            pair = paired(shape_of(start.tree))
-            if not isinstance(pair, Pair):
-                continue
-            polisher = Polisher(pair, leaves(start.tree), self.source, self.limits, grid, self.outermost)
-            polished = polisher.run(np.array(start.shares), promising)
-            promising = min(promising, polished.figure)
-            found.append((start, polished))
-        return tuple(found)
+        starts = grid_starts(self.trees, field, self.limits, kept, self.outermost)
+        pair = paired(shape_of(self.trees[0]))
+        if not isinstance(pair, Pair):
+            return ()
+        polishers = [
+            Polisher(pair, leaves(start.tree), self.source, self.limits, grid, self.outermost)
+            for start in starts
+        ]
+        polished = polish(polishers, [np.array(start.shares) for start in starts])
+        return tuple((starts[k], end) for k, end in polished)
 
 
 def _network(space: Space, tree: Tree, polished: Polished) -> Network | None:

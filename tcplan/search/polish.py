@@ -8,25 +8,27 @@ more place than there are free shares, or limits hold the rest.
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from collections.abc import Sequence
+from dataclasses import dataclass, field
 from typing import Any
 
 import numpy as np
 
 from tcplan.arrays import FloatArray
 from tcplan.minimax import solve_game
-from tcplan.search.curves import paths, ratio, ratio_and_slopes
+from tcplan.search.curves import Path, paths, ratio, ratio_and_slopes
 from tcplan.search.limits import LegLimits
 from tcplan.search.mixed import Field, Source, field_at, spread_points
 from tcplan.trees import Pair
 
-GRID = 97
+GRID = 65
 ROUNDS = 80
+PROBED = 5  # steps after which only the better half of the starts goes on
+FINISHED = 3  # starts that are polished to the end
 EDGE = 1e-9  # shares stay this far inside (0, 1)
 SMALLEST_STEP = 1e-10
 HARD = 1e3  # what a violated limit (in ln) counts as a figure
 SAFE = 1e-7  # limits (in ln) are kept with this to spare
-PATIENCE, HOPELESS = 10, 1.5
 SLOW = 1e-7  # relative gain of a step; three such steps in a row end the polish
 
 
@@ -41,6 +43,19 @@ class Polished:
 
 
 @dataclass(slots=True)
+class Walk:
+    """Where the polish of one start stands."""
+
+    x: FloatArray
+    figure: float
+    peaks: Field
+    excess: float
+    radius: float = 0.1
+    slow: int = 0
+    done: bool = False
+
+
+@dataclass(slots=True)
 class Polisher:
     """One tree against a goal."""
 
@@ -50,42 +65,46 @@ class Polisher:
     limits: LegLimits
     grid: Field
     outermost: float | None = None
+    routes: tuple[Path, ...] = field(init=False)
+
+    def __post_init__(self) -> None:
+        self.routes = paths(self.pair)
 
     def _legs(self, field: Field) -> list[FloatArray]:
         return [field.ratios[m] for m in self.leg_materials]
 
     def curve(self, field: Field, x: FloatArray) -> FloatArray:
         """Return R(T)/R(T_ref) at the temperatures of a field."""
-        return ratio(self.pair, self._legs(field), list(x))
+        return ratio(self.pair, self._legs(field), x.tolist())
 
-    def peaks(self, x: FloatArray) -> Field:
-        """Return the field at the extremes of the drift, placed by parabolas through the grid.
+    def peaks(self, drift: FloatArray) -> Field:
+        """Return the field at the extremes of the drift on the grid, placed by parabolas through it.
 
         Where the peak lies is known to the square of the grid's step, and how high it is to the
         fourth power, since the drift is flat there.
         """
-        drift = self.curve(self.grid, x) - self.grid.wanted
         piece, T = self.grid.piece, self.grid.T
-        edge = np.concatenate([[True], piece[1:] != piece[:-1], [True]])
-        left, right = np.roll(drift, 1), np.roll(drift, -1)
-        left, right = np.where(edge[:-1], drift, left), np.where(edge[1:], drift, right)
-        extreme = ((left <= drift) & (right <= drift)) | ((left >= drift) & (right >= drift))
-        inner = extreme & ~edge[:-1] & ~edge[1:]
-        bend = left - 2.0 * drift + right
-        move = np.where(inner & (bend != 0), 0.5 * (left - right) / np.where(bend == 0, 1.0, bend), 0.0)
-        step = np.where(inner, np.roll(T, -1) - T, 0.0)
-        at = (T + step * np.clip(move, -1.0, 1.0))[extreme]
-        return field_at(self.source, piece[extreme], at, sorted(set(self.leg_materials)))
+        rise = np.diff(drift)
+        rise[piece[1:] != piece[:-1]] = 0.0  # the next piece starts anew: both its sides are ends
+        before, after = np.concatenate([[0.0], rise]), np.concatenate([rise, [0.0]])
+        at = np.nonzero(before * after <= 0)[0]
+        # The parabola through three points of equal steps has its top this part of a step away.
+        before, after = before[at], after[at]
+        bend = after - before
+        inner = (before != 0) & (after != 0)
+        move = np.where(inner, -0.5 * (before + after) / np.where(inner, bend, 1.0), 0.0)
+        places = T[at] + move * (T[np.minimum(at + 1, len(T) - 1)] - T[at])
+        return field_at(self.source, piece[at], places, sorted(set(self.leg_materials)))
 
     def limit_rows(self, x: FloatArray) -> tuple[FloatArray, FloatArray]:
         """Return by how much (in ln) each limit is broken, and the derivatives by the shares."""
-        return self.limits.rows(paths(self.pair), self.leg_materials, x)
+        return self.limits.rows(self.routes, self.leg_materials, x)
 
     def merit(self, x: FloatArray) -> tuple[float, Field, float]:
         """Return the figure with broken limits added, the extremes that set it, and the excess."""
-        peaks = self.peaks(x)
-        figure = float(self.grid.figures(self.curve(self.grid, x)))
-        figure = max(figure, float(peaks.figures(self.curve(peaks, x))))
+        curve = self.curve(self.grid, x)
+        peaks = self.peaks(curve - self.grid.wanted)
+        figure = max(float(self.grid.figures(curve)), float(peaks.figures(self.curve(peaks, x))))
         rows, _ = self.limit_rows(x)
         worst = float(rows.max()) + SAFE if len(rows) else -np.inf
         return figure + HARD * max(0.0, worst), peaks, worst
@@ -124,33 +143,38 @@ class Polisher:
         mix = solve_game(columns).mix
         return np.array([mix[1 + 2 * k] * up[k] - mix[2 + 2 * k] * down[k] for k in range(len(x))])
 
-    def run(self, start: FloatArray, promising: float = np.inf) -> Polished:
-        """Return the polished shares; after some rounds a figure far above ``promising`` is left."""
+    def begin(self, start: FloatArray) -> Walk:
+        """Return the walk that begins at these shares."""
         x = np.clip(start, EDGE, 1.0 - EDGE)
         if self.outermost is not None:
             x[0] = self.outermost
-        best, peaks, excess = self.merit(x)
-        radius, slow = 0.1, 0
-        for turn in range(ROUNDS):
-            if turn == PATIENCE and best > HOPELESS * promising:
-                break
-            move = self.step(x, _joined(self.grid, peaks), radius)
-            if float(np.max(np.abs(move), initial=0.0)) < SMALLEST_STEP:
-                break
-            trial = self._restored(x + move)
-            merit, fresh, worst = self.merit(trial)
-            if merit < best * (1.0 - 1e-12):
-                gain = (best - merit) / best
-                x, best, peaks, excess = trial, merit, fresh, worst
-                radius = min(0.5, radius * 2.0)
-                slow = slow + 1 if gain < SLOW else 0
-                if slow == 3:
-                    break
+        return Walk(x, *self.merit(x))
+
+    def advance(self, walk: Walk, turns: int) -> None:
+        """Take up to so many steps, in place."""
+        for _ in range(turns):
+            if walk.done:
+                return
+            move = self.step(walk.x, _joined(self.grid, walk.peaks), walk.radius)
+            reach = float(np.max(np.abs(move), initial=0.0))
+            if reach < SMALLEST_STEP:
+                walk.done = True
+                return
+            trial = self._restored(walk.x + move)
+            merit, peaks, excess = self.merit(trial)
+            if merit < walk.figure * (1.0 - 1e-12):
+                walk.slow = walk.slow + 1 if walk.figure - merit < SLOW * walk.figure else 0
+                walk.x, walk.figure, walk.peaks, walk.excess = trial, merit, peaks, excess
+                walk.radius = min(0.5, walk.radius * 2.0)
+                walk.done = walk.slow == 3
             else:
-                radius = 0.25 * min(radius, float(np.max(np.abs(move))))
-                if radius < SMALLEST_STEP:
-                    break
-        return Polished(x, best, excess, self._stationary(x, peaks, best))
+                walk.radius = 0.25 * min(walk.radius, reach)
+                walk.done = walk.radius < SMALLEST_STEP
+
+    def end(self, walk: Walk) -> Polished:
+        """Return what a walk has reached."""
+        stationary = self._stationary(walk.x, walk.peaks, walk.figure)
+        return Polished(walk.x, walk.figure, walk.excess, stationary)
 
     def _restored(self, x: FloatArray) -> FloatArray:
         """Return shares moved back inside the limits: along a curved limit a straight step leaves it."""
@@ -195,3 +219,19 @@ def _joined(one: Field, other: Field) -> Field:
 def polishing_grid(source: Source) -> Field:
     """Return the field on which peaks are looked for before they are refined."""
     return field_at(source, *spread_points(source.need, GRID, chebyshev=False))
+
+
+def polish(polishers: Sequence[Polisher], starts: Sequence[FloatArray]) -> list[tuple[int, Polished]]:
+    """Return the starts that were polished to the end, with their positions.
+
+    All take some steps, the better half some more, and so on until few are left.
+    """
+    walks = [polisher.begin(start) for polisher, start in zip(polishers, starts, strict=True)]
+    order = list(range(len(walks)))
+    while len(order) > FINISHED:
+        for k in order:
+            polishers[k].advance(walks[k], PROBED)
+        order = sorted(order, key=lambda k: (walks[k].figure, k))[: max(FINISHED, len(order) // 2)]
+    for k in order:
+        polishers[k].advance(walks[k], ROUNDS)
+    return [(k, polishers[k].end(walks[k])) for k in order]

@@ -37,6 +37,7 @@ from tcplan.ranges import TemperatureRange
 from tcplan.units import to_celsius
 from tcplan.verify.bound import arrangement_bound
 from tcplan.verify.box import Box, Device, Worst
+from tcplan.verify.tree_bound import closing_gap
 from tcplan.verify.worst import worst_case
 
 CLOSED_RELATIVE, CLOSED_PPM = 1e-6, 1e-6
@@ -170,7 +171,7 @@ def _proof(proposal: Proposal, figure: float, case: Case) -> Proof:
     closed = max(CLOSED_PPM * 1e-6, CLOSED_RELATIVE * figure)
     if proposal.space is not None and proposal.space.arrangement == "mixed":
         bound = max(bound, min(case.mixed_ppm * 1e-6, figure))
-        closed = max(closed, figure * case.gap * (1.0 + 1e-4))
+        closed = max(closed, closing_gap(figure, case.gap) * (1.0 + 1e-4))
     elif proposal.space is not None and proposal.certificate is not None:
         own = arrangement_bound(proposal.space, proposal.certificate, case.need, case.materials, figure)
         bound = max(bound, own)

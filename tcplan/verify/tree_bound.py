@@ -35,22 +35,26 @@ BATCH = 2048
 GAMES = 48  # new vectors a batch
 OLD = 400  # vectors kept in a bank
 BASE_CELLS, CELLS_A_TREE = 20_000, 40
+SMALL = 1e-4  # 100 ppm: of a smaller figure the gap is not taken, since no coefficient is known that well
 WEAKER = (1.0, 0.98, 0.95, 0.9, 0.8, 0.65, 0.5)  # limits that are tried in turn, of the first
+SIZED = (1.0, 0.9, 0.65)  # those at which sizes are looked at, which takes far more cells
 
 
 # --- what rules a cell out ------------------------------------------------------------------------
 
 
 def _least_shares(pair: Pair, cells: Cells, ask: Question) -> FloatArray | None:
-    """Return the least share of each child of a free top node, shape (cells, children).
+    """Return the least part of each chosen child of a free top node, shape (cells, children).
 
     Every leg holds ``min_share`` of the whole, and at most the product of the highest shares on its
-    way of its child. None where that is not asked, or fixed members make the shares others.
+    way of its child. The parts are of what a fixed member, the first child, leaves. None where no
+    least share is asked.
     """
-    if ask.min_share <= 0 or ask.fixed_share > 0:
+    if ask.min_share <= 0:
         return None
-    one = np.ones(len(cells.low))
-    return np.stack([_least_share(m, cells, one, ask.min_share) for m in top_members(pair)], axis=1)
+    chosen = top_members(pair)[1:] if ask.fixed_share > 0 else top_members(pair)
+    one, rest = np.ones(len(cells.low)), 1.0 - ask.fixed_share
+    return np.stack([_least_share(m, cells, one, ask.min_share) for m in chosen], axis=1) / rest
 
 
 def _least_share(member: Pair | int, cells: Cells, most: FloatArray, min_share: float) -> FloatArray:
@@ -267,6 +271,14 @@ def none_within(
 # --- the bound of a space -------------------------------------------------------------------------
 
 
+def closing_gap(figure: float, gap: float) -> float:
+    """Return how far below a figure a bound may lie that counts as its proof.
+
+    The relative gap of the figure, or of 100 ppm where that is more.
+    """
+    return min(figure, gap * max(figure, SMALL))
+
+
 @dataclass(slots=True)
 class MixedBound:
     """Lower bounds on the figure of the mixed networks of one space; vectors are kept between them."""
@@ -278,21 +290,24 @@ class MixedBound:
     bank: dict[str, list[FloatArray]] = field(default_factory=dict)
 
     def below(self, figure: float, gap: float) -> float:
-        """Return a figure that no mixed network of the space is within, at most ``figure (1 - gap)``.
+        """Return a figure that no mixed network of the space is within, at most a gap below ``figure``.
 
         The limit itself is tried first, then with the sizes of legs looked at, and then weaker
-        limits; 0 when none of them closes. The work is bounded by a count of cells, so that the answer
-        does not depend on the machine.
+        limits, some of them with sizes; 0 when none of them closes. The work is bounded by a count of
+        cells, so that the answer does not depend on the machine.
         """
+        first_limit = figure - closing_gap(figure, gap)
+        if first_limit <= 0:
+            return 0.0
         trees = mixed_trees(self.space)
         most = BASE_CELLS + CELLS_A_TREE * len(trees)
         for part in WEAKER:
-            limit = figure * (1.0 - gap) * part
+            limit = first_limit * part
             ask = question(self.space, self.need, self.materials, limit, self.more)
             if none_within(trees, ask, self.bank, most_cells=most).proved:
                 return limit
-            first = part == WEAKER[0] and ask.sized
-            if first and none_within(trees, ask, self.bank, free_top=False, most_cells=4 * most).proved:
+            sized = ask.sized and part in SIZED
+            if sized and none_within(trees, ask, self.bank, free_top=False, most_cells=4 * most).proved:
                 return limit
         return 0.0
 

@@ -417,6 +417,8 @@ def test_numbers_of_the_program_that_the_method_states():
         f"at {mixed.NODES} Chebyshev nodes a piece",
         f"a grid of {mixed.POINTS[1]} points for one share, {mixed.POINTS[2]} each for two",
         f"The {mixed.KEPT} best grid minima of a shape",
+        f"all by {polish.PROBED} steps, the better half by {polish.PROBED} more",
+        f"and the last {polish.FINISHED} to the end",
         f"found on {polish.GRID} points a piece",
         f"falls below {mixed_search.VANISHED:.0e}".replace("e-0", "e-"),
         f"The rows are {question.NODES} Chebyshev nodes",

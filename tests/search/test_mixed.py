@@ -320,7 +320,7 @@ def test_two_runs_are_equal():
 
 
 def test_scaling_the_target_scales_the_legs():
-    films = random_films(9, 3)
+    films = six_films()
     small, large = (
         mixed_proposals(replace(space(films), ohms=ohms), need_of(), films)[0].network for ohms in (1.0, 1e6)
     )
