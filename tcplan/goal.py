@@ -20,7 +20,7 @@ from tcplan.material.law import Law
 from tcplan.ranges import TemperatureRange
 
 LimitKind: TypeAlias = Literal["drift", "band", "chord_tcr", "box_tcr", "mask"]
-Judge: TypeAlias = Literal["nominal", "worst-case"]
+Judge: TypeAlias = Literal["nominal", "worst-case", "quantile"]
 KINDS: tuple[LimitKind, ...] = ("drift", "band", "chord_tcr", "box_tcr", "mask")
 
 
@@ -57,11 +57,16 @@ class Piece:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Goal:
-    """The limits, how they are judged, and the wanted law (None is flat)."""
+    """The limits, how they are judged, and the wanted law (None is flat).
+
+    ``quantile`` is the fraction of lots that has to be inside the limits; it counts as a judge only
+    when ``judge`` is "quantile".
+    """
 
     limits: tuple[Limit, ...] = ()
     judge: Judge = "nominal"
     wanted: Law | None = None
+    quantile: float = 0.9973
 
     def wanted_ratio(self, temperature: FloatArray, reference: float) -> FloatArray:
         """Return t(T), the wanted R(T)/R(T_ref); 1 when flat."""

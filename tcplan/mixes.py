@@ -15,8 +15,10 @@ import numpy as np
 
 from tcplan.arrays import BoolArray, FloatArray, IntArray
 from tcplan.material.model import Material
+from tcplan.material.spread import law_bounds, value_half_width
 from tcplan.network import Network, Parallel, Series, resistance, value
 from tcplan.plan import Space
+from tcplan.process import Variation
 from tcplan.trees import PARALLEL, SERIES, Tree, assigned_trees, is_mixed, with_fixed
 
 INSIDE = 1e-12
@@ -41,6 +43,63 @@ def fixed_ratio(
         return np.ones_like(T)
     ratios = {leg.material: materials[leg.material].ratio(T, reference) for leg in space.fixed}
     return resistance(group, ratios) / value(group)
+
+
+def kind_bounds(
+    space: Space, materials: Mapping[str, Material], variation: Variation, reference: float, T: FloatArray
+) -> tuple[FloatArray, FloatArray]:
+    """Return the lowest and highest law ratios of the materials, and last of the fixed members; (kinds, T).
+
+    Fixed members together are looked at with their nominal values.
+    """
+    names = spread_names(space)
+    bounds = {n: law_bounds(materials[n].law, variation.spreads[n], reference, T) for n in names}
+    group = fixed_group(space)
+    sides = []
+    for side in (0, 1):
+        ratios = {n: both[side] for n, both in bounds.items()}
+        last = np.ones_like(T) if group is None else resistance(group, ratios) / value(group)
+        sides.append(np.stack([*(ratios[n] for n in space.materials), last]))
+    return sides[0], sides[1]
+
+
+def kind_half_widths(
+    space: Space, materials: Mapping[str, Material], variation: Variation, reference: float
+) -> tuple[FloatArray, IntArray]:
+    """Return the half-widths of the value factors of the materials and of the fixed members, and their groups.
+
+    Kinds of one group move in full step. Fixed members of one material move with it; of several they
+    are taken at their nominal values, which is one device of the box.
+    """
+    names, count = spread_names(space), len(space.materials)
+    half = [value_half_width(materials[n].law, variation.spreads[n], reference) for n in names]
+    groups = variation.process.value_groups(names)
+    alone = {leg.material for leg in space.fixed}
+    if len(alone) != 1:
+        return np.array([*half[:count], 0.0]), np.array([*groups[:count], len(names)])
+    at = names.index(alone.pop())
+    return np.array([*half[:count], half[at]]), np.array([*groups[:count], groups[at]])
+
+
+def spread_names(space: Space) -> tuple[str, ...]:
+    """Return the materials of a space, and then those of its fixed members that are not among them."""
+    return tuple(dict.fromkeys((*space.materials, *(leg.material for leg in space.fixed))))
+
+
+def spread_columns(space: Space) -> FloatArray:
+    """Return how much of each material a column of a one-node mix holds, shape (materials, columns).
+
+    The columns are the materials of the space and last the fixed members together, which hold each of
+    theirs in proportion (of resistance in series, of conductance in parallel).
+    """
+    names, count = spread_names(space), len(space.materials)
+    out = np.zeros((len(names), count + 1))
+    out[:count, :count] = np.eye(count)
+    parallel = space.arrangement == "parallel"
+    sizes = [1.0 / leg.ohms if parallel else leg.ohms for leg in space.fixed]
+    for leg, size in zip(space.fixed, sizes, strict=True):
+        out[names.index(leg.material), count] += size / sum(sizes)
+    return out
 
 
 def mixed_trees(space: Space) -> tuple[Tree, ...]:

@@ -11,6 +11,7 @@ from collections.abc import Sequence
 from dataclasses import asdict, dataclass, field, replace
 from typing import Any, Literal, TypeAlias
 
+from tcplan.goal import Judge
 from tcplan.material.model import Material
 from tcplan.network import (
     Arrangement,
@@ -92,15 +93,31 @@ class Space:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Scenario:
+    """One temperature [K] of one piece of the requirement, and the device that is looked at there.
+
+    ``side`` is 0 for the nominal device, on both sides of the goal; 1 for one with all laws at their
+    highest, which must not be above it; -1 for one with all laws at their lowest, which must not be below.
+    ``factors`` are the value factors of the materials of the space and then of the fixed members' other
+    materials, in the order of :func:`tcplan.mixes.spread_names`; empty for the nominal device.
+    """
+
+    piece: int
+    temperature: float
+    side: int = 0
+    factors: tuple[float, ...] = ()
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Certificate:
     """Dual vectors that bound the figure of every network of a space.
 
-    ``nodes`` are (piece of the requirement, temperature [K]); each row of ``weights`` holds one
-    signed weight a node. Any weights give a true bound; good ones give a tight one. ``tangents`` are
-    (support, shares): points at which the area of a parallel mix, convex in its shares, is cut.
+    Each row of ``weights`` holds one weight a node, signed where the node has both sides. Any weights
+    give a true bound; good ones give a tight one. ``tangents`` are (support, shares): points at which the
+    area of a parallel mix, convex in its shares, is cut.
     """
 
-    nodes: tuple[tuple[int, float], ...]
+    nodes: tuple[Scenario, ...]
     weights: tuple[tuple[float, ...], ...]
     tangents: tuple[tuple[tuple[int, ...], tuple[float, ...]], ...] = ()
 
@@ -134,8 +151,9 @@ class FloorEvidence:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Nominal:
-    """Drift of the nominal network over the range."""
+    """Drift of the nominal network over the range; ``figure_ppm`` is the one that the goal sets."""
 
+    figure_ppm: float
     peak_ppm: float
     at_degC: float
     band_ppm: float
@@ -179,6 +197,25 @@ class WorstCase:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Likely:
+    """What draws of lots say: the figure that ``fraction`` of them do not exceed, with its 95 % interval.
+
+    ``high_ppm`` is None where there are too few draws for it; ``inside`` is the part of the lots within the
+    limit, with its exact interval, None without a limit.
+    """
+
+    fraction: float
+    peak_ppm: float
+    low_ppm: float
+    high_ppm: float | None
+    inside: float | None
+    inside_low: float | None
+    inside_high: float | None
+    draws: int
+    seed: int
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Proof:
     """A lower bound on the judged figure of the arrangement, and the gap of this option to it."""
 
@@ -189,7 +226,7 @@ class Proof:
 
     @property
     def figure_ppm(self) -> float:
-        """The nominal figure that the bound belongs to."""
+        """The figure that the bound belongs to."""
         return self.lower_bound_ppm + self.gap_ppm
 
 
@@ -206,6 +243,8 @@ class Option:
     proof: Proof
     verdict: Verdict
     role: str = ""
+    corners: dict[str, float] = field(default_factory=dict)
+    likely: Likely | None = None
 
     @property
     def arrangement(self) -> Arrangement:
@@ -247,6 +286,8 @@ class Option:
             ],
             "nominal": asdict(self.nominal),
             "worst_case": asdict(self.worst_case) if self.worst_case else None,
+            "corners_ppm": dict(self.corners),
+            "likely": asdict(self.likely) if self.likely else None,
             "proof": asdict(self.proof),
             "verdict": self.verdict,
         }
@@ -274,11 +315,15 @@ class TargetRecord:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class LimitRecord:
-    """The limit as a drift; ``drift_ppm`` is None when no limit was given."""
+    """The limit as a drift; ``drift_ppm`` is None when no limit was given.
+
+    ``quantile`` is the fraction of lots that the judge "quantile" asks for, and that is shown in any case.
+    """
 
     kind: str
     drift_ppm: float | None
-    judge: Literal["nominal", "worst-case"]
+    judge: Judge
+    quantile: float
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

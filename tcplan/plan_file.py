@@ -16,6 +16,7 @@ from tcplan.network import Leg, legs, network_from_tree
 from tcplan.plan import (
     SCHEMA,
     Floor,
+    Likely,
     LimitRecord,
     Nominal,
     Option,
@@ -49,6 +50,8 @@ class _OptionRow:
     legs: list[_LegRow]
     nominal: Nominal
     worst_case: WorstCase | None
+    corners_ppm: dict[str, float]
+    likely: Likely | None
     proof: Proof
     verdict: Verdict
 
@@ -85,6 +88,8 @@ def _option(row: _OptionRow, where: str) -> Option:
         areas=tuple(leg.area_m2 for leg in row.legs),
         nominal=row.nominal,
         worst_case=row.worst_case,
+        corners=row.corners_ppm,
+        likely=row.likely,
         proof=row.proof,
         verdict=row.verdict,
     )

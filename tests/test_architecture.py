@@ -18,23 +18,24 @@ ORDER = [
     {"names", "minimax"},
     {"units", "output"},
     {"ranges", "preferred", "toml_input", "table_reader", "material"},
+    {"process"},
     {"network"},
     {"network_text"},
     {"drift"},
     {"goal"},
     {"brief"},
     {"plan"},
-    {"plan_file", "mixes"},
-    {"search", "verify"},
+    {"plan_file", "mixes", "worst", "draws"},
+    {"search", "verify", "budget"},
     {"spec", "figures"},
     {"workflow"},
     {"cli"},
     {"__main__"},
 ]
-APART = [("search", "verify"), ("spec", "figures"), ("ranges", "material")]  # never import each other
+APART = [("search", "verify"), ("search", "budget"), ("verify", "budget"), ("search", "worst"), ("spec", "figures"), ("ranges", "material")]  # never import each other
 FENCES = {
     "sympy": ("material/", "network.py"),
-    "scipy": ("search/", "minimax.py"),
+    "scipy": ("search/", "minimax.py", "draws/"),
     "matplotlib": ("figures/",),
     "click": ("cli/", "__main__.py"),
     "rich": ("cli/",),
@@ -133,11 +134,11 @@ def test_public_functions_have_docstrings(path):
 
 
 def loaded_by(code):
-    script = f"{code}\nimport sys, json; print(json.dumps(sorted(m.split('.')[0] for m in sys.modules)))"
+    script = f"{code}\nimport sys, json; print(json.dumps(sorted(sys.modules)))"
     result = subprocess.run(
         [sys.executable, "-c", script], capture_output=True, text=True, check=True, cwd=ROOT
     )
-    return set(json.loads(result.stdout.splitlines()[-1]))
+    return set(json.loads(result.stdout.splitlines()[-1]))  # parents of submodules are there too
 
 
 def test_importing_tcplan_is_cheap():
@@ -150,7 +151,7 @@ def test_a_plan_of_films_needs_no_heavy_library():
         "from pathlib import Path\nimport tcplan\n"
         "tcplan.make_plan(tcplan.read_brief(Path('examples/brake_sensor_films/brief.toml')))"
     )
-    assert not {"sympy", "scipy", "matplotlib", "pint"} & loaded_by(code)
+    assert not {"sympy", "scipy.optimize", "matplotlib", "pint"} & loaded_by(code)
 
 
 def test_the_public_list_is_guarded():

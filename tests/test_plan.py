@@ -40,7 +40,7 @@ def test_the_keys_are_those_of_the_design(plan):
     ]
     assert set(data["range"]) == {"name", "low_degC", "high_degC", "reference_degC", "rise_K"}
     assert set(data["target"]) == {"ohms", "tc1_ppm_per_K", "tc2_ppm_per_K2"}
-    assert set(data["limit"]) == {"kind", "drift_ppm", "judge"}
+    assert set(data["limit"]) == {"kind", "drift_ppm", "judge", "quantile"}
     assert set(data["floor"]) == {"nominal_ppm", "worst_case_ppm", "why"}
     option = data["options"][0]
     assert set(option) - {"role"} == {
@@ -51,11 +51,14 @@ def test_the_keys_are_those_of_the_design(plan):
         "legs",
         "nominal",
         "worst_case",
+        "corners_ppm",
+        "likely",
         "proof",
         "verdict",
     }
     assert set(option["legs"][0]) == {"id", "material", "ohms", "share", "squares", "area_m2"}
     assert set(option["nominal"]) == {
+        "figure_ppm",
         "peak_ppm",
         "at_degC",
         "band_ppm",

@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
+
 import numpy as np
 
 from tcplan.brief.shape import MOST_ROWS
@@ -18,13 +20,18 @@ def read_goal(reader: TableReader, over: TemperatureRange | None) -> Goal | None
     """Return the goal over a range; None when the range is wrong. Mistakes go to the reader."""
     table = reader.inner("goal") or TableReader({}, f"{reader.where}: goal", reader.problems)
     limits = [limit for kind in KINDS if (limit := _limit(table, kind, over)) is not None]
-    judge: Judge = "worst-case" if table.text("judge") == "worst-case" else "nominal"
+    judges: dict[str | None, Judge] = {"worst-case": "worst-case", "quantile": "quantile"}
+    judge = judges.get(table.text("judge"), "nominal")
+    if table.has("quantile") and judge != "quantile":
+        table.refuse("quantile", "quantile without its judge", 'judge = "quantile" beside it')
+    quantile = table.number("quantile")
     if over is None:
         return None
     wanted = _wanted(table, over)
     if wanted is not None:
         table.guarded(lambda: check_positive(wanted, over.low, over.high, "law"))
-    return Goal(limits=tuple(limits), judge=judge, wanted=wanted)
+    goal = Goal(limits=tuple(limits), judge=judge, wanted=wanted)
+    return goal if quantile is None else replace(goal, quantile=quantile)
 
 
 def _limit(table: TableReader, kind: LimitKind, over: TemperatureRange | None) -> Limit | None:

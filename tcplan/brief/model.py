@@ -2,26 +2,35 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, field
 from typing import Any, Literal, TypeAlias
 
 from tcplan.goal import Goal, Limit
 from tcplan.material.model import Material
 from tcplan.network import Leg, Network, network_text
+from tcplan.process import Process
 from tcplan.ranges import TemperatureRange
 from tcplan.units import to_celsius
 
 Searched: TypeAlias = Literal["single", "series", "parallel", "mixed"]
 SEARCHED: tuple[Searched, ...] = ("single", "series", "parallel", "mixed")
 Place: TypeAlias = Literal["series", "parallel"]
+Sides: TypeAlias = Literal["both", "up", "down"]
+Nature: TypeAlias = Literal["systematic", "random"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Target:
-    """The wanted total [ohm]: a number, at most a number, or free (both None)."""
+    """The wanted total [ohm]: a number, at most a number, or free (both None).
+
+    How well it is met at the reference, as fractions: ``tolerance`` is that of the value as bought or
+    made; ``trim_step`` one step of a trim, of which half remains. At most one of the two.
+    """
 
     ohms: float | None = None
     at_most: float | None = None
+    tolerance: float | None = None
+    trim_step: float | None = None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -53,6 +62,32 @@ class SearchRules:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Allowance:
+    """What else moves the value and is not computed: ageing, package stress, humidity.
+
+    ``size`` is a fraction, or with ``per_kelvin`` [1/K] times the distance from the reference. A random
+    one is stated at 3 sigma.
+    """
+
+    name: str
+    size: float
+    per_kelvin: bool = False
+    sides: Sides = "both"
+    kind: Nature
+    source: str
+
+    def to_dict(self) -> dict[str, Any]:
+        """Return JSON data, units in the names."""
+        return {
+            "name": self.name,
+            "size_ppm_per_K" if self.per_kelvin else "size_ppm": self.size * 1e6,
+            "sides": self.sides,
+            "kind": self.kind,
+            "source": self.source,
+        }
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Brief:
     """A checked request. ``materials`` are those in use, sorted by name."""
 
@@ -65,6 +100,8 @@ class Brief:
     rules: SearchRules
     fixed: tuple[Fixed, ...] = ()
     given: Network | None = None
+    process: Process = field(default_factory=Process)
+    allowances: tuple[Allowance, ...] = ()
 
     @property
     def by_name(self) -> dict[str, Material]:
@@ -77,9 +114,15 @@ class Brief:
         return {
             "title": self.title,
             "sha256": self.sha256,
-            "resistor": {"value_ohms": self.target.ohms, "at_most_ohms": self.target.at_most},
+            "resistor": {
+                "value_ohms": self.target.ohms,
+                "at_most_ohms": self.target.at_most,
+                "tolerance": self.target.tolerance,
+                "trim_step": self.target.trim_step,
+            },
             "goal": {
                 "judge": self.goal.judge,
+                "quantile": self.goal.quantile,
                 "limits": [_limit_dict(limit) for limit in self.goal.limits],
                 "wanted": self.goal.wanted.parameters() if self.goal.wanted else None,
             },
@@ -97,6 +140,8 @@ class Brief:
             },
             "fixed": [{"material": f.leg.material, "ohms": f.leg.ohms, "place": f.place} for f in self.fixed],
             "given": network_text(self.given) if self.given else None,
+            "process": self.process.to_dict(),
+            "allowances": [allowance.to_dict() for allowance in self.allowances],
         }
 
 

@@ -4,22 +4,31 @@ from __future__ import annotations
 
 import hashlib
 from collections.abc import Mapping
+from dataclasses import dataclass, replace
 from functools import partial
 from pathlib import Path
+from typing import Any
 
+import numpy as np
+
+from tcplan.brief.allowance_tables import read_allowances
 from tcplan.brief.goal_table import read_goal
 from tcplan.brief.members import check_agreement, read_fixed, read_given, read_rules
 from tcplan.brief.model import Brief, Fixed, SearchRules, Target
+from tcplan.brief.process_tables import read_process
 from tcplan.brief.shape import shape_mistakes
 from tcplan.errors import InputError
-from tcplan.material.files import parse_materials, published, read_materials
+from tcplan.material.files import MaterialFile, parse_materials, published, read_material_file
 from tcplan.material.model import Material
+from tcplan.material.spread import law_bounds, value_half_width
 from tcplan.names import shown
 from tcplan.network import Network, used_materials
 from tcplan.ranges import REFERENCE, TemperatureRange, named_range, temperature_range
 from tcplan.table_reader import TableReader
-from tcplan.toml_input import file_text, read_toml_text
+from tcplan.toml_input import file_text, join, read_toml_text
 from tcplan.units import format_celsius
+
+SPREAD_NODES = 1025
 
 
 def read_brief(path: Path) -> Brief:
@@ -47,7 +56,8 @@ def parse_brief(text: str, name: str, folder: Path) -> Brief:
     """
     data = read_toml_text(text, name)
     reader = TableReader(data, name, list(shape_mistakes(data, name)))
-    materials = _materials(reader, folder)
+    read = _materials(reader, folder)
+    materials = read.materials
     target = _target(reader)
     over = _range(reader)
     goal = read_goal(reader, over)
@@ -56,9 +66,13 @@ def parse_brief(text: str, name: str, folder: Path) -> Brief:
     given = read_given(reader, materials, target)
     check_agreement(reader, target, fixed, given, goal)
     used = _used(rules, materials, fixed, given)
+    shared = (*read.files, reader)
+    process = read_process(shared, materials, {m.name for m in used}, all_read=read.complete)
+    allowances = read_allowances(reader, over)
     if over is not None:
         _validity(reader, used, over)
         _areas(reader, used, over)
+        _spreads(reader, used, over)
     if reader.problems or over is None or goal is None:
         raise InputError(reader.problems)
     return Brief(
@@ -71,6 +85,8 @@ def parse_brief(text: str, name: str, folder: Path) -> Brief:
         rules=rules,
         fixed=fixed,
         given=given,
+        process=process,
+        allowances=allowances,
     )
 
 
@@ -79,20 +95,33 @@ def _title(text: str) -> str:
     return "".join(c if c.isprintable() else " " for c in text).strip()[:120]
 
 
-def _materials(reader: TableReader, folder: Path) -> dict[str, Material]:
-    """Return all materials of the files and of the brief itself, by name."""
+@dataclass(frozen=True, slots=True)
+class _Read:
+    """All materials by name, the tables of their files, and whether every file could be read."""
+
+    materials: dict[str, Material]
+    files: tuple[TableReader, ...]
+    complete: bool
+
+
+def _materials(reader: TableReader, folder: Path) -> _Read:
+    """Return all materials of the files and of the brief itself."""
     found: dict[str, Material] = {}
+    files: list[TableReader] = []
     sources = [partial(_named_file, name, folder, reader) for name in reader.texts("materials")]
     inline = reader.table.get("material")
     if isinstance(inline, dict):
-        sources.append(partial(parse_materials, inline, reader.where))
+        sources.append(partial(_inline, inline, reader))
+    complete = True
     for read in sources:
         try:
             group = read()
         except InputError as error:
             reader.problems.extend(error.problems)
+            complete = False
             continue
-        for name, material in group.items():
+        files.append(TableReader(group.tables, group.where, reader.problems))
+        for name, material in group.materials.items():
             if name in found:
                 reader.refuse("materials", f"{name} twice", "each material name once", "Rename one.")
             found.setdefault(name, material)
@@ -102,16 +131,23 @@ def _materials(reader: TableReader, folder: Path) -> dict[str, Material]:
             "nothing",
             'a list such as ["films.toml"] or ["published:alloys"], or [material.NAME]',
         )
-    return found
+    return _Read(found, tuple(files), complete and bool(sources))
 
 
-def _named_file(name: str, folder: Path, reader: TableReader) -> dict[str, Material]:
+def _named_file(name: str, folder: Path, reader: TableReader) -> MaterialFile:
     if name.startswith("published:"):
-        return published(name.removeprefix("published:"))
+        rows = published(name.removeprefix("published:"))
+        return MaterialFile(where=name, materials=rows, tables={})
     if "\0" in name:
         reader.refuse("materials", shown(name), "the name of a file")
-        return {}
-    return read_materials(folder / name)
+        return MaterialFile(where=shown(name), materials={}, tables={})
+    return read_material_file(folder / name)
+
+
+def _inline(tables: Mapping[str, Any], reader: TableReader) -> MaterialFile:
+    """Return the materials of the brief itself; what they share is read from the brief."""
+    rows = parse_materials(tables, reader.where)
+    return MaterialFile(where=reader.where, materials=rows, tables={})
 
 
 def _target(reader: TableReader) -> Target:
@@ -120,9 +156,22 @@ def _target(reader: TableReader) -> Target:
         return Target()
     if table.has("value") and table.has("at_most"):
         table.refuse("at_most", "value and at_most together", "one of the two")
+    if table.has("tolerance") and table.has("trim_step"):
+        todo = "What is trimmed keeps no more than half a step of its tolerance."
+        table.refuse("trim_step", "tolerance and trim_step together", "one of the two", todo)
+    errors = {key: _part_of_one(table, key) for key in ("tolerance", "trim_step")}
     if table.text("value") == "free":
-        return Target()
-    return Target(ohms=table.above_zero("value", "ohm"), at_most=table.above_zero("at_most", "ohm"))
+        return Target(**errors)
+    return Target(ohms=table.above_zero("value", "ohm"), at_most=table.above_zero("at_most", "ohm"), **errors)
+
+
+def _part_of_one(table: TableReader, key: str) -> float | None:
+    """Return a fraction above zero and below 1, or None."""
+    fraction = table.above_zero(key, "1")
+    if fraction is not None and fraction >= 1.0:
+        table.refuse(key, str(table.table[key]), "less than 100 %")
+        return None
+    return fraction
 
 
 def _range(reader: TableReader) -> TemperatureRange | None:
@@ -184,3 +233,18 @@ def _validity(reader: TableReader, used: list[Material], over: TemperatureRange)
                 f"within {format_celsius(low)} to {format_celsius(high)}",
                 f"Leave {material.name} out of use, or give it extrapolate_to with an added spread.",
             )
+
+
+def _spreads(reader: TableReader, used: list[Material], over: TemperatureRange) -> None:
+    """Refuse a spread over which a law or a value reaches zero inside the range."""
+    T = np.linspace(over.low, over.high, SPREAD_NODES)
+    for material in used:
+        spread = material.effective_spread(over.low, over.high)
+        if spread is None or over.low < material.usable[0] or over.high > material.usable[1]:
+            continue
+        try:
+            law_bounds(material.law, spread, over.reference, T)
+            value_half_width(material.law, spread, over.reference)
+        except InputError as error:
+            where = join(reader.where, f"material.{material.name}")
+            reader.problems.extend(replace(p, where=f"{where}.{p.where}") for p in error.problems)

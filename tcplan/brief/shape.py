@@ -8,9 +8,11 @@ from typing import Annotated, Any, Literal
 from pydantic import BaseModel, ConfigDict, Field, ValidationError
 
 from tcplan.errors import Problem
+from tcplan.material.files import process_mistakes, process_tables
 from tcplan.toml_input import shape_problems
 
 MOST_ROWS = 200
+MOST_ALLOWANCES = 50
 
 
 class _Shape(BaseModel):
@@ -28,6 +30,8 @@ _Pair = Annotated[list[str], Field(min_length=2, max_length=2)]
 class _ResistorShape(_Shape):
     value: str | None = _text("18 kohm")
     at_most: str | None = _text("3 kohm")
+    tolerance: str | None = _text("1 %")
+    trim_step: str | None = _text("0.1 %")
 
 
 class _TemperatureShape(_Shape):
@@ -44,7 +48,8 @@ class _GoalShape(_Shape):
     chord_tcr: str | None = _text("25 ppm/K")
     box_tcr: str | None = _text("25 ppm/K")
     mask: Annotated[list[_Triple], Field(min_length=1, max_length=MOST_ROWS)] | None = None
-    judge: Literal["nominal", "worst-case"] | None = None
+    judge: Literal["nominal", "worst-case", "quantile"] | None = None
+    quantile: Annotated[float, Field(ge=0.5, le=0.999999)] | None = None
     tc1: str | None = _text("3000 ppm/K")
     tc2: str | None = _text("0.5 ppm/K^2")
     law: str | None = _text("exp(a*(T - T0))")
@@ -76,6 +81,14 @@ class _GivenShape(_Shape):
     scaled: bool | None = None
 
 
+class _AllowanceShape(_Shape):
+    name: str = Field(examples=['"ageing"'])
+    size: str = Field(examples=['"200 ppm"'])
+    sides: Literal["both", "up", "down"] | None = None
+    kind: Literal["systematic", "random"]
+    source: str = Field(examples=['"life test report, 1000 h"'])
+
+
 class _BriefShape(_Shape):
     version: Annotated[int, Field(ge=1, le=1)] = Field(alias="schema", examples=["1"])
     title: str = Field(examples=['"Span resistor"'])
@@ -87,12 +100,18 @@ class _BriefShape(_Shape):
     search: _SearchShape | None = None
     fixed: Annotated[list[_FixedShape], Field(max_length=16)] | None = None
     given: _GivenShape | None = None
+    allowance: Annotated[list[_AllowanceShape], Field(max_length=MOST_ALLOWANCES)] | None = None
+    # What the materials share has one shape here and in materials files: `process_mistakes` checks it.
+    correlation: Any = None
+    tracking: Any = None
+    corner: Any = None
 
 
 def shape_mistakes(data: Mapping[str, Any], where: str) -> tuple[Problem, ...]:
     """Return what is wrong with the tables and keys of a brief, in our words."""
+    shared = process_mistakes(process_tables(data), where)
     try:
         _BriefShape.model_validate(data)
     except ValidationError as error:
-        return shape_problems(error.errors(include_url=False), _BriefShape, where)
-    return ()
+        return (*shape_problems(error.errors(include_url=False), _BriefShape, where), *shared)
+    return shared

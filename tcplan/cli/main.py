@@ -13,13 +13,14 @@ from tcplan import __version__
 from tcplan.cli.exits import exit_code
 from tcplan.names import nearest_name
 
-COMMANDS = ("plan", "materials", "ranges", "coefficients", "new")
+COMMANDS = ("plan", "budget", "materials", "ranges", "coefficients", "new")
 
 START = """\
 \b
 Start here:
   tcplan new demo                    an example that runs as it is
   tcplan plan demo/brief.toml        the main job
+  tcplan budget demo/brief.toml      what moves the value, against the limit
   tcplan materials published:alloys  what comes with tcplan
   tcplan ranges                      named temperature ranges
 """

@@ -12,6 +12,7 @@ from tcplan.spec.spec import Spec
 
 LABEL = 10
 LEAST_NETWORK = 22  # columns; where fewer are left each option gets lines of its own
+LONGEST_PIECE = 34  # longer pieces are broken in any case
 MOST_LINES = 6  # of one network; longer ones are shortened in the middle
 MOST_OPTIONS = 12
 NO_BREAK = "\u00a0"
@@ -37,7 +38,7 @@ def screen(spec: Spec, width: int, *, colour: bool = False) -> str:
     blocks = (
         _asked(spec, width, colour=colour),
         [*_labelled("Assumed", spec.assumptions, width), *_labelled("Floor", [spec.floor], width)],
-        _options(spec.options, width, colour=colour),
+        _options(spec.options, spec.fraction, width, colour=colour),
         _chosen(spec, width),
     )
     return "\n\n".join("\n".join(block) for block in blocks)
@@ -57,6 +58,8 @@ def _chosen(spec: Spec, width: int) -> list[str]:
         ("Chosen", [f"{spec.chosen}: {spec.reason}."]),
         ("Worst at", [spec.worst_at] if spec.worst_at else []),
         ("Moved by", [f"{', '.join(spec.movers)}, each undone alone."] if spec.movers else []),
+        ("Lots", [spec.likely] if spec.likely else []),
+        ("Corners", [f"{spec.corners}."] if spec.corners else []),
         ("Centring", [spec.centring]),
         ("Note", spec.notes),
         ("Proof", [spec.proof]),
@@ -82,37 +85,46 @@ def _labelled(label: str, texts: Iterable[str], width: int) -> list[str]:
 # --- the table of options -----------------------------------------------------------------------
 
 
-def _options(rows: Sequence[OptionRow], width: int, *, colour: bool) -> list[str]:
+def _options(rows: Sequence[OptionRow], fraction: str, width: int, *, colour: bool) -> list[str]:
     shown = [row for n, row in enumerate(rows) if n < MOST_OPTIONS or row.chosen]
     left = len(rows) - len(shown)
     more = _wrapped(f"{left} more in plan.json.", width, "  ", "  ") if left else []
-    columns = _column_widths(shown, width)
-    if columns[1] < LEAST_NETWORK:
-        lines = [line for row in shown for line in _stacked(row, width, colour=colour)]
+    heads = _heads(shown, fraction)
+    columns = _column_widths(shown, heads, width)
+    if columns[1] < max(LEAST_NETWORK, *(_longest_piece(row.network) for row in shown)):
+        lines = [line for row in shown for line in _stacked(row, fraction, width, colour=colour)]
         return [*_wrapped("Options, figures in ppm, * the chosen one", width), *lines, *more]
-    head = ("option", "network", "nominal", "worst case", "verdict")
-    title = _row("  ", head, columns)
-    lines = [line for row in shown for line in _tabled(row, columns, colour=colour)]
-    units = _row("  ", ("", "", "ppm", "ppm", ""), columns)
+    title = _row("  ", heads, columns)
+    lines = [line for row in shown for line in _tabled(row, heads, columns, colour=colour)]
+    units = _row("  ", ("", "", *("ppm" for _ in heads[2:-1]), ""), columns)
     return [title, units, *lines, *more]
 
 
-def _column_widths(rows: Sequence[OptionRow], width: int) -> tuple[int, int, int, int, int]:
+def _heads(rows: Sequence[OptionRow], fraction: str) -> tuple[str, ...]:
+    """Return the heads of the table; the quantile has a column where it is known."""
+    likely = (fraction,) if any(row.likely for row in rows) else ()
+    return "option", "network", "nominal", *likely, "worst case", "verdict"
+
+
+def _figures(row: OptionRow, heads: Sequence[str], worst: str) -> tuple[str, ...]:
+    likely = (row.likely or "-",) if len(heads) == 6 else ()
+    return row.nominal, *likely, worst
+
+
+def _column_widths(rows: Sequence[OptionRow], heads: Sequence[str], width: int) -> tuple[int, ...]:
     option = max(len("option"), *(len(row.id) for row in rows))
-    nominal = max(len("nominal"), *(len(row.nominal) for row in rows))
-    worst = max(len("worst case"), *(len(part) for row in rows for part in _worst_lines(row)))
-    verdict = max(len("verdict"), *(len(row.verdict) for row in rows))
-    network = width - 2 - option - nominal - worst - verdict - 2 * 4
-    return option, network, nominal, worst, verdict
+    bodies = [(*_figures(row, heads, part), row.verdict) for row in rows for part in _worst_lines(row)]
+    rest = [max(len(head), *(len(body[k]) for body in bodies)) for k, head in enumerate(heads[2:])]
+    return option, width - 2 - option - sum(rest) - 2 * (len(rest) + 1), *rest
 
 
 def _row(mark: str, cells: Sequence[str], columns: Sequence[int]) -> str:
-    option, network, nominal, worst, verdict = cells
-    a, b, c, d, _ = columns
-    return f"{mark}{option:<{a}}  {network:<{b}}  {nominal:>{c}}  {worst:>{d}}  {verdict}".rstrip()
+    words = [f"{cells[k]:<{columns[k]}}" for k in (0, 1)]
+    figures = [f"{cell:>{width}}" for cell, width in zip(cells[2:-1], columns[2:-1], strict=True)]
+    return (mark + "  ".join([*words, *figures, cells[-1]])).rstrip()
 
 
-def _tabled(row: OptionRow, columns: Sequence[int], *, colour: bool) -> list[str]:
+def _tabled(row: OptionRow, heads: Sequence[str], columns: Sequence[int], *, colour: bool) -> list[str]:
     """Return the lines of one option: its network, below it the sizes of its legs."""
     network = _network_lines(row, columns[1])
     worst = _worst_lines(row)
@@ -120,14 +132,17 @@ def _tabled(row: OptionRow, columns: Sequence[int], *, colour: bool) -> list[str
     network += [""] * (height - len(network))
     worst += [""] * (height - len(worst))
     verdict = _coloured(row.verdict, colour=colour)
-    first = _row("* " if row.chosen else "  ", (row.id, network[0], row.nominal, worst[0], verdict), columns)
+    mark = "* " if row.chosen else "  "
+    first = _row(mark, (row.id, network[0], *_figures(row, heads, worst[0]), verdict), columns)
+    blank = [""] * (len(heads) - 4)
     rest = zip(network[1:], worst[1:], strict=True)
-    return [first, *(_row("  ", ("", text, "", below, ""), columns) for text, below in rest)]
+    return [first, *(_row("  ", ("", text, *blank, below, ""), columns) for text, below in rest)]
 
 
-def _stacked(row: OptionRow, width: int, *, colour: bool) -> list[str]:
+def _stacked(row: OptionRow, fraction: str, width: int, *, colour: bool) -> list[str]:
     head = f"{'* ' if row.chosen else '  '}{row.id}  {_coloured(row.verdict, colour=colour)}"
-    figures = f"nominal {row.nominal}, worst case {row.worst_case}"
+    likely = f"{fraction} of lots {row.likely}, " if row.likely else ""
+    figures = f"nominal {row.nominal}, {likely}worst case {row.worst_case}"
     below = [*_network_lines(row, width - 4), *_wrapped(figures, width - 4)]
     return [head, *(f"    {line}" for line in below)]
 
@@ -142,6 +157,11 @@ def _network_lines(row: OptionRow, width: int) -> list[str]:
     if len(sizes) > half:
         sizes = [*sizes[: half - 1], "  ..."]
     return [line.replace(NO_BREAK, " ") for line in (*lines, *sizes)]
+
+
+def _longest_piece(network: str) -> int:
+    """Return the width of the longest part of a network that is not broken; very long ones are."""
+    return min(LONGEST_PIECE, max(map(len, _glued(network, (" + ", " || ")).split(" "))))
 
 
 def _glued(text: str, breaks: Sequence[str]) -> str:

@@ -23,16 +23,23 @@ and its law in exactly one of these forms::
 
 (each key on a line of its own). The size is ``ohm_per_square`` (a film), ``ohm_per_metre`` (a wire),
 ``series = "E96"`` (a part) or none. ``[material.NAME.spread]`` needs ``meaning``, and holds the half-widths
-``tc1``, ``tc2`` and of the size: ``ohm_per_square`` in a film, ``ohm_per_metre`` in a wire, else ``value``.
+``tc1``, ``tc2`` and of the size: ``ohm_per_square`` in a film, ``ohm_per_metre`` in a wire, else ``value``;
+in films also ``end_resistance``, ``end_tc1`` and ``width_bias``, in parts ``tcr`` in place of the TCs.
+``shape`` says how draws take them: see `tcplan.material.spread.Spread`.
 ``[material.NAME.film]`` holds what is needed to make a film: see `tcplan.material.model.Film`.
 ``extrapolate_to = ["-55 degC", "175 degC"]`` with the half-widths ``tc1``, ``tc2`` that it adds, in
 ``[material.NAME.extrapolation]``, allows a law outside ``valid``.
+
+Beside the materials a file may hold what they share, ``[[correlation]]``, ``[[tracking]]`` and
+``[corner.NAME]``. It may name materials of other files, so only its shape is checked here; a brief reads
+it: see `tcplan.brief.process_tables`. Long for a module of this package: all shapes of the file stand
+together, and pydantic with them.
 """
 
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import replace
+from dataclasses import dataclass, replace
 from importlib import resources
 from pathlib import Path
 from typing import Annotated, Any, Literal
@@ -43,12 +50,54 @@ from tcplan.errors import InputError, InternalError, Problem
 from tcplan.material.file_laws import MAX_POINTS, read_law, read_temperature
 from tcplan.material.law import Law, check_positive
 from tcplan.material.model import NAME, Film, Interval, Kind, Material, interval_problem, text_problems
-from tcplan.material.spread import Meaning, Spread
+from tcplan.material.spread import Meaning, Shape, Spread
 from tcplan.names import nearest_name, shown
 from tcplan.table_reader import TableReader
 from tcplan.toml_input import join, place, read_toml, read_toml_text, shape_problems
 
 SCHEMA = 1
+PROCESS_KEYS = ("correlation", "tracking", "corner")
+MOST_PROCESS_ROWS = 200
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class MaterialFile:
+    """What a materials file holds.
+
+    Parameters
+    ----------
+    where : str
+        The file, for messages.
+    materials : dict of str to Material
+        By name, in the order of the file.
+    tables : mapping
+        What the materials share: the tables ``correlation``, ``tracking`` and ``corner`` that are there,
+        as TOML gives them, of the right shape.
+    """
+
+    where: str
+    materials: dict[str, Material]
+    tables: Mapping[str, Any]
+
+
+def read_material_file(path: Path) -> MaterialFile:
+    """Return what a materials file holds.
+
+    Parameters
+    ----------
+    path : Path
+        A materials file (TOML, 2 MB at most).
+
+    Returns
+    -------
+    MaterialFile
+
+    Raises
+    ------
+    InputError
+        With every mistake in the file, each with its place.
+    """
+    return _file_of(read_toml(path), str(path))
 
 
 def read_materials(path: Path) -> dict[str, Material]:
@@ -68,7 +117,7 @@ def read_materials(path: Path) -> dict[str, Material]:
     InputError
         With every mistake in the file, each with its place.
     """
-    return _materials_of(read_toml(path), str(path))
+    return read_material_file(path).materials
 
 
 def parse_materials(data: Mapping[str, Any], where: str) -> dict[str, Material]:
@@ -137,23 +186,39 @@ def published(name: str) -> dict[str, Material]:
             )
         )
     text = _published_folder().joinpath(f"{name}.toml").read_text(encoding="utf-8")
-    return _materials_of(read_toml_text(text, f"published:{name}"), f"published:{name}")
+    return _file_of(read_toml_text(text, f"published:{name}"), f"published:{name}").materials
 
 
 def _published_folder() -> Any:
     return resources.files("tcplan.material").joinpath("published")
 
 
-def _materials_of(content: Mapping[str, Any], where: str) -> dict[str, Material]:
+def process_tables(content: Mapping[str, Any]) -> dict[str, Any]:
+    """Return those tables of a file or a brief that say what its materials share."""
+    return {key: content[key] for key in PROCESS_KEYS if key in content}
+
+
+def process_mistakes(tables: Mapping[str, Any], where: str) -> tuple[Problem, ...]:
+    """Return what is wrong with the shape of the tables that say what materials share, in our words."""
+    try:
+        _ProcessShape.model_validate(tables)
+    except ValidationError as error:
+        return shape_problems(error.errors(include_url=False), _ProcessShape, where)
+    return ()
+
+
+def _file_of(content: Mapping[str, Any], where: str) -> MaterialFile:
     problems = _top_problems(content, where)
     tables = content.get("material")
     try:
         materials = parse_materials(tables, where) if isinstance(tables, dict) else {}
     except InputError as error:
         problems.extend(error.problems)
+    shared = process_tables(content)
+    problems.extend(process_mistakes(shared, where))
     if problems:
         raise InputError(problems)
-    return materials
+    return MaterialFile(where=where, materials=materials, tables=shared)
 
 
 def _top_problems(content: Mapping[str, Any], where: str) -> list[Problem]:
@@ -164,11 +229,12 @@ def _top_problems(content: Mapping[str, Any], where: str) -> list[Problem]:
         problems.append(
             Problem(where=f"{where}: schema", found=found, expected=f"schema = {SCHEMA}", todo=todo)
         )
+    known = ("schema", "material", *PROCESS_KEYS)
     for key in content:
-        if key not in ("schema", "material"):
-            near = nearest_name(key, ("schema", "material"))
+        if key not in known:
+            near = nearest_name(key, known)
             todo = f"Did you mean {near}?" if near else ""
-            found, expected = f"the unknown key {shown(key)}", "schema and material only"
+            found, expected = f"the unknown key {shown(key)}", f"{', '.join(known)} only"
             problems.append(
                 Problem(where=f"{where}: {place([key])}", found=found, expected=expected, todo=todo)
             )
@@ -196,6 +262,11 @@ class _SpreadShape(_Shape):
     value: str | None = _text("1 %")
     tc1: str | None = _text("40 ppm/K")
     tc2: str | None = _text("0.1 ppm/K^2")
+    tcr: str | None = _text("25 ppm/K")
+    end_resistance: str | None = _text("40 %")
+    end_tc1: str | None = _text("200 ppm/K")
+    width_bias: str | None = _text("0.02 um")
+    shape: Literal["normal", "rectangular"] | None = None
 
 
 class _ExtrapolationShape(_Shape):
@@ -213,6 +284,7 @@ class _FilmShape(_Shape):
     spacing: str | None = _text("0.6 um")
     grid: str | None = _text("5 nm")
     max_current: str | None = _text("0.6 mA/um")
+    etch: str | None = _text("poly")
 
 
 _Pair = Annotated[list[str], Field(min_length=2, max_length=2)]
@@ -245,6 +317,30 @@ class _MaterialShape(_Shape):
     film: _FilmShape | None = None
     extrapolate_to: _Pair | None = None
     extrapolation: _ExtrapolationShape | None = None
+
+
+class _CorrelationShape(_Shape):
+    between: _Pair = Field(examples=['["red_film.ohm_per_square", "red_film.tc1"]'])
+    value: Annotated[float, Field(ge=-1, le=1)] = Field(examples=["-0.6"])
+
+
+class _TrackingShape(_Shape):
+    materials: Annotated[list[str], Field(min_length=2)] = Field(examples=['["red_film", "blue_film"]'])
+    within: str = Field(examples=['"3 ppm/K"'])
+
+
+class _ShiftsShape(_Shape):
+    ohm_per_square: str | None = _text("+12 %")
+    ohm_per_metre: str | None = _text("+2 %")
+    value: str | None = _text("+1 %")
+    tc1: str | None = _text("-20 ppm/K")
+    tc2: str | None = _text("0.05 ppm/K^2")
+
+
+class _ProcessShape(_Shape):
+    correlation: Annotated[list[_CorrelationShape], Field(max_length=MOST_PROCESS_ROWS)] | None = None
+    tracking: Annotated[list[_TrackingShape], Field(max_length=MOST_PROCESS_ROWS)] | None = None
+    corner: dict[str, dict[str, _ShiftsShape]] | None = None
 
 
 def _shape_mistakes(table: object, where: str) -> tuple[Problem, ...]:
@@ -338,15 +434,38 @@ def _spread(reader: TableReader, kind: Kind) -> Spread | None:
     for key in ("ohm_per_square", "ohm_per_metre", "value"):
         if key != size and inner.has(key):
             inner.refuse(key, f"{key} in a material of the kind {kind}", f"{size}", f"Write {size} instead.")
-    value, tc1, tc2 = inner.quantity(size, "1"), inner.quantity("tc1", "1/K"), inner.quantity("tc2", "1/K^2")
+    for key in ("tc1", "tc2"):
+        if inner.has("tcr") and inner.has(key):
+            found = f"tcr and {key} together"
+            inner.refuse(key, found, "one of the two", "A TCR limit covers slope and curvature.")
+    half_widths = {"value": inner.quantity(size, "1")}
+    half_widths |= {key: inner.quantity(key, unit) for key, unit in _HALF_WIDTH_UNITS.items()}
     meanings: dict[str | None, Meaning] = {"limits": "limits", "sigma": "sigma"}
     meaning = meanings.get(inner.text("meaning"))
     if meaning is None:
         return None
+    shape = _shape(inner.text("shape"), kind, meaning)
     told = len(reader.problems)
-    spread = reader.guarded(lambda: Spread(meaning=meaning, value=value, tc1=tc1, tc2=tc2))
+    spread = reader.guarded(lambda: Spread(meaning=meaning, shape=shape, **half_widths))
     reader.problems[told:] = [_at_size(problem, size) for problem in reader.problems[told:]]
     return spread
+
+
+_HALF_WIDTH_UNITS = {
+    "tc1": "1/K",
+    "tc2": "1/K^2",
+    "tcr": "1/K",
+    "end_resistance": "1",
+    "end_tc1": "1/K",
+    "width_bias": "m",
+}
+
+
+def _shape(stated: str | None, kind: Kind, meaning: Meaning) -> Shape:
+    """Return how draws take the half-widths: what is bought is sorted, so anything up to its limits."""
+    shapes: dict[str | None, Shape] = {"normal": "normal", "rectangular": "rectangular"}
+    default: Shape = "rectangular" if kind in ("wire", "part") and meaning == "limits" else "normal"
+    return shapes.get(stated, default)
 
 
 def _at_size(problem: Problem, size: str) -> Problem:
@@ -384,4 +503,5 @@ def _film(reader: TableReader) -> Film | None:
     min_width = sizes.pop("min_width")
     if min_width is None:
         return None
-    return reader.guarded(lambda: Film(min_width=min_width, **sizes))
+    etch = inner.text("etch")
+    return reader.guarded(lambda: Film(min_width=min_width, etch=etch, **sizes))

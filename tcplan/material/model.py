@@ -9,7 +9,7 @@ from __future__ import annotations
 import math
 import re
 from collections.abc import Iterator, Mapping
-from dataclasses import asdict, dataclass, fields
+from dataclasses import asdict, dataclass, fields, replace
 from typing import Any, Literal, get_args
 
 import numpy as np
@@ -58,6 +58,8 @@ class Film:
         Step of the drawn dimensions [m].
     max_current : float, optional
         Per width [A/m].
+    etch : str, optional
+        The lithography step that sets the width: films that name the same one share one width error.
     """
 
     min_width: float
@@ -69,6 +71,7 @@ class Film:
     spacing: float | None = None
     grid: float | None = None
     max_current: float | None = None
+    etch: str | None = None
 
     def __post_init__(self) -> None:
         if problems := tuple(_film_problems(self)):
@@ -149,10 +152,28 @@ class Material:
         return low < self.valid[0] or high > self.valid[1]
 
     def effective_spread(self, low: float, high: float) -> Spread | None:
-        """Return the spread over low..high [K]; outside ``valid`` the extrapolation's is added."""
-        if self.spread is None or self.extrapolation is None or not self.is_extrapolated(low, high):
-            return self.spread
-        return self.spread.widened(self.extrapolation)
+        """Return the spread over low..high [K]: what the worst case of the material is built from.
+
+        Outside ``valid`` the extrapolation's is added, and the value of a film covers the width error.
+        """
+        if self.spread is None:
+            return None
+        spread = self.spread.with_width(self.effective_width)
+        if self.extrapolation is None or not self.is_extrapolated(low, high):
+            return spread
+        return spread.widened(self.extrapolation)
+
+    @property
+    def width(self) -> float | None:
+        """The drawn width of a film [m], the preferred one, else the least; ``None`` if not stated."""
+        return None if self.film is None else self.film.preferred_width or self.film.min_width
+
+    @property
+    def effective_width(self) -> float | None:
+        """The drawn width less the bias [m]; ``None`` if not stated."""
+        if self.film is None or self.width is None:
+            return None
+        return self.width - (self.film.width_bias or 0.0)
 
     def ratio(self, T: FloatArray, reference: float) -> FloatArray:
         """Return R(T)/R(reference), of the shape of ``T``; both [K]."""
@@ -184,10 +205,9 @@ class Material:
 
         Squares times the drawn width times the pitch (width and spacing); ends and dummies not included.
         """
-        squares = self.squares(ohms, reference)
-        if squares is None or self.film is None:
+        squares, width = self.squares(ohms, reference), self.width
+        if squares is None or self.film is None or width is None:
             return None
-        width = self.film.preferred_width or self.film.min_width
         return squares * width * (width + (self.film.spacing or 0.0))
 
     def to_dict(self) -> dict[str, Any]:
@@ -291,7 +311,34 @@ def _data_problems(material: Material) -> Iterator[Problem]:
             expected="[film] in films only",
             todo="Add ohm_per_square, or remove the table.",
         )
+    yield from _spread_problems(material, where)
     yield from _extrapolation_problems(material, where)
+
+
+def _spread_problems(material: Material, where: str) -> Iterator[Problem]:
+    """Check that each half-width has something that it belongs to."""
+    spread, film = material.spread, material.film
+    if spread is None:
+        return
+    if spread.width_bias is not None and film is None:
+        yield _homeless(where, "width_bias", "no widths", f"[{where}.film] with min_width")
+    for key in ("end_resistance", "end_tc1"):
+        if getattr(spread, key) is not None and (film is None or film.end_resistance is None):
+            yield _homeless(where, key, "no ends", f"[{where}.film] with end_resistance")
+    if spread.tcr is not None and material.kind != "part":
+        yield _homeless(where, "tcr", "no series", "a TCR limit in parts only; else tc1")
+    try:
+        spread.with_width(material.effective_width)
+    except InputError as error:
+        yield from (replace(p, where=f"{where}.{p.where}") for p in error.problems)
+
+
+def _homeless(where: str, key: str, lack: str, expected: str) -> Problem:
+    return Problem(
+        where=f"{where}.spread.{key}",
+        found=f"a spread of {key} in a material with {lack}",
+        expected=expected,
+    )
 
 
 def _range_problems(material: Material, where: str) -> Iterator[Problem]:
@@ -357,7 +404,7 @@ def _extrapolation_problems(material: Material, where: str) -> Iterator[Problem]
 def _film_problems(film: Film) -> Iterator[Problem]:
     for field in fields(film):
         size = getattr(film, field.name)
-        if size is None:
+        if size is None or field.name == "etch":
             continue
         above_zero = field.name in ("min_width", "preferred_width", "grid", "max_current")
         any_sign = field.name in ("width_bias", "end_tc1")
@@ -368,6 +415,12 @@ def _film_problems(film: Film) -> Iterator[Problem]:
             yield Problem(
                 where=f"film.{field.name}", found=f"{size:g}", expected=f"a value that is {expected}"
             )
+    if film.etch is not None and not NAME.fullmatch(film.etch):
+        yield Problem(
+            where="film.etch",
+            found=shown(film.etch),
+            expected="a letter, then letters, digits and underscores, 40 at most",
+        )
     if film.preferred_width is not None and film.preferred_width < film.min_width:
         yield Problem(
             where="film.preferred_width",
@@ -396,6 +449,7 @@ _FILM_KEYS = {
     "spacing": "spacing_m",
     "grid": "grid_m",
     "max_current": "max_current_A_per_m",
+    "etch": "etch",
 }
 
 

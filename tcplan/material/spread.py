@@ -13,7 +13,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import TYPE_CHECKING, Any, Literal, get_args
 
 import numpy as np
@@ -26,11 +26,21 @@ if TYPE_CHECKING:
     from tcplan.material.law import Law
 
 Meaning = Literal["limits", "sigma"]
+Shape = Literal["normal", "rectangular"]
 Shift = tuple[float, float]
 """(da [1/K], db [1/K^2])."""
 
 SIGMAS_PER_LIMIT = 3.0
-_COMPONENTS = ("value", "tc1", "tc2")
+_KEYS = {
+    "value": "value",
+    "tc1": "tc1_per_K",
+    "tc2": "tc2_per_K2",
+    "end_resistance": "end_resistance",
+    "end_tc1": "end_tc1_per_K",
+    "width_bias": "width_bias_m",
+    "tcr": "tcr_per_K",
+}
+"""Each component, by its key in plan.json."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -47,60 +57,117 @@ class Spread:
         Of the first temperature coefficient [1/K], at the material's own reference.
     tc2 : float, optional
         Of the second temperature coefficient [1/K^2], at the material's own reference.
+    end_resistance : float, optional
+        Of the end resistance of a film, as a fraction.
+    end_tc1 : float, optional
+        Of the first temperature coefficient of the ends [1/K].
+    width_bias : float, optional
+        Of the drawn minus effective width of a film [m].
+    tcr : float, optional
+        The TCR limit k of a data sheet [1/K]: abs(dR/R) <= k abs(T - T0), on each side of T0 with a sign
+        of its own.
+    shape : {"normal", "rectangular"}
+        How draws take the half-widths: normal with limits of 3 sigma, or anything between the limits
+        alike. The worst case does not depend on it.
 
     Raises
     ------
     InputError
-        For a half-width that is negative or not finite, or a value that could reach zero.
+        For a half-width that is negative or not finite, a value or an end that could reach zero, or
+        standard deviations of a rectangular shape.
     """
 
     meaning: Meaning
     value: float | None = None
     tc1: float | None = None
     tc2: float | None = None
+    end_resistance: float | None = None
+    end_tc1: float | None = None
+    width_bias: float | None = None
+    tcr: float | None = None
+    shape: Shape = "normal"
 
     def __post_init__(self) -> None:
-        problems = [problem for name in _COMPONENTS if (problem := self._component_problem(name))]
+        problems = [problem for name in _KEYS if (problem := self._component_problem(name))]
         if self.meaning not in get_args(Meaning):
             problems.insert(0, _meaning_problem(self.meaning))
-        elif not problems and self._scale * (self.value or 0.0) >= 1.0:
-            problems.append(_value_problem(self))
+        elif not problems:
+            fractions = ("value", "end_resistance")
+            problems.extend(_fraction_problem(self, name) for name in fractions if self._reaches_one(name))
+        if self.shape not in get_args(Shape) or (self.shape == "rectangular" and self.meaning == "sigma"):
+            problems.append(_shape_problem(self))
         if problems:
             raise InputError(problems)
 
     @property
     def unstated(self) -> tuple[str, ...]:
-        """Names of the components that are not stated."""
-        return tuple(name for name in _COMPONENTS if getattr(self, name) is None)
+        """Names of those of value, tc1 and tc2 that are not stated; a TCR limit covers both TCs."""
+        names = ("value",) if self.tcr is not None else ("value", "tc1", "tc2")
+        return tuple(name for name in names if getattr(self, name) is None)
+
+    @property
+    def tc1_and_tcr(self) -> float | None:
+        """The half-width of TC1 with the TCR limit [1/K], None when neither is stated.
+
+        At any one temperature a device within a TCR limit is one whose TC1 is off by at most as much.
+        """
+        return _total(self.tc1, self.tcr)
 
     def limits(self) -> Spread:
         """Return the spread as limits: limits as they are, standard deviations times 3."""
         if self.meaning == "limits":
             return self
-        return Spread(
-            meaning="limits",
-            value=_scaled(self.value, self._scale),
-            tc1=_scaled(self.tc1, self._scale),
-            tc2=_scaled(self.tc2, self._scale),
-        )
+        scaled = {name: _scaled(getattr(self, name), self._scale) for name in _KEYS}
+        return Spread(meaning="limits", shape=self.shape, **scaled)
 
     def widened(self, added: Spread) -> Spread:
         """Return the limits of this spread plus the limits of ``added``, component by component."""
         mine, more = self.limits(), added.limits()
-        return Spread(
-            meaning="limits",
-            value=_total(mine.value, more.value),
-            tc1=_total(mine.tc1, more.tc1),
-            tc2=_total(mine.tc2, more.tc2),
-        )
+        totals = {name: _total(getattr(mine, name), getattr(more, name)) for name in _KEYS}
+        return Spread(meaning="limits", shape=self.shape, **totals)
+
+    def with_width(self, width: float | None) -> Spread:
+        """Return the limits with the width error moved into the value.
+
+        A film is wide W -/+ e, so its value is within (1 -/+ D)/(1 +/- e/W); the half-width that covers
+        both ends is D' = (1 + D)/(1 - e/W) - 1.
+
+        Parameters
+        ----------
+        width : float, optional
+            The nominal effective width W [m].
+
+        Returns
+        -------
+        Spread
+            This one when there is no width error or no width; else limits whose ``value`` is D' and whose
+            ``width_bias`` is 0.
+
+        Raises
+        ------
+        InputError
+            When the width or the value could reach zero.
+        """
+        if width is None or not self.width_bias:
+            return self
+        limits = self.limits()
+        error = (limits.width_bias or 0.0) / width
+        if error >= 1.0 or (1.0 + (limits.value or 0.0)) / (1.0 - error) >= 2.0:
+            raise InputError(_width_problem(limits, width))
+        value = (1.0 + (limits.value or 0.0)) / (1.0 - error) - 1.0
+        return replace(limits, value=value, width_bias=0.0)
 
     def to_dict(self) -> dict[str, Any]:
         """Return JSON data; the inverse of `spread_from_dict`."""
-        return {"meaning": self.meaning, "value": self.value, "tc1_per_K": self.tc1, "tc2_per_K2": self.tc2}
+        half_widths = {key: getattr(self, name) for name, key in _KEYS.items()}
+        return {"meaning": self.meaning, **half_widths, "shape": self.shape}
 
     @property
     def _scale(self) -> float:
         return SIGMAS_PER_LIMIT if self.meaning == "sigma" else 1.0
+
+    def _reaches_one(self, name: str) -> bool:
+        return self._scale * (getattr(self, name) or 0.0) >= 1.0
 
     def _component_problem(self, name: str) -> Problem | None:
         half_width = getattr(self, name)
@@ -116,11 +183,14 @@ class Spread:
 
 def spread_from_dict(data: Mapping[str, Any]) -> Spread:
     """Return the spread that ``Spread.to_dict`` wrote."""
-    return Spread(meaning=data["meaning"], value=data["value"], tc1=data["tc1_per_K"], tc2=data["tc2_per_K2"])
+    half_widths = {name: data[key] for name, key in _KEYS.items()}
+    return Spread(meaning=data["meaning"], shape=data["shape"], **half_widths)
 
 
 def law_vertices(spread: Spread) -> tuple[Shift, ...]:
     """Return the distinct corners (da, db) of the limits of TC1 and TC2: four, two or one.
+
+    A TCR limit counts as a half-width of TC1.
 
     Parameters
     ----------
@@ -133,7 +203,7 @@ def law_vertices(spread: Spread) -> tuple[Shift, ...]:
         (da [1/K], db [1/K^2]).
     """
     limits = spread.limits()
-    return tuple((da, db) for da in _both_signs(limits.tc1) for db in _both_signs(limits.tc2))
+    return tuple((da, db) for da in _both_signs(limits.tc1_and_tcr) for db in _both_signs(limits.tc2))
 
 
 def shifted_ratio(law: Law, spread_point: Shift, reference: float, T: FloatArray) -> FloatArray:
@@ -174,7 +244,9 @@ def law_bounds(
     """Return the range of R(T)/R(reference) over the limits of TC1 and TC2, exactly.
 
     At each T the ratio is a quotient of two functions that are linear in (da, db) with a positive
-    denominator, so it is monotone along every line through the box and its extremes are at corners.
+    denominator, so it is monotone along every line through the box and its extremes are at corners. A
+    TCR limit, whose sign may differ from side to side, reaches no further: on one side it is a TC1, and
+    with T and the reference on two sides the extremes have one sign.
 
     Parameters
     ----------
@@ -268,12 +340,33 @@ def _meaning_problem(meaning: object) -> Problem:
     )
 
 
-def _value_problem(spread: Spread) -> Problem:
+def _fraction_problem(spread: Spread, name: str) -> Problem:
     return Problem(
-        where="spread.value",
-        found=f"{100.0 * (spread.value or 0.0):g} % ({spread.meaning})",
+        where=f"spread.{name}",
+        found=f"{100.0 * getattr(spread, name):g} % ({spread.meaning})",
         expected="limits below 100 % (a standard deviation counts three times)",
         todo="A value that can reach zero cannot be planned with; check the meaning and the figure.",
+    )
+
+
+def _shape_problem(spread: Spread) -> Problem:
+    wrong = spread.shape not in get_args(Shape)
+    return Problem(
+        where="spread.shape",
+        found=shown(str(spread.shape)) if wrong else "rectangular with standard deviations",
+        expected='"normal" or "rectangular"' if wrong else "limits: a rectangular spread ends at them",
+        todo="" if wrong else 'Write meaning = "limits" with the limits, or shape = "normal".',
+    )
+
+
+def _width_problem(limits: Spread, width: float) -> Problem:
+    value = f"a value spread of {100.0 * limits.value:g} % and " if limits.value else ""
+    return Problem(
+        where="spread.width_bias",
+        found=f"{value}a width error of {1e6 * (limits.width_bias or 0.0):g} um (limits) "
+        f"in {1e6 * width:g} um of effective width",
+        expected="less than 100 % of the value together",
+        todo="Draw it wider: preferred_width in [film]; or check the unit of the width error.",
     )
 
 

@@ -8,6 +8,7 @@ is that of the outermost pair. Every subtree is 1 at the reference, so shares ar
 from __future__ import annotations
 
 from dataclasses import dataclass
+from functools import lru_cache
 
 import numpy as np
 
@@ -57,6 +58,7 @@ class Path:
     steps: tuple[tuple[int, bool, bool], ...]
 
 
+@lru_cache(maxsize=4096)
 def paths(pair: Pair | int) -> tuple[Path, ...]:
     """Return the path of every leg from left to right."""
     if isinstance(pair, int):

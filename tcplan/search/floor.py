@@ -12,7 +12,7 @@ from tcplan.material.model import Material
 from tcplan.minimax import solve_fractional
 from tcplan.mixes import simplex_vertices
 from tcplan.plan import FloorEvidence, Space
-from tcplan.search.columns import Programme, Rows
+from tcplan.search.columns import Programme, Rows, spread_points
 
 NODES = 41
 
@@ -37,7 +37,7 @@ def floor_evidence(
     """
     names = space.materials
     programme = Programme(space, need, materials, names)
-    rows = programme.spread_rows(NODES, chebyshev=True)
+    rows = programme.rows(*spread_points(need, NODES, chebyshev=True))
     r = programme.ratios(rows.temperature)
     weights = simplex_vertices(space, range(len(names)), least_share=False).T
     limit = next((p.weight * figure for p in need.pieces if p.centred), 0.0)

@@ -12,15 +12,26 @@ from tcplan.goal import Requirement
 from tcplan.material.model import Material
 from tcplan.mixes import fixed_group
 from tcplan.network import Leg, Network, Parallel, Series, value
-from tcplan.plan import Certificate, Proposal, Space
+from tcplan.plan import Certificate, Proposal, Scenario, Space
+from tcplan.process import Variation
 from tcplan.search.columns import Programme
 from tcplan.search.solver import VANISHED, Mix, Solver
+from tcplan.search.spread_columns import SpreadProgramme
 from tcplan.search.supports import best_mixes
 
 NEEDLESS = 1e-8  # share of a leg that is left out where the total is free
 
 
-def network_of(programme: Programme, shares: FloatArray) -> Network:
+def programme_of(
+    space: Space, need: Requirement, materials: Mapping[str, Material], variation: Variation | None
+) -> Programme | SpreadProgramme:
+    """Return the programme of nominal materials, or with a variation that of the worst device."""
+    if variation is None:
+        return Programme(space, need, materials, space.materials)
+    return SpreadProgramme(space, need, materials, space.materials, variation)
+
+
+def network_of(programme: Programme | SpreadProgramme, shares: FloatArray) -> Network:
     """Return the network that has these shares; the fixed members keep their own values."""
     space, ohms = programme.space, programme.space.ohms
     parallel = space.arrangement == "parallel"
@@ -48,7 +59,10 @@ def certificate(solver: Solver) -> Certificate:
     """Return the bank of duals as evidence."""
     rows = solver.nodes
     size = len(rows.temperature)
-    nodes = tuple((int(p), float(t)) for p, t in zip(rows.piece, rows.temperature, strict=True))
+    nodes = tuple(
+        Scenario(piece=int(p), temperature=float(t), side=int(side), factors=tuple(map(float, factors)))
+        for p, t, side, factors in zip(rows.piece, rows.temperature, rows.side, rows.factors, strict=True)
+    )
     weights = tuple(tuple(np.pad(y, (0, size - len(y))).tolist()) for y in solver.bank)
     tangents = tuple((support, at) for support, points in solver.tangents.items() for at in points)
     return Certificate(nodes=nodes, weights=weights, tangents=tangents)
@@ -60,7 +74,11 @@ def in_order(space: Space) -> Space:
 
 
 def search_space(
-    space: Space, need: Requirement, materials: Mapping[str, Material], few: int = 3
+    space: Space,
+    need: Requirement,
+    materials: Mapping[str, Material],
+    few: int = 3,
+    variation: Variation | None = None,
 ) -> tuple[Proposal, ...]:
     """Return the best few networks of a space, best first, with the evidence for all of them.
 
@@ -71,9 +89,12 @@ def search_space(
     materials : mapping of name to Material
     few : int
         How many are wanted.
+    variation : Variation, optional
+        With it, the networks that are best in their worst case; else the nominally best ones. Every
+        material of the space and of its fixed members has a spread, and no piece has a free centre.
     """
     space = in_order(space)
-    solver = Solver(Programme(space, need, materials, space.materials))
+    solver = Solver(programme_of(space, need, materials, variation))
     mixes, complete = best_mixes(solver, few)
     covered = space if complete else replace(space, most=len(space.materials), min_share=0.0, sizes=None)
     evidence = certificate(solver)
@@ -84,7 +105,11 @@ def search_space(
 
 
 def least_total(
-    space: Space, need: Requirement, materials: Mapping[str, Material], limit: float
+    space: Space,
+    need: Requirement,
+    materials: Mapping[str, Material],
+    limit: float,
+    variation: Variation | None = None,
 ) -> Proposal | None:
     """Return the network in which the fixed members hold the largest share within ``limit``.
 
@@ -96,7 +121,7 @@ def least_total(
 
     def best(u: float) -> tuple[Solver, Mix | None]:
         tight = replace(space, fixed_share=(u, high))
-        solver = Solver(Programme(tight, need, materials, space.materials))
+        solver = Solver(programme_of(tight, need, materials, variation))
         mixes, _ = best_mixes(solver, 1)
         return solver, (mixes[0] if mixes else None)
 

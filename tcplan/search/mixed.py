@@ -10,6 +10,7 @@ from __future__ import annotations
 from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import dataclass
 from itertools import groupby, product
+from typing import Protocol
 
 import numpy as np
 
@@ -43,6 +44,15 @@ class Field:
     ratios: FloatArray
 
     @property
+    def count(self) -> int:
+        """The number of rows of a tree."""
+        return len(self.T)
+
+    def legs(self, kinds: IntArray) -> tuple[list[FloatArray], None]:
+        """Return the ratios of every leg of trees, each of the shape (trees, 1, T); they are 1 at T_ref."""
+        return [self.ratios[kinds[:, leg]][:, None, :] for leg in range(kinds.shape[1])], None
+
+    @property
     def banded(self) -> bool:
         """Whether part of the goal is a band, which has a free centre."""
         return bool(self.free.any())
@@ -60,6 +70,20 @@ class Field:
             out = np.max(np.abs(drift[..., plain]) / self.weight[plain], axis=-1)
         band = np.ptp(drift[..., ~plain], axis=-1) / (2.0 * self.weight[~plain][0])
         return np.asarray(np.maximum(out, band))
+
+
+class Surface(Protocol):
+    """What a figure is taken over: temperatures of nominal materials, or of devices."""
+
+    @property
+    def count(self) -> int:
+        """About how many rows a tree has."""
+
+    def legs(self, kinds: IntArray) -> tuple[list[FloatArray], list[FloatArray] | None]:
+        """Return R(T) and R(T_ref) of every leg by tree and row; None for R(T_ref) that is 1 everywhere."""
+
+    def figures(self, curve: FloatArray) -> FloatArray:
+        """Return the figure of ratios R(T)/R(T_ref), rows last."""
 
 
 @dataclass(frozen=True, slots=True)
@@ -97,17 +121,6 @@ def field_at(source: Source, piece: IntArray, T: FloatArray, kinds: Sequence[int
     )
 
 
-def spread_points(need: Requirement, count: int, *, chebyshev: bool) -> tuple[IntArray, FloatArray]:
-    """Return pieces and temperatures [K]: ``count`` over each piece, its ends included."""
-    z = np.cos(np.pi * np.arange(count) / (count - 1)) if chebyshev else np.linspace(1.0, -1.0, count)
-    pieces, T = [], []
-    for k, piece in enumerate(need.pieces):
-        points = np.unique(0.5 * (piece.low + piece.high) - 0.5 * (piece.high - piece.low) * z)
-        T.append(np.clip(points, piece.low, piece.high))
-        pieces.append(np.full(len(points), k))
-    return np.concatenate(pieces), np.concatenate(T)
-
-
 @dataclass(frozen=True, slots=True)
 class Start:
     """One grid minimum: its tree, the materials of its legs, its shares and its figure."""
@@ -133,9 +146,9 @@ def by_shape(trees: Sequence[Tree]) -> Iterator[tuple[Tree, list[Tree]]]:
 
 def _outer_exact(
     pair: Pair,
-    legs: list[FloatArray],
+    kinds: IntArray,
     inner: FloatArray,
-    field: Field,
+    field: Surface,
     excess: _Excess,
     outermost: float | None,
 ) -> tuple[FloatArray, FloatArray]:
@@ -144,13 +157,22 @@ def _outer_exact(
     With ``outermost`` that share is given, as it is for a fixed member of a given total.
     """
     shares = [np.zeros((1, 1, 1)), *(row[None, :, None] for row in inner)]
-    first, second = ratio(pair.first, legs, shares), ratio(pair.second, legs, shares)
-    if not pair.series:
-        first, second = 1.0 / first, 1.0 / second
+    hot, cold = field.legs(kinds)
+
+    def members(legs: list[FloatArray]) -> tuple[FloatArray, FloatArray]:
+        pairs = ratio(pair.first, legs, shares), ratio(pair.second, legs, shares)
+        return pairs if pair.series else (1.0 / pairs[0], 1.0 / pairs[1])
+
+    first, second = members(hot)
+    at_reference = members(cold) if cold is not None else None
 
     def figure(x: FloatArray) -> FloatArray:
         mixed = x[..., None] * first + (1.0 - x[..., None]) * second
-        value = field.figures(mixed if pair.series else 1.0 / mixed)
+        if at_reference is None:
+            value = field.figures(mixed if pair.series else 1.0 / mixed)
+        else:
+            own = x[..., None] * at_reference[0] + (1.0 - x[..., None]) * at_reference[1]
+            value = field.figures(mixed / own if pair.series else own / mixed)
         return value + STEEP * np.maximum(excess.at(x), 0.0)
 
     shape = np.broadcast_shapes(first.shape[:-1], second.shape[:-1])
@@ -209,7 +231,7 @@ def _grid_minima(values: FloatArray, count: int) -> FloatArray:
 
 def grid_starts(
     trees: Sequence[Tree],
-    field: Field,
+    field: Surface,
     limits: LegLimits,
     kept: int = KEPT,
     outermost: float | None = None,
@@ -220,8 +242,8 @@ def grid_starts(
     ----------
     trees : sequence of Tree
         Of two legs at least.
-    field : Field
-        The goal at a few temperatures.
+    field : Surface
+        The goal at a few temperatures, of nominal materials or of devices.
     limits : LegLimits
     kept : int
         How many a shape.
@@ -235,7 +257,7 @@ def grid_starts(
             continue
         inner = inner_grid(len(leaves(shape)) - 2)
         own: list[Start] = []
-        step = max(1, CHUNK // (inner.shape[1] * len(field.T)))
+        step = max(1, CHUNK // (inner.shape[1] * field.count))
         for k in range(0, len(group), step):
             own.extend(_chunk_starts(pair, group[k : k + step], inner, field, limits, kept, outermost))
         found.extend(sorted(own, key=lambda start: (start.figure, repr(start.tree)))[:kept])
@@ -246,15 +268,14 @@ def _chunk_starts(
     pair: Pair,
     group: list[Tree],
     inner: FloatArray,
-    field: Field,
+    field: Surface,
     limits: LegLimits,
     kept: int,
     outermost: float | None,
 ) -> list[Start]:
     materials = np.array([leaves(tree) for tree in group])
-    legs = [field.ratios[materials[:, leg]][:, None, :] for leg in range(materials.shape[1])]
     excess = _Excess(paths(pair), materials, inner, limits)
-    outer, figure = _outer_exact(pair, legs, inner, field, excess, outermost)
+    outer, figure = _outer_exact(pair, materials, inner, field, excess, outermost)
     outer, figure = np.broadcast_arrays(outer, figure)
     candidates = np.where(_grid_minima(figure, len(inner)), figure, np.inf).ravel()
     order = np.argsort(candidates, kind="stable")[: 2 * kept]

@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -13,23 +13,27 @@ from tcplan.material.model import Material
 from tcplan.mixes import fixed_group, mixed_trees
 from tcplan.network import Leg, Network, Series, arrangement, legs, scaled, shares, simplified, value
 from tcplan.plan import Proposal, Space
+from tcplan.process import Variation
+from tcplan.search.columns import spread_points
 from tcplan.search.curves import network_at
+from tcplan.search.devices import devices_at
 from tcplan.search.limits import LegLimits, limits_of
 from tcplan.search.linear import in_order
 from tcplan.search.mixed import (
     KEPT,
     NODES,
-    Field,
     Source,
     Start,
+    Surface,
     by_shape,
     field_at,
     grid_starts,
-    spread_points,
 )
-from tcplan.search.polish import Polished, Polisher, polish, polishing_grid
+from tcplan.search.polish import NominalPolisher, Polished, polish, polishing_grid
+from tcplan.search.spread_polish import GRID, SpreadPolisher
 from tcplan.trees import Pair, Tree, leaves, paired, shape_of
 
+DEVICE_NODES = 5  # Chebyshev nodes a piece in the grid stage of a worst-case search
 VANISHED = 1e-7  # share of a leg that is left out
 SAME = 1e-5  # relative difference of the figures of two forms of one resistor
 
@@ -42,6 +46,7 @@ class Task:
     limits: LegLimits
     trees: tuple[Tree, ...]
     outermost: float | None
+    variation: Variation | None = None
 
     @property
     def name(self) -> str:
@@ -50,20 +55,34 @@ class Task:
 
     def run(self) -> tuple[tuple[Start, Polished], ...]:
         """Return the best starts of the shape, and what polishing made of them."""
-        field: Field = field_at(self.source, *spread_points(self.source.need, NODES, chebyshev=True))
-        grid = polishing_grid(self.source)
         # A limit of area is curved, and may part what is allowed: more minima are worth a polish.
         kept = 3 * KEPT if self.limits.max_area < np.inf else KEPT
-        starts = grid_starts(self.trees, field, self.limits, kept, self.outermost)
+        starts = grid_starts(self.trees, self._surface(), self.limits, kept, self.outermost)
         pair = paired(shape_of(self.trees[0]))
         if not isinstance(pair, Pair):
             return ()
-        polishers = [
-            Polisher(pair, leaves(start.tree), self.source, self.limits, grid, self.outermost)
-            for start in starts
-        ]
+        polishers = self._polishers(pair, starts)
         polished = polish(polishers, [np.array(start.shares) for start in starts])
         return tuple((starts[k], end) for k, end in polished)
+
+    def _surface(self) -> Surface:
+        """Return what the grid stage takes its figures over."""
+        if self.variation is None:
+            return field_at(self.source, *spread_points(self.source.need, NODES, chebyshev=True))
+        points = spread_points(self.source.need, DEVICE_NODES, chebyshev=True)
+        return devices_at(self.source, self.variation, *points)
+
+    def _polishers(self, pair: Pair, starts: Sequence[Start]) -> list[NominalPolisher] | list[SpreadPolisher]:
+        source, limits, outermost = self.source, self.limits, self.outermost
+        if self.variation is None:
+            grid = polishing_grid(source)
+            return [NominalPolisher(pair, leaves(s.tree), limits, outermost, source, grid) for s in starts]
+        points = spread_points(source.need, GRID, chebyshev=False)
+        devices = devices_at(source, self.variation, *points)
+        return [
+            SpreadPolisher(pair, leaves(s.tree), limits, outermost, source, self.variation, devices)
+            for s in starts
+        ]
 
 
 def _network(space: Space, tree: Tree, polished: Polished) -> Network | None:
@@ -138,13 +157,18 @@ def _opened(network: Network) -> Network:
     return kind(tuple(children))
 
 
-def tasks_of(space: Space, need: Requirement, materials: Mapping[str, Material]) -> tuple[Task, ...]:
+def tasks_of(
+    space: Space,
+    need: Requirement,
+    materials: Mapping[str, Material],
+    variation: Variation | None = None,
+) -> tuple[Task, ...]:
     """Return the tasks of a space, one a shape of tree; those with most legs first."""
     source, limits = Source(need, materials, space), limits_of(space)
     outermost = space.fixed_share[0] if space.fixed else None
     groups = [tuple(group) for _, group in by_shape(mixed_trees(space))]
     groups.sort(key=lambda group: -len(leaves(group[0])))
-    return tuple(Task(source, limits, group, outermost) for group in groups)
+    return tuple(Task(source, limits, group, outermost, variation) for group in groups)
 
 
 def mixed_proposals(
@@ -153,6 +177,7 @@ def mixed_proposals(
     materials: Mapping[str, Material],
     few: int = 3,
     effort: Effort | None = None,
+    variation: Variation | None = None,
 ) -> tuple[Proposal, ...]:
     """Return the best few mixed networks of each number of legs, best first.
 
@@ -166,9 +191,11 @@ def mixed_proposals(
         How many are wanted of each number of legs.
     effort : Effort, optional
         Who does the work; when it is stopped, the best of what was done is returned.
+    variation : Variation, optional
+        With it, the networks that are best in their worst case; else the nominally best ones.
     """
     space = in_order(space)
-    done = (effort or Effort()).results(tasks_of(space, need, materials))
+    done = (effort or Effort()).results(tasks_of(space, need, materials, variation))
     ranked = sorted(
         (
             (polished.figure, repr(start.tree), start.tree, polished)

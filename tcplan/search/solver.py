@@ -13,7 +13,8 @@ import numpy as np
 from tcplan.arrays import FloatArray, IntArray
 from tcplan.minimax import solve_fractional
 from tcplan.mixes import area_of, share_vertices, simplex_vertices
-from tcplan.search.columns import GRID, START, Programme, Rows
+from tcplan.search.columns import Programme, Rows
+from tcplan.search.spread_columns import SpreadProgramme
 
 RELATIVE, ABSOLUTE = 1e-7, 1e-13
 EXCHANGES = 25
@@ -43,18 +44,21 @@ def closed(upper: float, lower: float) -> bool:
 
 @dataclass(slots=True)
 class Solver:
-    """One space: its rows so far, and the bank of dual vectors."""
+    """One space: its rows so far, and the bank of dual vectors.
 
-    programme: Programme
+    The programme is that of nominal materials, or that of the worst device.
+    """
+
+    programme: Programme | SpreadProgramme
     nodes: Rows = field(init=False)
-    grid: Rows = field(init=False)
+    shared: int = field(init=False)
     bank: list[FloatArray] = field(default_factory=list)
     tangents: dict[tuple[int, ...], list[tuple[float, ...]]] = field(default_factory=dict)
     centre_limit: float = 0.0
 
     def __post_init__(self) -> None:
-        self.nodes = self.programme.spread_rows(START, chebyshev=True)
-        self.grid = self.programme.spread_rows(GRID, chebyshev=False)
+        self.nodes = self.programme.start_rows()
+        self.shared = len(self.nodes.temperature)
         if self.programme.need.centred:
             self.centre_limit = self._least_single()
 
@@ -70,7 +74,7 @@ class Solver:
         """
         space = self.programme.space
         figures = [
-            self.reach(vertex)[0]
+            self.programme.reach(vertex)[0]
             for i in range(self.count)
             for vertex in simplex_vertices(space, [i], least_share=False)
         ]
@@ -78,57 +82,6 @@ class Solver:
         # A single material may be too large or too small to be made: then any of them may be best.
         sized = space.sizes is not None and space.sizes.bounded
         return 1.001 * weight * (max(figures) if sized else min(figures))
-
-    # --- what a mix reaches -------------------------------------------------------------------
-
-    def centre(self, x: FloatArray, rows: Rows) -> float:
-        """Return the centre that suits shares x best on these rows."""
-        banded = rows.b[:, -1] > 0
-        if not banded.any():
-            return 0.0
-        drift = (rows.n[banded] @ x) / (rows.b[banded] @ x)
-        return float(0.5 * (drift.max() + drift.min()))
-
-    def reach(self, x: FloatArray) -> tuple[float, Rows]:
-        """Return the figure of shares x over the continuous range, and the rows that set it."""
-        peaks = self._refined(x, self._grid_peaks(x))
-        all_rows = self.grid.joined(peaks)
-        centre = self.centre(x, all_rows)
-        figure = float(np.max(np.abs(all_rows.figures(x, centre))))
-        return figure, peaks
-
-    def _grid_peaks(self, x: FloatArray) -> IntArray:
-        """Return positions on the grid of the local extremes of the drift, ends included."""
-        drift, piece = self.grid.figures(x, 0.0), self.grid.piece
-        padded = np.r_[np.nan, drift, np.nan]
-        edge = np.r_[True, piece[1:] != piece[:-1], True]
-        left, right = padded[:-2].copy(), padded[2:].copy()
-        left[edge[:-1]], right[edge[1:]] = np.nan, np.nan
-        high = ~((left > drift) | (right > drift))
-        low = ~((left < drift) | (right < drift))
-        return np.nonzero(high | low)[0]
-
-    def _refined(self, x: FloatArray, at: IntArray) -> Rows:
-        """Return rows at extremes refined by two steps of parabolic interpolation."""
-        piece, t = self.grid.piece[at], self.grid.temperature[at].copy()
-        low = np.array([p.low for p in self.programme.need.pieces])[piece]
-        high = np.array([p.high for p in self.programme.need.pieces])[piece]
-        step = (high - low) / (GRID - 1)
-        inside = (t > low) & (t < high)
-        t[~inside & (t <= low)] = low[~inside & (t <= low)]
-        piece, t, step = piece[inside], t[inside], step[inside]
-        ends = self.grid.take(at[~inside])
-        for shrink in (1.0, 0.05):
-            h = step * shrink
-            if not len(t):
-                break
-            rows = self.programme.rows(np.tile(piece, 3), np.concatenate([t - h, t, t + h]))
-            f0, f1, f2 = np.split(rows.figures(x, 0.0), 3)
-            bend = f0 - 2 * f1 + f2
-            move = np.where(np.abs(bend) > 1e-18, 0.5 * (f0 - f2) / np.where(bend == 0, 1.0, bend), 0.0)
-            t = t + h * np.clip(move, -1.0, 1.0)
-        t = np.clip(t, low[inside], high[inside])
-        return ends.joined(self.programme.rows(piece, t))
 
     # --- one support --------------------------------------------------------------------------
 
@@ -155,8 +108,7 @@ class Solver:
         """Return the best mix of these vertices of the shares."""
         x = weights.mean(axis=1)
         best = Mix(x, float("inf"), 0.0)
-        mine = np.arange(len(self.nodes.temperature))
-        mine = mine[: self._shared_count()]
+        mine = np.arange(self.shared)  # these rows are used for every support
         for _ in range(EXCHANGES):
             rows = self.nodes.take(mine)
             x, dual = self._mix_on(rows, weights, x)
@@ -164,7 +116,7 @@ class Solver:
             y[mine] = dual
             self.bank.append(y)
             lower = max(best.lower, self.bound_of(weights, [y]))
-            figure, peaks = self.reach(x)
+            figure, peaks = self.programme.reach(x)
             if figure < best.figure:
                 best = Mix(x, figure, lower)
             best = replace(best, lower=lower)
@@ -180,14 +132,12 @@ class Solver:
             best = replace(best, lower=self._close_centre(weights, best, mine))
         return best
 
-    def _shared_count(self) -> int:
-        """Return how many of the first rows every support uses."""
-        return sum(1 if p.low == p.high else START for p in self.programme.need.pieces)
-
     def _new_rows(self, peaks: Rows, rows: Rows) -> Rows:
         """Return the peaks that are not among the rows already."""
         near = np.abs(peaks.temperature[:, None] - rows.temperature[None, :]) < 1e-7
         same = near & (peaks.piece[:, None] == rows.piece[None, :])
+        same &= peaks.side[:, None] == rows.side[None, :]
+        same &= (peaks.factors[:, None, :] == rows.factors[None, :, :]).all(axis=2)
         return peaks.take(np.nonzero(~same.any(axis=1))[0])
 
     def _mix_on(self, rows: Rows, weights: FloatArray, x: FloatArray) -> tuple[FloatArray, FloatArray]:
@@ -201,11 +151,16 @@ class Solver:
         for _ in range(rounds):
             shift = self.centre_limit * (rows.b @ x)[:, None]
             sides = [n - shift, n + shift] if self.centre_limit else [n]
-            numerator = np.hstack([np.vstack([side, -side]) for side in sides])
-            denominator = np.hstack([np.vstack([d, d])] * len(sides))
-            answer = solve_fractional(numerator, denominator)
+            if rows.side.any():  # rows of one device bind on their own side
+                answer = solve_fractional(n, d)
+            else:
+                numerator = np.hstack([np.vstack([side, -side]) for side in sides])
+                denominator = np.hstack([np.vstack([d, d])] * len(sides))
+                answer = solve_fractional(numerator, denominator)
             mix = answer.mix.reshape(len(sides), -1).sum(axis=0)
             x = weights @ mix
+        if rows.side.any():
+            return x, answer.rows
         up, down = np.split(answer.rows, 2)
         return x, up - down
 

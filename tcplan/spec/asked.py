@@ -11,7 +11,8 @@ from tcplan.units import format_ohms
 def headline(plan: Plan) -> str:
     """Return what was asked and the verdict, in one line."""
     low, high = (numbers.stated(t) for t in (plan.range.low_degC, plan.range.high_degC))
-    judge = "worst case" if plan.limit.judge == "worst-case" else "nominal"
+    lots = f"{numbers.percent(plan.limit.quantile)} of lots"
+    judge = {"worst-case": "worst case", "quantile": lots}.get(plan.limit.judge, "nominal")
     return f"{asked_value(plan)}, {asked_limit(plan)} ({judge}), {low} to {high} degC: {verdict(plan)}"
 
 

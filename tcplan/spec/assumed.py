@@ -70,6 +70,11 @@ def _designed(plan: Plan) -> str:
     option = plan.best
     if option.proof.of == plan.limit.judge or option.role == "given":
         return ""
+    if plan.limit.judge == "quantile":
+        return (
+            "Designed for nominal drift and for the worst case of parts of the spread, judged on lots: "
+            "another mix may be better there."
+        )
     return (
         "Designed for nominal drift, judged on the worst case: a mix that is worse at nominal may be "
         "better there."

@@ -11,7 +11,14 @@ from tcplan.network import leg_names, legs, network_text, shares
 from tcplan.plan import Option, Plan
 from tcplan.spec import numbers
 from tcplan.spec.asked import longer_arm_K
-from tcplan.spec.statements import SIZE_WORDS, nominal_text, spread_ppm, worst_text
+from tcplan.spec.statements import (
+    SIZE_WORDS,
+    fraction_text,
+    likely_text,
+    nominal_text,
+    spread_ppm,
+    worst_text,
+)
 from tcplan.units import (
     format_celsius,
     format_ohms,
@@ -30,6 +37,7 @@ class OptionRow:
     network: str
     sizes: str
     nominal: str
+    likely: str
     worst_case: str
     verdict: str
     chosen: bool
@@ -70,6 +78,7 @@ def option_row(plan: Plan, option: Option) -> OptionRow:
         network=network_text(option.network, lambda leg: f"{leg.material} {format_ohms(leg.ohms)}"),
         sizes=", ".join([*(size or "-" for size in sizes), *_area(option)]) if any(sizes) else "",
         nominal=nominal_text(plan, option),
+        likely=likely_text(plan, option) if option.likely else "",
         worst_case=worst_text(plan, option),
         verdict=option.verdict if plan.limit.drift_ppm is not None else "no limit",
         chosen=option.id == plan.chosen,
@@ -127,7 +136,9 @@ def figure_rows(plan: Plan, option: Option) -> tuple[tuple[str, str], ...]:
     chords = (("cold", nominal.chord_cold_ppm_per_K), ("hot", nominal.chord_hot_ppm_per_K))
     rows = [
         ("judged figure, nominal", f"{nominal_text(plan, option)} ppm"),
+        (f"judged figure, {fraction_text(plan)} of lots", _ppm(likely_text(plan, option))),
         ("judged figure, worst case", _worst(plan, option)),
+        *((f"judged figure, corner {name}", f"{numbers.worst(c)} ppm") for name, c in option.corners.items()),
         ("peak drift, nominal", f"{ppm(nominal.peak_ppm)} at {numbers.number(nominal.at_degC)} degC"),
         ("band, nominal", ppm(nominal.band_ppm)),
         ("box TCR, nominal", f"{numbers.nominal(nominal.box_tcr_ppm_per_K, per_K)} ppm/K"),
@@ -138,6 +149,10 @@ def figure_rows(plan: Plan, option: Option) -> tuple[tuple[str, str], ...]:
         if tcr is not None
     ]
     return tuple(rows)
+
+
+def _ppm(text: str) -> str:
+    return text if text == "not stated" else f"{text} ppm"
 
 
 def _worst(plan: Plan, option: Option) -> str:

@@ -29,7 +29,7 @@ CAUTIONS = (
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Spec:
-    """A spec sheet in words; ``worst_at`` is empty and ``movers`` has nothing without a worst case."""
+    """A spec sheet in words; ``worst_at`` and ``likely`` are empty where no spread is stated."""
 
     title: str
     headline: str
@@ -47,6 +47,9 @@ class Spec:
     figures: tuple[tuple[str, str], ...]
     worst_at: str
     movers: tuple[str, ...]
+    likely: str
+    corners: str
+    fraction: str
     centring: str
     proof: str
     notes: tuple[str, ...]
@@ -86,6 +89,9 @@ def spec_of(plan: Plan) -> Spec:
         figures=figure_rows(plan, option),
         worst_at=statements.worst_point(plan, option),
         movers=statements.movers(plan, option),
+        likely=statements.likely_lots(plan, option),
+        corners=statements.corners_text(option),
+        fraction=statements.fraction_text(plan),
         centring=statements.centring(plan, option),
         proof=statements.proof_text(plan, option),
         notes=plan.notes,

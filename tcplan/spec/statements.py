@@ -2,6 +2,8 @@
 
 from __future__ import annotations
 
+import math
+
 from tcplan.network import used_materials, value
 from tcplan.plan import Deviation, Option, Plan
 from tcplan.spec import numbers
@@ -16,7 +18,7 @@ SIZE_WORDS = {"film": "sheet resistance", "wire": "resistance per metre"}
 
 def nominal_ppm(option: Option) -> float:
     """Return the nominal figure that the limit is set on [ppm]."""
-    return option.proof.figure_ppm
+    return option.nominal.figure_ppm
 
 
 def spread_ppm(option: Option) -> float | None:
@@ -40,8 +42,46 @@ def worst_text(plan: Plan, option: Option) -> str:
     return found if found == most else f"{found} (at most {most})"
 
 
+def likely_text(plan: Plan, option: Option) -> str:
+    """Return the quantile of the lots without its unit."""
+    if option.likely is None:
+        return "not stated"
+    limit = plan.limit.drift_ppm if option.verdict == "MET" and plan.limit.judge == "quantile" else None
+    return numbers.worst(option.likely.peak_ppm, limit)
+
+
+def fraction_text(plan: Plan) -> str:
+    """Return the fraction of lots that a quantile is of."""
+    return numbers.percent(plan.limit.quantile)
+
+
+def likely_lots(plan: Plan, option: Option) -> str:
+    """Return what draws of lots say, and no more than their number supports; empty without spreads."""
+    likely = option.likely
+    if likely is None:
+        return ""
+    high = "more" if likely.high_ppm is None else numbers.worst(likely.high_ppm)
+    between = f"{numbers.bound(likely.low_ppm)} to {high} at 95 % confidence"
+    found = f"{fraction_text(plan)} of lots stay within {likely_text(plan, option)} ppm ({between})"
+    if likely.inside is not None and likely.inside_low is not None:
+        found += f"; at least {_at_least(likely.inside_low)} of lots meet the limit"
+    return f"{found}; {likely.draws} draws, seed {likely.seed}."
+
+
+def _at_least(fraction: float) -> str:
+    """Return a fraction in percent, rounded down."""
+    return f"{math.floor(fraction * 1e4) / 100:g} %"
+
+
+def corners_text(option: Option) -> str:
+    """Return the figure of every named process corner; empty without any."""
+    return ", ".join(f"{name} {numbers.worst(ppm)} ppm" for name, ppm in option.corners.items())
+
+
 def floor_ppm(plan: Plan) -> float:
-    """Return the floor of the figure that the brief judges [ppm]."""
+    """Return the floor of the figure that the brief judges [ppm]; none is known of a quantile."""
+    if plan.limit.judge == "quantile":
+        return 0.0
     worst = plan.floor.worst_case_ppm
     return worst if plan.limit.judge == "worst-case" and worst is not None else plan.floor.nominal_ppm
 
@@ -68,6 +108,8 @@ def outcome(plan: Plan) -> tuple[str, ...]:
 
 
 def _against_limit(plan: Plan, option: Option, limit: float) -> str:
+    if plan.limit.judge == "quantile":
+        return _quantile_against(plan, option, limit)
     at_worst = plan.limit.judge == "worst-case"
     if at_worst and option.worst_case is None:
         missing = ", ".join(without_spread(plan, option))
@@ -83,6 +125,24 @@ def _against_limit(plan: Plan, option: Option, limit: float) -> str:
     if option.verdict == "MET":
         return f"{option.id} reaches {reached}; {stop} is met{'' if at_worst else ' at nominal'}."
     return f"{option.id} reaches {reached}, {numbers.worst(figure - limit)} ppm over {stop}."
+
+
+def _quantile_against(plan: Plan, option: Option, limit: float) -> str:
+    if option.likely is None:
+        missing = ", ".join(without_spread(plan, option))
+        return f"{option.id} is not judged: no spread is stated for {missing}."
+    stop = f"the limit of {numbers.stated(limit)} ppm"
+    reached = f"{fraction_text(plan)} of lots within {likely_text(plan, option)} ppm"
+    if option.verdict == "MET":
+        return f"{option.id} keeps {reached}; {stop} is met."
+    if option.verdict == "NOT JUDGED":
+        return f"{option.id} is not judged: it keeps {reached}, and {stop} is too near for {_draws(option)}."
+    over = numbers.worst(option.likely.peak_ppm - limit)
+    return f"{option.id} keeps {reached}, {over} ppm over {stop}."
+
+
+def _draws(option: Option) -> str:
+    return f"{option.likely.draws} draws" if option.likely else "draws"
 
 
 def _nominal_only(plan: Plan, option: Option, limit: float | None) -> list[str]:
@@ -135,11 +195,12 @@ def reason(plan: Plan) -> str:
     if option.role == "given":
         return "the network that was given"
     if option.role:
-        # Judged on the worst case it is found by halving a nominal limit: not proved to be the least.
-        found = " of those found" if plan.limit.judge == "worst-case" else ""
+        # Not searched for what is judged, it is found by halving a nominal limit: not proved the least.
+        found = "" if option.proof.of == plan.limit.judge else " of those found"
         return f"the {option.role}{found} that meets the limit"
     if plan.limit.drift_ppm is None:
-        return f"the least {'worst case' if plan.limit.judge == 'worst-case' else 'nominal figure'}"
+        words = {"worst-case": "worst case", "quantile": "quantile of those found"}
+        return f"the least {words.get(plan.limit.judge, 'nominal figure')}"
     if option.verdict == "MET":
         return "the simplest that meets the limit"
     return "the best of those found; none meets the limit"

@@ -6,6 +6,11 @@ For signed weights y over the rows, and any mix of columns,
 - series:   n = r - t,        d = L,        b = 1
 - parallel: n = 1 - t Gamma,  d = L Gamma,  b = Gamma
 
+and for the worst case, where a row is one device on one side s of the goal and y is not negative,
+
+- series:   n = s m (r - t),       d = m L
+- parallel: n = s (1 - t Gamma)/m, d = L Gamma/m   (m the value factors, r the law ratios at their limit)
+
 A bound needs nothing of the solver that found y: any y gives a true one.
 """
 
@@ -20,8 +25,17 @@ from tcplan.arrays import FloatArray, IntArray
 from tcplan.errors import InternalError
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
-from tcplan.mixes import all_supports, fixed_ends, fixed_ratio, share_vertices
+from tcplan.material.spread import law_bounds, value_half_width
+from tcplan.mixes import (
+    all_supports,
+    fixed_ends,
+    fixed_ratio,
+    share_vertices,
+    spread_columns,
+    spread_names,
+)
 from tcplan.plan import Certificate, FloorEvidence, Space
+from tcplan.process import Variation
 
 MARGIN = 1e-13  # floating point without directed rounding
 CELLS = 400
@@ -31,7 +45,7 @@ MOST_EXACT = 5_000  # supports of a chunk that are bounded one by one
 
 @dataclass(frozen=True, slots=True)
 class Line:
-    """For one y: y n, y b and |y| d of every material, and last of the fixed members together."""
+    """n, b and d of every material, and last of the fixed members together: of nodes, or summed by a y."""
 
     n: FloatArray
     b: FloatArray
@@ -39,25 +53,85 @@ class Line:
 
 
 def _lines(
-    space: Space, evidence: Certificate, need: Requirement, materials: Mapping[str, Material]
+    space: Space,
+    evidence: Certificate,
+    need: Requirement,
+    materials: Mapping[str, Material],
+    variation: Variation | None,
 ) -> list[Line]:
     """Evaluate every dual vector of the evidence from the materials' laws."""
-    T = np.array([t for _, t in evidence.nodes])
-    weight = np.array([need.pieces[p].weight for p, _ in evidence.nodes])
-    free = np.array([1.0 if need.pieces[p].centred else 0.0 for p, _ in evidence.nodes])
-    parallel = space.arrangement == "parallel"
+    if variation is None:
+        rows = _nominal_rows(space, evidence, need, materials)
+        y = np.array(evidence.weights)
+    else:
+        rows = _device_rows(space, evidence, need, materials, variation)
+        y = np.maximum(np.array(evidence.weights), 0.0)  # a device binds on its own side only
+    n, b, d = y @ rows.n, y @ rows.b, np.abs(y) @ rows.d
+    used = slice(None) if space.fixed else slice(-1)  # the last column is that of fixed members
+    return [Line(n[k], b[k], d[k]) for k in range(len(y)) if np.all(d[k][used] > 0)]
+
+
+def _nominal_rows(
+    space: Space, evidence: Certificate, need: Requirement, materials: Mapping[str, Material]
+) -> Line:
+    """Return n, b and d of every node, shape (nodes, columns), for nominal materials."""
+    T = np.array([node.temperature for node in evidence.nodes])
+    pieces = [need.pieces[node.piece] for node in evidence.nodes]
+    weight, free = np.array([p.weight for p in pieces]), np.array([1.0 if p.centred else 0.0 for p in pieces])
     columns = [materials[name].ratio(T, need.reference) for name in space.materials]
     columns.append(fixed_ratio(space, materials, need.reference, T))
-    t = need.wanted(T)
-    y = np.array(evidence.weights)
-    n = np.empty((len(y), len(columns)))
-    b, d = np.empty_like(n), np.empty_like(n)
-    for j, r in enumerate(columns):
-        base = 1.0 / r if parallel else np.ones_like(r)
-        n[:, j] = y @ (1.0 - t * base if parallel else r - t)
-        b[:, j] = y @ (free * base)
-        d[:, j] = np.abs(y) @ (weight * base)
-    return [Line(n[k], b[k], d[k]) for k in range(len(y)) if np.all(d[k] > 0)]
+    r, t = np.stack(columns, axis=1), need.wanted(T)[:, None]
+    if space.arrangement == "parallel":
+        return Line(1.0 - t / r, free[:, None] / r, weight[:, None] / r)
+    one = np.ones_like(r)
+    return Line(r - t, free[:, None] * one, weight[:, None] * one)
+
+
+def _device_rows(
+    space: Space,
+    evidence: Certificate,
+    need: Requirement,
+    materials: Mapping[str, Material],
+    variation: Variation,
+) -> Line:
+    """Return n, b and d of every node, shape (nodes, columns), each for the device of its scenario.
+
+    The factors are pressed into the box, and on what the materials share, so that whatever the
+    evidence says, a true device is looked at.
+    """
+    names = spread_names(space)
+    T = np.array([node.temperature for node in evidence.nodes])
+    side = np.array([node.side for node in evidence.nodes])[:, None]
+    weight = np.array([need.pieces[node.piece].weight for node in evidence.nodes])[:, None]
+    bounds = [law_bounds(materials[n].law, variation.spreads[n], need.reference, T) for n in names]
+    low, high = np.stack([lo for lo, _ in bounds], 1), np.stack([hi for _, hi in bounds], 1)
+    r, t = np.where(side > 0, high, low), need.wanted(T)[:, None]
+    m = _pressed(np.array([node.factors for node in evidence.nodes]), names, need, materials, variation)
+    if space.arrangement == "parallel":
+        n, d = side * (1.0 - t / r) / m, weight / (r * m)
+    else:
+        n, d = side * m * (r - t), weight * m
+    columns = spread_columns(space)
+    return Line(n @ columns, np.zeros((len(T), columns.shape[1])), d @ columns)
+
+
+def _pressed(
+    factors: FloatArray,
+    names: Sequence[str],
+    need: Requirement,
+    materials: Mapping[str, Material],
+    variation: Variation,
+) -> FloatArray:
+    """Return the factors at the nearest coordinates of the box, one for materials that move in full step."""
+    half = np.array([value_half_width(materials[n].law, variation.spreads[n], need.reference) for n in names])
+    with np.errstate(invalid="ignore", divide="ignore"):
+        own = np.where(half > 0, np.clip((factors - 1.0) / half, -1.0, 1.0), 0.0)
+    groups = variation.process.value_groups(names)
+    for g in set(groups):
+        members = [k for k, group in enumerate(groups) if group == g]
+        moving = [k for k in members if half[k] > 0]
+        own[:, members] = own[:, moving[:1]] if moving else 0.0
+    return np.asarray(1.0 + own * half)
 
 
 def _value(line: Line, space: Space, support: IntArray, centre: float) -> FloatArray:
@@ -118,6 +192,7 @@ def arrangement_bound(
     need: Requirement,
     materials: Mapping[str, Material],
     figure: float,
+    variation: Variation | None = None,
 ) -> float:
     """Return a lower bound on the figure of every network of a space (a fraction, at least 0).
 
@@ -130,8 +205,10 @@ def arrangement_bound(
     figure : float
         A figure that some network of the space reaches: whatever beats it has its centre within
         weight * figure of the wanted value, since the drift is 0 at the reference.
+    variation : Variation, optional
+        With it the figures are those of the worst case, and the evidence is of devices.
     """
-    lines = _lines(space, evidence, need, materials)
+    lines = _lines(space, evidence, need, materials, variation)
     limit = next((p.weight * figure for p in need.pieces if p.centred), 0.0)
     if not lines:
         return 0.0

@@ -26,9 +26,10 @@ from tcplan.minimax import solve_game
 from tcplan.mixes import mixed_trees
 from tcplan.network import Network, used_materials
 from tcplan.plan import Space
+from tcplan.process import Variation
 from tcplan.trees import Pair, Tree, leaves, paired, shape_of
 from tcplan.verify.hull import Cells, shares_in, top_members
-from tcplan.verify.question import Question, columns_of, question
+from tcplan.verify.question import Question, columns_of, device_question, question
 
 MARGIN = 1e-12  # floating point without directed rounding
 BATCH = 2048
@@ -179,11 +180,15 @@ class _Sieve:
     ask: Question
     free_top: bool
     bank: list[FloatArray]
+    curves: FloatArray = field(init=False)
+
+    def __post_init__(self) -> None:
+        self.curves = self.ask.curves.of(self.group)
 
     def left(self, cells: _Open) -> BoolArray:
         """Return which cells of a batch are left, after the bank and some new vectors."""
         group = self.group[cells.tree]
-        legs = tuple(self.ask.ratios[group[:, leg]] for leg in range(group.shape[1]))
+        legs = tuple(self.curves[cells.tree, leg] for leg in range(group.shape[1]))
         boxes = Cells(legs, cells.low, cells.high)
         left = np.ones(len(group), dtype=bool)
         if not self.free_top:
@@ -287,6 +292,8 @@ class MixedBound:
     need: Requirement
     materials: Mapping[str, Material]
     more: tuple[float, ...] = ()
+    variation: Variation | None = None
+    devices: tuple[Mapping[str, float], ...] = ()
     bank: dict[str, list[FloatArray]] = field(default_factory=dict)
 
     def below(self, figure: float, gap: float) -> float:
@@ -303,13 +310,19 @@ class MixedBound:
         most = BASE_CELLS + CELLS_A_TREE * len(trees)
         for part in WEAKER:
             limit = first_limit * part
-            ask = question(self.space, self.need, self.materials, limit, self.more)
+            ask = self._question(limit)
             if none_within(trees, ask, self.bank, most_cells=most).proved:
                 return limit
             sized = ask.sized and part in SIZED
             if sized and none_within(trees, ask, self.bank, free_top=False, most_cells=4 * most).proved:
                 return limit
         return 0.0
+
+    def _question(self, limit: float) -> Question:
+        space, need, materials, more = self.space, self.need, self.materials, self.more
+        if self.variation is None:
+            return question(space, need, materials, limit, more)
+        return device_question(space, need, materials, self.variation, limit, more, self.devices)
 
 
 def _extremes_of(network: Network, need: Requirement, materials: Mapping[str, Material]) -> list[float]:
@@ -335,6 +348,8 @@ def mixed_bound(
     networks: Sequence[Network],
     figure: float,
     gap: float,
+    variation: Variation | None = None,
+    devices: Sequence[tuple[float, Mapping[str, float]]] = (),
 ) -> float:
     """Return a figure that no mixed network of a space is within (a fraction).
 
@@ -350,8 +365,14 @@ def mixed_bound(
         The best figure known.
     gap : float
         Relative gap that is tried first.
+    variation : Variation, optional
+        With it the figures are those of the worst case.
+    devices : sequence of (float, mapping of name to float)
+        The temperatures [K] and the value factors of the worst devices of the best networks.
     """
-    more: list[float] = []
-    for network in networks:
-        more.extend(_extremes_of(network, need, materials))
-    return MixedBound(space, need, materials, tuple(sorted(set(more)))).below(figure, gap)
+    if variation is None:
+        more = {at for network in networks for at in _extremes_of(network, need, materials)}
+        return MixedBound(space, need, materials, tuple(sorted(more))).below(figure, gap)
+    temperatures = tuple(sorted({at for at, _ in devices}))
+    factors = tuple(one for _, one in devices)
+    return MixedBound(space, need, materials, temperatures, variation, factors).below(figure, gap)

@@ -13,13 +13,20 @@ from tcplan.effort import Effort
 from tcplan.errors import InputError, NoAnswer, Problem, Stopped
 from tcplan.goal import requirement
 from tcplan.material.spread import law_bounds, value_half_width
-from tcplan.network import legs, used_materials, value
+from tcplan.network import legs, network_text, used_materials, value
 from tcplan.plan import LimitRecord, Option, Plan, Proposal, RangeRecord, TargetRecord
-from tcplan.units import format_ppm, round_outward
+from tcplan.units import format_ppm, from_celsius, round_outward
 from tcplan.verify.floor import floor
-from tcplan.verify.option import Case, check, nominal_figure
+from tcplan.verify.option import Case, check, nominal_figure, proved, with_likely
 from tcplan.verify.tree_bound import mixed_bound
-from tcplan.workflow.proposals import fixed_share, floor_evidence, left_out, proposals, spreads_of
+from tcplan.workflow.proposals import (
+    designed_for_worst_case,
+    fixed_share,
+    floor_evidence,
+    left_out,
+    proposals,
+    spreads_of,
+)
 
 STOPPED = "Stopped early: the best of what was searched until then."
 MOST_LEGS_FOR_MORE = 4  # mixed networks of more legs than that are long work
@@ -28,40 +35,61 @@ EQUAL = 1.01  # an option that a simpler one equals within this factor is droppe
 
 
 def judged_ppm(option: Option, judge: str) -> float:
-    """Return the figure that the brief judges [ppm]; infinite where there is no worst case."""
+    """Return the figure that the brief judges [ppm]; infinite where there is none."""
     if judge == "nominal":
-        return option.proof.figure_ppm
+        return option.nominal.figure_ppm
+    if judge == "quantile":
+        return option.likely.peak_ppm if option.likely else float("inf")
     return option.worst_case.peak_ppm if option.worst_case else float("inf")
 
 
-def _mixed_ppm(found: Sequence[Proposal], case: Case, gap: float) -> float:
+def _mixed_ppm(checked: Sequence[tuple[Proposal, Option]], case: Case, gap: float) -> float:
     """Return the bound of the mixed networks that were searched [ppm]; 0 when there are none."""
-    mixed = [p for p in found if p.space is not None and p.space.arrangement == "mixed"]
-    if not mixed or mixed[0].space is None:
+    mixed = [(p, o) for p, o in checked if p.space is not None and p.space.arrangement == "mixed"]
+    if not mixed or mixed[0][0].space is None:
         return 0.0
-    ranked = sorted(mixed, key=lambda p: nominal_figure(p.network, case))
-    networks = [p.network for p in ranked[:4]]
+    near = [o for _, o in sorted(mixed, key=lambda pair: pair[1].proof.figure_ppm)[:4]]
+    devices = [
+        (from_celsius(o.worst_case.at_degC), {n: d.ohm_per_square for n, d in o.worst_case.point.items()})
+        for o in near
+        if o.worst_case is not None
+    ]
     # The limits of mixed networks are the simple ones: the best of all is what can be proved.
-    best = min(nominal_figure(p.network, case) for p in found)
-    return mixed_bound(mixed[0].space, case.need, case.materials, networks, best, gap) * 1e6
+    best = min(o.proof.figure_ppm for _, o in checked) * 1e-6
+    space, networks = mixed[0][0].space, [o.network for o in near]
+    return 1e6 * mixed_bound(
+        space,
+        case.need,
+        case.materials,
+        networks,
+        best,
+        gap,
+        case.variation,
+        devices if case.designed else (),
+    )
 
 
 def _shortlist(options: Sequence[Option], judge: str) -> tuple[Option, ...]:
     """Return the options worth showing, best first.
 
-    Dropped: a network that is there already, one that a simpler one equals within 1 %, and one that
+    Dropped: a network that is there already with other values, one that a simpler one equals within 1 %, and one that
     another beats in all of judged figure, area, legs and materials. One that meets the limit never
     gives way to one that does not.
     """
     order = sorted(
-        options, key=lambda o: (judged_ppm(o, judge), o.proof.figure_ppm, len(legs(o.network)), o.id)
+        options, key=lambda o: (judged_ppm(o, judge), o.nominal.figure_ppm, len(legs(o.network)), o.id)
     )
     kept: list[Option] = []
     for option in sorted(order, key=lambda o: len(legs(o.network))):  # simpler ones first
-        same = any(o.network == option.network for o in kept)
+        same = any(_structure(o) == _structure(option) for o in kept)
         if option.role or not (same or any(_makes_needless(o, option, judge) for o in kept)):
             kept.append(option)
     return tuple(option for option in order if option in kept)
+
+
+def _structure(option: Option) -> tuple[str, str]:
+    """Return what an option is without its values: two of one structure are two ways to size it."""
+    return option.role, network_text(option.network, lambda leg: leg.material)
 
 
 def _makes_needless(other: Option, option: Option, judge: str) -> bool:
@@ -69,7 +97,7 @@ def _makes_needless(other: Option, option: Option, judge: str) -> bool:
     if option.verdict == "MET" and other.verdict != "MET":
         return False
     judged = judged_ppm(other, judge), judged_ppm(option, judge)
-    nominal = other.proof.figure_ppm, option.proof.figure_ppm
+    nominal = other.nominal.figure_ppm, option.nominal.figure_ppm
     fewer = len(legs(other.network)) < len(legs(option.network))
     equals = judged[0] <= EQUAL * judged[1] and nominal[0] <= EQUAL * nominal[1]
     if fewer and equals:
@@ -114,7 +142,14 @@ def make_plan(brief: Brief, *, gap: float = 0.01, effort: Effort | None = None) 
     effort = effort or Effort()
     need = requirement(brief.goal, brief.over)
     _check_spreads(brief)
-    case = Case(materials=brief.by_name, spreads=spreads_of(brief), over=brief.over, need=need)
+    case = Case(
+        materials=brief.by_name,
+        spreads=spreads_of(brief),
+        over=brief.over,
+        need=need,
+        process=brief.process,
+        designed=designed_for_worst_case(brief, need),
+    )
     found = proposals(brief, need, case, effort=effort)
     if not found:
         raise NoAnswer(
@@ -128,14 +163,15 @@ def make_plan(brief: Brief, *, gap: float = 0.01, effort: Effort | None = None) 
     bottom = floor(evidence, need, case.materials, stated, best)
     case = replace(
         case,
-        floor_ppm=bottom.nominal_ppm,
+        floor_ppm=(bottom.worst_case_ppm or 0.0) if case.designed else bottom.nominal_ppm,
         gap=gap,
-        mixed_ppm=0.0 if effort.stopped else _mixed_ppm(found, case, gap),
     )
-    options = _shortlist(
-        [check(proposal, case, str(n)) for n, proposal in enumerate(found, 1)], brief.goal.judge
+    checked = [(proposal, check(proposal, case, str(n))) for n, proposal in enumerate(found, 1)]
+    case = replace(case, mixed_ppm=0.0 if effort.stopped else _mixed_ppm(checked, case, gap))
+    options = _shortlist([proved(option, p, case) for p, option in checked], brief.goal.judge)
+    options = tuple(
+        replace(with_likely(option, case), id=_option_id(options, n)) for n, option in enumerate(options)
     )
-    options = tuple(replace(option, id=_option_id(options, n)) for n, option in enumerate(options))
     more = () if effort.stopped else _one_more(brief, case, options)
     plan = Plan(
         tcplan=__version__,
@@ -146,6 +182,7 @@ def make_plan(brief: Brief, *, gap: float = 0.01, effort: Effort | None = None) 
             kind=need.kind,
             drift_ppm=None if need.scale is None else need.scale * 1e6,
             judge=brief.goal.judge,
+            quantile=brief.goal.quantile,
         ),
         materials=brief.materials,
         floor=bottom,
@@ -228,7 +265,7 @@ def _both(option: Option) -> str:
 
     The first is never said alone where both are known.
     """
-    nominal = f"{format_ppm(round_outward(option.proof.figure_ppm * 1e-6))} nominal"
+    nominal = f"{format_ppm(round_outward(option.nominal.figure_ppm * 1e-6))} nominal"
     if option.worst_case is None:
         return f"{nominal}, its worst case not stated"
     return f"{nominal}, {format_ppm(round_outward(option.worst_case.peak_ppm * 1e-6))} worst case"

@@ -14,6 +14,7 @@ from tcplan.material.model import Material
 from tcplan.material.spread import Spread
 from tcplan.network import arrangement, used_materials
 from tcplan.plan import FloorEvidence, Proposal, Sizes, Space
+from tcplan.process import Variation
 from tcplan.search.floor import floor_evidence as sandwich_evidence
 from tcplan.search.linear import least_total, search_space
 from tcplan.search.mixed_search import mixed_proposals
@@ -24,6 +25,8 @@ from tcplan.verify.option import Case, spread_figures
 FEW = 3
 MOST_MIXED_LEGS = 6
 MOST_TREES = 15_000  # more would take minutes
+BOX_PARTS = (0.2, 0.4, 0.6, 0.8)  # of the limits, in a search for a quantile
+KEPT_INSIDE = 1.0 - 1e-6  # of a limit: two ways to find a worst case differ by rounding
 TINY_SHARE = 1e-4  # of the fixed members, when the total is free
 
 
@@ -31,6 +34,16 @@ def spreads_of(brief: Brief) -> dict[str, Spread]:
     """Return the spread of each material that states one, over the range of the brief."""
     found = {m.name: m.effective_spread(brief.over.low, brief.over.high) for m in brief.materials}
     return {name: spread for name, spread in found.items() if spread is not None}
+
+
+def designed_for_worst_case(brief: Brief, need: Requirement) -> bool:
+    """Whether the search is for the worst case: when it is judged, and can be searched for.
+
+    Every material that may be used needs a spread; and the two ends of a band belong to one device, so
+    that a band is searched for at nominal.
+    """
+    judged = brief.goal.judge == "worst-case" and brief.given is None
+    return judged and not need.centred and _all_stated(brief)
 
 
 def spaces(brief: Brief) -> tuple[Space, ...]:
@@ -149,13 +162,15 @@ def proposals(
     """Return what the search, or the user, puts forward: the best few of each arrangement."""
     if brief.given is not None:
         return [Proposal(network=brief.given, role="given")]
+    if need.goal.judge == "quantile" and not case.designed:
+        return _for_quantile(brief, need, case, few, effort)
     found: list[Proposal] = []
     for space in spaces(brief):
         low, high = space.fixed_share
         if space.arrangement == "mixed":
             if low == high and space.legs + len(space.fixed) >= 3:
                 part = searchable(space, found)
-                mixed = mixed_proposals(part, need, case.materials, few, effort)
+                mixed = mixed_proposals(part, need, case.materials, few, effort, case.variation)
                 # Of a part of the space nothing is proved about the whole.
                 whole = part == space
                 found.extend(mixed if whole else [replace(p, space=None) for p in mixed])
@@ -163,7 +178,7 @@ def proposals(
         parallel = space.arrangement == "parallel"
         bounded = not brief.fixed or low == high or (brief.target.at_most is not None and not parallel)
         if bounded:
-            mixes = search_space(space, need, case.materials, few)
+            mixes = search_space(space, need, case.materials, few, case.variation)
             # A mix that has shrunk to one leg is what the single arrangement is for.
             alone = "single" in brief.rules.arrangements and space.arrangement != "single"
             found.extend(m for m in mixes if not (alone and arrangement(m.network) == "single"))
@@ -172,7 +187,7 @@ def proposals(
             if extreme is not None:
                 found.append(extreme)
             elif not bounded:  # no total meets the limit: show how near the best one comes
-                found.extend(search_space(space, need, case.materials, 1))
+                found.extend(search_space(space, need, case.materials, 1, case.variation))
     if not found and brief.rules.arrangements == ("mixed",):
         # Every mixed network was best without its inner nodes: the simpler ones are the answer.
         simple: tuple[Searched, ...] = ("single", "series", "parallel")
@@ -184,12 +199,40 @@ def proposals(
     return found
 
 
+def _for_quantile(
+    brief: Brief, need: Requirement, case: Case, few: int, effort: Effort | None
+) -> list[Proposal]:
+    """Return what is put forward for a quantile: nominal designs, and worst-case ones of smaller boxes.
+
+    A quantile of lots lies between nominal and the worst case: in a box whose sides are a part of the
+    limits, the worst case comes near it. Of these the one with the best quantile is taken.
+    """
+    nominal = replace(brief, goal=replace(brief.goal, judge="nominal"))
+    found = proposals(nominal, replace(need, goal=nominal.goal), case, few, effort)
+    if not _all_stated(brief) or need.centred:
+        return found
+    for part in BOX_PARTS:
+        variation = Variation(spreads=case.spreads, process=case.process).scaled(part)
+        smaller = replace(case, designed=True, spreads=variation.spreads)
+        more = proposals(brief, need, smaller, few, effort)
+        found.extend(Proposal(network=p.network, role=p.role) for p in more)
+    return found
+
+
+def _all_stated(brief: Brief) -> bool:
+    """Whether every material that may be used has a spread."""
+    names = {*brief.rules.use, *(member.leg.material for member in brief.fixed)}
+    return names <= spreads_of(brief).keys()
+
+
 def _least_total(space: Space, need: Requirement, case: Case, limit: float) -> Proposal | None:
     """Return the least (in parallel the greatest) total that meets the limit as it is judged.
 
     Judged on the worst case, the nominal limit that the search works to is lowered until the
     guaranteed worst case meets the limit; it is found by halving, so it is the best of these.
     """
+    if case.designed:
+        return least_total(space, need, case.materials, limit * KEPT_INSIDE, case.variation)
     first = least_total(space, need, case.materials, limit)
     if first is None or need.goal.judge == "nominal" or _worst(first, case) <= limit:
         return first

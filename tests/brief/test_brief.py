@@ -70,6 +70,58 @@ def test_wanted_laws(goal, at_150):
     np.testing.assert_allclose(made.goal.wanted_ratio(T, 298.15), [1.0, at_150], rtol=1e-9)
 
 
+def test_the_quantile_is_a_judge():
+    assert brief().goal.quantile == 0.9973
+    made = brief(changed(('drift = "6000 ppm"', 'drift = "6000 ppm"\njudge = "quantile"')))
+    assert (made.goal.judge, made.goal.quantile) == ("quantile", 0.9973)
+    made = brief(changed(('drift = "6000 ppm"', 'drift = "1 %"\njudge = "quantile"\nquantile = 0.99')))
+    assert (made.goal.judge, made.goal.quantile) == ("quantile", 0.99)
+    assert made.to_dict()["goal"]["quantile"] == 0.99
+
+
+def test_how_well_the_value_is_met():
+    assert (brief().target.tolerance, brief().target.trim_step) == (None, None)
+    made = brief(changed(('value = "18 kohm"', 'value = "18 kohm"\ntolerance = "1 %"')))
+    assert (made.target.ohms, made.target.tolerance, made.target.trim_step) == (18000.0, 0.01, None)
+    made = brief(changed(('value = "18 kohm"', 'value = "18 kohm"\ntrim_step = "0.1 %"')))
+    assert made.to_dict()["resistor"] == {
+        "value_ohms": 18000.0,
+        "at_most_ohms": None,
+        "tolerance": None,
+        "trim_step": pytest.approx(0.001),
+    }
+    coil = '[[fixed]]\nmaterial = "pp"\nvalue = "1 kohm"\n'
+    free = changed(('value = "18 kohm"', 'value = "free"\ntolerance = "2 %"'))
+    assert brief(free + coil).target.tolerance == 0.02
+
+
+STEEP = """
+[material.steep]
+source = "invented"
+reference = "25 degC"
+valid = ["-60 degC", "160 degC"]
+tc1 = "-7000 ppm/K"
+[material.steep.spread]
+meaning = "limits"
+tc1 = "1000 ppm/K"
+"""
+
+
+def test_a_spread_over_which_a_law_reaches_zero_names_its_material():
+    """By hand: 1 - 0.008 * 125 = 0 at the hot end, with TC1 at its limit."""
+    [found] = problems(WHOLE + STEEP)
+    assert found.startswith("brief.toml: material.steep.spread: found a law that reaches zero or below")
+    assert brief(WHOLE + STEEP + '[search]\nuse = ["pp", "np"]').by_name.keys() == {"np", "pp"}
+    assert brief(WHOLE + STEEP.replace("1000 ppm", "990 ppm")).by_name["steep"].spread.tc1 == 990e-6
+
+
+def test_a_value_that_could_reach_zero_at_the_reference_names_its_material():
+    """By hand: (1 + 0.95)(1 + 0.001 * 65)/1 - 1 > 1, 65 K from the material's own reference."""
+    far = STEEP.replace("-7000", "0").replace('"25 degC"', '"90 degC"') + 'value = "95 %"\n'
+    [found] = problems(WHOLE + far)
+    assert found.startswith("brief.toml: material.steep.spread: found a value that is uncertain by")
+
+
 def test_given_network_as_written_and_scaled():
     given = '[given]\nnetwork = "pp 5k1 || np 3k3"\n'
     assert value(brief(WHOLE + given).given) == pytest.approx(1 / (1 / 5100 + 1 / 3300))
@@ -133,7 +185,21 @@ def test_all_mistakes_at_once():
         (('low = "-40 degC"\nhigh = "150 degC"', 'range = "automotiv-1"'), "Did you mean"),
         (('low = "-40 degC"\n', ""), "low and high"),
         (('drift = "6000 ppm"', 'drift = "0 ppm"'), "above zero"),
-        (('drift = "6000 ppm"', 'drift = "6000 ppm"\njudge = "quantile"'), "judge"),
+        (('drift = "6000 ppm"', 'drift = "6000 ppm"\njudge = "quantil"'), "Did you mean quantile"),
+        (('drift = "6000 ppm"', 'drift = "6000 ppm"\nquantile = 0.99'), "quantile without its judge"),
+        (('drift = "6000 ppm"', 'judge = "worst-case"\nquantile = 0.99'), "quantile without its judge"),
+        (('drift = "6000 ppm"', 'judge = "quantile"\nquantile = 0.49'), "0.5"),
+        (('drift = "6000 ppm"', 'judge = "quantile"\nquantile = 1.0'), "0.999999 at most"),
+        (('drift = "6000 ppm"', 'judge = "quantile"\nquantile = "99 %"'), "a number"),
+        (('drift = "6000 ppm"', 'judge = "quantile"\nquantile = nan'), "finite"),
+        (('value = "18 kohm"', 'value = "18 kohm"\ntolerance = "100 %"'), "less than 100 %"),
+        (('value = "18 kohm"', 'value = "18 kohm"\ntolerance = "0 %"'), "above zero"),
+        (('value = "18 kohm"', 'value = "18 kohm"\ntrim_step = "-1 %"'), "above zero"),
+        (('value = "18 kohm"', 'value = "18 kohm"\ntrim_step = 1'), "text in quotes"),
+        (
+            ('value = "18 kohm"', 'value = "18 kohm"\ntolerance = "1 %"\ntrim_step = "0.1 %"'),
+            "tolerance and trim_step together",
+        ),
         (('drift = "6000 ppm"', 'mask = [["70 degC", "0 degC", "1 %"]]'), "low below high"),
         (('drift = "6000 ppm"', 'mask = [["0 degC", "70 degC"]]'), "3 entries"),
         (('drift = "6000 ppm"', 'tc1 = "1 ppm/K"\nlaw = "1"'), "one wanted law"),

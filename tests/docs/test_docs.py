@@ -29,7 +29,8 @@ from tcplan.ranges import GRADES
 from tcplan.search import mixed, mixed_search, polish, solver, supports
 from tcplan.trees import assigned_trees, shapes
 from tcplan.units import parse_quantity
-from tcplan.verify import cells, question, tree_bound, worst
+from tcplan.verify import question, tree_bound
+from tcplan.worst import cells, evaluation
 from tcplan.workflow import proposals
 from tcplan.workflow.planning import make_plan
 
@@ -425,7 +426,7 @@ def test_numbers_of_the_program_that_the_method_states():
         f"{spaced(tree_bound.BASE_CELLS)} and {tree_bound.CELLS_A_TREE} more for each tree",
         f"the limits {', '.join(weaker[:-1])} and {weaker[-1]} of U",
         f"after {spaced(cells.MOST_CELLS)} cells",
-        f"over {worst.BAND_CELLS} cells or more",
+        f"over {evaluation.BAND_CELLS} cells or more",
     ):
         assert phrase in said, phrase
 

@@ -156,9 +156,10 @@ def test_every_judged_figure_and_verdict(example):
     _, plan = example
     for option in plan["options"]:
         own = figure(plan, ratio_curve(plan, option))
-        proof = option["proof"]
-        assert proof["lower_bound_ppm"] + proof["gap_ppm"] == pytest.approx(own, rel=REL)
-        worst = option["worst_case"]
+        assert option["nominal"]["figure_ppm"] == pytest.approx(own, rel=REL)
+        worst, proof = option["worst_case"], option["proof"]
+        of = own if proof["of"] == "nominal" else worst["peak_ppm"]
+        assert proof["lower_bound_ppm"] + proof["gap_ppm"] == pytest.approx(of, rel=REL)
         if worst is not None:
             reached = figure(plan, ratio_curve(plan, option, worst["point"]))
             assert worst["peak_ppm"] == pytest.approx(reached, rel=REL)
@@ -168,6 +169,41 @@ def test_every_judged_figure_and_verdict(example):
             "NOT JUDGED" if judged is None else "MET" if judged <= plan["limit"]["drift_ppm"] else "NOT MET"
         )
         assert option["verdict"] == expected
+
+
+def half_widths(entry):
+    """Return the limits of value, TC1 and TC2 that a material of plan.json states."""
+    spread = entry["spread"]
+    scale = 3.0 if spread["meaning"] == "sigma" else 1.0
+    stated = spread["value"], (spread["tc1_per_K"] or 0.0) + (spread["tcr_per_K"] or 0.0), spread["tc2_per_K2"]
+    return [scale * (half or 0.0) for half in stated]
+
+
+def test_no_device_of_the_spread_box_is_beyond_the_worst_case(example):
+    """Devices inside the box and at its corners, sampled from plan.json alone."""
+    _, plan = example
+    rng, span = np.random.default_rng(4), plan["range"]
+    t = np.linspace(span["low_degC"], span["high_degC"], 101)
+    masked = any(limit["kind"] != "drift" for limit in plan["brief"]["goal"]["limits"])
+    for option in plan["options"]:
+        if option["worst_case"] is None:
+            continue
+        names = sorted({leg["material"] for leg in option["legs"]})
+        limits = {name: half_widths(plan["materials"][name]) for name in names}
+        most = option["worst_case"]["upper_bound_ppm"]
+        for k in range(40 if masked else 400):
+            spot = {n: np.sign(z) if k % 2 else z for n in names for z in [rng.uniform(-1, 1, 3)]}
+            device = {
+                n: {
+                    "ohm_per_square": 1 + spot[n][0] * limits[n][0],
+                    "tc1": spot[n][1] * limits[n][1] * 1e6,
+                    "tc2": spot[n][2] * limits[n][2] * 1e6,
+                }
+                for n in names
+            }
+            curve = ratio_curve(plan, option, device)
+            reached = figure(plan, curve) if masked else np.max(np.abs(curve(t) - 1)) * 1e6
+            assert reached <= most * (1 + REL)
 
 
 def test_values_and_shares(example):
@@ -192,6 +228,7 @@ def test_nothing_found_is_below_its_bounds(example):
     for option in plan["options"]:
         figure_ppm = option["proof"]["lower_bound_ppm"] + option["proof"]["gap_ppm"]
         assert option["proof"]["gap_ppm"] >= 0
-        assert plan["floor"]["nominal_ppm"] <= figure_ppm * (1 + 1e-9)
+        floor = "nominal_ppm" if option["proof"]["of"] == "nominal" else "worst_case_ppm"
+        assert plan["floor"][floor] <= figure_ppm * (1 + 1e-9)
         if option["worst_case"] and plan["floor"]["worst_case_ppm"] is not None:
             assert plan["floor"]["worst_case_ppm"] <= option["worst_case"]["upper_bound_ppm"] * (1 + 1e-9)

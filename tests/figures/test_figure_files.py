@@ -114,7 +114,7 @@ plan = make_plan(brief(BRIEF + FILMS))
 loaded = [name for name in ("matplotlib", "matplotlib.pyplot") if name in sys.modules]
 from tcplan.figures.files import figure_files
 content = b"".join(figure_files(plan).values())
-loaded += [n for n in ("matplotlib.pyplot", "scipy", "sympy", "pint") if n in sys.modules]
+loaded += [n for n in ("matplotlib.pyplot", "scipy.optimize", "sympy", "pint") if n in sys.modules]
 print(hashlib.sha256(content).hexdigest(), loaded)
 """
 

@@ -10,7 +10,14 @@ import numpy as np
 import pytest
 
 from tcplan.errors import InputError
-from tcplan.material.files import parse_materials, published, published_names, read_materials
+from tcplan.material.files import (
+    _ProcessShape,
+    parse_materials,
+    published,
+    published_names,
+    read_material_file,
+    read_materials,
+)
 from tcplan.material.law import Expression, Platinum, Polynomial, Thermistor
 from tcplan.material.model import Material, material_from_dict
 from tcplan.material.spread import Spread
@@ -193,7 +200,8 @@ def test_wire_part_and_plain(tmp_path: Path) -> None:
     plain = one(tmp_path, 'tc1 = "0 ppm/K"')
     assert (wire.kind, wire.ohm_per_metre) == ("wire", 8.5)
     assert wire.spread == Spread(meaning="sigma", value=0.02)
-    assert (part.kind, part.series, part.spread) == ("part", "E96", Spread(meaning="limits", value=0.01))
+    rectangular = Spread(meaning="limits", value=0.01, shape="rectangular")
+    assert (part.kind, part.series, part.spread) == ("part", "E96", rectangular)
     assert (plain.kind, plain.spread) == ("plain", None)
 
 
@@ -557,3 +565,127 @@ def test_unknown_published_file() -> None:
         published("metal")
     with pytest.raises(InputError, match="no such published file"):
         published("../files")
+
+
+# ---- spreads of ends, widths and bought parts; what materials share
+
+PART = 'tc1 = "0 ppm/K"\nseries = "E96"\n[material.m.spread]\nmeaning = "limits"\n'
+WIRE = 'tc1 = "0 ppm/K"\nohm_per_metre = "8.5 ohm/m"\n[material.m.spread]\n'
+FILM_SPREAD = 'tc1 = "0 ppm/K"\nohm_per_square = "320 ohm"\n[material.m.spread]\nmeaning = "limits"\n'
+FILM_TABLE = '[material.m.film]\nmin_width = "1 um"\nend_resistance = "35 ohm*um"\netch = "poly"\n'
+
+
+def test_every_half_width_of_a_film_is_read_into_si(tmp_path: Path) -> None:
+    body = 'end_resistance = "40 %"\nend_tc1 = "200 ppm/K"\nwidth_bias = "0.02 um"\n'
+    made = one(tmp_path, FILM_SPREAD + body + FILM_TABLE)
+    assert made.spread == Spread(meaning="limits", end_resistance=0.4, end_tc1=200e-6, width_bias=0.02e-6)
+    assert made.film is not None
+    assert made.film.etch == "poly"
+    assert material_from_dict(made.to_dict()) == made
+
+
+def test_a_tcr_limit_is_read_in_a_part(tmp_path: Path) -> None:
+    made = one(tmp_path, PART + 'value = "0.1 %"\ntcr = "25 ppm/K"\n')
+    assert made.spread == Spread(meaning="limits", value=0.001, tcr=25e-6, shape="rectangular")
+
+
+@pytest.mark.parametrize(
+    ("body", "shape"),
+    [
+        (PART, "rectangular"),
+        (PART + 'shape = "normal"', "normal"),
+        (WIRE + 'meaning = "limits"', "rectangular"),
+        (WIRE + 'meaning = "sigma"', "normal"),
+        (FILM_SPREAD, "normal"),
+        (FILM_SPREAD + 'shape = "rectangular"', "rectangular"),
+        ('tc1 = "0 ppm/K"\n[material.m.spread]\nmeaning = "limits"', "normal"),
+    ],
+)
+def test_what_is_bought_is_rectangular_unless_its_sigma_is_stated(
+    tmp_path: Path, body: str, shape: str
+) -> None:
+    spread = one(tmp_path, body).spread
+    assert spread is not None
+    assert spread.shape == shape
+
+
+@pytest.mark.parametrize(
+    ("body", "where", "says"),
+    [
+        (PART + 'tcr = "25 ppm/K"\ntc1 = "5 ppm/K"', "spread.tc1", "tcr and tc1 together"),
+        (PART + 'tcr = "25 ppm/K"\ntc2 = "0.1 ppm/K^2"', "spread.tc2", "tcr and tc2 together"),
+        (PART + 'tcr = "-25 ppm/K"', "spread.tcr", "zero or more"),
+        (PART + 'width_bias = "0.1 um"', "spread.width_bias", "no widths"),
+        (FILM_SPREAD + 'tcr = "25 ppm/K"', "spread.tcr", "in parts only"),
+        (FILM_SPREAD + 'end_tc1 = "25 ppm/K"', "spread.end_tc1", "no ends"),
+        (FILM_SPREAD + 'end_resistance = "100 %"\n' + FILM_TABLE, "spread.end_resistance", "below 100 %"),
+        (FILM_SPREAD + 'width_bias = "1.1 um"\n' + FILM_TABLE, "spread.width_bias", "Draw it wider"),
+        (FILM_SPREAD + 'shape = "square"', "spread.shape", "rectangular"),
+        (
+            WIRE + 'meaning = "sigma"\nshape = "rectangular"',
+            "spread.shape",
+            "rectangular with standard deviations",
+        ),
+        (FILM_SPREAD + FILM_TABLE.replace("poly", "two words"), "film.etch", "a letter"),
+    ],
+)
+def test_half_widths_that_mean_nothing_are_refused(tmp_path: Path, body: str, where: str, says: str) -> None:
+    place, message = only(tmp_path, body)
+    assert place == f"material.m.{where}"
+    assert says in message
+
+
+SHARED = """
+[[correlation]]
+between = ["red_film.ohm_per_square", "red_film.tc1"]
+value = -0.6
+[[tracking]]
+materials = ["red_film", "other"]
+within = "3 ppm/K"
+[corner.slow.red_film]
+ohm_per_square = "+12 %"
+"""
+
+
+def test_what_materials_share_is_kept_as_it_stands(tmp_path: Path) -> None:
+    path = tmp_path / "films.toml"
+    path.write_text(RED_FILM + SHARED)
+    made = read_material_file(path)
+    assert made.where == str(path)
+    assert made.materials == read_materials(path)
+    assert set(made.tables) == {"correlation", "tracking", "corner"}
+    assert made.tables["correlation"][0]["value"] == -0.6
+
+
+@pytest.mark.parametrize(
+    ("change", "where", "says"),
+    [
+        (("value = -0.6", "value = -1.6"), "correlation[1].value", "-1"),
+        (("value = -0.6", 'value = "-0.6"'), "correlation[1].value", "a number"),
+        (("value = -0.6", "value = nan"), "correlation[1].value", "finite"),
+        (("value = -0.6", ""), "correlation[1].value", "-0.6"),
+        ((', "red_film.tc1"]', "]"), "correlation[1].between", "2 entries"),
+        ((', "other"]', "]"), "tracking[1].materials", "2 entries"),
+        (("within =", "witin ="), "tracking[1].witin", "Did you mean within"),
+        (('"+12 %"', "12"), "corner.slow.red_film.ohm_per_square", "text in quotes"),
+        (('ohm_per_square = "+', 'ohm_per_squar = "+'), "corner.slow.red_film.ohm_per_squar", "Did you mean"),
+        (("[corner.slow.red_film]", "[corner.slow]"), "corner.slow.ohm_per_square", "a table"),
+        (("[[correlation]]", "[[corelation]]"), "corelation", "Did you mean correlation"),
+    ],
+)
+def test_the_shape_of_what_materials_share_is_checked(
+    tmp_path: Path, change: tuple[str, str], where: str, says: str
+) -> None:
+    text = RED_FILM + SHARED.replace(*change)
+    assert text != RED_FILM + SHARED
+    found = refused(tmp_path, text)
+    assert any(place == where and says in message for place, message in found), found
+
+
+def test_every_key_of_what_materials_share_is_documented() -> None:
+    text = (Path(__file__).parents[2] / "docs" / "input.md").read_text(encoding="utf-8")
+    tables = _ProcessShape.model_json_schema()
+    inner = (shape["properties"] for shape in tables["$defs"].values())
+    keys = {*tables["properties"], *(key for properties in inner for key in properties)}
+    assert {"between", "within", "tc2", "corner"} <= keys
+    assert [key for key in keys if key not in text] == []

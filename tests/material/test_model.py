@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import json
 import math
+from pathlib import Path
 from typing import Any
 
 import numpy as np
@@ -132,7 +133,18 @@ def test_dict_of_a_film_is_self_sufficient() -> None:
     data = film().to_dict()
     assert data["film"]["end_resistance_ohm_m"] == 35e-6
     assert data["valid_K"] == [218.15, 423.15]
-    assert data["spread"] == {"meaning": "limits", "value": 0.15, "tc1_per_K": 40e-6, "tc2_per_K2": 0.1e-6}
+    assert data["film"]["etch"] is None
+    assert data["spread"] == {
+        "meaning": "limits",
+        "value": 0.15,
+        "tc1_per_K": 40e-6,
+        "tc2_per_K2": 0.1e-6,
+        "end_resistance": None,
+        "end_tc1_per_K": None,
+        "width_bias_m": None,
+        "tcr_per_K": None,
+        "shape": "normal",
+    }
 
 
 @pytest.mark.parametrize("damage", ["law", "film", "name", "valid_K"])
@@ -255,6 +267,61 @@ def test_extrapolation_widens_the_range_and_the_spread() -> None:
     assert beyond is not None
     assert beyond.tc1 == pytest.approx(60e-6, rel=1e-14)
     assert plain().effective_spread(200.0, 500.0) is None
+
+
+WIDTHS = Film(min_width=1e-6, preferred_width=2e-6, width_bias=0.1e-6, etch="poly", end_resistance=35e-6)
+
+
+def test_the_effective_spread_covers_the_width_error_of_the_width_that_is_drawn() -> None:
+    spread = Spread(meaning="limits", value=0.15, tc1=40e-6, width_bias=0.05e-6)
+    wide = film(film=WIDTHS, spread=spread)
+    assert (wide.width, wide.effective_width) == pytest.approx((2e-6, 1.9e-6), rel=1e-14)
+    effective = wide.effective_spread(*VALID)
+    assert effective is not None
+    assert effective.value == pytest.approx(1.15 / (1 - 0.05 / 1.9) - 1, rel=1e-13)  # by hand
+    text = (Path(__file__).parents[2] / "docs" / "input.md").read_text(encoding="utf-8")
+    assert f"For 15 %, 0.05 um and W = 1.9 um that is {100 * effective.value:.1f} %." in text
+    assert (effective.tc1, effective.width_bias) == (40e-6, 0.0)
+    assert wide.spread == spread  # plain, for draws
+    least = film(film=FILM, spread=spread).effective_spread(*VALID)
+    assert least is not None
+    assert least.value == pytest.approx(1.15 / (1 - 0.05 / 0.95) - 1, rel=1e-13)
+
+
+def test_extrapolation_is_added_to_the_widened_value() -> None:
+    spread = Spread(meaning="sigma", value=0.05, width_bias=0.01e-6)
+    added = Spread(meaning="limits", tc1=20e-6)
+    wide = film(film=WIDTHS, spread=spread, extrapolated=(208.15, 448.15), extrapolation=added)
+    beyond = wide.effective_spread(208.15, 423.15)
+    assert beyond is not None
+    assert beyond.tc1 == 20e-6
+    assert beyond.value == pytest.approx(1.15 / (1 - 0.03 / 1.9) - 1, rel=1e-13)  # sigma counts three times
+
+
+@pytest.mark.parametrize(
+    ("spread", "changes", "where"),
+    [
+        ({"width_bias": 1e-8}, {"film": None}, "red_film.spread.width_bias"),
+        ({"width_bias": 1e-8}, {"film": None, "kind": "plain", "ohm_per_square": None}, "width_bias"),
+        ({"end_resistance": 0.4}, {"film": Film(min_width=1e-6)}, "red_film.spread.end_resistance"),
+        ({"end_tc1": 1e-4}, {"film": Film(min_width=1e-6)}, "red_film.spread.end_tc1"),
+        ({"tcr": 25e-6}, {}, "red_film.spread.tcr"),
+        ({"width_bias": 1.9e-6}, {"film": WIDTHS}, "red_film.spread.width_bias"),
+        ({"value": 0.8, "width_bias": 0.2e-6}, {"film": WIDTHS}, "red_film.spread.width_bias"),
+    ],
+)
+def test_a_half_width_needs_what_it_belongs_to(
+    spread: dict[str, float], changes: dict[str, Any], where: str
+) -> None:
+    [found] = problems_of(film, spread=Spread(meaning="limits", **spread), **changes)  # type: ignore[arg-type]
+    assert found.endswith(where)
+
+
+def test_etch_is_a_name_and_is_kept() -> None:
+    made = film(film=WIDTHS)
+    assert material_from_dict(json.loads(json.dumps(made.to_dict()))) == made
+    assert made.to_dict()["film"]["etch"] == "poly"
+    assert problems_of(Film, min_width=1e-6, etch="a b") == ["film.etch"]
 
 
 def test_extrapolation_needs_an_added_spread_and_the_other_way_round() -> None:

@@ -136,8 +136,87 @@ def test_widened_adds_limits_component_by_component() -> None:
     assert Spread(meaning="limits").widened(Spread(meaning="limits", tc1=1e-6)).unstated == ("value", "tc2")
 
 
+def test_sigma_counts_three_times_in_every_component() -> None:
+    sigma = Spread(meaning="sigma", end_resistance=0.1, end_tc1=1e-4, width_bias=1e-8, tcr=5e-6)
+    limits = sigma.limits()
+    found = (limits.end_resistance, limits.end_tc1, limits.width_bias, limits.tcr)
+    assert found == pytest.approx((0.3, 3e-4, 3e-8, 15e-6), rel=1e-14)
+
+
+def test_a_tcr_limit_is_a_half_width_of_tc1_at_each_temperature() -> None:
+    # Data sheets: |dR/R| <= k |T - T0|; at one T that is TC1 off by at most k.
+    tcr, tc1 = (
+        Spread(meaning="limits", value=0.01, tcr=25e-6),
+        Spread(meaning="limits", value=0.01, tc1=25e-6),
+    )
+    assert tcr.unstated == ()
+    assert law_vertices(tcr) == law_vertices(tc1)
+    for a, b in zip(law_bounds(FILM, tcr, 320.15, T), law_bounds(FILM, tc1, 320.15, T), strict=True):
+        np.testing.assert_array_equal(a, b)
+    assert value_half_width(FILM, tcr, 320.15) == value_half_width(FILM, tc1, 320.15)
+    both = Spread(meaning="limits", tc1=5e-6, tcr=25e-6)
+    assert both.tc1_and_tcr == pytest.approx(30e-6, rel=1e-15)
+    assert Spread(meaning="limits").tc1_and_tcr is None
+
+
+@pytest.mark.parametrize("reference", [300.15, 320.15, 260.15])
+def test_no_device_within_a_tcr_limit_leaves_the_bounds_whatever_its_sign_on_each_side(
+    reference: float,
+) -> None:
+    k, flat = 100e-6, Polynomial(reference=300.15, coefficients=(0.0,))
+    lo, hi = law_bounds(flat, Spread(meaning="limits", tcr=k), reference, T)
+    for cold, hot in itertools.product(np.linspace(-k, k, 9), repeat=2):
+
+        def device(t: float, cold: float = cold, hot: float = hot) -> float:
+            return 1.0 + (cold if t < 300.15 else hot) * (t - 300.15)
+
+        ratio = np.array([device(float(t)) / device(reference) for t in T])
+        assert np.all(ratio <= hi * (1 + 1e-14))
+        assert np.all(ratio >= lo * (1 - 1e-14))
+
+
+def test_the_width_error_widens_the_value() -> None:
+    # By hand: R goes as 1/W, so (1 + D)/(1 - e/W) is the highest factor and (1 - D)/(1 + e/W) the lowest.
+    spread = Spread(meaning="limits", value=0.1, tc1=40e-6, width_bias=0.05e-6, shape="rectangular")
+    wide = spread.with_width(1e-6)
+    assert wide.value == pytest.approx(1.1 / 0.95 - 1, rel=1e-14)
+    assert (wide.tc1, wide.width_bias, wide.shape) == (40e-6, 0.0, "rectangular")
+    for d, e in itertools.product(np.linspace(-0.1, 0.1, 5), np.linspace(-0.05, 0.05, 5)):
+        assert abs((1 + d) / (1 + e) - 1) <= (wide.value or 0) + 1e-15
+    assert wide.with_width(1e-6) is wide
+
+
+def test_a_width_error_of_sigma_counts_three_times() -> None:
+    wide = Spread(meaning="sigma", width_bias=0.01e-6).with_width(1e-6)
+    assert wide.meaning == "limits"
+    assert wide.value == pytest.approx(1 / 0.97 - 1, rel=1e-13)
+
+
+def test_without_a_width_or_its_error_the_spread_stays() -> None:
+    assert LIMITS.with_width(1e-6) is LIMITS
+    narrow = Spread(meaning="limits", width_bias=1e-8)
+    assert narrow.with_width(None) is narrow
+
+
+@pytest.mark.parametrize(("value", "error"), [(0.0, 1e-6), (0.0, 0.5e-6), (0.9, 0.1e-6)])
+def test_a_width_that_can_reach_zero_or_double_the_value_is_refused(value: float, error: float) -> None:
+    with pytest.raises(InputError, match="width error"):
+        Spread(meaning="limits", value=value, width_bias=error).with_width(1e-6)
+
+
 def test_dict_round_trip_is_exact() -> None:
-    for spread in (LIMITS, Spread(meaning="sigma", tc2=1 / 3 * 1e-6)):
+    whole = Spread(
+        meaning="limits",
+        value=0.1,
+        tc1=1e-6,
+        tc2=2e-8,
+        end_resistance=0.4,
+        end_tc1=2e-4,
+        width_bias=2e-8,
+        tcr=3e-6,
+        shape="rectangular",
+    )
+    for spread in (LIMITS, Spread(meaning="sigma", tc2=1 / 3 * 1e-6), whole):
         assert spread_from_dict(spread.to_dict()) == spread
 
 
@@ -150,6 +229,13 @@ def test_dict_round_trip_is_exact() -> None:
         ({"tc2": math.inf}, "spread.tc2"),
         ({"meaning": "sigma", "value": 0.34}, "spread.value"),
         ({"meaning": "typical"}, "spread.meaning"),
+        ({"end_resistance": 1.0}, "spread.end_resistance"),
+        ({"meaning": "sigma", "end_resistance": 0.4}, "spread.end_resistance"),
+        ({"end_tc1": -1e-6}, "spread.end_tc1"),
+        ({"width_bias": -1e-9}, "spread.width_bias"),
+        ({"tcr": math.nan}, "spread.tcr"),
+        ({"shape": "triangular"}, "spread.shape"),
+        ({"meaning": "sigma", "shape": "rectangular"}, "spread.shape"),
     ],
 )
 def test_wrong_half_widths_are_refused(values: dict[str, object], where: str) -> None:

@@ -15,7 +15,7 @@ from tcplan.search.floor import floor_evidence
 from tcplan.search.linear import search_space
 from tcplan.verify.floor import floor, least_slope_integral, slope_bound, spread_bound
 from tcplan.verify.option import Case, nominal_figure
-from tcplan.verify.worst import worst_case
+from tcplan.worst.evaluation import worst_case
 
 
 def floor_of(films, need=None, figure=1.0, spreads=None):

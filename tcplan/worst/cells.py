@@ -1,4 +1,4 @@
-"""Value factors of a mixed network: cells of the factor box, bounded by tangents, then halved.
+"""Value factors of a mixed network: cells of their coordinates, bounded by tangents, then halved.
 
 The resistance of any network is concave and homogeneous of degree 1 in its legs, so its tangent at
 the centre of a cell is above it everywhere; over the cell the ratio of the tangent to R(T_ref) is
@@ -16,26 +16,28 @@ import numpy as np
 from tcplan.arrays import FloatArray
 from tcplan.errors import InternalError
 from tcplan.network import leg_shares, legs, resistance
-from tcplan.verify.box import Box
+from tcplan.worst.box import Box
 
 GAP = 1e-4
 MOST_CELLS = 60_000
 BATCH = 512
 
 
-def _faces(half: FloatArray) -> Iterator[tuple[FloatArray, FloatArray]]:
-    """Yield (centre, half-width) of the faces on which one factor is at its upper limit.
+def _faces(box: Box) -> Iterator[tuple[FloatArray, FloatArray]]:
+    """Yield (centre, half-width) of the faces on which one coordinate is at its upper limit.
 
     The ratio does not change when all factors are scaled together, and any point scales up until
     its first factor reaches its limit: these faces hold every ratio of the box. A factor that does
-    not move is at its limit from the start, so with one of them the whole box is its only face.
+    not move is at its limit from the start, so with one of them the whole box is its only face; so
+    it is where the factors of one coordinate differ, since scaled they leave the box.
     """
-    if (half == 0).any():
-        yield np.ones_like(half), half
+    count = int(box.coordinate_of().max()) + 1
+    if (box.half_widths() == 0).any() or not box.in_step():
+        yield np.zeros(count), np.ones(count)
         return
-    for k in range(len(half)):
-        centre, width = np.ones_like(half), half.copy()
-        centre[k], width[k] = 1.0 + half[k], 0.0
+    for k in range(count):
+        centre, width = np.zeros(count), np.ones(count)
+        centre[k], width[k] = 1.0, 0.0
         yield centre, width
 
 
@@ -46,7 +48,7 @@ def _cell_values(
 
     Parameters
     ----------
-    centre, width : array, shape (cells, materials)
+    centre, width : array, shape (cells, coordinates)
     lo, hi : array, shape (materials, T)
 
     Returns
@@ -57,15 +59,17 @@ def _cell_values(
         What the centre reaches with all laws high, and all low.
     """
     flat = np.ones_like(lo[:, :1])
-    grad_hi, high_c = _gradient(box, centre, hi)
-    grad_ref, ref_c = _gradient(box, centre, flat)
-    _, low_c = _gradient(box, centre, lo)
+    middle = box.factors_at(centre)
+    grad_hi, high_c = _gradient(box, middle, hi)
+    grad_ref, ref_c = _gradient(box, middle, flat)
+    _, low_c = _gradient(box, middle, lo)
     top = np.full(high_c.shape, -np.inf)
     bottom = np.full(low_c.shape, np.inf)
     moving = np.nonzero(width.max(axis=0) > 0)[0]
     for signs in product((-1.0, 1.0), repeat=len(moving)):
-        vertex = centre.copy()
-        vertex[:, moving] += width[:, moving] * np.array(signs)
+        corner = centre.copy()
+        corner[:, moving] += width[:, moving] * np.array(signs)
+        vertex = box.factors_at(corner)
         own_ref = _values(box, vertex, flat)
         own_low = _values(box, vertex, lo)
         tangent_hi = np.einsum("cm,mct->ct", vertex, grad_hi)
@@ -116,14 +120,14 @@ def grid_of(box: Box, T: FloatArray, weight: FloatArray) -> Grid:
 class Found:
     """The worst point that the cells found, and the bound on all of them.
 
-    ``factors`` follow the materials of the box; ``sign`` is 1 when all laws are at their highest;
+    ``point`` holds the coordinates of the box; ``sign`` is 1 when all laws are at their highest;
     ``at`` is the position on the grid. ``reach`` and ``by_temperature`` hold, for all laws high and
-    all low, what the cells' centres reach at each temperature, and the factors that reach it.
+    all low, what the cells' centres reach at each temperature, and the coordinates that reach it.
     """
 
     figure: float
     upper: float
-    factors: FloatArray
+    point: FloatArray
     sign: int
     at: int
     reach: FloatArray
@@ -146,7 +150,7 @@ def _examined(box: Box, centre: FloatArray, width: FloatArray, grid: Grid) -> tu
     found = Found(
         figure=float(reach[side, cell, at]),
         upper=0.0,
-        factors=centre[cell].copy(),
+        point=centre[cell].copy(),
         sign=1 if side == 0 else -1,
         at=int(at),
         reach=reach.max(axis=1),
@@ -171,19 +175,20 @@ def _better(best: Found | None, found: Found) -> Found:
 def _at_vertices(box: Box, found: Found, width: FloatArray, grid: Grid) -> Found:
     """Return the worst of the vertices of one cell at the temperature found: a limit is a vertex."""
     steps = np.array(list(product((-1.0, 0.0, 1.0), repeat=int((width > 0).sum()))))
-    points = np.tile(found.factors, (len(steps), 1))
+    points = np.tile(found.point, (len(steps), 1))
     points[:, width > 0] += steps * width[width > 0]
     k = found.at
     law = (grid.hi if found.sign > 0 else grid.lo)[:, k : k + 1]
-    ratio = (_values(box, points, law) / _values(box, points, np.ones_like(law)))[:, 0]
+    factors = box.factors_at(points)
+    ratio = (_values(box, factors, law) / _values(box, factors, np.ones_like(law)))[:, 0]
     figure = found.sign * (ratio - grid.wanted[k]) / grid.weight[k]
     best = int(np.argmax(figure))
-    return replace(found, figure=float(figure[best]), factors=points[best])
+    return replace(found, figure=float(figure[best]), point=points[best])
 
 
 def start_cells(box: Box) -> tuple[FloatArray, FloatArray]:
     """Return centres and half-widths of the faces that hold every ratio of the box."""
-    both = list(_faces(box.half_widths()))
+    both = list(_faces(box))
     return np.stack([c for c, _ in both]), np.stack([w for _, w in both])
 
 

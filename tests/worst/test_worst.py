@@ -9,7 +9,7 @@ from makers import brute_ratio, by_name, film, grid, leg, need_of, random_films,
 from tcplan.goal import Limit
 from tcplan.material.spread import shifted_ratio
 from tcplan.network import Parallel, Series, deviated, resistance, used_materials, value
-from tcplan.verify.worst import worst_case
+from tcplan.worst.evaluation import worst_case
 
 
 def spreads(materials):

@@ -7,12 +7,13 @@ from dataclasses import dataclass
 
 import numpy as np
 
-from tcplan.arrays import FloatArray
+from tcplan.arrays import FloatArray, IntArray
 from tcplan.drift import Curve
 from tcplan.goal import Judged, Requirement, judged
 from tcplan.material.model import Material
 from tcplan.material.spread import Spread, law_bounds, law_vertices, shifted_ratio, value_half_width
 from tcplan.network import Network, deviated, resistance, used_materials, value
+from tcplan.process import INDEPENDENT, Process
 
 
 @dataclass(frozen=True, slots=True)
@@ -43,12 +44,17 @@ class Worst:
 
 @dataclass(frozen=True, slots=True)
 class Box:
-    """A network with the limits of its materials."""
+    """A network with the limits of its materials.
+
+    A value factor is 1 + D s with D the half-width of its material and s a coordinate in [-1, 1];
+    materials whose values move in full step have one coordinate together.
+    """
 
     network: Network
     materials: Mapping[str, Material]
     spreads: Mapping[str, Spread]
     need: Requirement
+    process: Process = INDEPENDENT
 
     @property
     def names(self) -> tuple[str, ...]:
@@ -63,6 +69,21 @@ class Box:
                 for n in self.names
             ]
         )
+
+    def coordinate_of(self) -> IntArray:
+        """Return the position of the coordinate that each material follows, 0, 1, ... in order."""
+        groups = self.process.value_groups(self.names)
+        order = sorted(set(groups))
+        return np.array([order.index(group) for group in groups])
+
+    def factors_at(self, coordinates: FloatArray) -> FloatArray:
+        """Return the value factors, shape (.., materials), at coordinates, shape (.., coordinates)."""
+        return np.asarray(1.0 + self.half_widths() * coordinates[..., self.coordinate_of()])
+
+    def in_step(self) -> bool:
+        """Whether the materials of each coordinate have one half-width, so that their factors are equal."""
+        half, own = self.half_widths(), self.coordinate_of()
+        return all(np.ptp(half[own == k]) <= 1e-15 for k in range(int(own.max()) + 1))
 
     def bounds(self, T: FloatArray) -> tuple[FloatArray, FloatArray]:
         """Return the lowest and highest law ratios, shape (materials, T)."""

@@ -14,7 +14,7 @@ What is reported is reached by a device that is named; the bound holds for all o
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping
-from itertools import product
+from dataclasses import replace
 
 import numpy as np
 
@@ -24,9 +24,10 @@ from tcplan.goal import Judged, Requirement
 from tcplan.material.model import Material
 from tcplan.material.spread import Spread, law_vertices
 from tcplan.network import Network, arrangement
-from tcplan.verify.box import Box, Device, Worst
-from tcplan.verify.cells import Found, cell_search, excursions, grid_of, halved, start_cells
-from tcplan.verify.factors import one_node_factors
+from tcplan.process import INDEPENDENT, Process
+from tcplan.worst.box import Box, Device, Worst
+from tcplan.worst.cells import Found, cell_search, excursions, grid_of, halved, start_cells
+from tcplan.worst.factors import one_node_factors
 
 GRID = 65
 CELL_GRID = 33
@@ -52,7 +53,7 @@ def _settled(box: Box, device: Device) -> tuple[Device, Judged]:
         T = np.array([best.at])
         sign = 1 if box.curve(device)(T)[0] > box.need.wanted(T)[0] else -1
         factors = device.factors
-        if arrangement(box.network) != "mixed":
+        if _one_comparison(box):
             lo, hi = box.bounds(T)
             _, table = one_node_factors(box, hi if sign > 0 else lo, sign)
             factors = dict(zip(box.names, table[:, 0].tolist(), strict=True))
@@ -116,12 +117,11 @@ def _mixed(box: Box) -> Worst:
 def _suspects(box: Box, found: Found, T: FloatArray) -> list[Device]:
     """Return the worst device of the cells, and those of the other temperatures that come near it."""
 
-    def device(factors: FloatArray, at: int, sign: int) -> Device:
-        named = dict(zip(box.names, factors.tolist(), strict=True))
-        return Device(named, box.shifts_at(float(T[at]), sign))
+    def device(point: FloatArray, at: int, sign: int) -> Device:
+        return Device(_named(box, point), box.shifts_at(float(T[at]), sign))
 
     order = np.argsort(T, kind="stable")
-    devices = [device(found.factors, found.at, found.sign)]
+    devices = [device(found.point, found.at, found.sign)]
     for row, sign in ((0, 1), (1, -1)):
         for k in _local_maxima(found.reach[row][order])[:STARTS]:
             at = int(order[k])
@@ -139,20 +139,18 @@ def _banded(box: Box) -> Worst:
     Limits and middles of one material after another, from several starts; the bound adds the worst
     excursions up and down, which need not belong to one device.
     """
-    half = dict(zip(box.names, box.half_widths().tolist(), strict=True))
+    count = int(box.coordinate_of().max()) + 1
+    signs = np.where(np.arange(count) % 2, 1.0, -1.0)
     ends = (box.need.pieces[0].low, box.need.pieces[0].high)
     starts = [
-        Device(
-            {n: 1.0 + f * half[n] * (1 if k % 2 else -1) for k, n in enumerate(box.names)},
-            box.shifts_at(T, sign),
-        )
+        Device(_named(box, f * signs), box.shifts_at(T, sign))
         for T in ends
         for sign in (1, -1)
         for f in (0.0, 1.0, -1.0)
     ]
     best = max(((d, box.judge(d)) for d in starts), key=lambda pair: pair[1].figure)
     for _ in range(12):
-        tried = [(d, box.judge(d)) for d in _neighbours(box, best[0], half)]
+        tried = [(d, box.judge(d)) for d in _neighbours(box, best[0])]
         better = max(tried, key=lambda pair: pair[1].figure)
         if better[1].figure <= best[1].figure * (1 + 1e-9):
             break
@@ -160,13 +158,22 @@ def _banded(box: Box) -> Worst:
     return Worst(best[0], best[1], max(_band_bound(box), best[1].figure), "searched")
 
 
-def _neighbours(box: Box, device: Device, half: Mapping[str, float]) -> Iterator[Device]:
-    """Yield devices that differ in one material."""
-    for n in box.names:
-        corners = set(law_vertices(box.spreads[n])) | {device.shifts[n]}
-        factors = {1.0 - half[n], 1.0, 1.0 + half[n], device.factors[n]}
-        for factor, corner in product(sorted(factors), sorted(corners)):
-            yield device.with_factor(n, factor).with_shift(n, corner)
+def _named(box: Box, point: FloatArray) -> dict[str, float]:
+    """Return the value factors at a point of the coordinates, by material."""
+    return dict(zip(box.names, box.factors_at(point).tolist(), strict=True))
+
+
+def _neighbours(box: Box, device: Device) -> Iterator[Device]:
+    """Yield devices that differ in one coordinate, and in the law of one of its materials."""
+    own = box.coordinate_of()
+    for k in range(int(own.max()) + 1):
+        members = [n for n, at in zip(box.names, own, strict=True) if at == k]
+        levels = [_named(box, np.full(int(own.max()) + 1, s)) for s in (-1.0, 0.0, 1.0)]
+        for level in (device.factors, *levels):
+            moved = replace(device, factors={**device.factors, **{n: level[n] for n in members}})
+            for n in members:
+                for corner in sorted({*law_vertices(box.spreads[n]), device.shifts[n]}):
+                    yield moved.with_shift(n, corner)
 
 
 def _band_bound(box: Box) -> float:
@@ -177,7 +184,7 @@ def _band_bound(box: Box) -> float:
     T, weight = _temperatures(box.need, CELL_GRID)
     free = np.concatenate([np.full(CELL_GRID if p.high > p.low else 1, p.centred) for p in box.need.pieces])
     grid = grid_of(box, T, weight)
-    if arrangement(box.network) != "mixed":
+    if _one_comparison(box):
         up = one_node_factors(box, grid.hi, 1)[0] - grid.wanted
         down = grid.wanted - one_node_factors(box, grid.lo, -1)[0]
     else:
@@ -195,6 +202,7 @@ def worst_case(
     materials: Mapping[str, Material],
     spreads: Mapping[str, Spread],
     need: Requirement,
+    process: Process = INDEPENDENT,
 ) -> Worst:
     """Return the worst judged figure over the spread box.
 
@@ -204,13 +212,21 @@ def worst_case(
     materials, spreads : mapping of name to Material, Spread
         Every material of the network has a spread.
     need : Requirement
+    process : Process
+        What the materials share: values that move in full step have one factor.
 
     Returns
     -------
     Worst
         ``judged.figure`` is reached by ``device``; no device is above ``upper``.
     """
-    box = Box(network, materials, spreads, need)
+    box = Box(network, materials, spreads, need, process)
     if need.centred:
         return _banded(box)
-    return _mixed(box) if arrangement(network) == "mixed" else _one_node(box)
+    return _one_node(box) if _one_comparison(box) else _mixed(box)
+
+
+def _one_comparison(box: Box) -> bool:
+    """Whether one comparison decides each value factor: in one node, factors of a coordinate alike."""
+    kind = arrangement(box.network)
+    return kind != "mixed" and (kind != "parallel" or box.in_step())

@@ -1,0 +1,42 @@
+"""What is likely: lots of the network drawn over its spreads, beside the worst case of the budget."""
+
+from __future__ import annotations
+
+from tcplan.budget.case import Case
+from tcplan.budget.model import Draws, LotFigures
+from tcplan.draws import draw, draw_units, draw_until
+from tcplan.material.model import Material
+from tcplan.material.spread import Spread
+from tcplan.network import deviated, used_materials
+from tcplan.plan import Option
+
+UNITS = 100  # a lot, where mismatch is known
+
+
+def lot_figures(option: Option, case: Case, draws: Draws) -> LotFigures | None:
+    """Return what draws find of an option; None when one of its materials states no spread.
+
+    Drawn are the spreads of the materials, without ends and allowances.
+    """
+    if case.without_spread(option.network):
+        return None
+    network, need = deviated(option.network, case.redrawn), case.need
+    spreads = {name: _stated(case.materials[name], case) for name in used_materials(network)}
+    common = {"seed": draws.seed, "quantile": need.goal.quantile, "limit": need.scale}
+    data = (network, case.materials, spreads, case.process, need)
+    if draws.precision is None:
+        drawn = draw(*data, count=draws.count, **common)  # type: ignore[arg-type]
+    else:
+        drawn = draw_until(*data, precision=draws.precision, **common)  # type: ignore[arg-type]
+    units = None
+    if need.scale is not None:
+        lots = max(1, drawn.draws // UNITS)
+        units = draw_units(*data, lots=lots, units=UNITS, seed=draws.seed, limit=need.scale)
+    return LotFigures(drawn=drawn, units=units)
+
+
+def _stated(material: Material, case: Case) -> Spread:
+    """Return the spread as stated, the extrapolation's added where the range asks for it."""
+    spread = material.spread or Spread(meaning="limits")
+    outside = material.is_extrapolated(case.over.low, case.over.high)
+    return spread.widened(material.extrapolation) if outside and material.extrapolation else spread
