@@ -8,7 +8,7 @@ outside add the points where they cross.
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from itertools import combinations
 
 import numpy as np
@@ -46,20 +46,29 @@ def fixed_ratio(
 
 
 def kind_bounds(
-    space: Space, materials: Mapping[str, Material], variation: Variation, reference: float, T: FloatArray
+    space: Space,
+    materials: Mapping[str, Material],
+    variation: Variation,
+    reference: float,
+    T: FloatArray,
+    kinds: Collection[int] | None = None,
 ) -> tuple[FloatArray, FloatArray]:
     """Return the lowest and highest law ratios of the materials, and last of the fixed members; (kinds, T).
 
-    Fixed members together are looked at with their nominal values.
+    Fixed members together are looked at with their nominal values. With ``kinds`` only these materials
+    are worked out; the others are 1.
     """
-    names = spread_names(space)
+    count = len(space.materials)
+    wanted = range(count) if kinds is None else kinds
+    names = {*(space.materials[k] for k in wanted if k < count), *(leg.material for leg in space.fixed)}
     bounds = {n: law_bounds(materials[n].law, variation.spreads[n], reference, T) for n in names}
     group = fixed_group(space)
     sides = []
     for side in (0, 1):
         ratios = {n: both[side] for n, both in bounds.items()}
         last = np.ones_like(T) if group is None else resistance(group, ratios) / value(group)
-        sides.append(np.stack([*(ratios[n] for n in space.materials), last]))
+        flat = np.ones_like(T)
+        sides.append(np.stack([*(ratios.get(n, flat) for n in space.materials), last]))
     return sides[0], sides[1]
 
 

@@ -14,6 +14,7 @@ from __future__ import annotations
 import math
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
+from functools import lru_cache
 from typing import TYPE_CHECKING, Any, Literal, get_args
 
 import numpy as np
@@ -273,6 +274,7 @@ def law_bounds(
     return np.min(curves, axis=0), np.max(curves, axis=0)
 
 
+@lru_cache(maxsize=4096)
 def value_half_width(law: Law, spread: Spread, reference: float) -> float:
     """Return the half-width D of the value at the brief's reference, as a fraction.
 

@@ -8,6 +8,7 @@ all factors low is left out: scaled up, it is another point of the box.
 
 from __future__ import annotations
 
+from collections.abc import Collection
 from dataclasses import dataclass
 from itertools import product
 
@@ -88,10 +89,16 @@ def _signs(count: int) -> FloatArray:
     return np.vstack([np.ones(count), flips, -flips])
 
 
-def devices_at(source: Source, variation: Variation, piece: IntArray, T: FloatArray) -> Devices:
-    """Return the devices at these pieces and temperatures [K]."""
+def devices_at(
+    source: Source,
+    variation: Variation,
+    piece: IntArray,
+    T: FloatArray,
+    kinds: Collection[int] | None = None,
+) -> Devices:
+    """Return the devices at these pieces and temperatures [K], of all kinds or some."""
     need = source.need
-    lo, hi = kind_bounds(source.space, source.materials, variation, need.reference, T)
+    lo, hi = kind_bounds(source.space, source.materials, variation, need.reference, T, kinds)
     half, groups = kind_half_widths(source.space, source.materials, variation, need.reference)
     weight = np.array([p.weight for p in need.pieces])[piece]
     return Devices(T=T, weight=weight, wanted=need.wanted(T), lo=lo, hi=hi, half=half, groups=groups)

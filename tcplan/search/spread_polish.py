@@ -133,7 +133,7 @@ class SpreadPolisher(Polisher):
         return found[0].joined(found[1])
 
     def _at(self, piece: IntArray, T: FloatArray) -> Devices:
-        return devices_at(self.source, self.variation, piece, T)
+        return devices_at(self.source, self.variation, piece, T, set(self.leg_materials))
 
     def _device_rows(self, devices: Devices, factors: FloatArray, side: float) -> _Rows:
         """Return one row a temperature, with these factors, shape (T, legs)."""

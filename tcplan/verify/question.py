@@ -23,7 +23,7 @@ from tcplan.trees import Pair
 from tcplan.verify.hull import Cells, hull_of, top_members
 
 NODES = 17  # temperatures a piece
-DEVICE_NODES = 5  # the same where each of them is there for every device
+DEVICE_NODES = 3  # the same where each of them is there for every device
 
 
 class Curves(Protocol):
