@@ -8,14 +8,15 @@ outside add the points where they cross.
 
 from __future__ import annotations
 
-from collections.abc import Collection, Mapping, Sequence
+from collections.abc import Mapping, Sequence
 from itertools import combinations
 
 import numpy as np
 
 from tcplan.arrays import BoolArray, FloatArray, IntArray
+from tcplan.material.bounds import LawBounds
 from tcplan.material.model import Material
-from tcplan.material.spread import law_bounds, value_half_width
+from tcplan.material.spread import value_half_width
 from tcplan.network import Network, Parallel, Series, resistance, value
 from tcplan.plan import Space
 from tcplan.process import Variation
@@ -45,37 +46,38 @@ def fixed_ratio(
     return resistance(group, ratios) / value(group)
 
 
-def kind_bounds(
-    space: Space,
-    materials: Mapping[str, Material],
-    variation: Variation,
-    reference: float,
-    T: FloatArray,
-    kinds: Collection[int] | None = None,
-) -> tuple[FloatArray, FloatArray]:
-    """Return the lowest and highest law ratios of the materials, and last of the fixed members; (kinds, T).
+class KindBounds:
+    """The lowest and highest law ratios of the materials of a space, and last of its fixed members.
 
-    Fixed members together are looked at with their nominal values. With ``kinds`` only these materials
-    are worked out; the others are 1.
+    Fixed members together are looked at with their nominal values.
     """
-    count = len(space.materials)
-    wanted = range(count) if kinds is None else kinds
-    names = {*(space.materials[k] for k in wanted if k < count), *(leg.material for leg in space.fixed)}
-    bounds = {n: law_bounds(materials[n].law, variation.spreads[n], reference, T) for n in names}
-    group = fixed_group(space)
-    sides = []
-    for side in (0, 1):
-        ratios = {n: both[side] for n, both in bounds.items()}
-        last = np.ones_like(T) if group is None else resistance(group, ratios) / value(group)
-        flat = np.ones_like(T)
-        sides.append(np.stack([*(ratios.get(n, flat) for n in space.materials), last]))
-    return sides[0], sides[1]
+
+    def __init__(
+        self, space: Space, materials: Mapping[str, Material], variation: Variation, reference: float
+    ) -> None:
+        names = spread_names(space)
+        self._count, self._group, self._names = len(space.materials), fixed_group(space), names
+        self._bounds = LawBounds(
+            [materials[n].law for n in names], [variation.spreads[n] for n in names], reference
+        )
+
+    def at(self, T: FloatArray) -> tuple[FloatArray, FloatArray]:
+        """Return them at some temperatures [K], both of the shape (kinds, T); 1 without fixed members."""
+        low, high = self._bounds.at(T)
+        return self._with_fixed(low), self._with_fixed(high)
+
+    def _with_fixed(self, ratios: FloatArray) -> FloatArray:
+        last = np.ones_like(ratios[0])
+        if self._group is not None:
+            named = dict(zip(self._names, ratios, strict=True))
+            last = resistance(self._group, named) / value(self._group)
+        return np.concatenate([ratios[: self._count], last[None, :]])
 
 
 def kind_half_widths(
     space: Space, materials: Mapping[str, Material], variation: Variation, reference: float
 ) -> tuple[FloatArray, IntArray]:
-    """Return the half-widths of the value factors of the materials and of the fixed members, and their groups.
+    """Return the half-widths of the value factors of all kinds, fixed members last, and their groups.
 
     Kinds of one group move in full step. Fixed members of one material move with it; of several they
     are taken at their nominal values, which is one device of the box.

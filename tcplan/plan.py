@@ -25,7 +25,7 @@ from tcplan.network import (
     tree,
 )
 
-SCHEMA = 1
+SCHEMA = 2
 Verdict: TypeAlias = Literal["MET", "NOT MET", "NOT JUDGED"]
 Parameter: TypeAlias = Literal["ohm_per_square", "tc1", "tc2"]
 

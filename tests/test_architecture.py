@@ -25,14 +25,21 @@ ORDER = [
     {"goal"},
     {"brief"},
     {"plan"},
-    {"plan_file", "mixes", "worst", "draws"},
+    {"plan_file", "mixes", "worst", "draws", "ratio"},
     {"search", "verify", "budget"},
     {"spec", "figures"},
     {"workflow"},
     {"cli"},
     {"__main__"},
 ]
-APART = [("search", "verify"), ("search", "budget"), ("verify", "budget"), ("search", "worst"), ("spec", "figures"), ("ranges", "material")]  # never import each other
+APART = [
+    ("search", "verify"),
+    ("search", "budget"),
+    ("verify", "budget"),
+    ("search", "worst"),
+    ("spec", "figures"),
+    ("ranges", "material"),
+]  # never import each other
 FENCES = {
     "sympy": ("material/", "network.py"),
     "scipy": ("search/", "minimax.py", "draws/"),

@@ -17,6 +17,7 @@ SEARCHED: tuple[Searched, ...] = ("single", "series", "parallel", "mixed")
 Place: TypeAlias = Literal["series", "parallel"]
 Sides: TypeAlias = Literal["both", "up", "down"]
 Nature: TypeAlias = Literal["systematic", "random"]
+RatioKind: TypeAlias = Literal["divider", "gain"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -88,6 +89,29 @@ class Allowance:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Ratio:
+    """Two resistors whose ratio counts: second/(first + second) of a divider, first/second of a gain.
+
+    ``tracking`` [1/K] is by how much the TC1 of two resistors of one material may differ; None when it is
+    not stated, and then counted as 0.
+    """
+
+    kind: RatioKind
+    first: Network
+    second: Network
+    tracking: float | None = None
+
+    def to_dict(self) -> dict[str, Any]:
+        """Return JSON data, units in the names."""
+        return {
+            "kind": self.kind,
+            "first": network_text(self.first),
+            "second": network_text(self.second),
+            "tracking_ppm_per_K": None if self.tracking is None else self.tracking * 1e6,
+        }
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Brief:
     """A checked request. ``materials`` are those in use, sorted by name."""
 
@@ -102,6 +126,7 @@ class Brief:
     given: Network | None = None
     process: Process = field(default_factory=Process)
     allowances: tuple[Allowance, ...] = ()
+    ratio: Ratio | None = None
 
     @property
     def by_name(self) -> dict[str, Material]:
@@ -142,6 +167,7 @@ class Brief:
             "given": network_text(self.given) if self.given else None,
             "process": self.process.to_dict(),
             "allowances": [allowance.to_dict() for allowance in self.allowances],
+            **({"ratio": self.ratio.to_dict()} if self.ratio else {}),
         }
 
 

@@ -14,8 +14,9 @@ import numpy as np
 from tcplan.brief.allowance_tables import read_allowances
 from tcplan.brief.goal_table import read_goal
 from tcplan.brief.members import check_agreement, read_fixed, read_given, read_rules
-from tcplan.brief.model import Brief, Fixed, SearchRules, Target
+from tcplan.brief.model import Brief, Fixed, Ratio, SearchRules, Target
 from tcplan.brief.process_tables import read_process
+from tcplan.brief.ratio_table import check_tracking, read_ratio, together
 from tcplan.brief.shape import shape_mistakes
 from tcplan.errors import InputError
 from tcplan.material.files import MaterialFile, parse_materials, published, read_material_file
@@ -64,8 +65,11 @@ def parse_brief(text: str, name: str, folder: Path) -> Brief:
     fixed = read_fixed(reader, materials)
     rules = read_rules(reader, materials, fixed)
     given = read_given(reader, materials, target)
-    check_agreement(reader, target, fixed, given, goal)
-    used = _used(rules, materials, fixed, given)
+    ratio = read_ratio(reader, materials)
+    if not reader.has("ratio"):
+        check_agreement(reader, target, fixed, given, goal)
+    wrong = ratio is None and reader.has("ratio")  # then what is in use is not known
+    used = [] if wrong else _used(rules, materials, fixed, given, ratio)
     shared = (*read.files, reader)
     process = read_process(shared, materials, {m.name for m in used}, all_read=read.complete)
     allowances = read_allowances(reader, over)
@@ -73,6 +77,7 @@ def parse_brief(text: str, name: str, folder: Path) -> Brief:
         _validity(reader, used, over)
         _areas(reader, used, over)
         _spreads(reader, used, over)
+        check_tracking(reader, ratio, used, over)
     if reader.problems or over is None or goal is None:
         raise InputError(reader.problems)
     return Brief(
@@ -87,6 +92,7 @@ def parse_brief(text: str, name: str, folder: Path) -> Brief:
         given=given,
         process=process,
         allowances=allowances,
+        ratio=ratio,
     )
 
 
@@ -201,7 +207,9 @@ def _used(
     materials: Mapping[str, Material],
     fixed: tuple[Fixed, ...],
     given: Network | None,
+    ratio: Ratio | None,
 ) -> list[Material]:
+    given = given if ratio is None else together(ratio)
     if given is not None:
         return [materials[name] for name in used_materials(given) if name in materials]
     names = dict.fromkeys((*rules.use, *(member.leg.material for member in fixed)))

@@ -81,6 +81,13 @@ class _GivenShape(_Shape):
     scaled: bool | None = None
 
 
+class _RatioShape(_Shape):
+    kind: Literal["divider", "gain"]
+    first: str = Field(examples=['"film_a 9 kohm"'])
+    second: str = Field(examples=['"film_a 1 kohm"'])
+    tracking: str | None = _text("3 ppm/K")
+
+
 class _AllowanceShape(_Shape):
     name: str = Field(examples=['"ageing"'])
     size: str = Field(examples=['"200 ppm"'])
@@ -100,6 +107,7 @@ class _BriefShape(_Shape):
     search: _SearchShape | None = None
     fixed: Annotated[list[_FixedShape], Field(max_length=16)] | None = None
     given: _GivenShape | None = None
+    ratio: _RatioShape | None = None
     allowance: Annotated[list[_AllowanceShape], Field(max_length=MOST_ALLOWANCES)] | None = None
     # What the materials share has one shape here and in materials files: `process_mistakes` checks it.
     correlation: Any = None

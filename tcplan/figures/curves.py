@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from dataclasses import dataclass
 from itertools import pairwise
 from typing import Any
@@ -16,6 +16,7 @@ from tcplan.material.law import law_from_parameters
 from tcplan.material.spread import shifted_ratio
 from tcplan.network import deviated, resistance, used_materials, value
 from tcplan.plan import Option, Plan
+from tcplan.process import Corner
 from tcplan.units import from_celsius, to_celsius
 
 SAMPLES = 201
@@ -72,14 +73,32 @@ def worst_drift(plan: Plan) -> Curve | None:
     worst = plan.best.worst_case
     if worst is None:
         return None
-    point, materials, at = worst.point, plan.by_name, reference(plan)
-    network = deviated(plan.best.network, {name: moved.ohm_per_square for name, moved in point.items()})
+    return _device_drift(
+        plan,
+        {name: moved.ohm_per_square for name, moved in worst.point.items()},
+        {name: (moved.tc1 * 1e-6, moved.tc2 * 1e-6) for name, moved in worst.point.items()},
+    )
+
+
+def corner_drift(plan: Plan, corner: Corner) -> Curve:
+    """Return the drift (a fraction) of the chosen option at a named process corner."""
+    names = used_materials(plan.best.network)
+    return _device_drift(
+        plan,
+        {name: 1.0 + corner.shift(name, "value") for name in names},
+        {name: (corner.shift(name, "tc1"), corner.shift(name, "tc2")) for name in names},
+    )
+
+
+def _device_drift(
+    plan: Plan, factors: Mapping[str, float], shifts: Mapping[str, tuple[float, float]]
+) -> Curve:
+    """Return the drift of one device of the chosen option: value factors and shifts [1/K, 1/K^2]."""
+    materials, at = plan.by_name, reference(plan)
+    network = deviated(plan.best.network, factors)
 
     def ratio(T: FloatArray) -> FloatArray:
-        ratios = {
-            name: shifted_ratio(materials[name].law, (moved.tc1 * 1e-6, moved.tc2 * 1e-6), at, T)
-            for name, moved in point.items()
-        }
+        ratios = {name: shifted_ratio(materials[name].law, own, at, T) for name, own in shifts.items()}
         return resistance(network, ratios) / value(network)
 
     return _less_wanted(ratio, plan)
@@ -90,13 +109,13 @@ def _splits(plan: Plan, names: Sequence[str]) -> tuple[float, ...]:
     return (*breakpoints(plan.by_name, names), *(wanted.breakpoints if wanted else ()))
 
 
-def temperatures(plan: Plan) -> FloatArray:
+def temperatures(plan: Plan, samples: int = SAMPLES) -> FloatArray:
     """Return the temperatures [K] to draw at: even ones, and all where something is marked or bends."""
     low, high = ends(plan)
     worst = plan.best.worst_case
     marked = [plan.best.nominal.at_degC, *([worst.at_degC] if worst else [])]
     extra = [reference(plan), *map(from_celsius, marked), *_splits(plan, list(plan.by_name))]
-    every = np.concatenate([np.linspace(low, high, SAMPLES), extra])
+    every = np.concatenate([np.linspace(low, high, samples), extra])
     return np.unique(every[(every >= low) & (every <= high)])
 
 

@@ -9,7 +9,6 @@ from matplotlib.axes import Axes
 from matplotlib.collections import PolyCollection
 from matplotlib.legend import Legend
 from matplotlib.lines import Line2D
-from matplotlib.ticker import FuncFormatter
 
 from tcplan.arrays import FloatArray
 from tcplan.drift import Curve
@@ -22,26 +21,21 @@ from tcplan.figures.curves import (
     temperatures,
     worst_drift,
 )
-from tcplan.figures.labels import page_box
 from tcplan.figures.limits import Unit, draw_limits, unit_of, view_of
+from tcplan.figures.lots import central_band, draw_band, lots_of
+from tcplan.figures.panel import draw_reference, finish, put_legend
 from tcplan.figures.style import (
     CHOSEN,
-    FAINT,
     OTHER,
-    SMALL_SIZE,
-    TEXT_SIZE,
     WORST,
     WORST_DASH,
     Look,
     looks,
-    number_text,
     short_names,
 )
 from tcplan.network import used_materials
 from tcplan.plan import Plan
 from tcplan.units import from_celsius
-
-LEGEND_LINE = 1.1  # height of a line of a legend, in sizes of its text
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -49,6 +43,7 @@ class DriftArtists:
     """What was drawn; ``others`` are the materials beyond those that have a colour.
 
     ``options`` are the best of each arrangement by kind; ``residual_options`` those drawn below too.
+    ``spread`` is the band of the lots, None where a material of the option has no spread.
     """
 
     materials: dict[str, Line2D]
@@ -59,6 +54,7 @@ class DriftArtists:
     residual: Line2D
     residual_options: dict[str, Line2D]
     worst: Line2D | None
+    spread: PolyCollection | None
     residual_limits: tuple[Line2D | PolyCollection, ...]
     peaks: tuple[Line2D, ...]
     references: tuple[Line2D, ...]
@@ -73,8 +69,8 @@ def draw_drift(ax: Axes, residual_ax: Axes, plan: Plan) -> DriftArtists:
     ax : Axes
         For all curves on one scale. Legends go to the right of the axes, outside.
     residual_ax : Axes
-        For the chosen option at its own scale, with its verified peak and its worst case; and for
-        the options that cannot be told from it above, as far as they fit.
+        For the chosen option at its own scale, with its verified peak, its worst case and the spread of
+        its lots; and for the options that cannot be told from it above, as far as they fit.
     plan : Plan
 
     Returns
@@ -94,23 +90,26 @@ def draw_drift(ax: Axes, residual_ax: Axes, plan: Plan) -> DriftArtists:
     chosen.set_label(f"{plan.chosen} (chosen)")
     upper_limits = draw_limits(ax, limits, unit, view)
     title = "the chosen option and the best others" if best else "and the chosen option"
-    _finish(ax, plan, unit, view, f"Each material alone, {title}")
+    finish(ax, plan, unit, view, f"Each material alone, {title}")
     ax.set_xlabel("")
     ax.tick_params(labelbottom=False)
 
     judged = worst if worst and plan.limit.judge == "worst-case" else own
     limits = bounds(plan, judged)
-    shown = [own(T), *([worst(T)] if worst else [])]
+    lots = lots_of(plan)
+    band = central_band(plan, lots) if lots else None
+    shown = [own(T), *([worst(T)] if worst else []), *([band.lower, band.upper] if band else [])]
     near = worth_enlarging(drifts, own(T), view, view_of(shown, limits))
     view = view_of([*shown, *near.values()], limits)
     unit = unit_of(view)
+    spread = draw_band(residual_ax, band, unit) if band else None
     residual, worst_line, peaks = _draw_residual(residual_ax, plan, T, (own, worst), unit)
     near_lines = draw_alternatives(residual_ax, best, celsius(T), near, unit)
     lower_limits = draw_limits(
         residual_ax, limits, unit, view, "around the worst case" if judged is worst else ""
     )
-    _finish(residual_ax, plan, unit, view, f"The chosen option at its own scale: {plan.chosen}")
-    references = tuple(_draw_reference(part, plan) for part in (ax, residual_ax))
+    finish(residual_ax, plan, unit, view, f"The chosen option at its own scale: {plan.chosen}")
+    references = tuple(draw_reference(part, plan) for part in (ax, residual_ax))
     return DriftArtists(
         materials=material_lines,
         others=others,
@@ -120,10 +119,11 @@ def draw_drift(ax: Axes, residual_ax: Axes, plan: Plan) -> DriftArtists:
         residual=residual,
         residual_options=near_lines,
         worst=worst_line,
+        spread=spread,
         residual_limits=lower_limits,
         peaks=peaks,
         references=references,
-        legends=tuple(_legend(part) for part in (ax, residual_ax)),
+        legends=tuple(put_legend(part) for part in (ax, residual_ax)),
     )
 
 
@@ -195,41 +195,3 @@ def _mark(ax: Axes, curve: Curve, at_degC: float, unit: Unit, *, filled: bool) -
         label="its verified peak" if filled else "where it is judged",
     )
     return mark
-
-
-def _draw_reference(ax: Axes, plan: Plan) -> Line2D:
-    at = plan.range.reference_degC
-    label = f"reference {number_text(at)} \N{DEGREE SIGN}C"
-    return ax.axvline(at, color=OTHER, lw=0.8, linestyle=":", zorder=1, label=label)
-
-
-def _finish(ax: Axes, plan: Plan, unit: Unit, view: tuple[float, float], title: str) -> None:
-    """Set limits, labels and grid."""
-    ax.set_xlim(plan.range.low_degC, plan.range.high_degC)
-    ax.set_ylim(view[0] * unit.factor, view[1] * unit.factor)
-    ax.set_xlabel("Temperature (\N{DEGREE SIGN}C)")
-    ax.set_ylabel(f"Drift ({unit.name})")
-    ax.yaxis.set_label_coords(-0.13, 0.5)
-    ax.set_title(title, loc="left", fontsize=TEXT_SIZE, parse_math=False)
-    for axis in (ax.xaxis, ax.yaxis):
-        axis.set_major_formatter(FuncFormatter(lambda number, _: number_text(number)))
-    ax.grid(color=FAINT, lw=0.5)
-    ax.axhline(0.0, color=OTHER, lw=0.6, zorder=1, label="_zero")
-
-
-def _legend(ax: Axes) -> Legend:
-    """Put the legend to the right of the axes, where it covers no curve; a long one is set closer."""
-    lines, page = sum(1 + label.count("\n") for label in ax.get_legend_handles_labels()[1]), page_box(ax)
-    room = (page.top - page.bottom) / (lines * SMALL_SIZE) - LEGEND_LINE
-    legend = ax.legend(
-        loc="upper left",
-        bbox_to_anchor=(1.015, 1.0),
-        borderaxespad=0.0,
-        frameon=False,
-        fontsize=SMALL_SIZE,
-        handlelength=2.8,
-        labelspacing=min(0.5, max(0.0, room)),
-    )
-    for text in legend.get_texts():
-        text.set_parse_math(False)
-    return legend

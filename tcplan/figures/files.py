@@ -8,8 +8,10 @@ import io
 from matplotlib.figure import Figure
 
 from tcplan.figures.drift import draw_drift
+from tcplan.figures.lots import Lots, lots_of
 from tcplan.figures.network import draw_network, sketch_of
 from tcplan.figures.slope_curvature import draw_slope_curvature, is_crowded
+from tcplan.figures.spread import draw_spread
 from tcplan.figures.style import (
     DRIFT_INCHES,
     PLANE_INCHES,
@@ -38,14 +40,16 @@ def figure_files(plan: Plan) -> dict[str, bytes]:
     Returns
     -------
     dict of str to bytes
-        network, drift and slope-curvature, each as .svg and .png.
+        network, drift, spread and slope-curvature, each as .svg and .png; no spread where a material
+        of the chosen option does not state one.
     """
     found: dict[str, bytes] = {}
-    words = _words(plan)
+    words, lots = _words(plan), lots_of(plan)
     with figure_style():
         for name, figure in (
             ("network", network_figure(plan)),
             ("drift", drift_figure(plan)),
+            *([("spread", spread_figure(plan, lots))] if lots else []),
             ("slope-curvature", slope_curvature_figure(plan)),
         ):
             found[f"{name}.svg"] = _svg(figure, *words[name])
@@ -76,6 +80,15 @@ def drift_figure(plan: Plan) -> Figure:
     ax = figure.add_axes((0.11, 0.475, 0.6, 0.485))
     residual_ax = figure.add_axes((0.11, 0.08, 0.6, 0.325))
     draw_drift(ax, residual_ax, plan)
+    return figure
+
+
+def spread_figure(plan: Plan, lots: Lots) -> Figure:
+    """Return the figure of the spread: curves of lots above, the histogram of what is judged below."""
+    figure = Figure(figsize=DRIFT_INCHES)
+    ax = figure.add_axes((0.11, 0.51, 0.6, 0.45))
+    histogram_ax = figure.add_axes((0.11, 0.08, 0.6, 0.29))
+    draw_spread(ax, histogram_ax, plan, lots)
     return figure
 
 
@@ -119,7 +132,12 @@ def _words(plan: Plan) -> dict[str, tuple[str, str]]:
         "drift": (
             "Drift over temperature",
             "Each material alone, the chosen option and the best others; below, the chosen option at its "
-            "own scale, with its limits and its worst case.",
+            "own scale, with its limits, its worst case and the spread of its lots.",
+        ),
+        "spread": (
+            "Spread of the lots",
+            "Curves of drawn lots of the chosen option over temperature, with nominal materials, the worst "
+            "case, the process corners and the limits; below, how many lots have which judged figure.",
         ),
         "slope-curvature": (
             "Slope and curvature",

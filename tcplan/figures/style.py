@@ -39,6 +39,9 @@ CHOSEN = "#111111"
 LIMIT = "#c01030"
 LIMIT_FILL = "#f6dde1"
 WORST = "#336688"
+SPREAD_FILL = "#cfdce6"
+SPREAD_EDGE = "#8fa9bc"
+SPREAD_LINE = "#557f9d"
 OTHER = "#8c8c8c"
 FAINT = "#d9d9d9"
 OPTION = "#808080"
@@ -49,6 +52,7 @@ OPTION_DASHES: dict[str, Dash] = {
     "given": (0.0, (1.2, 1.2)),
 }
 WORST_DASH: Dash = (0.0, (4.0, 2.0))
+QUANTILE_DASH: Dash = (0.0, (1.5, 1.2))
 LIMIT_DASHES: tuple[Dash, ...] = (
     (0.0, (7.0, 2.0, 1.5, 2.0)),
     (0.0, (7.0, 2.0, 1.5, 2.0, 1.5, 2.0)),
@@ -143,6 +147,11 @@ def short_names(names: Sequence[str], width: float = NAME_WIDTH, size: float = T
         if len(set(best.values())) == len(names):
             break
     return best
+
+
+def percent_text(fraction: float) -> str:
+    """Return a fraction in percent, with all digits that it was stated with."""
+    return f"{100.0 * fraction:.10g} %"
 
 
 def number_text(number: float) -> str:

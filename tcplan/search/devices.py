@@ -8,14 +8,13 @@ all factors low is left out: scaled up, it is another point of the box.
 
 from __future__ import annotations
 
-from collections.abc import Collection
 from dataclasses import dataclass
 from itertools import product
 
 import numpy as np
 
 from tcplan.arrays import FloatArray, IntArray
-from tcplan.mixes import kind_bounds, kind_half_widths
+from tcplan.mixes import KindBounds, kind_half_widths
 from tcplan.process import Variation
 from tcplan.search.mixed import Source
 
@@ -94,11 +93,12 @@ def devices_at(
     variation: Variation,
     piece: IntArray,
     T: FloatArray,
-    kinds: Collection[int] | None = None,
+    bounds: KindBounds | None = None,
 ) -> Devices:
-    """Return the devices at these pieces and temperatures [K], of all kinds or some."""
+    """Return the devices at these pieces and temperatures [K]; ``bounds`` saves making them anew."""
     need = source.need
-    lo, hi = kind_bounds(source.space, source.materials, variation, need.reference, T, kinds)
+    own = bounds or KindBounds(source.space, source.materials, variation, need.reference)
+    lo, hi = own.at(T)
     half, groups = kind_half_widths(source.space, source.materials, variation, need.reference)
     weight = np.array([p.weight for p in need.pieces])[piece]
     return Devices(T=T, weight=weight, wanted=need.wanted(T), lo=lo, hi=hi, half=half, groups=groups)

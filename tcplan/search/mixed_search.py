@@ -10,7 +10,7 @@ import numpy as np
 from tcplan.effort import Effort
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
-from tcplan.mixes import fixed_group, mixed_trees
+from tcplan.mixes import KindBounds, fixed_group, mixed_trees
 from tcplan.network import Leg, Network, Series, arrangement, legs, scaled, shares, simplified, value
 from tcplan.plan import Proposal, Space
 from tcplan.process import Variation
@@ -78,9 +78,10 @@ class Task:
             grid = polishing_grid(source)
             return [NominalPolisher(pair, leaves(s.tree), limits, outermost, source, grid) for s in starts]
         points = spread_points(source.need, GRID, chebyshev=False)
-        devices = devices_at(source, self.variation, *points)
+        bounds = KindBounds(source.space, source.materials, self.variation, source.need.reference)
+        devices = devices_at(source, self.variation, *points, bounds)
         return [
-            SpreadPolisher(pair, leaves(s.tree), limits, outermost, source, self.variation, devices)
+            SpreadPolisher(pair, leaves(s.tree), limits, outermost, source, self.variation, devices, bounds)
             for s in starts
         ]
 

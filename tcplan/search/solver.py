@@ -38,8 +38,8 @@ class Mix:
 
 
 def closed(upper: float, lower: float) -> bool:
-    """Whether a figure and its bound agree."""
-    return upper - lower <= max(ABSOLUTE, RELATIVE * abs(upper))
+    """Whether a figure and its bound agree; never while no figure is known."""
+    return upper < np.inf and upper - lower <= max(ABSOLUTE, RELATIVE * abs(upper))
 
 
 @dataclass(slots=True)

@@ -21,8 +21,9 @@ import numpy as np
 
 from tcplan.arrays import BoolArray, FloatArray, IntArray
 from tcplan.goal import Requirement
+from tcplan.material.bounds import LawBounds
 from tcplan.material.model import Material
-from tcplan.material.spread import law_bounds, value_half_width
+from tcplan.material.spread import value_half_width
 from tcplan.mixes import spread_columns, spread_names
 from tcplan.plan import Space
 from tcplan.process import Variation
@@ -51,7 +52,8 @@ class SpreadProgramme:
     names: tuple[str, ...]
     variation: Variation
     half: FloatArray = field(init=False)
-    groups: IntArray = field(init=False)
+    bounds: LawBounds = field(init=False)
+    together: FloatArray | None = field(init=False)
     columns: FloatArray = field(init=False)
     grid: _Points = field(init=False)
 
@@ -59,7 +61,11 @@ class SpreadProgramme:
         names, reference = spread_names(self.space), self.need.reference
         spreads = self.variation.spreads
         self.half = np.array([value_half_width(self.materials[n].law, spreads[n], reference) for n in names])
-        self.groups = np.array(self.variation.process.value_groups(names))
+        laws = [self.materials[n].law for n in names]
+        self.bounds = LawBounds(laws, [spreads[n] for n in names], reference)
+        groups = np.array(self.variation.process.value_groups(names))
+        same = groups[:, None] == groups[None, :]
+        self.together = same.astype(float) if same.sum() > len(groups) else None
         self.columns = spread_columns(self.space)
         self.grid = self._points(*spread_points(self.need, GRID, chebyshev=False))
 
@@ -69,11 +75,8 @@ class SpreadProgramme:
         return self.space.arrangement == "parallel"
 
     def _points(self, piece: IntArray, T: FloatArray) -> _Points:
-        pairs = [
-            law_bounds(self.materials[n].law, self.variation.spreads[n], self.need.reference, T)
-            for n in spread_names(self.space)
-        ]
-        return _Points(piece, T, np.stack([lo for lo, _ in pairs], 1), np.stack([hi for _, hi in pairs], 1))
+        lo, hi = self.bounds.at(T)
+        return _Points(piece, T, np.ascontiguousarray(lo.T), np.ascontiguousarray(hi.T))
 
     # --- the worst device of a mix --------------------------------------------------------------
 
@@ -91,8 +94,9 @@ class SpreadProgramme:
         for _ in range(len(weights) + 2):
             rho = (factor * column) @ weights / (factor @ weights)
             pull = swing * (column - rho[:, None])
-            together = np.stack([pull[:, self.groups == g].sum(axis=1) for g in self.groups], axis=1)
-            fresh = np.where(sign * together > 0, high, low)
+            if self.together is not None:  # materials whose values move in full step decide as one
+                pull = pull @ self.together
+            fresh = np.where(sign * pull > 0, high, low)
             if np.array_equal(fresh, factor):
                 break
             factor = fresh

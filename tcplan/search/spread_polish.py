@@ -12,6 +12,7 @@ from dataclasses import dataclass, field
 import numpy as np
 
 from tcplan.arrays import FloatArray, IntArray
+from tcplan.mixes import KindBounds
 from tcplan.process import Variation
 from tcplan.search.columns import spread_points
 from tcplan.search.curves import ratio, ratio_and_slopes
@@ -58,6 +59,7 @@ class SpreadPolisher(Polisher):
     source: Source
     variation: Variation
     devices: Devices
+    bounds: KindBounds
     rows: _Rows = field(init=False)
     corners: FloatArray = field(init=False)
 
@@ -133,7 +135,7 @@ class SpreadPolisher(Polisher):
         return found[0].joined(found[1])
 
     def _at(self, piece: IntArray, T: FloatArray) -> Devices:
-        return devices_at(self.source, self.variation, piece, T, set(self.leg_materials))
+        return devices_at(self.source, self.variation, piece, T, self.bounds)
 
     def _device_rows(self, devices: Devices, factors: FloatArray, side: float) -> _Rows:
         """Return one row a temperature, with these factors, shape (T, legs)."""

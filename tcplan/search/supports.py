@@ -13,7 +13,7 @@ import numpy as np
 
 from tcplan.arrays import FloatArray, IntArray
 from tcplan.mixes import all_supports, fixed_ends, share_vertices
-from tcplan.search.solver import Mix, Solver
+from tcplan.search.solver import Mix, Solver, closed
 
 MOST_SUPPORTS = 80_000
 MOST_SOLVES = 400
@@ -61,7 +61,8 @@ def best_mixes(solver: Solver, few: int) -> tuple[list[Mix], bool]:
         at = int(np.argmin(bounds[which]))
         ranked = sorted(mix.figure for mix in found.values())
         worst_kept = ranked[few - 1] if len(ranked) >= few else np.inf
-        if bounds[which][at] >= worst_kept or not np.isfinite(bounds[which][at]):
+        lowest = float(bounds[which][at])
+        if not np.isfinite(lowest) or lowest >= worst_kept or closed(worst_kept, lowest):
             break
         support = tuple(int(i) for i in groups[which][at])
         if sized and _ruled_out(solver, support, worst_kept):

@@ -24,8 +24,9 @@ import numpy as np
 from tcplan.arrays import FloatArray, IntArray
 from tcplan.errors import InternalError
 from tcplan.goal import Requirement
+from tcplan.material.bounds import LawBounds
 from tcplan.material.model import Material
-from tcplan.material.spread import law_bounds, value_half_width
+from tcplan.material.spread import value_half_width
 from tcplan.mixes import (
     all_supports,
     fixed_ends,
@@ -103,9 +104,9 @@ def _device_rows(
     T = np.array([node.temperature for node in evidence.nodes])
     side = np.array([node.side for node in evidence.nodes])[:, None]
     weight = np.array([need.pieces[node.piece].weight for node in evidence.nodes])[:, None]
-    bounds = [law_bounds(materials[n].law, variation.spreads[n], need.reference, T) for n in names]
-    low, high = np.stack([lo for lo, _ in bounds], 1), np.stack([hi for _, hi in bounds], 1)
-    r, t = np.where(side > 0, high, low), need.wanted(T)[:, None]
+    laws, spreads = [materials[n].law for n in names], [variation.spreads[n] for n in names]
+    low, high = LawBounds(laws, spreads, need.reference).at(T)
+    r, t = np.where(side > 0, high.T, low.T), need.wanted(T)[:, None]
     m = _pressed(np.array([node.factors for node in evidence.nodes]), names, need, materials, variation)
     if space.arrangement == "parallel":
         n, d = side * (1.0 - t / r) / m, weight / (r * m)

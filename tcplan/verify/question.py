@@ -16,7 +16,7 @@ import numpy as np
 from tcplan.arrays import FloatArray, IntArray
 from tcplan.goal import Piece, Requirement
 from tcplan.material.model import Material
-from tcplan.mixes import fixed_ratio, kind_bounds, kind_half_widths
+from tcplan.mixes import KindBounds, fixed_ratio, kind_half_widths
 from tcplan.plan import Space
 from tcplan.process import Variation
 from tcplan.trees import Pair
@@ -170,7 +170,7 @@ def device_question(
     """
     T, pieces = _nodes(need, DEVICE_NODES, more)
     wanted, room = need.wanted(T), limit * np.array([p.weight for p in pieces])
-    lo, hi = kind_bounds(space, materials, variation, need.reference, T)
+    lo, hi = KindBounds(space, materials, variation, need.reference).at(T)
     half, groups = kind_half_widths(space, materials, variation, need.reference)
     names = space.materials
     # The device of a network says nothing of materials that it does not use: they are nominal there.

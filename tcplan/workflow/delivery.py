@@ -2,8 +2,10 @@
 
 from __future__ import annotations
 
+from collections.abc import Iterable
 from pathlib import Path
 
+from tcplan.errors import OutputError, Problem
 from tcplan.output import check_folder, write_files
 from tcplan.plan import Plan, plan_json
 
@@ -15,6 +17,8 @@ PLAN_FILES = (
     "network.png",
     "drift.svg",
     "drift.png",
+    "spread.svg",
+    "spread.png",
     "slope-curvature.svg",
     "slope-curvature.png",
 )
@@ -34,7 +38,8 @@ def write_plan(plan: Plan, folder: Path, *, force: bool = False) -> tuple[Path, 
     Returns
     -------
     tuple of Path
-        The files, in the order of ``PLAN_FILES``.
+        The files, in the order of ``PLAN_FILES``; without the figure of the spread where a material of
+        the chosen option does not state one.
 
     Raises
     ------
@@ -48,4 +53,23 @@ def write_plan(plan: Plan, folder: Path, *, force: bool = False) -> tuple[Path, 
     check_folder(folder, PLAN_FILES, force=force)
     texts = {"plan.json": plan_json(plan), "mix.csv": mix_csv(plan), "spec.md": spec_markdown(plan)}
     contents = {**{name: text.encode() for name, text in texts.items()}, **figure_files(plan)}
-    return write_files(folder, {name: contents[name] for name in PLAN_FILES}, force=force)
+    made = {name: contents[name] for name in PLAN_FILES if name in contents}
+    paths = write_files(folder, made, force=force)
+    _remove(folder / name for name in PLAN_FILES if name not in made)
+    return paths
+
+
+def _remove(paths: Iterable[Path]) -> None:
+    """Remove what an earlier plan left here and this one does not have: it would pass for its own."""
+    for path in paths:
+        try:
+            path.unlink(missing_ok=True)
+        except OSError as fault:
+            raise OutputError(
+                Problem(
+                    where=str(path),
+                    found=f"a file of an earlier plan that cannot be removed ({fault.strerror})",
+                    expected="a folder in which files can be removed",
+                    todo="Remove it: it does not belong to this plan.",
+                )
+            ) from fault

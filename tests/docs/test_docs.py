@@ -30,9 +30,9 @@ from tcplan.search import mixed, mixed_search, polish, solver, supports
 from tcplan.trees import assigned_trees, shapes
 from tcplan.units import parse_quantity
 from tcplan.verify import question, tree_bound
-from tcplan.worst import cells, evaluation
 from tcplan.workflow import proposals
 from tcplan.workflow.planning import make_plan
+from tcplan.worst import cells, evaluation
 
 ROOT = Path(__file__).parents[2]
 DOCS = sorted((ROOT / "docs").glob("*.md"))

@@ -175,7 +175,11 @@ def half_widths(entry):
     """Return the limits of value, TC1 and TC2 that a material of plan.json states."""
     spread = entry["spread"]
     scale = 3.0 if spread["meaning"] == "sigma" else 1.0
-    stated = spread["value"], (spread["tc1_per_K"] or 0.0) + (spread["tcr_per_K"] or 0.0), spread["tc2_per_K2"]
+    stated = (
+        spread["value"],
+        (spread["tc1_per_K"] or 0.0) + (spread["tcr_per_K"] or 0.0),
+        spread["tc2_per_K2"],
+    )
     return [scale * (half or 0.0) for half in stated]
 
 

@@ -9,6 +9,7 @@ from makers import brute_ratio, by_name, film, grid, leg, need_of, random_films,
 from tcplan.goal import Limit
 from tcplan.material.spread import shifted_ratio
 from tcplan.network import Parallel, Series, deviated, resistance, used_materials, value
+from tcplan.process import Correlation, Parameter, Process
 from tcplan.worst.evaluation import worst_case
 
 
@@ -194,3 +195,61 @@ def test_a_false_met_of_a_film_without_a_value_spread():
     worst = worst_case(network, films, spreads(films), need_of(high=125.0))
     assert worst.device.factors["A"] == pytest.approx(0.8)
     assert worst.judged.figure * 1e6 == pytest.approx(14199, abs=0.5)
+
+
+# --- values that move in full step --------------------------------------------------------------
+
+
+def in_step(*names):
+    pairs = [(names[0], other) for other in names[1:]]
+    return Process(
+        correlations=tuple(
+            Correlation(
+                first=Parameter(material=a, component="value"),
+                second=Parameter(material=b, component="value"),
+                value=1.0,
+            )
+            for a, b in pairs
+        )
+    )
+
+
+@pytest.mark.parametrize("seed", range(12))
+def test_devices_in_full_step_against_brute_force(seed):
+    """Three films, the first two in one step though with other half-widths, on a grid of their steps."""
+    rng = np.random.default_rng(seed)
+    films = by_name(
+        *(
+            film(n, *rng.uniform((-1500, -0.5), (2500, 3)), value_percent=v, tc1_spread_ppm=30)
+            for n, v in (("a", 20.0), ("b", 8.0), ("c", 12.0))
+        )
+    )
+    network = random_tree(rng, ("a", "b", "c"), int(rng.integers(2, 5)))
+    need, process = need_of(), in_step("a", "b")
+    found = worst_case(network, films, spreads(films), need, process)
+    free = worst_case(network, films, spreads(films), need)
+    T, x = grid(count=33), grid(count=33) - 298.15
+    brute = 0.0
+    for one, other in product(np.linspace(-1, 1, 17), repeat=2):
+        factors = {"a": 1 + 0.2 * one, "b": 1 + 0.08 * one, "c": 1 + 0.12 * other}
+        device = deviated(network, {n: factors[n] for n in used_materials(network)})
+        for side in (1, -1):
+            laws = {n: m.ratio(T, 298.15) + side * 30e-6 * np.abs(x) for n, m in films.items()}
+            brute = max(brute, float(np.max(np.abs(resistance(device, laws) / value(device) - 1))))
+    assert brute <= found.upper * (1 + 1e-9)
+    assert found.judged.figure >= brute * (1 - 1e-3)
+    assert found.judged.figure <= free.judged.figure * (1 + 1e-9)
+    if {"a", "b"} <= found.device.factors.keys():
+        steps = [(found.device.factors[n] - 1) / half for n, half in (("a", 0.2), ("b", 0.08))]
+        assert steps[0] == pytest.approx(steps[1], abs=1e-9)
+
+
+def test_a_band_of_values_in_full_step():
+    films = by_name(film("a", 250, 0.5, value_percent=10), film("b", -1800, 1.9, value_percent=10))
+    network, need = Parallel((leg("a", 1.0), leg("b", 4.0))), need_of(Limit(kind="band", value=0.01))
+    nominal = by_name(film("a", 250, 0.5, value_percent=0), film("b", -1800, 1.9, value_percent=0))
+    found = worst_case(network, films, spreads(films), need, in_step("a", "b"))
+    assert found.judged.figure == pytest.approx(
+        worst_case(network, nominal, spreads(nominal), need).judged.figure, rel=1e-9
+    )
+    assert found.upper >= found.judged.figure

@@ -1,0 +1,1 @@
+"""The ratio of two resistors: its drift, what is likely, its worst case, and what causes it."""
