@@ -12,6 +12,8 @@ from tcplan.cli.exits import CANNOT_BE_MET, DONE, NOT_MET
 from tcplan.cli.talk import colourful, complain, say, say_json_text, width
 
 if TYPE_CHECKING:
+    from collections.abc import Sequence
+
     from tcplan.brief import Brief
     from tcplan.plan import Plan
 
@@ -53,6 +55,8 @@ def command(
     Writes plan.json, mix.csv, spec.md and the figures network, drift and slope-curvature (SVG and PNG),
     all of them or none. The options and the verdict go to stdout, everything else to stderr.
 
+    A brief with [ratio] is checked in its place: that writes ratio.json and the figure drift.
+
     Exit code 0: the limit is met, or none was given. 1: not met, or not judged. 3: proved that no
     network of these materials can meet it.
     """
@@ -62,6 +66,8 @@ def command(
     from tcplan.workflow.delivery import PLAN_FILES, write_plan
 
     asked, folder = _read(brief), _folder(brief, output, as_json=as_json)
+    if asked.ratio is not None:
+        return _ratio(asked, folder, force=force, as_json=as_json)
     if folder is not None:
         check_folder(folder, PLAN_FILES, force=force)
     try:
@@ -72,9 +78,31 @@ def command(
         raise
     paths = write_plan(plan, folder, force=force) if folder is not None else ()
     _show(plan, as_json=as_json)
+    _tell(paths, folder)
+    return _code(plan)
+
+
+def _ratio(asked: Brief, folder: Path | None, *, force: bool, as_json: bool) -> int:
+    """Check the ratio of a brief, write it, show it."""
+    from tcplan.cli.ratio_screen import ratio_screen
+    from tcplan.output import check_folder
+    from tcplan.workflow.ratio import RATIO_FILES, make_ratio, ratio_json, write_ratio
+
+    if folder is not None:
+        check_folder(folder, RATIO_FILES, force=force)
+    check = make_ratio(asked)
+    paths = write_ratio(check, folder, force=force) if folder is not None else ()
+    if as_json:
+        say_json_text(ratio_json(check))
+    else:
+        say(ratio_screen(check, width(), colour=colourful()))
+    _tell(paths, folder)
+    return DONE if check.verdict == "MET" or check.pair.need.scale is None else NOT_MET
+
+
+def _tell(paths: Sequence[Path], folder: Path | None) -> None:
     if paths:
         complain(f"wrote {len(paths)} files to {folder}: {', '.join(path.name for path in paths)}")
-    return _code(plan)
 
 
 def _planned(asked: Brief, gap: float, workers: int, scheduler: str | None) -> Plan:

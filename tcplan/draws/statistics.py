@@ -7,6 +7,7 @@ Counts add, and moments are joined block by block in order, so a result does not
 
 from __future__ import annotations
 
+import math
 from collections.abc import Iterable, Sequence
 from dataclasses import dataclass, field
 
@@ -195,3 +196,31 @@ def variance_shares(products: FloatArray) -> FloatArray:
         return np.zeros(len(covariance) - 1)
     slopes = np.linalg.lstsq(covariance[:-1, :-1], covariance[:-1, -1], rcond=1e-12)[0]
     return np.asarray(slopes**2 * np.diag(covariance)[:-1] / variance)
+
+
+def tolerance_factor(count: int, coverage: float, confidence: float) -> float:
+    """Return k such that mean +/- k s of ``count`` normal values holds ``coverage`` with ``confidence``.
+
+    k = z sqrt((n - 1)(1 + 1/n)/chi2), Howe's approximation of the two-sided factor.
+
+    Parameters
+    ----------
+    count : int
+        2 or more values.
+    coverage, confidence : float
+        Above 0 and below 1.
+
+    Returns
+    -------
+    float
+
+    References
+    ----------
+    W. G. Howe, J. Amer. Stat. Assoc. 64 (1969); NIST/SEMATECH e-Handbook 7.2.6.3.
+    """
+    from scipy.special import chdtri, ndtri
+
+    if count < 2 or not (0.0 < coverage < 1.0 and 0.0 < confidence < 1.0):
+        raise ValueError("a tolerance factor needs two values and fractions between 0 and 1")
+    z, low = float(ndtri(0.5 * (1.0 + coverage))), float(chdtri(count - 1, confidence))
+    return z * math.sqrt((count - 1) * (1.0 + 1.0 / count) / low)

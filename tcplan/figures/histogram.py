@@ -18,7 +18,9 @@ from tcplan.figures.style import (
     FAINT,
     LIMIT,
     LIMIT_DASHES,
+    NAME_WIDTH,
     QUANTILE_DASH,
+    SMALL_SIZE,
     SPREAD_FILL,
     SPREAD_LINE,
     TEXT_SIZE,
@@ -26,6 +28,7 @@ from tcplan.figures.style import (
     WORST_DASH,
     number_text,
     percent_text,
+    text_width,
 )
 from tcplan.plan import Likely, Plan
 from tcplan.units import round_outward
@@ -38,6 +41,7 @@ FIGURES = {
     "chord_tcr": "Chord TCR times the longer arm",
     "mask": "Drift against the mask, at its tightest line",
 }
+LEAST_WIDTH = 0.02  # of the highest figure; lots that hardly differ are no more than a line
 REACH = 1.5  # a limit so many widths of all else away is still brought into view
 LOOKS: dict[str, dict[str, Any]] = {
     "nominal": {"color": CHOSEN, "lw": 2.4, "zorder": 3.0},
@@ -96,7 +100,7 @@ def _figures(plan: Plan, likely: Likely) -> dict[str, float]:
 
 def _view(low: float, high: float, limit: float | None) -> tuple[float, float]:
     """Return the lowest and highest figure to show, with a margin; the limit if it is near enough."""
-    width = max(high - low, 1e-3 * high, 1e-9)
+    width = max(high - low, LEAST_WIDTH * high, 1e-9)
     if limit is not None and low - REACH * width <= limit <= high + REACH * width:
         low, high = min(low, limit), max(high, limit)
     margin = 0.04 * max(high - low, width)
@@ -125,9 +129,17 @@ def _labels(plan: Plan, likely: Likely, unit: Unit) -> dict[str, str]:
         found["limit"] = "limit", amount(limit)
     judged = {"nominal": "nominal", "worst-case": "worst", "quantile": "quantile"}[plan.limit.judge]
     return {
-        name: what + (", judged" if name == judged else "") + (f":\n{figure}" if figure else "")
+        name: _label(f"{what}, judged" if name == judged else what, figure)
         for name, (what, figure) in found.items()
     }
+
+
+def _label(what: str, figure: str) -> str:
+    """Return a label; a figure that would make it too long for the page gets a line of its own."""
+    if not figure:
+        return what
+    short = f"{what}: {figure}"
+    return short if text_width(short, SMALL_SIZE) <= NAME_WIDTH else f"{what}:\n{figure}"
 
 
 def _outward(ppm: float, limit: float | None) -> float:

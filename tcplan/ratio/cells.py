@@ -22,7 +22,7 @@ from tcplan.arrays import BoolArray, FloatArray, IntArray
 from tcplan.errors import InternalError
 from tcplan.ratio.space import Grid, Quotient, Space, log_value, material_shares
 
-GAP = 2e-4
+GAP = 5e-5
 LEAST_GAP = 1e-10  # a figure; what is closer is of no account
 MOST_WORK = 6_000_000  # vertices, after which the bound stays as it is
 POINTS = 40_000  # vertices at a time
@@ -78,7 +78,7 @@ def side_extreme(
     cells, best, closed = _start(space, len(grid.T)), Side(-np.inf, np.inf, np.empty(0), 0, up), -np.inf
     while len(cells):
         enough = max(best.figure, floor)
-        done = cells.bound <= enough + max(GAP * abs(enough), LEAST_GAP)
+        done = np.asarray(cells.bound <= enough + max(GAP * abs(enough), LEAST_GAP))
         if best.point.size:
             closed = max(closed, float(cells.bound[done].max(initial=-np.inf)))
             cells = cells.taken(~done)
@@ -213,9 +213,7 @@ def _exact_laws(space: Space, grid: Grid, at: IntArray, apart: FloatArray, z: Fl
     return np.asarray((above / below)[None] + apart)
 
 
-def _examined(
-    space: Space, grid: Grid, quotient: Quotient, cells: _Cells, best: Side
-) -> tuple[_Cells, Side]:
+def _examined(space: Space, grid: Grid, quotient: Quotient, cells: _Cells, best: Side) -> tuple[_Cells, Side]:
     """Return the halves of cells with the bounds of the wholes, and the best device so far."""
     local = _local(space, grid, cells, quotient.up)
     points, there = _corners(space, cells)
@@ -232,7 +230,7 @@ def _examined(
         k = int(np.argmax(reached))
         if reached[k] > best.figure:
             best = Side(float(reached[k]), np.inf, z[k].copy(), int(cells.at[k]), quotient.up)
-    kept = there.any(axis=1)
+    kept = np.asarray(there.any(axis=1))
     whole = _Cells(cells.low, cells.high, cells.at, bound)
     split = _widest(space, tangent, local, cells)
     return _halved(whole.taken(kept), split[kept]), best

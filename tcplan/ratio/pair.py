@@ -29,8 +29,10 @@ ROUNDING = 1e-12  # relative; values of two networks that differ by less are equ
 
 @dataclass(frozen=True, slots=True)
 class PairDevice:
-    """One device: by material its value factor, its shift of TC1 and TC2, and by how much the TC1 of the
-    first and of the second resistor are off the common one, about the reference of the brief.
+    """One device, by material: value factors, and shifts of TC1 and TC2 that both resistors share.
+
+    ``apart`` is by how much the TC1 [1/K] of the first and of the second resistor are off the common one,
+    about the reference of the brief.
     """
 
     factors: dict[str, float]
@@ -139,9 +141,7 @@ def _deviated(network: Network, factors: Mapping[str, float]) -> Network:
 def _normal(network: Network) -> Network:
     """Return a network of 1 ohm with its members in an order of their own."""
     whole = value(network)
-    return _sorted(
-        mapped(simplified(network), lambda leg: Leg(material=leg.material, ohms=leg.ohms / whole))
-    )
+    return _sorted(mapped(simplified(network), lambda leg: Leg(material=leg.material, ohms=leg.ohms / whole)))
 
 
 def _sorted(network: Network) -> Network:

@@ -23,8 +23,10 @@ EQUAL = 1e-15  # half-widths that differ by less are one
 
 @dataclass(frozen=True, slots=True, eq=False)
 class Grid:
-    """Temperatures [K], shape (T,), with what the goal asks there and, by material, the nominal law and the
-    distance from the material's own reference, shape (T, materials).
+    """Temperatures [K], shape (T,), and what the goal asks there.
+
+    ``base`` is the nominal law and ``x`` the distance from its own reference [K] of each material, shape
+    (T, materials).
     """
 
     T: FloatArray

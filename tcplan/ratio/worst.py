@@ -58,9 +58,7 @@ def worst_of(pair: Pair) -> RatioWorst:
 
 def _worst(device: PairDevice, reached: Judged, upper: float, high: float, low: float) -> RatioWorst:
     closed = upper <= reached.figure * (1.0 + CLOSED) + LEAST
-    return RatioWorst(
-        device=device, judged=reached, upper=upper, closed=closed, high_at=high, low_at=low
-    )
+    return RatioWorst(device=device, judged=reached, upper=upper, closed=closed, high_at=high, low_at=low)
 
 
 # --- one temperature ----------------------------------------------------------------------------------
@@ -80,28 +78,28 @@ def _followed(space: Space, *, up: bool) -> _Followed:
     """Return the worst device of one side, searched again where it turns out to be worst."""
     pieces = list(temperatures(space, GRID))
     T, weight = (np.concatenate([piece[k] for piece in pieces]) for k in (0, 1))
-    best: _Followed | None = None
-    upper = -np.inf
+    side = side_extreme(space, space.grid(T, weight), up=up)
+    best = _reached(space, side, float(T[side.at]))
+    upper = side.upper
     for _ in range(ROUNDS):
-        side = side_extreme(space, space.grid(T, weight), up=up, floor=best.judged.figure if best else -np.inf)
-        upper = max(upper, side.upper)
-        at = float(T[side.at])
-        device = space.device(side.point, at, up=up)
-        reached = space.pair.judge(device)
-        if best is not None and reached.figure <= best.judged.figure * (1.0 + 1e-6) + LEAST:
+        at = best.judged.at
+        grid = space.grid(np.array([at]), np.array([_tightest(space, at)]))
+        side = side_extreme(space, grid, up=up)
+        found, upper = _reached(space, side, at), max(upper, side.upper)
+        if found.judged.figure <= best.judged.figure * (1.0 + 1e-6) + LEAST:
             break
-        best = _Followed(device, reached, upper, at)
-        T, weight = np.array([reached.at]), np.array([_tightest(space, reached.at)])
-    return replace(best, upper=max(upper, side.figure)) if best else _nothing(space, up)
+        best = found
+    return replace(best, upper=upper)
+
+
+def _reached(space: Space, side: Side, at: float) -> _Followed:
+    """Return what the device of a side reaches over the whole range."""
+    device = space.device(side.point, at, up=side.up)
+    return _Followed(device, space.pair.judge(device), side.upper, at)
 
 
 def _tightest(space: Space, at: float) -> float:
     return min(piece.weight for piece in space.pair.need.pieces if piece.low <= at <= piece.high)
-
-
-def _nothing(space: Space, up: bool) -> _Followed:
-    device = space.device(np.zeros_like(space.half), space.pair.need.reference, up=up)
-    return _Followed(device, space.pair.judge(device), np.inf, space.pair.need.reference)
 
 
 def side_at(pair: Pair, T: float, weight: float, *, up: bool) -> float:

@@ -242,10 +242,12 @@ def _floor(made: Budget) -> str:
 
 def _lots(lots: LotFigures) -> Iterator[str]:
     drawn = lots.drawn
-    low, high = (numbers.number(x * 1e6, 3) if x is not None else None for x in _interval(lots))
+    lowest, highest = _interval(lots)
+    low = numbers.bound(lowest * 1e6)
+    high = None if highest is None else numbers.worst(highest * 1e6)
     upper = f"to {high}" if high is not None else "up, no upper end from so few draws"
     stated = numbers.percent(drawn.quantile)
-    figure = numbers.number(drawn.quantile_figure * 1e6, 3)
+    figure = numbers.worst(drawn.quantile_figure * 1e6)
     yield (
         f"{stated} of lots are within {figure} ppm (95 % interval {low} {upper}); {drawn.draws} draws, seed "
         f"{drawn.seed}, spreads only."

@@ -266,8 +266,10 @@ def test_the_program_of_the_text_finds_the_peak_again(folder, tmp_path, name):
 def test_the_figure_is_bound_plus_gap(plan):
     assert "`proof.lower_bound_ppm + proof.gap_ppm`" in text("docs/plan.md")
     for option in json.loads(plan_json(plan))["options"]:
-        figure = option["proof"]["lower_bound_ppm"] + option["proof"]["gap_ppm"]
-        assert figure == pytest.approx(option["nominal"]["peak_ppm"], rel=1e-9)
+        figure, of = option["proof"]["lower_bound_ppm"] + option["proof"]["gap_ppm"], option["proof"]["of"]
+        told = option["nominal"]["figure_ppm"] if of == "nominal" else option["worst_case"]["peak_ppm"]
+        assert figure == pytest.approx(told, rel=1e-9)
+        assert option["nominal"]["figure_ppm"] == pytest.approx(option["nominal"]["peak_ppm"], rel=1e-9)
 
 
 def test_the_point_is_a_factor_and_two_shifts(plan):

@@ -5,6 +5,9 @@ import subprocess
 import sys
 from pathlib import Path
 
+from tcplan.brief import parse_brief, read_brief
+from tcplan.workflow.planning import make_plan
+
 ROOT = Path(__file__).parents[2]
 README = (ROOT / "README.md").read_text()
 
@@ -50,9 +53,6 @@ def test_links_lead_somewhere():
 
 
 def test_the_mixing_table_is_the_real_one():
-    from tcplan.brief import read_brief
-    from tcplan.workflow.planning import make_plan
-
     plan = make_plan(read_brief(ROOT / "examples" / "flat_mixed_films" / "brief.toml"))
     for kind in ("single", "series", "parallel", "mixed"):
         option = next(o for o in plan.options if o.arrangement == kind)
@@ -60,3 +60,15 @@ def test_the_mixing_table_is_the_real_one():
         row = re.search(rf"^\| {kind} \|(.*)\|$", README, flags=re.M).group(1)
         printed = [float(cell) for cell in row.split("|")]
         assert printed == [float(f"{figure:.0f}") for figure in figures]
+
+
+def test_the_table_of_the_judges_is_what_the_example_gives():
+    path = ROOT / "examples" / "brake_sensor_films" / "brief.toml"
+    for judge in ("nominal", "quantile", "worst-case"):
+        told = path.read_text().replace('judge = "worst-case"', f'judge = "{judge}"')
+        plan = make_plan(parse_brief(told, "brief.toml", path.parent))
+        for kind in ("parallel", "mixed"):
+            row = re.search(rf"^\| {judge} \| {kind} \|(.*)\|$", README, flags=re.M).group(1)
+            option = next(o for o in plan.options if o.arrangement == kind)
+            figures = option.nominal.figure_ppm, option.likely.peak_ppm, option.worst_case.peak_ppm
+            assert [int(cell) for cell in row.split("|")] == [round(figure) for figure in figures]

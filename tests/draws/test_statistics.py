@@ -13,6 +13,7 @@ from tcplan.draws.statistics import (
     middle_of,
     moments_of,
     quantile_ranks,
+    tolerance_factor,
     variance_shares,
 )
 
@@ -108,3 +109,10 @@ def test_products_in_pieces_are_products(lots):
     matrix, values = rng.standard_normal((35, 17)), rng.standard_normal((17, lots))
     assert product(matrix, values) == pytest.approx(matrix @ values, rel=1e-12, abs=1e-12)
     assert own_products(values) == pytest.approx(values @ values.T, rel=1e-12, abs=1e-9)
+
+
+def test_the_tolerance_factor():
+    # NIST/SEMATECH e-Handbook 7.2.6.3: 43 values, 90 % coverage at 99 % confidence, Howe: 2.2173159.
+    assert tolerance_factor(43, 0.90, 0.99) == pytest.approx(2.2173159, abs=1e-6)
+    with pytest.raises(ValueError, match="two values"):
+        tolerance_factor(1, 0.9, 0.99)

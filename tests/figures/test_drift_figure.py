@@ -23,7 +23,7 @@ from tcplan.figures.style import (
     text_width,
 )
 from tcplan.network import Leg, Parallel, Series, mapped
-from tcplan.plan import Plan
+from tcplan.plan import Deviation, Plan
 from tcplan.workflow.planning import make_plan
 
 # name, TC1 ppm/K, TC2 ppm/K^2, own reference degC; all invented
@@ -144,6 +144,66 @@ def test_the_worst_case_line_is_the_drift_of_the_worst_device() -> None:
     expected = composite(plan, degC, plan.best.worst_case.point) - 1
     np.testing.assert_allclose(drift, expected, rtol=0, atol=1e-12)
     assert artists.worst.get_linestyle() != artists.residual.get_linestyle()
+
+
+# --- the spread of the lots -------------------------------------------------------------------
+
+
+def band_edges(artists, ax):
+    """Return temperatures and the lower and upper edge of the band, from the outline drawn."""
+    points = artists.spread.get_paths()[0].vertices
+    degC = np.unique(points[:, 0])
+    heights = [points[points[:, 0] == at, 1] * scale(ax) for at in degC]
+    return degC, np.array([h.min() for h in heights]), np.array([h.max() for h in heights])
+
+
+@pytest.mark.parametrize(("fraction", "within"), [(0.9973, 0.002), (0.9, 0.02)])
+def test_the_band_holds_its_fraction_of_lots_drawn_by_hand(fraction: float, within: float) -> None:
+    plan = plan_of(f'drift = "6000 ppm"\njudge = "quantile"\nquantile = {fraction}')
+    _, residual_ax, artists = drawn(plan)
+    degC, lower, upper = band_edges(artists, residual_ax)
+    rng, count = np.random.default_rng(3), 20_000
+    limits = Deviation(ohm_per_square=0.1, tc1=30.0, tc2=0.1)  # those of SPREAD; normal, 3 sigma
+    point = {
+        name: replace(
+            limits,
+            ohm_per_square=1.0 + limits.ohm_per_square / 3 * rng.standard_normal((count, 1)),
+            tc1=limits.tc1 / 3 * rng.standard_normal((count, 1)),
+            tc2=limits.tc2 / 3 * rng.standard_normal((count, 1)),
+        )
+        for name in ("hi", "np", "pp")
+    }
+    drift = composite(plan, degC, point) - 1
+    inside = np.mean((drift >= lower) & (drift <= upper), axis=0)
+    away = np.abs(degC - 25.0) > 1.0  # at the reference all lots are alike
+    np.testing.assert_allclose(inside[away], fraction, rtol=0, atol=within)
+    below = np.mean(drift < lower, axis=0)[away]
+    np.testing.assert_allclose(below, 0.5 * (1 - fraction), rtol=0, atol=within)
+    assert artists.spread.get_label() == f"{100 * fraction:g} % of lots,\nat each temperature"
+
+
+def test_the_band_lies_behind_the_curves_and_in_view() -> None:
+    _, residual_ax, artists = drawn(plan_of())
+    degC, lower, upper = band_edges(artists, residual_ax)
+    assert (degC[0], degC[-1]) == residual_ax.get_xlim()
+    least, most = (edge * scale(residual_ax) for edge in residual_ax.get_ylim())
+    assert least < lower.min() < upper.max() < most
+    lines = [line for line in residual_ax.lines if len(line.get_xdata()) > 2]
+    assert artists.spread.get_zorder() < min(line.get_zorder() for line in lines)
+    assert artists.spread.get_label() in [text.get_text() for text in artists.legends[1].get_texts()]
+
+
+def test_a_fraction_that_the_draws_do_not_support_is_not_claimed() -> None:
+    _, _, artists = drawn(plan_of('drift = "6000 ppm"\njudge = "quantile"\nquantile = 0.99999'))
+    assert artists.spread.get_label() == "all 20\xa0000 lots drawn"
+
+
+def test_without_the_spread_of_every_material_there_is_no_band() -> None:
+    assert drawn(plan_of(spread=False))[2].spread is None
+    plan = plan_of(films=FILMS[1:])
+    bare = tuple(replace(m, spread=None) if m.name == "np" else m for m in plan.materials)
+    assert drawn(plan)[2].spread is not None
+    assert drawn(replace(plan, materials=bare))[2].spread is None
 
 
 # --- the best option of each arrangement --------------------------------------------------------

@@ -27,15 +27,18 @@ def files(plan):
     return figure_files(plan)
 
 
-FIGURES = ("network", "drift", "slope-curvature")
+FIGURES = ("network", "drift", "spread", "slope-curvature")
 
 
-def test_the_six_files(files) -> None:
+def test_the_eight_files(files) -> None:
     assert list(files) == [f"{name}.{kind}" for name in FIGURES for kind in ("svg", "png")]
     assert all(isinstance(content, bytes) for content in files.values())
 
 
-@pytest.mark.parametrize(("name", "inches"), [("drift.png", (7.2, 5.6)), ("slope-curvature.png", (7.2, 4.5))])
+@pytest.mark.parametrize(
+    ("name", "inches"),
+    [("drift.png", (7.2, 5.6)), ("spread.png", (7.2, 5.6)), ("slope-curvature.png", (7.2, 4.5))],
+)
 def test_png_signature_size_and_resolution(files, name: str, inches: tuple[float, float]) -> None:
     # PNG specification (ISO/IEC 15948): the signature, then IHDR with width and height; pHYs in 1/m.
     content = files[name]
