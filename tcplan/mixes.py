@@ -46,6 +46,20 @@ def fixed_ratio(
     return resistance(group, ratios) / value(group)
 
 
+def total_of(space: Space) -> tuple[float, int]:
+    """Return a value [ohm] and how ln of the total over it goes with ln of the fixed members' share u.
+
+    The total itself and 0 where it is given; else the value of the fixed members, and -1 where they are
+    in series (total = own/u) or 1 where they are in parallel (total = u own).
+    """
+    if space.ohms is not None:
+        return space.ohms, 0
+    group = fixed_group(space)
+    if group is None:
+        raise ValueError("a total is needed when nothing is fixed")
+    return value(group), 1 if space.fixed_in_parallel else -1
+
+
 class KindBounds:
     """The lowest and highest law ratios of the materials of a space, and last of its fixed members.
 

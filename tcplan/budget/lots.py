@@ -5,7 +5,6 @@ from __future__ import annotations
 from tcplan.budget.case import Case
 from tcplan.budget.model import Draws, LotFigures
 from tcplan.draws import draw, draw_units, draw_until
-from tcplan.material.model import Material
 from tcplan.material.spread import Spread
 from tcplan.network import deviated, used_materials
 from tcplan.plan import Option
@@ -21,7 +20,11 @@ def lot_figures(option: Option, case: Case, draws: Draws) -> LotFigures | None:
     if case.without_spread(option.network):
         return None
     network, need = deviated(option.network, case.redrawn), case.need
-    spreads = {name: _stated(case.materials[name], case) for name in used_materials(network)}
+    over, none = case.over, Spread(meaning="limits")
+    spreads = {
+        name: case.materials[name].drawn_spread(over.low, over.high) or none
+        for name in used_materials(network)
+    }
     common = {"seed": draws.seed, "quantile": need.goal.quantile, "limit": need.scale}
     data = (network, case.materials, spreads, case.process, need)
     if draws.precision is None:
@@ -33,10 +36,3 @@ def lot_figures(option: Option, case: Case, draws: Draws) -> LotFigures | None:
         lots = max(1, drawn.draws // UNITS)
         units = draw_units(*data, lots=lots, units=UNITS, seed=draws.seed, limit=need.scale)
     return LotFigures(drawn=drawn, units=units)
-
-
-def _stated(material: Material, case: Case) -> Spread:
-    """Return the spread as stated, the extrapolation's added where the range asks for it."""
-    spread = material.spread or Spread(meaning="limits")
-    outside = material.is_extrapolated(case.over.low, case.over.high)
-    return spread.widened(material.extrapolation) if outside and material.extrapolation else spread

@@ -52,8 +52,8 @@ def command(
 ) -> int:
     """Find the mix of materials for BRIEF (a TOML file; - is stdin), check it and write the result.
 
-    Writes plan.json, mix.csv, spec.md and the figures network, drift and slope-curvature (SVG and PNG),
-    all of them or none. The options and the verdict go to stdout, everything else to stderr.
+    Writes plan.json, mix.csv, spec.md and the figures network, drift, slope-curvature and, where spreads
+    are stated, spread (SVG and PNG), all of them or none. The options and the verdict go to stdout, everything else to stderr.
 
     A brief with [ratio] is checked in its place: that writes ratio.json and the figure drift.
 

@@ -262,7 +262,8 @@ def _mismatch(check: RatioCheck) -> str:
         return f"not known: no matching or width of {names}."
     still = found.drift < SMALLEST
     drift = "0" if still else f"{numbers.number(found.drift * 1e6, 3)} ppm at {_degC(found.at)}"
-    text = f"sigma of the ratio {numbers.number(found.value * 1e6, 3)} ppm, from unit to unit; of its drift {drift}."
+    sigma = numbers.number(found.value * 1e6, 3)
+    text = f"sigma of the ratio {sigma} ppm, from unit to unit; of its drift {drift}."
     return f"{text} Without {', '.join(found.unstated)}, not stated." if found.unstated else text
 
 
@@ -283,8 +284,8 @@ def _account(check: RatioCheck, width: int) -> list[str]:
     notes = [f"{row.name}: {row.note}." for row in account.rows if row.note]
     rule = "-" * max(len(line) for line in lines)
     told = [
-        "In ppm, signed, where each side is worst. Rows add linearly, each by what it adds to those above it; "
-        f"random rows, at {numbers.number(SIGMAS)} sigma, in root-sum-square. The limit is judged "
+        "In ppm, signed, where each side is worst. Rows add linearly, each by what it adds to those above "
+        f"it; random rows, at {numbers.number(SIGMAS)} sigma, in root-sum-square. The limit is judged "
         "without mismatch and allowances.",
         *notes,
     ]

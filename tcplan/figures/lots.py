@@ -71,7 +71,7 @@ class Lots:
 def lots_of(plan: Plan) -> Lots | None:
     """Return the lots of the chosen option; None where a material of it has no spread."""
     option, low, high = plan.best, *ends(plan)
-    found = {name: _stated(plan.by_name[name], low, high) for name in used_materials(option.network)}
+    found = {name: plan.by_name[name].drawn_spread(low, high) for name in used_materials(option.network)}
     spreads = {name: spread for name, spread in found.items() if spread is not None}
     if option.likely is None or len(spreads) < len(found):
         return None
@@ -84,13 +84,6 @@ def lots_of(plan: Plan) -> Lots | None:
         need=requirement(asked.goal, asked.over),
         likely=option.likely,
     )
-
-
-def _stated(material: Material, low: float, high: float) -> Spread | None:
-    """Return the spread as stated; outside ``valid`` the extrapolation's is added."""
-    if material.spread is None or material.extrapolation is None or not material.is_extrapolated(low, high):
-        return material.spread
-    return material.spread.widened(material.extrapolation)
 
 
 # --- the band -----------------------------------------------------------------------------------------

@@ -163,6 +163,15 @@ class Material:
             return spread
         return spread.widened(self.extrapolation)
 
+    def drawn_spread(self, low: float, high: float) -> Spread | None:
+        """Return the spread over low..high [K] that draws are made from: as stated.
+
+        Outside ``valid`` the extrapolation's is added; the width error of a film is drawn on its own.
+        """
+        if self.spread is None or self.extrapolation is None or not self.is_extrapolated(low, high):
+            return self.spread
+        return self.spread.widened(self.extrapolation)
+
     @property
     def width(self) -> float | None:
         """The drawn width of a film [m], the preferred one, else the least; ``None`` if not stated."""

@@ -7,6 +7,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from tcplan.arrays import FloatArray, IntArray
+from tcplan.mixes import total_of
 from tcplan.plan import Space
 from tcplan.search.curves import Path, log_ohms, log_shares, path_slopes
 
@@ -16,7 +17,9 @@ class LegLimits:
     """Limits on every leg, by material: ``lowest`` and ``highest`` bound ln(ohms/total).
 
     ``area`` is the area of a leg of the total value [m^2]; that of all legs is at most ``max_area``.
-    A material that is not chosen (a fixed member) has no limit of its own.
+    A material that is not chosen (a fixed member) has no limit of its own. Where the share x of the fixed
+    members sets the total, "total" above is their own value, and ln(total/that) is ``total`` times ln x:
+    -1 for members in series, 1 in parallel, 0 for a given total.
     """
 
     min_share: float
@@ -24,6 +27,7 @@ class LegLimits:
     highest: FloatArray
     area: FloatArray
     max_area: float
+    total: int = 0
 
     @property
     def any(self) -> bool:
@@ -40,7 +44,7 @@ class LegLimits:
         area = np.zeros(shares.shape[1:])
         for leg, path in enumerate(routes):
             kind = materials[:, leg][:, None]
-            own = log_ohms(path, shares)
+            own = log_ohms(path, shares) + self.total * np.log(shares[0])
             low, high = self.lowest[kind], self.highest[kind]
             worst = np.maximum(worst, np.maximum(low - own, own - high))
             if self.min_share > 0:
@@ -62,8 +66,9 @@ class LegLimits:
         slopes: list[FloatArray] = []
         area, area_slope = 0.0, np.zeros(len(x))
         for kind, path in zip(materials, routes, strict=True):
-            own = float(log_ohms(path, x))
+            own = float(log_ohms(path, x)) + self.total * float(np.log(x[0]))
             own_slope = path_slopes(path, x, of_ohms=True)
+            own_slope[0] += self.total / x[0]
             if self.min_share > 0 and self.chosen(kind):
                 values.append(float(np.log(self.min_share) - log_shares(path, x)))
                 slopes.append(-path_slopes(path, x, of_ohms=False))
@@ -86,14 +91,15 @@ class LegLimits:
 
 
 def limits_of(space: Space) -> LegLimits:
-    """Return the limits of a space of given total; the last position is that of the fixed members."""
+    """Return the limits of a space; the last position is that of the fixed members."""
     count = len(space.materials)
     low, high = np.full(count + 1, -np.inf), np.full(count + 1, np.inf)
     area, most = np.zeros(count + 1), np.inf
-    if space.sizes is not None and space.ohms is not None:
+    own, total = total_of(space)
+    if space.sizes is not None:
         with np.errstate(divide="ignore"):
-            low[:count] = np.log(np.array(space.sizes.least_ohms) / space.ohms)
-            high[:count] = np.log(np.array(space.sizes.most_ohms) / space.ohms)
-        area[:count] = np.array(space.sizes.area_per_ohm) * space.ohms
+            low[:count] = np.log(np.array(space.sizes.least_ohms) / own)
+            high[:count] = np.log(np.array(space.sizes.most_ohms) / own)
+        area[:count] = np.array(space.sizes.area_per_ohm) * own
         most = space.sizes.max_area
-    return LegLimits(space.min_share, low, high, area, most)
+    return LegLimits(space.min_share, low, high, area, most, total)

@@ -29,6 +29,7 @@ GOLDEN = 0.5 * (5**0.5 - 1.0)
 SECTIONS = 11
 KEPT = 8  # grid minima that are polished, a shape
 CHUNK = 60_000  # numbers in one array of a chunk, about
+WHOLE = (0.0, 1.0)  # where a share may lie
 STEEP = 10.0  # of a violated limit (in ln) against the figure
 
 
@@ -150,11 +151,11 @@ def _outer_exact(
     inner: FloatArray,
     field: Surface,
     excess: _Excess,
-    outermost: float | None,
+    outermost: tuple[float, float],
 ) -> tuple[FloatArray, FloatArray]:
     """Return the best outermost share and its figure, both of shape (trees, points).
 
-    With ``outermost`` that share is given, as it is for a fixed member of a given total.
+    That share lies inside ``outermost``; a fixed member of a given total has both ends equal.
     """
     shares = [np.zeros((1, 1, 1)), *(row[None, :, None] for row in inner)]
     hot, cold = field.legs(kinds)
@@ -176,10 +177,11 @@ def _outer_exact(
         return value + STEEP * np.maximum(excess.at(x), 0.0)
 
     shape = np.broadcast_shapes(first.shape[:-1], second.shape[:-1])
-    if outermost is not None:
-        given = np.full(shape, outermost)
+    if outermost[0] == outermost[1]:
+        given = np.full(shape, outermost[0])
         return given, figure(given)
-    low, high = np.full(shape, 1e-6), np.full(shape, 1.0 - 1e-6)
+    low = np.full(shape, max(outermost[0], 1e-6))
+    high = np.full(shape, min(outermost[1], 1.0 - 1e-6))
     a, b = high - GOLDEN * (high - low), low + GOLDEN * (high - low)
     fa, fb = figure(a), figure(b)
     for _ in range(SECTIONS):
@@ -234,7 +236,7 @@ def grid_starts(
     field: Surface,
     limits: LegLimits,
     kept: int = KEPT,
-    outermost: float | None = None,
+    outermost: tuple[float, float] = WHOLE,
 ) -> list[Start]:
     """Return the best grid minima of every shape, best first.
 
@@ -247,8 +249,8 @@ def grid_starts(
     limits : LegLimits
     kept : int
         How many a shape.
-    outermost : float, optional
-        The share of the first member of every tree, when it is given.
+    outermost : (float, float)
+        Bounds of the share of the first member of every tree.
     """
     found: list[Start] = []
     for shape, group in by_shape(trees):
@@ -271,7 +273,7 @@ def _chunk_starts(
     field: Surface,
     limits: LegLimits,
     kept: int,
-    outermost: float | None,
+    outermost: tuple[float, float],
 ) -> list[Start]:
     materials = np.array([leaves(tree) for tree in group])
     excess = _Excess(paths(pair), materials, inner, limits)

@@ -2,15 +2,16 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
-from dataclasses import dataclass
+import math
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from tcplan.effort import Effort
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
-from tcplan.mixes import KindBounds, fixed_group, mixed_trees
+from tcplan.mixes import KindBounds, fixed_group, mixed_trees, total_of
 from tcplan.network import Leg, Network, Series, arrangement, legs, scaled, shares, simplified, value
 from tcplan.plan import Proposal, Space
 from tcplan.process import Variation
@@ -22,6 +23,7 @@ from tcplan.search.linear import in_order
 from tcplan.search.mixed import (
     KEPT,
     NODES,
+    WHOLE,
     Source,
     Start,
     Surface,
@@ -35,6 +37,8 @@ from tcplan.trees import Pair, Tree, leaves, paired, shape_of
 
 DEVICE_NODES = 5  # Chebyshev nodes a piece in the grid stage of a worst-case search
 VANISHED = 1e-7  # share of a leg that is left out
+HALVINGS = 16
+INSIDE = 1.0 - 1e-4  # of a limit: what the search ends at is that near to what verify finds
 SAME = 1e-5  # relative difference of the figures of two forms of one resistor
 
 
@@ -45,7 +49,7 @@ class Task:
     source: Source
     limits: LegLimits
     trees: tuple[Tree, ...]
-    outermost: float | None
+    outermost: tuple[float, float]
     variation: Variation | None = None
 
     @property
@@ -89,18 +93,18 @@ class Task:
 def _network(space: Space, tree: Tree, polished: Polished) -> Network | None:
     """Return the network of a polished tree, without legs that have vanished; None if it is not mixed."""
     names = tuple((*space.materials, "")[leaf] for leaf in leaves(tree))
-    if space.ohms is None:
-        return None
-    whole = network_at(paired(shape_of(tree)), names, polished.shares, space.ohms)
+    own, sign = total_of(space)
+    ohms = own * float(polished.shares[0]) ** sign
+    whole = network_at(paired(shape_of(tree)), names, polished.shares, ohms)
     left = _without_vanished(whole)
     if left is None:
         return None
     group = fixed_group(space)
     if group is None:
         simple = simplified(left)
-        simple = scaled(simple, space.ohms / value(simple))
+        simple = scaled(simple, ohms / value(simple))
     else:
-        simple = _opened(_put_fixed(_rest_exact(left, group, space.ohms), group))
+        simple = _opened(_put_fixed(_rest_exact(left, group, ohms), group))
     return simple if arrangement(simple) == "mixed" else None
 
 
@@ -166,7 +170,7 @@ def tasks_of(
 ) -> tuple[Task, ...]:
     """Return the tasks of a space, one a shape of tree; those with most legs first."""
     source, limits = Source(need, materials, space), limits_of(space)
-    outermost = space.fixed_share[0] if space.fixed else None
+    outermost = space.fixed_share if space.fixed else WHOLE
     groups = [tuple(group) for _, group in by_shape(mixed_trees(space))]
     groups.sort(key=lambda group: -len(leaves(group[0])))
     return tuple(Task(source, limits, group, outermost, variation) for group in groups)
@@ -185,7 +189,7 @@ def mixed_proposals(
     Parameters
     ----------
     space : Space
-        Of given total; its fixed members, if any, hold a given share.
+        Of given total, or with fixed members whose share sets it.
     need : Requirement
     materials : mapping of name to Material
     few : int
@@ -196,22 +200,9 @@ def mixed_proposals(
         With it, the networks that are best in their worst case; else the nominally best ones.
     """
     space = in_order(space)
-    done = (effort or Effort()).results(tasks_of(space, need, materials, variation))
-    ranked = sorted(
-        (
-            (polished.figure, repr(start.tree), start.tree, polished)
-            for results in done
-            for start, polished in results
-            if polished.excess <= 0
-        ),
-        key=lambda row: row[:2],
-    )
     found: dict[int, list[Network]] = {}
     seen: list[tuple[tuple[str, ...], float]] = []
-    for figure, _, tree, polished in ranked:
-        network = _network(space, tree, polished)
-        if network is None:
-            continue
+    for figure, network in _ranked(space, need, materials, effort, variation):
         group = found.setdefault(len(legs(network)), [])
         # Two trees of the same legs often are the same resistor: they reach the same figure.
         used = tuple(sorted(leg.material for leg in legs(network)))
@@ -219,3 +210,52 @@ def mixed_proposals(
             group.append(network)
             seen.append((used, figure))
     return tuple(Proposal(network=network, space=space) for size in sorted(found) for network in found[size])
+
+
+def _ranked(
+    space: Space,
+    need: Requirement,
+    materials: Mapping[str, Material],
+    effort: Effort | None,
+    variation: Variation | None,
+) -> Iterator[tuple[float, Network]]:
+    """Yield the mixed networks of a space that the search ends at, best first, each with its figure."""
+    done = (effort or Effort()).results(tasks_of(space, need, materials, variation))
+    ends = [end for results in done for end in results if end[1].excess <= 0]
+    for start, polished in sorted(ends, key=lambda end: (end[1].figure, repr(end[0].tree))):
+        network = _network(space, start.tree, polished)
+        if network is not None:
+            yield polished.figure, network
+
+
+def least_mixed_total(
+    space: Space,
+    need: Requirement,
+    materials: Mapping[str, Material],
+    limit: float,
+    effort: Effort | None = None,
+    variation: Variation | None = None,
+) -> Proposal | None:
+    """Return a mixed network in which the fixed members hold a large share, within ``limit``.
+
+    The largest that halving finds, by the search for at least a share; None when there is none at the
+    least share of the space. Searched, not proved.
+    """
+    space = in_order(space)
+    low, high = space.fixed_share
+    best, at, above = None, low, high
+    for step in range(HALVINGS):
+        guess = low if step == 0 else math.sqrt(at * above)
+        tight = replace(space, fixed_share=(guess, high))
+        figure, network = next(_ranked(tight, need, materials, effort, variation), (math.inf, None))
+        if network is not None and figure <= limit * INSIDE:
+            at = guess
+            best = network
+        elif step == 0:
+            return None
+        else:
+            above = guess
+        if above <= at * (1.0 + 1e-4):
+            break
+    role = "greatest total" if space.fixed_in_parallel else "least total"
+    return None if best is None else Proposal(network=best, role=role)

@@ -74,7 +74,7 @@ class Polisher(ABC):
     pair: Pair
     leg_materials: tuple[int, ...]
     limits: LegLimits
-    outermost: float | None
+    outermost: tuple[float, float]
 
     @abstractmethod
     def survey(self, x: FloatArray) -> tuple[float, Any]:
@@ -112,8 +112,8 @@ class Polisher(ABC):
         model = self.linear(x, active)
         up = np.minimum(radius, 1.0 - EDGE - x)
         down = np.minimum(radius, x - EDGE)
-        if self.outermost is not None:
-            up[0] = down[0] = 0.0
+        least, most = self.outermost
+        up[0], down[0] = min(up[0], max(most - x[0], 0.0)), min(down[0], max(x[0] - least, 0.0))
         rows, row_slopes = self.limit_rows(x)
         count, nodes, banded = len(x), len(model.base), bool(model.free.any())
         columns = np.empty((nodes + len(rows), 1 + 2 * count + (2 if banded else 0)))
@@ -131,10 +131,14 @@ class Polisher(ABC):
 
     def begin(self, start: FloatArray) -> Walk:
         """Return the walk that begins at these shares."""
-        x = np.clip(start, EDGE, 1.0 - EDGE)
-        if self.outermost is not None:
-            x[0] = self.outermost
+        x = self._inside(start)
         return Walk(x, *self.merit(x))
+
+    def _inside(self, x: FloatArray) -> FloatArray:
+        """Return shares inside their bounds."""
+        x = np.clip(x, EDGE, 1.0 - EDGE)
+        x[0] = min(max(x[0], self.outermost[0]), self.outermost[1])
+        return x
 
     def advance(self, walk: Walk, turns: int) -> None:
         """Take up to so many steps, in place."""
@@ -168,19 +172,18 @@ class Polisher(ABC):
 
     def _restored(self, x: FloatArray) -> FloatArray:
         """Return shares moved back inside the limits: along a curved limit a straight step leaves it."""
+        held = self.outermost[0] == self.outermost[1]
         for _ in range(4):
-            x = np.clip(x, EDGE, 1.0 - EDGE)
-            if self.outermost is not None:
-                x[0] = self.outermost
+            x = self._inside(x)
             rows, slopes = self.limit_rows(x)
             worst = int(np.argmax(rows)) if len(rows) else 0
             if not len(rows) or rows[worst] <= -SAFE:
                 break
             slope = slopes[worst].copy()
-            if self.outermost is not None:
+            if held:
                 slope[0] = 0.0
             x = x - (rows[worst] + 2.0 * SAFE) * slope / max(float(slope @ slope), 1e-12)
-        return np.clip(x, EDGE, 1.0 - EDGE)
+        return self._inside(x)
 
     def _stationary(self, walk: Walk) -> bool:
         """Whether the peak is reached at one more place than there are shares, or limits hold."""
@@ -188,7 +191,7 @@ class Polisher(ABC):
         rows, _ = self.limit_rows(x)
         active = int((rows > -1e-4).sum()) if len(rows) else 0
         ends = int(((x < 1e-6) | (x > 1.0 - 1e-6)).sum())
-        given = 0 if self.outermost is None else 1
+        given = int(x[0] in self.outermost)
         places = self.reached(x, walk.active, figure)
         return places + active + ends + given >= len(x) + 1 or figure < 1e-12
 

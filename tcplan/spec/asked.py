@@ -11,7 +11,7 @@ from tcplan.units import format_ohms
 def headline(plan: Plan) -> str:
     """Return what was asked and the verdict, in one line."""
     low, high = (numbers.stated(t) for t in (plan.range.low_degC, plan.range.high_degC))
-    lots = f"{numbers.percent(plan.limit.quantile)} of lots"
+    lots = f"{numbers.number(plan.limit.quantile * 100.0, 6)} % of lots"
     judge = {"worst-case": "worst case", "quantile": lots}.get(plan.limit.judge, "nominal")
     return f"{asked_value(plan)}, {asked_limit(plan)} ({judge}), {low} to {high} degC: {verdict(plan)}"
 

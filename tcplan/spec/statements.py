@@ -52,7 +52,7 @@ def likely_text(plan: Plan, option: Option) -> str:
 
 def fraction_text(plan: Plan) -> str:
     """Return the fraction of lots that a quantile is of."""
-    return numbers.percent(plan.limit.quantile)
+    return f"{numbers.number(plan.limit.quantile * 100.0, 6)} %"
 
 
 def likely_lots(plan: Plan, option: Option) -> str:

@@ -179,7 +179,8 @@ def corner_figures(network: Network, case: Case) -> dict[str, float]:
 
 def likely_figures(network: Network, case: Case) -> Likely | None:
     """Return what draws say of a network; None when a material of it has no spread."""
-    stated = {n: case.materials[n].spread for n in used_materials(network)}
+    over = case.over
+    stated = {n: case.materials[n].drawn_spread(over.low, over.high) for n in used_materials(network)}
     spreads = {n: spread for n, spread in stated.items() if spread is not None}
     if len(spreads) < len(stated):
         return None

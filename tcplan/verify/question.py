@@ -16,7 +16,7 @@ import numpy as np
 from tcplan.arrays import FloatArray, IntArray
 from tcplan.goal import Piece, Requirement
 from tcplan.material.model import Material
-from tcplan.mixes import KindBounds, fixed_ratio, kind_half_widths
+from tcplan.mixes import KindBounds, fixed_ratio, kind_half_widths, total_of
 from tcplan.plan import Space
 from tcplan.process import Variation
 from tcplan.trees import Pair
@@ -91,9 +91,11 @@ def _corners(kinds: IntArray, half: FloatArray, groups: IntArray) -> list[list[f
 class Question:
     """The goal at a limit, on nodes, and what is asked: is any network of a space within it.
 
-    The share of the fixed members of the whole is ``fixed_share`` (0 when there are none).
-    Logarithms of ohms are of ohms over the total. ``sides`` is None for nominal materials, whose nodes
-    bind on both sides; else every node is one device, on its own side of the goal.
+    The share of the fixed members of the whole lies inside ``fixed_share`` (0, 0 when there are none).
+    Logarithms of ohms are of ohms over the total; where that share sets the total, over the value of the
+    fixed members, and ``total`` says how the total goes with it (`tcplan.mixes.total_of`). ``sides`` is
+    None for nominal materials, whose nodes bind on both sides; else every node is one device, on its own
+    side of the goal.
     """
 
     high: FloatArray
@@ -103,11 +105,17 @@ class Question:
     sides: FloatArray | None
     reach: float
     min_share: float
-    fixed_share: float
+    fixed_share: tuple[float, float]
     least_ohms: FloatArray
     most_ohms: FloatArray
     area: FloatArray
     max_area: float
+    total: int
+
+    @property
+    def fixed(self) -> bool:
+        """Whether there are fixed members."""
+        return self.fixed_share[1] > 0
 
     @property
     def sized(self) -> bool:
@@ -208,11 +216,12 @@ def _asked(
         sides=sides,
         reach=reach,
         min_share=space.min_share,
-        fixed_share=space.fixed_share[0] if space.fixed else 0.0,
+        fixed_share=space.fixed_share if space.fixed else (0.0, 0.0),
         least_ohms=least,
         most_ohms=most,
         area=area,
         max_area=max_area,
+        total=total_of(space)[1],
     )
 
 
@@ -224,12 +233,13 @@ def _ratios(space: Space, need: Requirement, materials: Mapping[str, Material], 
 def _sizes(space: Space) -> tuple[FloatArray, FloatArray, FloatArray, float]:
     count = len(space.materials)
     low, high, area = np.full(count + 1, -np.inf), np.full(count + 1, np.inf), np.zeros(count + 1)
-    if space.sizes is None or space.ohms is None:
+    if space.sizes is None:
         return low, high, area, np.inf
+    own, _ = total_of(space)
     with np.errstate(divide="ignore"):
-        low[:count] = np.log(np.array(space.sizes.least_ohms) / space.ohms)
-        high[:count] = np.log(np.array(space.sizes.most_ohms) / space.ohms)
-    area[:count] = np.array(space.sizes.area_per_ohm) * space.ohms
+        low[:count] = np.log(np.array(space.sizes.least_ohms) / own)
+        high[:count] = np.log(np.array(space.sizes.most_ohms) / own)
+    area[:count] = np.array(space.sizes.area_per_ohm) * own
     return low, high, area, space.sizes.max_area
 
 
@@ -268,7 +278,8 @@ def columns_of(
     """Return the columns of every cell, one array (cells, vertices, 2 nodes) a child of the top node.
 
     A column is by how much a child alone is outside the goal at each node, at least. Without a free
-    top the whole tree is the only child. A fixed member, the first child, is mixed into all others.
+    top the whole tree is the only child. A fixed member, the first child, is mixed into all others, with the
+    ends of its share: between them a column is a mix of these.
     """
     members = top_members(pair) if free_top else (pair,)
     found = []
@@ -278,7 +289,9 @@ def columns_of(
         highest = hull.vertices + hull.above[:, None, :]
         side = _outside_inverse if free_top and not pair.series else _outside
         found.append(np.nan_to_num(side(ask, centre, lowest, highest), nan=-1e6, posinf=1e6, neginf=-1e6))
-    u = ask.fixed_share
-    if u > 0 and free_top:
-        return [u * found[0] + (1.0 - u) * other for other in found[1:]]
+    if ask.fixed and free_top:
+        ends = sorted(set(ask.fixed_share))
+        return [
+            np.concatenate([u * found[0] + (1.0 - u) * other for u in ends], axis=1) for other in found[1:]
+        ]
     return found

@@ -53,8 +53,8 @@ def _least_shares(pair: Pair, cells: Cells, ask: Question) -> FloatArray | None:
     """
     if ask.min_share <= 0:
         return None
-    chosen = top_members(pair)[1:] if ask.fixed_share > 0 else top_members(pair)
-    one, rest = np.ones(len(cells.low)), 1.0 - ask.fixed_share
+    chosen = top_members(pair)[1:] if ask.fixed else top_members(pair)
+    one, rest = np.ones(len(cells.low)), 1.0 - ask.fixed_share[0]
     return np.stack([_least_share(m, cells, one, ask.min_share) for m in chosen], axis=1) / rest
 
 
@@ -100,13 +100,23 @@ def _legs(
         yield from _legs(member, cells, low + down, high + up, most + greatest)
 
 
+def _log_total(cells: Cells, ask: Question) -> tuple[FloatArray, FloatArray]:
+    """Return bounds on ln of the total over the value that logarithms are of, by cell."""
+    if ask.total == 0:
+        return np.zeros(len(cells.low)), np.zeros(len(cells.low))
+    with np.errstate(divide="ignore"):
+        ends = [ask.total * np.log(end[:, 0]) for end in (cells.low, cells.high)]
+    return np.minimum(*ends), np.maximum(*ends)
+
+
 def _can_be_made(pair: Pair, group: IntArray, cells: Cells, ask: Question) -> BoolArray:
     """Return which cells may hold a network whose legs can be made, shape (cells,)."""
     zero = np.zeros(len(cells.low))
+    least, most_total = _log_total(cells, ask)
     fine = np.ones(len(zero), dtype=bool)
     area = np.zeros(len(zero))
     slack = 1e-9
-    for leg, low, high, most in _legs(pair, cells, zero, zero, zero):
+    for leg, low, high, most in _legs(pair, cells, least, most_total, zero):
         kind = group[:, leg]
         fine &= (high >= ask.least_ohms[kind] - slack) & (low <= ask.most_ohms[kind] + slack)
         chosen = kind < len(ask.area) - 1
@@ -142,8 +152,8 @@ class _Open:
 
 def _start(count: int, shares: int, ask: Question) -> _Open:
     low, high = np.zeros((count, shares)), np.ones((count, shares))
-    if ask.fixed_share > 0:
-        low[:, 0] = high[:, 0] = ask.fixed_share
+    if ask.fixed:
+        low[:, 0], high[:, 0] = ask.fixed_share
     return _Open(np.arange(count), low, high, np.tile([-ask.reach, ask.reach], (count, 1)))
 
 
@@ -253,7 +263,7 @@ def none_within(
             continue
         group = np.array([leaves(tree) for tree in members])
         own = shares_in(pair)
-        given = {0} if ask.fixed_share > 0 else set()
+        given = {0} if ask.fixed and (free_top or ask.fixed_share[0] == ask.fixed_share[1]) else set()
         within = [k for m in top_members(pair) for k in shares_in(m)] if free_top else own
         inner = tuple(k for k in within if k not in given)
         kind = ("series" if pair.series else "parallel") if free_top else "whole"

@@ -72,9 +72,9 @@ def _mixed_ppm(checked: Sequence[tuple[Proposal, Option]], case: Case, gap: floa
 def _shortlist(options: Sequence[Option], judge: str) -> tuple[Option, ...]:
     """Return the options worth showing, best first.
 
-    Dropped: a network that is there already with other values, one that a simpler one equals within
-    1 %, and one that another beats in all of judged figure, area, legs and materials. One that meets the limit never
-    gives way to one that does not.
+    Dropped: a network that is there already with other values, one that a simpler one equals
+    within 1 %, and one that another beats in all of judged figure, area, legs and materials. One that
+    meets the limit never gives way to one that does not.
     """
     order = sorted(
         options, key=lambda o: (judged_ppm(o, judge), o.nominal.figure_ppm, len(legs(o.network)), o.id)

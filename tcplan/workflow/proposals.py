@@ -12,12 +12,13 @@ from tcplan.effort import Effort
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
 from tcplan.material.spread import Spread
-from tcplan.network import arrangement, used_materials
+from tcplan.mixes import total_of as total_of_space
+from tcplan.network import arrangement, used_materials, value
 from tcplan.plan import FloorEvidence, Proposal, Sizes, Space
 from tcplan.process import Variation
 from tcplan.search.floor import floor_evidence as sandwich_evidence
 from tcplan.search.linear import least_total, search_space
-from tcplan.search.mixed_search import mixed_proposals
+from tcplan.search.mixed_search import least_mixed_total, mixed_proposals
 from tcplan.search.supports import MOST_SUPPORTS
 from tcplan.trees import tree_count
 from tcplan.verify.option import Case, spread_figures
@@ -27,6 +28,7 @@ MOST_MIXED_LEGS = 6
 MOST_TREES = 15_000  # more would take minutes
 BOX_PARTS = (0.2, 0.4, 0.6, 0.8)  # of the limits, in a search for a quantile
 KEPT_INSIDE = 1.0 - 1e-6  # of a limit: two ways to find a worst case differ by rounding
+WORTH = 1e-2  # by how much a mixed network has to beat the total of one node
 TINY_SHARE = 1e-4  # of the fixed members, when the total is free
 
 
@@ -168,12 +170,8 @@ def proposals(
     for space in spaces(brief):
         low, high = space.fixed_share
         if space.arrangement == "mixed":
-            if low == high and space.legs + len(space.fixed) >= 3:
-                part = searchable(space, found)
-                mixed = mixed_proposals(part, need, case.materials, few, effort, case.variation)
-                # Of a part of the space nothing is proved about the whole.
-                whole = part == space
-                found.extend(mixed if whole else [replace(p, space=None) for p in mixed])
+            if space.legs + len(space.fixed) >= 3:
+                found.extend(_mixed(brief, space, need, case, few, effort, found))
             continue
         parallel = space.arrangement == "parallel"
         bounded = not brief.fixed or low == high or (brief.target.at_most is not None and not parallel)
@@ -197,6 +195,40 @@ def proposals(
             replace(brief, rules=replace(brief.rules, arrangements=simple)), need, case, few, effort
         )
     return found
+
+
+def _mixed(
+    brief: Brief,
+    space: Space,
+    need: Requirement,
+    case: Case,
+    few: int,
+    effort: Effort | None,
+    found: Sequence[Proposal],
+) -> list[Proposal]:
+    """Return the mixed networks that are put forward, beside what was found in one node."""
+    part, variation = searchable(space, found), case.variation
+    low, high = space.fixed_share
+    mixes: list[Proposal] = []
+    if not brief.fixed or low == high or (brief.target.at_most is not None and not space.fixed_in_parallel):
+        best = mixed_proposals(part, need, case.materials, few, effort, variation)
+        # Of a part of the space nothing is proved about the whole.
+        mixes = list(best) if part == space else [replace(p, space=None) for p in best]
+    if brief.fixed and low != high and need.scale is not None:
+        # A mixed network is of interest where it beats the total of one node.
+        shares = [_fixed_part(p, space) for p in found if p.role in ("least total", "greatest total")]
+        start = min(max([low, *shares]) * (1.0 + WORTH), high)
+        better = replace(part, fixed_share=(start, high))
+        extreme = least_mixed_total(better, need, case.materials, need.scale, effort, variation)
+        mixes.extend([] if extreme is None else [extreme])
+    return mixes
+
+
+def _fixed_part(proposal: Proposal, space: Space) -> float:
+    """Return the share of the fixed members of a network of one node."""
+    own, sign = total_of_space(space)
+    ratio: float = value(proposal.network) / own
+    return ratio if sign > 0 else 1.0 / ratio
 
 
 def _for_quantile(

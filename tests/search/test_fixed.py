@@ -2,13 +2,15 @@
 
 import numpy as np
 import pytest
-from makers import brief, by_name, film, need_of
+from makers import brief, by_name, film, need_of, over
 
 from tcplan.goal import Limit
 from tcplan.network import Leg, legs, value
-from tcplan.plan import Space
+from tcplan.plan import Sizes, Space
 from tcplan.search.linear import least_total, search_space
+from tcplan.search.mixed_search import mixed_proposals
 from tcplan.verify.option import Case, check, nominal_figure
+from tcplan.verify.tree_bound import MixedBound
 from tcplan.workflow.planning import make_plan
 
 TEXT = """
@@ -177,3 +179,113 @@ def test_a_least_share_beside_fixed_members_of_free_share():
     )
     network = search_space(space, need_of(), films, 1)[0].network
     assert {one.material: one.ohms for one in legs(network)}["neg"] == pytest.approx(390.0, rel=1e-6)
+
+
+# --- mixed networks whose total is set by the coil ------------------------------------------------
+
+NTC = """
+[material.ntc]
+source = "invented"
+reference = "25 degC"
+valid = ["-60 degC", "150 degC"]
+law = "thermistor"
+beta = "3400 K"
+"""
+MIXED = TEXT.replace('use = ["flat", "falling"]', 'use = ["flat", "ntc"]') + NTC
+
+
+def ratio_by_hand(t, flat, ntc):
+    """Return R(t)/R(25) of 400 ohm of copper in series with flat || ntc, each in ohm at 25 degC."""
+
+    def ohms(t):
+        x = t - 25.0
+        wire = flat * (1 + 15e-6 * x - 0.1e-6 * x**2)
+        bead = ntc * np.exp(3400.0 * (1 / (t + 273.15) - 1 / 298.15))
+        return 400.0 * (1 + 3900e-6 * x) + wire * bead / (wire + bead)
+
+    return ohms(t) / ohms(25.0)
+
+
+def test_a_bead_across_the_wire_gives_a_far_smaller_total():
+    """The usual thermistor compensation of a copper coil, against a scan of both values by hand."""
+    text = MIXED.format(resistor='value = "free"', goal='drift = "1.5 %"\njudge = "nominal"', place="series")
+    plan = make_plan(brief(text))
+    by_kind = {option.arrangement: option for option in plan.options if option.role == "least total"}
+    assert value(by_kind["mixed"].network) < 0.3 * value(by_kind["series"].network)
+    assert by_kind["mixed"].verdict == "MET"
+    assert plan.best is by_kind["mixed"]
+    t, least = np.linspace(-20, 80, 101), np.inf
+    for flat in np.geomspace(100, 2000, 80):
+        for ntc in np.geomspace(100, 2000, 80):
+            if np.max(np.abs(ratio_by_hand(t, flat, ntc) - 1)) <= 0.015:
+                least = min(least, 400.0 + flat * ntc / (flat + ntc))
+    assert value(by_kind["mixed"].network) <= least * (1 + 1e-6)
+    assert value(by_kind["mixed"].network) >= 0.9 * least
+
+
+@pytest.mark.parametrize("place", ["series", "parallel"])
+def test_mixed_networks_of_a_bounded_total_are_proved(place):
+    """At most 1.5 kohm beside the coil: no network on a scan is below the proved bound."""
+    films = by_name(film("cu", 3900), film("up", 900, 2.0), film("down", -2500, 3.0))
+    share = (400 / 1500, 1.0) if place == "series" else (0.3, 0.9)
+    of = Space(
+        arrangement="mixed",
+        materials=("down", "up"),
+        most=2,
+        min_share=0.0,
+        legs=2,
+        fixed=(Leg(material="cu", ohms=400.0),),
+        fixed_share=share,
+        fixed_in_parallel=place == "parallel",
+    )
+    need = need_of()
+    found = mixed_proposals(of, need, films)
+    case = Case(materials=films, spreads={}, over=over(), need=need)
+    best = min(nominal_figure(p.network, case) for p in found)
+    bounds = [MixedBound(of, need, films).below(best * part, 0.01) for part in (1.0, 1.05)]
+    x = np.linspace(-65, 125, 191)
+    cu, up, down = 1 + 3900e-6 * x, 1 + 900e-6 * x + 2e-6 * x**2, 1 - 2500e-6 * x + 3e-6 * x**2
+    least = np.inf
+    for u in np.linspace(*share, 60):
+        for s in np.linspace(0.001, 0.999, 400):
+            if place == "series":
+                curve = u * cu + (1 - u) / (s / up + (1 - s) / down)
+            else:
+                curve = 1 / (u / cu + (1 - u) / (s * up + (1 - s) * down))
+            least = min(least, float(np.max(np.abs(curve - 1))))
+    assert max(bounds) <= least * (1 + 1e-9)
+    assert best <= least * (1 + 1e-3)
+    assert bounds[0] >= 0.98 * best
+    for proposal in found:
+        total = value(proposal.network)
+        own = 400 / total if place == "series" else total / 400
+        assert share[0] - 1e-9 <= own <= share[1] + 1e-9
+
+
+def test_sizes_hold_where_the_coil_sets_the_total():
+    """No leg above 300 ohm: against a scan by hand of what is allowed."""
+    films = by_name(film("cu", 3900), film("up", 900, 2.0), film("down", -2500, 3.0))
+    sizes = Sizes(least_ohms=(0.0, 0.0), most_ohms=(300.0, 300.0), area_per_ohm=(0.0, 0.0))
+    of = Space(
+        arrangement="mixed",
+        materials=("down", "up"),
+        most=2,
+        min_share=0.0,
+        legs=2,
+        fixed=(Leg(material="cu", ohms=400.0),),
+        fixed_share=(0.2, 1.0),
+        sizes=sizes,
+    )
+    need, x = need_of(), np.linspace(-65, 125, 96)
+    case = Case(materials=films, spreads={}, over=over(), need=need)
+    best = mixed_proposals(of, need, films)[0]
+    figure = nominal_figure(best.network, case)
+    assert max(leg.ohms for leg in legs(best.network) if leg.material != "cu") <= 300.0 * (1 + 1e-6)
+    cu, up, down = 1 + 3900e-6 * x, 1 + 900e-6 * x + 2e-6 * x**2, 1 - 2500e-6 * x + 3e-6 * x**2
+    least = np.inf
+    for a in np.linspace(5, 300, 120):
+        for b in np.linspace(5, 300, 120):
+            whole = 400 * cu + 1 / (1 / (a * up) + 1 / (b * down))
+            least = min(least, float(np.max(np.abs(whole / (400 + a * b / (a + b)) - 1))))
+    assert figure <= least * (1 + 1e-4)
+    assert MixedBound(of, need, films).below(figure, 0.01) <= least * (1 + 1e-9)

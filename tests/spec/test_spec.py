@@ -257,7 +257,12 @@ def test_the_sheet_has_its_parts(judged: Plan) -> None:
     assert judged.brief["sha256"] in html
     for caution in ("confirmed on silicon or hardware", "ageing, humidity", "can burn", "licensed practice"):
         assert caution in html
-    assert re.findall(r'src="([^"]+)"', html) == ["network.svg", "drift.svg", "slope-curvature.svg"]
+    assert re.findall(r'src="([^"]+)"', html) == [
+        "network.svg",
+        "drift.svg",
+        "spread.svg",
+        "slope-curvature.svg",
+    ]
 
 
 def test_the_sheet_has_no_date_and_is_the_same_every_time(judged: Plan) -> None:
