@@ -14,6 +14,7 @@ from tcplan.cli.talk import colourful, say, say_json, width
 if TYPE_CHECKING:
     from collections.abc import Iterable, Sequence
 
+    from tcplan.brief import Brief
     from tcplan.budget import Account, Draws
     from tcplan.plan import Plan
     from tcplan.spec.budget_text import BudgetText
@@ -58,7 +59,8 @@ def command(
 ) -> int:
     """Show the budget of a plan: what each cause adds to the drift, the total and the limit.
 
-    FILE is a plan.json, a brief (.toml, which is planned first), or - for a plan.json on stdin.
+    FILE is a plan.json, a brief (.toml, which is planned first), or - for a plan.json on stdin. Of a
+    brief with [ratio] the account of the ratio is shown, over its own range or those asked for.
 
     Exit code 0: the limit is met in all that is shown, or none was given. 1: not met, not judged, or
     a range that the data do not cover.
@@ -66,6 +68,8 @@ def command(
     from tcplan.workflow.budgeting import budget_of, plan_to_budget
     from tcplan.workflow.conversions import materials_of
 
+    if file.casefold().endswith(".toml") and (brief := _ratio_brief(file)) is not None:
+        return _ratio(brief, ranges, only_ranges=not (materials or every or precision), as_json=as_json)
     asked = _draws(draws, seed, precision)
     new = None if materials is None else materials_of(materials)
     content = sys.stdin.buffer.read(MOST_PLAN_BYTES + 1) if file == STDIN else None
@@ -79,6 +83,37 @@ def command(
     )
     _show(plan, accounts, as_json=as_json)
     return _code(accounts)
+
+
+def _ratio_brief(file: str) -> Brief | None:
+    """Return the brief of a ratio, None when it is one of a resistor."""
+    from pathlib import Path
+
+    from tcplan.brief import read_brief
+
+    brief = read_brief(Path(file))
+    return brief if brief.ratio is not None else None
+
+
+def _ratio(brief: Brief, ranges: tuple[str, ...], *, only_ranges: bool, as_json: bool) -> int:
+    """Show the account of a ratio over each range."""
+    from tcplan.cli.ratio_screen import ratio_screen
+    from tcplan.errors import InputError, Problem
+    from tcplan.workflow.budgeting import ratio_budgets
+
+    if not only_ranges:
+        found = "--materials, --all or --precision with the brief of a ratio"
+        raise InputError(Problem(where="command line", found=found, expected="--range and --json only"))
+    checks = ratio_budgets(brief, ranges)
+    if as_json:
+        say_json({"title": brief.title, "ratios": [check.to_dict() for check in checks]})
+    else:
+        say("\n\n".join(ratio_screen(check, width(), colour=colourful()) for check in checks))
+    good = all(
+        check.pair.need.scale is None or (check.verdict == "MET" and check.total_met is not False)
+        for check in checks
+    )
+    return DONE if good else NOT_MET
 
 
 def _draws(count: int, seed: int, precision: str | None) -> Draws | None:

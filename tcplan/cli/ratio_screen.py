@@ -162,9 +162,9 @@ def _parts(check: RatioCheck) -> str:
 
 
 def _unstated(check: RatioCheck) -> str:
-    parts = []
+    parts, spreads = [], check.pair.spreads
     for key, words in (("value", "value"), ("tc1", "TC1"), ("tc2", "TC2")):
-        names = [n for n, spread in check.pair.spreads.items() if key in spread.unstated]
+        names = [n for n in check.pair.names if n in spreads and key in spreads[n].unstated]
         if names:
             parts.append(f"{words} of {', '.join(names)}")
     return f"No half-width stated, so counted as 0: {'; '.join(parts)}." if parts else ""
@@ -287,9 +287,20 @@ def _account(check: RatioCheck, width: int) -> list[str]:
         "In ppm, signed, where each side is worst. Rows add linearly, each by what it adds to those above "
         f"it; random rows, at {numbers.number(SIGMAS)} sigma, in root-sum-square. The limit is judged "
         "without mismatch and allowances.",
+        *_against(check),
         *notes,
     ]
     return [*lines[:-1], rule, lines[-1], "", *_labelled("Account", told, width)]
+
+
+def _against(check: RatioCheck) -> list[str]:
+    """Return the total against the limit; of a band the two sides are no one figure."""
+    need, account = check.pair.need, check.account
+    if need.scale is None or check.total_met is None:
+        return []
+    total, limit = max(account.total_up, -account.total_down), need.scale * 1e6
+    side = "within" if check.total_met else "BEYOND"
+    return [f"The total, {numbers.worst(total * 1e6, limit)} ppm, is {side} {numbers.stated(limit)} ppm."]
 
 
 def _kind(row: RatioRow) -> str:

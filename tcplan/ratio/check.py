@@ -51,6 +51,14 @@ class RatioCheck:
         """The materials that state no spread."""
         return tuple(name for name in self.pair.names if name not in self.pair.spreads)
 
+    @property
+    def total_met(self) -> bool | None:
+        """Whether the total of the account is within the limit; None without one, or of a band."""
+        need = self.pair.need
+        if need.scale is None or need.centred:
+            return None
+        return need.met(max(self.account.total_up, -self.account.total_down))
+
     def to_dict(self) -> dict[str, Any]:
         """Return ratio.json; see docs/ratio.md."""
         over, need, ratio = self.brief.over, self.pair.need, self.pair.ratio

@@ -6,7 +6,7 @@ from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import replace
 from pathlib import Path
 
-from tcplan.brief import read_brief
+from tcplan.brief import Brief, read_brief
 from tcplan.budget import Account, Case, Draws, budget
 from tcplan.budget.lots import lot_figures
 from tcplan.budget.rebuilt import Asked, asked_of
@@ -19,9 +19,11 @@ from tcplan.network import used_materials
 from tcplan.plan import Option, Plan
 from tcplan.plan_file import read_plan
 from tcplan.ranges import GRADES, TemperatureRange, named_range, temperature_range
+from tcplan.ratio.check import RatioCheck
 from tcplan.toml_input import file_text
 from tcplan.units import format_celsius, from_celsius, parse_quantity
 from tcplan.workflow.planning import make_plan
+from tcplan.workflow.ratio import make_ratio, over_range
 
 ALL = "all"
 EDGE = 1e-9  # K; rounding of temperatures
@@ -50,6 +52,26 @@ def plan_to_budget(name: str, content: bytes | None = None) -> Plan:
     except InputError as error:
         own = all(problem.where.startswith("plan") for problem in error.problems)
         raise InputError(p.inside(name) if own else p for p in error.problems) from None
+
+
+def ratio_budgets(brief: Brief, ranges: Sequence[str] = ()) -> tuple[RatioCheck, ...]:
+    """Return the check of a ratio, its account included, over each range.
+
+    Parameters
+    ----------
+    brief : Brief
+        With a ratio.
+    ranges : sequence of str
+        Named ranges or pairs such as "-40:125" [degC]; the brief's own when none is given.
+
+    Raises
+    ------
+    InputError
+        For an unknown range, or one that a material is not valid over.
+    """
+    own = brief.over
+    overs = [range_of(text, own.reference, own.rise) for text in ranges] or [own]
+    return tuple(make_ratio(over_range(brief, over)) for over in overs)
 
 
 def budget_of(
@@ -142,11 +164,16 @@ def _ranges_of(
             over = named_range(name, reference, rise) if inside else None
             if over is not None and not _not_covered(option, materials, asked, over):
                 yield over
-    elif ":" in text:
-        low, high = (_degrees(part) for part in text.split(":", 1))
-        yield temperature_range(low, high, reference, rise)
     else:
-        yield named_range(text, reference, rise)
+        yield range_of(text, reference, rise)
+
+
+def range_of(text: str, reference: float, rise: float) -> TemperatureRange:
+    """Return a named range, or that of a pair such as "-40:125" [degC]."""
+    if ":" not in text:
+        return named_range(text, reference, rise)
+    low, high = (_degrees(part) for part in text.split(":", 1))
+    return temperature_range(low, high, reference, rise)
 
 
 def _degrees(text: str) -> float:

@@ -139,6 +139,15 @@ def make_plan(brief: Brief, *, gap: float = 0.01, effort: Effort | None = None) 
     Stopped
         When the mixed search was interrupted; it carries the plan of the best so far.
     """
+    if brief.ratio is not None:
+        raise InputError(
+            Problem(
+                where="ratio",
+                found="a brief with [ratio]",
+                expected="a resistor",
+                todo="Check it as a ratio.",
+            )
+        )
     effort = effort or Effort()
     need = requirement(brief.goal, brief.over)
     _check_spreads(brief)

@@ -3,12 +3,15 @@
 from __future__ import annotations
 
 import json
+from dataclasses import replace
 from pathlib import Path
 
 from tcplan.brief import Brief
 from tcplan.errors import InputError, Problem
 from tcplan.output import check_folder, write_files
+from tcplan.ranges import TemperatureRange
 from tcplan.ratio.check import RatioCheck, check_ratio
+from tcplan.units import format_celsius
 
 RATIO_FILES = ("ratio.json", "drift.svg", "drift.png")
 
@@ -28,23 +31,26 @@ def make_ratio(brief: Brief) -> RatioCheck:
     return check_ratio(brief)
 
 
-def refuse_ratio(brief: Brief) -> None:
-    """Refuse a brief with a ratio where a resistor is wanted.
+def over_range(brief: Brief, over: TemperatureRange) -> Brief:
+    """Return the brief of a ratio over another range.
 
     Raises
     ------
     InputError
-        With what to do in its place.
+        When a material is not valid over it.
     """
-    if brief.ratio is not None:
-        raise InputError(
-            Problem(
-                where="ratio",
-                found="a brief with [ratio]",
-                expected="a brief for a resistor",
-                todo="tcplan plan checks the ratio and prints its account.",
-            )
+    problems = [
+        Problem(
+            where=over.text(),
+            found=f"a range outside the validity of {material.name}",
+            expected=f"within {format_celsius(material.usable[0])} to {format_celsius(material.usable[1])}",
         )
+        for material in brief.materials
+        if over.low < material.usable[0] - 1e-9 or over.high > material.usable[1] + 1e-9
+    ]
+    if problems:
+        raise InputError(problems)
+    return replace(brief, over=over)
 
 
 def ratio_json(check: RatioCheck) -> str:

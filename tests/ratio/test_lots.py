@@ -9,6 +9,7 @@ from ratio_pairs import films, pair
 
 from tcplan.goal import Limit
 from tcplan.material.spread import Spread
+from tcplan.ratio import lots
 from tcplan.ratio.lots import drawn_lots, lot_figures
 from tcplan.ratio.worst import worst_of
 
@@ -67,21 +68,13 @@ def test_common_spreads_cancel_in_every_lot():
     assert lot_figures(one, stated(one), count=500).max() < 1e-13
 
 
-def test_a_figure_is_that_of_the_whole_range():
+def test_a_figure_is_that_of_the_whole_range(monkeypatch):
     """The parabola through the highest points, against a grid 40 times finer."""
     two = films(np.random.default_rng(6), ("a", "b"))
     one = pair("gain", "a 1k + b 2k", "b 1k", two, need=need_of(Limit(kind="band", value=1e-3)))
-    fine = replace(one, need=need_of(Limit(kind="band", value=1e-3)))
     own = lot_figures(one, stated(one), count=200)
-    from tcplan.ratio import lots
-
-    before = lots.POINTS
-    try:
-        lots.POINTS = 40 * (before - 1) + 1
-        finer = lot_figures(fine, stated(one), count=200)
-    finally:
-        lots.POINTS = before
-    np.testing.assert_allclose(own, finer, rtol=1e-4)
+    monkeypatch.setattr(lots, "POINTS", 40 * (lots.POINTS - 1) + 1)
+    np.testing.assert_allclose(own, lot_figures(one, stated(one), count=200), rtol=1e-4)
 
 
 def test_a_seed_gives_the_same_lots_and_another_others():

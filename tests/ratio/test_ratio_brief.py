@@ -64,8 +64,8 @@ def test_a_ratio_stands_alone(other, table):
     ("old", "new", "where", "word"),
     [
         ('"divider"', '"half"', "ratio.kind", "divider"),
-        ('first = "pp 9 kohm + np 4k7"', "", "ratio.first", "pp"),
-        ("pp 1 kohm", "qq 1 kohm", "ratio.second", "Did you mean"),
+        ('first = "pp 9 kohm + np 4k7"', "", "ratio.first", "nothing"),
+        ("pp 1 kohm", "qq 1 kohm", "ratio.second", "one of np, pp"),
         ("pp 1 kohm", "pp 1 kohm +", "ratio.second", "network"),
         ("pp 1 kohm", "pp 0 kohm", "ratio.second", "above zero"),
         ('"3 ppm/K"', '"-3 ppm/K"', "ratio.tracking", "zero or more"),

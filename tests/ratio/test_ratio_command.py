@@ -6,7 +6,7 @@ from pathlib import Path
 import numpy as np
 import pytest
 from click.testing import CliRunner
-from makers import FILMS
+from makers import FILMS, brief
 from matplotlib.figure import Figure
 
 from tcplan.brief import parse_brief, read_brief
@@ -14,7 +14,8 @@ from tcplan.cli.main import cli
 from tcplan.cli.ratio_screen import ratio_screen
 from tcplan.errors import InputError
 from tcplan.figures.ratio import draw_ratio, ratio_figure_files
-from tcplan.workflow.ratio import RATIO_FILES, make_ratio, ratio_json, refuse_ratio
+from tcplan.workflow.planning import make_plan
+from tcplan.workflow.ratio import RATIO_FILES, make_ratio, ratio_json
 
 EXAMPLES = Path(__file__).parents[2] / "examples"
 RATIOS = sorted(
@@ -171,12 +172,41 @@ def test_a_mask_and_a_wanted_law_are_judged():
 def test_a_resistor_is_wanted_elsewhere():
     read = read_brief(RATIOS[0])
     with pytest.raises(InputError, match="ratio"):
-        refuse_ratio(read)
-    from makers import brief
-
+        make_plan(read)
     with pytest.raises(InputError, match="without"):
         make_ratio(brief())
-    assert refuse_ratio(brief()) is None
+
+
+def test_the_budget_of_a_ratio_over_several_ranges():
+    """Over automotive-0 the total of the account passes the limit, and the exit code says so."""
+    example = str(RATIOS[0])
+    result = CliRunner().invoke(cli, ["budget", example])
+    assert result.exit_code == 0, result.output
+    assert "package stress" in result.stdout
+    wider = CliRunner().invoke(cli, ["budget", example, "--range", "industrial", "--range", "automotive-0"])
+    assert wider.exit_code == 1
+    assert wider.stdout.count("Divider of 0.1") == 2
+    assert "BEYOND" in wider.stdout
+    data = json.loads(CliRunner().invoke(cli, ["budget", example, "--json"]).stdout)
+    assert len(data["ratios"]) == 1
+    wrong = CliRunner().invoke(cli, ["budget", example, "--all"])
+    assert wrong.exit_code != 0
+    outside = CliRunner().invoke(cli, ["budget", example, "--range=-100:25"])
+    assert outside.exit_code != 0
+
+
+def test_bought_parts_are_asked_for_their_tracking():
+    """A TCR limit is that of one part: two parts of a series need not share it."""
+    part = (
+        '[material.chip]\nsource = "invented"\nreference = "25 degC"\nvalid = ["-60 degC", "160 degC"]\n'
+        'tc1 = "0 ppm/K"\nseries = "E96"\n[material.chip.spread]\nmeaning = "limits"\nvalue = "0.1 %"\n'
+        'tcr = "25 ppm/K"\n'
+    )
+    text = BRIEF.format(limit=20000, judge="worst-case").replace("pp 9 kohm + np 4k7", "chip 9k09")
+    text = text.replace("pp 1 kohm", "chip 1 kohm").replace('tracking = "3 ppm/K"\n', "")
+    check = make_ratio(parse_brief(text + part, "brief.toml", Path()))
+    assert check.worst.judged.figure == pytest.approx(0.0, abs=1e-12)
+    assert "Two bought parts of chip need not share their TCR" in " ".join(ratio_screen(check, 80).split())
 
 
 # --- the figure -----------------------------------------------------------------------------------

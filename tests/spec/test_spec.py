@@ -279,7 +279,7 @@ def test_no_text_of_the_user_becomes_markup() -> None:
     html = rendered(spec_markdown(plan))
     assert "<script" not in html
     assert "<a " not in html
-    assert html.count("<img") == 3
+    assert html.count("<img") == 4
     shown = re.sub(r"<[^>]+>", "", html).replace("&lt;", "<").replace("&gt;", ">").replace("&amp;", "&")
     assert shown.count(HOSTILE) == 3  # title, label and source are read as they were written
 
