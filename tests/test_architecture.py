@@ -26,13 +26,16 @@ ORDER = [
     {"brief"},
     {"plan"},
     {"plan_file", "mixes", "worst", "draws", "ratio"},
-    {"search", "verify", "budget"},
+    {"search", "verify", "budget", "parts"},
     {"spec", "figures"},
     {"workflow"},
     {"cli"},
     {"__main__"},
 ]
 APART = [
+    ("search", "parts"),
+    ("verify", "parts"),
+    ("budget", "parts"),
     ("search", "verify"),
     ("search", "budget"),
     ("verify", "budget"),
@@ -42,7 +45,7 @@ APART = [
 ]  # never import each other
 FENCES = {
     "sympy": ("material/", "network.py"),
-    "scipy": ("search/", "minimax.py", "draws/"),
+    "scipy": ("search/", "minimax.py", "draws/", "parts/"),
     "matplotlib": ("figures/",),
     "click": ("cli/", "__main__.py"),
     "rich": ("cli/",),
