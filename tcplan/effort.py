@@ -11,6 +11,7 @@ Report: TypeAlias = Callable[[int, int], None]
 """Is told (tasks done, tasks in all)."""
 
 T = TypeVar("T", covariant=True)
+R = TypeVar("R")
 
 
 class Runnable(Protocol[T]):
@@ -47,6 +48,16 @@ class Effort:
         except KeyboardInterrupt:
             self.stopped = True
         return done
+
+    def unless_stopped(self, work: Callable[[], R], otherwise: R) -> R:
+        """Return what some work gives; ``otherwise`` when it is interrupted, or was before."""
+        if self.stopped:
+            return otherwise
+        try:
+            return work()
+        except KeyboardInterrupt:
+            self.stopped = True
+            return otherwise
 
     def _each(self, tasks: Sequence[Runnable[T]]) -> Iterator[T]:
         if self.executor is None:

@@ -19,7 +19,7 @@ from tcplan.material.model import Material
 from tcplan.material.spread import value_half_width
 from tcplan.network import Network, Parallel, Series, resistance, value
 from tcplan.plan import Space
-from tcplan.process import Variation
+from tcplan.process import Variation, step_groups
 from tcplan.trees import PARALLEL, SERIES, Tree, assigned_trees, is_mixed, with_fixed
 
 INSIDE = 1e-12
@@ -98,10 +98,13 @@ def kind_half_widths(
     """
     names, count = spread_names(space), len(space.materials)
     half = [value_half_width(materials[n].law, variation.spreads[n], reference) for n in names]
-    groups = variation.process.value_groups(names)
+    groups = step_groups(names, materials, variation.spreads, variation.process, reference)
     alone = {leg.material for leg in space.fixed}
     if len(alone) != 1:
-        return np.array([*half[:count], 0.0]), np.array([*groups[:count], len(names)])
+        # What moves with a fixed member stays nominal too.
+        held = {group for name, group in zip(names, groups, strict=True) if name in alone}
+        own = [0.0 if group in held else h for h, group in zip(half[:count], groups, strict=False)]
+        return np.array([*own, 0.0]), np.array([*groups[:count], len(names)])
     at = names.index(alone.pop())
     return np.array([*half[:count], half[at]]), np.array([*groups[:count], groups[at]])
 

@@ -11,6 +11,7 @@ from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from typing import Any, Literal, TypeAlias
 
+from tcplan.material.model import Material
 from tcplan.material.spread import Spread
 
 Component: TypeAlias = Literal["value", "tc1", "tc2", "end_resistance", "end_tc1", "width_bias"]
@@ -70,15 +71,21 @@ class Process:
     def value_groups(self, names: Sequence[str]) -> tuple[int, ...]:
         """Return a group for each material: values of one group move in full step.
 
-        Groups are numbered by the first of their materials in ``names``.
+        Groups are numbered by the first of their materials in ``names``. A step through a material that
+        is not among them counts as well.
         """
-        group = {name: k for k, name in enumerate(names)}
+        joined: dict[str, str] = {}
+
+        def root(name: str) -> str:
+            while joined.get(name, name) != name:
+                name = joined[name]
+            return name
+
         for one in self.correlations:
-            pair = (one.first, one.second)
-            if all(p.component == "value" and p.material in group for p in pair) and one.value >= FULL_STEP:
-                low, high = sorted((group[one.first.material], group[one.second.material]))
-                group = {name: low if own == high else own for name, own in group.items()}
-        return tuple(group[name] for name in names)
+            if one.first.component == one.second.component == "value" and one.value >= FULL_STEP:
+                joined[root(one.first.material)] = root(one.second.material)
+        roots = [root(name) for name in names]
+        return tuple(roots.index(own) for own in roots)
 
     def to_dict(self) -> dict[str, Any]:
         """Return plain JSON data; the inverse of :func:`process_from_dict`."""
@@ -114,6 +121,39 @@ def _scaled(spread: Spread, part: float) -> Spread:
     limits = spread.limits()
     halves = {name: getattr(limits, name) for name in ("value", "tc1", "tc2", "tcr")}
     return replace(limits, **{name: part * half for name, half in halves.items() if half is not None})
+
+
+def step_groups(
+    names: Sequence[str],
+    materials: Mapping[str, Material],
+    spreads: Mapping[str, Spread],
+    process: Process,
+    reference: float,
+) -> tuple[int, ...]:
+    """Return a group for each material: in a worst case, value factors of one group move in full step.
+
+    Only those whose factor at the reference [K] is the stated value and nothing else: a width error, the
+    TC shift of another reference, or what an extrapolation adds, is each material's own, so such a one
+    counts as independent, which is on the safe side.
+    """
+    groups = process.value_groups(names)
+    plain = [_is_plain(materials[name], spreads[name], reference) for name in names]
+    return tuple(
+        group if own and plain[group] else _first_plain(groups, plain, k)
+        for k, (group, own) in enumerate(zip(groups, plain, strict=True))
+    )
+
+
+def _first_plain(groups: Sequence[int], plain: Sequence[bool], k: int) -> int:
+    """Return the group of a material when that of its first partner does not count."""
+    if not plain[k]:
+        return k
+    return next(j for j, group in enumerate(groups) if group == groups[k] and plain[j])
+
+
+def _is_plain(material: Material, spread: Spread, reference: float) -> bool:
+    added = material.extrapolation.limits().value if material.extrapolation is not None else None
+    return spread.width_bias is None and not added and material.law.reference == reference
 
 
 def process_from_dict(data: dict[str, Any]) -> Process:

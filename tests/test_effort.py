@@ -131,3 +131,16 @@ def test_tasks_can_be_sent():
     for task in tasks_of(space, need_of(), films):
         assert pickle.loads(pickle.dumps(task)).trees == task.trees
         assert "legs" in task.name
+
+
+def test_work_that_is_interrupted_gives_way():
+    """The second interrupt of a long plan comes in its proof: what was found until then is kept."""
+    effort = Effort()
+    assert effort.unless_stopped(lambda: 5, 0) == 5
+
+    def interrupted():
+        raise KeyboardInterrupt
+
+    assert effort.unless_stopped(interrupted, 0) == 0
+    assert effort.stopped
+    assert effort.unless_stopped(lambda: 5, 0) == 0

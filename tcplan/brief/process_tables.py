@@ -18,7 +18,7 @@ from tcplan.brief.correlation_tables import (
 )
 from tcplan.material.model import NAME, Material
 from tcplan.names import shown
-from tcplan.process import Corner, Parameter, Process, Tracking
+from tcplan.process import FULL_STEP, Corner, Parameter, Process, Tracking
 from tcplan.table_reader import TableReader
 
 MOST_TRACKINGS = 200
@@ -27,6 +27,7 @@ ROUNDING = 1.000001  # of a shift that is written to few digits
 _SHIFT_UNITS = {"value": "1", "tc1": "1/K", "tc2": "1/K^2"}
 _LIMIT_OF = {"value": "value", "tc1": "tc1_and_tcr", "tc2": "tc2"}
 _SHOWN_IN = {"value": (100.0, "%"), "tc1": (1e6, "ppm/K"), "tc2": (1e6, "ppm/K^2")}
+SAME_STEP = 1e-6
 _IN_PLACE_OF_TCR = "A tcr has a sign of its own on each side: write tc1 in its place."
 _Trackings = list[tuple[TableReader, Tracking]]
 
@@ -56,7 +57,9 @@ def read_process(
     trackings = _read_trackings(sources, known)
     _check_tracked(correlations, trackings)
     tracked = [_tracking_of(tracking, used) for _, tracking in trackings]
-    cornered = [_corner_of(corner, used) for corner in _read_corners(sources, known)]
+    corners = _read_corners(sources, known)
+    _check_in_step(sources, correlations, corners, known)
+    cornered = [_corner_of(corner, used) for corner in corners]
     return Process(
         correlations=tuple(c for _, c in correlations if {c.first.material, c.second.material} <= set(used)),
         trackings=tuple(tracking for tracking in tracked if tracking is not None),
@@ -119,6 +122,42 @@ def _check_tracked(correlations: Correlations, trackings: _Trackings) -> None:
 
 
 # ---- corners
+
+
+def _check_in_step(
+    sources: Sequence[TableReader], correlations: Correlations, corners: Sequence[Corner], known: Known
+) -> None:
+    """Refuse a corner that moves values apart which a correlation of 1 moves in full step.
+
+    It would be worse than any worst case, which holds them together.
+    """
+    for corner in corners:
+        for _, one in correlations:
+            pair = (one.first, one.second)
+            if one.value < FULL_STEP or any(p.component != "value" for p in pair):
+                continue
+            steps = [_step_of(corner, p.material, known) for p in pair]
+            if None in steps or abs(float(steps[0] or 0.0) - float(steps[1] or 0.0)) <= SAME_STEP:
+                continue
+            first, second = (p.material for p in pair)
+            table = next(
+                inner
+                for source in sources
+                if (inner := source.inner("corner")) is not None and corner.name in inner.table
+            )
+            table.refuse(
+                corner.name,
+                f"values of {first} and {second} at {steps[0]:+.3g} and {steps[1]:+.3g} of their limits",
+                "the same part of both limits, as their correlation is 1",
+                "The worst case holds such values together, and would not cover this corner.",
+            )
+
+
+def _step_of(corner: Corner, name: str, known: Known) -> float | None:
+    """Return which part of its limits the value of a material is off in a corner."""
+    material = known.materials.get(name)
+    half = material.spread.limits().value if material is not None and material.spread is not None else None
+    return corner.shift(name, "value") / half if half else None
 
 
 def _read_corners(sources: Sequence[TableReader], known: Known) -> list[Corner]:

@@ -158,7 +158,7 @@ def _notes(network: Network, case: Case, worst: Worst) -> tuple[str, ...]:
         f"EXTRAPOLATED beyond its valid range: {', '.join(outside)}." if outside else "",
         "A band is bounded by the highest and the lowest drift of all devices, which need not be those "
         "of one." if case.need.centred else "",
-        "Mixed network: the spread of its values is a guaranteed bound, at most 0.01 % wide."
+        "The spread of the values is a guaranteed bound, at most 0.01 % wide."
         if worst.method == "cells"
         else "",
     )  # fmt: skip

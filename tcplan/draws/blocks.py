@@ -14,7 +14,7 @@ from tcplan.draws.nodes import NodePeaks
 from tcplan.draws.peaks import QuadraticPeaks, peaks_of
 from tcplan.draws.products import own_products
 from tcplan.draws.sampling import BLOCK, Sampler, sampler
-from tcplan.draws.statistics import Counts, Moments, Tally, bin_of, moments_of
+from tcplan.draws.statistics import Counts, Moments, Tally, bin_of, capability, moments_of
 from tcplan.effort import Effort
 from tcplan.errors import Stopped
 from tcplan.goal import Requirement
@@ -26,7 +26,7 @@ from tcplan.process import Process
 TASK_BLOCKS = 16
 WAVE = 64  # tasks under way at once, so that memory stays flat
 SHARE_BLOCKS = 4  # of which the shares are made: they need no more
-PROBE_LOTS = 1024
+PROBE_LOTS = 4096
 PROBE_POINTS = 33
 ROUNDING = 1e-9  # of a limit, as in Requirement.met
 
@@ -41,6 +41,7 @@ class Engine:
     probe_at: float
     seed: int
     limit: float | None
+    cpk: float | None
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -175,7 +176,7 @@ def engine_of(
 ) -> Engine:
     """Return what draws the lots of a network and finds their figures."""
     lots = sampler(used_materials(network), materials, spreads, process, screened=screened)
-    at = _worst_temperature(network, lots, materials, need, seed)
+    at, cpk = _probe(network, lots, materials, need, seed, limit)
     return Engine(
         lots=lots,
         peaks=peaks_of(network, lots, materials, need),
@@ -183,16 +184,27 @@ def engine_of(
         probe_at=at,
         seed=seed,
         limit=limit,
+        cpk=cpk,
     )
 
 
-def _worst_temperature(
-    network: Network, lots: Sampler, materials: Mapping[str, Material], need: Requirement, seed: int
-) -> float:
-    """Return where the drift of the first lots is largest in root mean square, weighted as it is judged."""
+def _probe(
+    network: Network,
+    lots: Sampler,
+    materials: Mapping[str, Material],
+    need: Requirement,
+    seed: int,
+    limit: float | None,
+) -> tuple[float, float | None]:
+    """Return where the drift of the first lots is largest in root mean square, and their least Cpk.
+
+    Both over temperature, weighted as it is judged.
+    """
     pieces = [np.linspace(p.low, p.high, PROBE_POINTS if p.high > p.low else 1) for p in need.pieces]
     weight = np.concatenate([np.full(len(T), p.weight) for T, p in zip(pieces, need.pieces, strict=True)])
     T = np.concatenate(pieces)
     rows = lots.fill_rows(lots.draw_columns(seed, 0)[:, :PROBE_LOTS])
     drift = curves_at(network, lots, materials, need, T).drift(rows)
-    return float(T[np.argmax(np.square(drift).mean(axis=1) / weight**2)])
+    at = float(T[np.argmax(np.square(drift).mean(axis=1) / weight**2)])
+    cpk = None if limit is None or need.centred else capability(limit * weight, drift)
+    return at, cpk

@@ -12,7 +12,7 @@ from tcplan.arrays import FloatArray
 from tcplan.draws.blocks import Account, Engine, engine_of
 from tcplan.draws.curves import curves_at
 from tcplan.draws.sampling import BLOCK, sampler
-from tcplan.draws.statistics import capability, clopper_pearson, quantile_ranks, variance_shares
+from tcplan.draws.statistics import clopper_pearson, quantile_ranks, variance_shares
 from tcplan.errors import InputError, Problem
 from tcplan.goal import Requirement
 from tcplan.material.model import Material
@@ -53,7 +53,8 @@ class Drawn:
     yield_fraction, yield_low, yield_high : float, optional
         inside/draws with its exact 95 % binomial interval.
     cpk : float, optional
-        (limit - mean)/(3 sigma) of the figures, which have no sign; None without a limit or scatter.
+        The least over temperature of (limit - |mean|)/(3 sigma) of the signed drift, from the first 4096
+        lots; None without a limit or scatter, and of a band.
     histogram : (edges, counts)
         From the least to the largest figure.
     shares : tuple of (Parameter, float)
@@ -307,7 +308,7 @@ def _drawn(account: Account, quantile: float) -> Drawn:
         yield_fraction=None if limit is None else account.inside / count,
         yield_low=ends[0],
         yield_high=ends[1],
-        cpk=None if limit is None else capability(limit, tally.moments),
+        cpk=engine.cpk,
         histogram=tally.coarse(),
         shares=_shares(engine, account.products),
         shares_at=engine.probe_at,

@@ -20,6 +20,7 @@ CONFIDENCE = 0.95
 BITS = 13  # of the mantissa that tell bins apart
 LOWEST, HIGHEST = -40, 21  # powers of two; what is below counts as 0, what is above as the top
 COARSE_BINS = 60
+NEXT_TO_NOTHING = 1e-9  # of a limit: at the reference nothing scatters
 _DROPPED = 52 - BITS
 _FIRST = (1023 + LOWEST) << BITS
 _BINS = (HIGHEST - LOWEST) << BITS
@@ -163,14 +164,27 @@ def _binomial_point(probability: float, count: int, chance: float) -> int:
     return high
 
 
-def capability(limit: float, moments: Moments) -> float | None:
-    """Return Cpk of a one-sided limit, (limit - mean)/(3 sigma), of the peaks; None without scatter.
+def capability(limit: FloatArray, drift: FloatArray) -> float | None:
+    """Return the least Cpk over temperature: (limit - |mean|)/(3 sigma) of the signed drift.
 
-    A peak is not signed and seldom normal: it is a common figure to compare with, and the quantile is
-    what is judged.
+    Parameters
+    ----------
+    limit : array, shape (T,)
+        On either side of zero.
+    drift : array, shape (T, lots)
+
+    Returns
+    -------
+    float or None
+        None where nothing scatters.
     """
-    sigma = moments.sigma
-    return (limit - moments.mean) / (3.0 * sigma) if sigma > 0.0 else None
+    if drift.shape[1] < 2:
+        return None
+    mean, sigma = drift.mean(axis=1), drift.std(axis=1, ddof=1)
+    moving = sigma > NEXT_TO_NOTHING * limit
+    if not moving.any():
+        return None
+    return float(np.min((limit - np.abs(mean))[moving] / (3.0 * sigma[moving])))
 
 
 def variance_shares(products: FloatArray) -> FloatArray:

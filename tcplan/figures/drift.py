@@ -192,6 +192,6 @@ def _mark(ax: Axes, curve: Curve, at_degC: float, unit: Unit, *, filled: bool) -
         markeredgewidth=1.3,
         zorder=6,
         clip_on=False,
-        label="its verified peak" if filled else "where it is judged",
+        label="its verified peak" if filled else "its peak, verified",
     )
     return mark

@@ -26,7 +26,7 @@ from tcplan.material.model import Material
 from tcplan.material.spread import value_half_width
 from tcplan.mixes import spread_columns, spread_names
 from tcplan.plan import Space
-from tcplan.process import Variation
+from tcplan.process import Variation, step_groups
 from tcplan.search.columns import GRID, START, Rows, spread_points
 
 NEAR = 0.5  # maxima below this part of the highest are no rows
@@ -63,7 +63,7 @@ class SpreadProgramme:
         self.half = np.array([value_half_width(self.materials[n].law, spreads[n], reference) for n in names])
         laws = [self.materials[n].law for n in names]
         self.bounds = LawBounds(laws, [spreads[n] for n in names], reference)
-        groups = np.array(self.variation.process.value_groups(names))
+        groups = np.array(step_groups(names, self.materials, spreads, self.variation.process, reference))
         same = groups[:, None] == groups[None, :]
         self.together = same.astype(float) if same.sum() > len(groups) else None
         self.columns = spread_columns(self.space)

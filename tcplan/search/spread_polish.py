@@ -160,7 +160,8 @@ class SpreadPolisher(Polisher):
         for sweep in range(SWEEPS if len(set(groups[half > 0].tolist())) > 1 else 0):
             for group in sorted(set(groups[half > 0].tolist())):
                 mine = groups == group
-                here = (factors[:, mine][:, :1] - 1.0) / half[mine][0]
+                leads = np.nonzero(mine & (half > 0))[0][0]
+                here = (factors[:, leads : leads + 1] - 1.0) / half[leads]
                 for level in LEVELS:
                     s = np.clip(here + level * 2.0 * 0.3**sweep, -1.0, 1.0)
                     other = factors.copy()

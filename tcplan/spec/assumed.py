@@ -20,12 +20,29 @@ def assumptions(plan: Plan) -> tuple[str, ...]:
     left_out = NOT_INCLUDED.replace("self-heating", f"self-heating{rise}")
     sentences = (
         figure_text(plan),
+        _rounding(plan),
         wanted_text(plan),
         *_spreads(plan),
         f"Not included: {left_out}.",
+        _allowances(plan),
         _designed(plan),
     )
     return tuple(sentence for sentence in (*sentences, _extrapolated(plan)) if sentence)
+
+
+def _rounding(plan: Plan) -> str:
+    """Return how coarse the nominal figures are printed."""
+    if plan.best.worst_case is None:
+        return ""
+    return (
+        "Nominal ones are rounded to a tenth of their distance to the worst case; plan.json has all digits."
+    )
+
+
+def _allowances(plan: Plan) -> str:
+    """Return that the allowances of the brief count in a budget, when there are any."""
+    names = [str(row["name"]) for row in plan.brief.get("allowances", ())]
+    return f"Allowances count in tcplan budget only: {named(names)}." if names else ""
 
 
 def _spreads(plan: Plan) -> list[str]:

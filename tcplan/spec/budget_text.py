@@ -14,7 +14,7 @@ from tcplan.plan import Plan
 from tcplan.spec import numbers
 from tcplan.spec.markdown import escaped
 from tcplan.spec.spec import CAUTIONS
-from tcplan.spec.statements import SIZE_WORDS
+from tcplan.spec.statements import SIZE_WORDS, fraction_text, without_spread
 from tcplan.units import round_outward, to_celsius
 
 MOST_MOVERS = 6
@@ -65,13 +65,22 @@ def budget_text(plan: Plan, account: Account) -> BudgetText:
         told = f"{account.option}, {named}: NOT COVERED by the data: {account.not_covered}."
         return BudgetText(head=told, verdict="", rows=(), facts=(), changes=())
     reference = numbers.stated(over.reference_degC)
+    whole = "" if plan.limit.judge == "worst-case" else _judged_otherwise(plan, account)
     return BudgetText(
-        head=f"{account.option}, {named}, reference {reference} degC: {_against(made)}: {verdict_word(made)}",
+        head=f"{account.option}, {named}, reference {reference} degC: {_against(made)}: "
+        f"{verdict_word(made)}{whole}",
         verdict=verdict_word(made),
         rows=tuple(_rows(made)),
         facts=tuple((label, texts) for label, texts in _facts(plan, account, made) if texts),
         changes=tuple(_changes(account.before, made)) if account.before is not None else (),
     )
+
+
+def _judged_otherwise(plan: Plan, account: Account) -> str:
+    """Return that the total holds the whole spread, where the brief judges less than that."""
+    option = next(o for o in plan.options if o.id == account.option)
+    judge = {"quantile": f"{fraction_text(plan)} of lots"}.get(plan.limit.judge, "the nominal figure")
+    return f" (with the whole spread and all allowances; the brief judges {judge}: {option.verdict})"
 
 
 def verdict_word(made: Budget) -> str:
@@ -153,17 +162,21 @@ def _total(made: Budget, ppm: float) -> str:
 
 def _facts(plan: Plan, account: Account, made: Budget) -> Iterator[tuple[str, tuple[str, ...]]]:
     yield "Change", account.changed
-    yield "Beside", (_beside(made),)
+    yield "Beside", (_beside(plan, made),)
     yield "Value", (_value(made),)
     yield "Costs", tuple(movers(made, plan.by_name))
-    yield "Floor", (_floor(made),)
+    yield "Floor", (_floor(plan, made),)
     yield "Lots", tuple(_lots(account.lots)) if account.lots is not None else ()
     yield "Sources", tuple(_sources(made))
     yield "Note", made.notes
 
 
-def _beside(made: Budget) -> str:
+def _beside(plan: Plan, made: Budget) -> str:
     """Return the nominal figure and the worst case, the limit's own figures without anything else."""
+    option = next(o for o in plan.options if o.id == made.option)
+    if missing := without_spread(plan, option):
+        nominal = numbers.nominal(made.nominal_ppm, None)
+        return f"The network alone: {nominal} ppm nominal; no spread is stated for {', '.join(missing)}."
     spread = made.worst_case_ppm - made.nominal_ppm
     nominal = numbers.nominal(made.nominal_ppm, spread if spread > 0 else None)
     found, most = numbers.worst(made.worst_case_ppm), numbers.worst(made.worst_case_bound_ppm)
@@ -223,8 +236,12 @@ def _cost(ppm: float) -> str:
     return f"{'costs' if ppm >= 0 else 'saves'} {numbers.number(abs(ppm), 3)} ppm"
 
 
-def _floor(made: Budget) -> str:
+def _floor(plan: Plan, made: Budget) -> str:
     known = made.knowledge
+    nominal = plan.floor.nominal_ppm
+    if known is not None and known.material and made.limit_ppm is not None and nominal > made.limit_ppm:
+        floor_ = numbers.bound(nominal, made.limit_ppm)
+        return f"No network of these materials is below {floor_} ppm at nominal: no better TC1 is enough."
     if known is None or numbers.bound(known.floor_ppm) == "0":
         return ""
     at, least = _degrees(known.at_degC), numbers.bound(known.floor_ppm, made.limit_ppm)
@@ -253,7 +270,7 @@ def _lots(lots: LotFigures) -> Iterator[str]:
         f"{drawn.seed}, spreads only."
     )
     if drawn.yield_fraction is not None and drawn.yield_low is not None and drawn.yield_high is not None:
-        cpk = f" Cpk {numbers.number(drawn.cpk, 3)}." if drawn.cpk is not None else ""
+        cpk = f" Cpk {numbers.number(drawn.cpk, 3)} where it is least." if drawn.cpk is not None else ""
         yield (
             f"{drawn.inside} of {drawn.draws} lots are inside the limit: {_yield(drawn.yield_low, floor)} to "
             f"{_yield(drawn.yield_high, ceil)} (exact 95 % interval).{cpk}"

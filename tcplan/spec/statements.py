@@ -5,7 +5,7 @@ from __future__ import annotations
 import math
 
 from tcplan.network import used_materials, value
-from tcplan.plan import Deviation, Option, Plan
+from tcplan.plan import Deviation, Likely, Option, Plan
 from tcplan.spec import numbers
 from tcplan.units import format_ohms
 
@@ -64,8 +64,15 @@ def likely_lots(plan: Plan, option: Option) -> str:
     between = f"{numbers.bound(likely.low_ppm)} to {high} at 95 % confidence"
     found = f"{fraction_text(plan)} of lots stay within {likely_text(plan, option)} ppm ({between})"
     if likely.inside is not None and likely.inside_low is not None:
-        found += f"; at least {_at_least(likely.inside_low)} of lots meet the limit"
+        found += f"; {_inside(likely)} of lots meet the limit"
     return f"{found}; {likely.draws} draws, seed {likely.seed}."
+
+
+def _inside(likely: Likely) -> str:
+    """Return how many lots are inside, as far as the draws tell."""
+    if likely.inside_low:
+        return f"at least {_at_least(likely.inside_low)}"
+    return f"at most {math.ceil((likely.inside_high or 0.0) * 1e4) / 100:g} %"
 
 
 def _at_least(fraction: float) -> str:
@@ -203,6 +210,8 @@ def reason(plan: Plan) -> str:
         return f"the least {words.get(plan.limit.judge, 'nominal figure')}"
     if option.verdict == "MET":
         return "the simplest that meets the limit"
+    if all(o.verdict == "NOT JUDGED" for o in plan.options):
+        return "the best of those found; none could be judged"
     return "the best of those found; none meets the limit"
 
 

@@ -17,7 +17,7 @@ A bound needs nothing of the solver that found y: any y gives a true one.
 from __future__ import annotations
 
 from collections.abc import Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -35,9 +35,10 @@ from tcplan.mixes import (
     spread_columns,
     spread_names,
 )
-from tcplan.plan import Certificate, FloorEvidence, Space
-from tcplan.process import Variation
+from tcplan.plan import Certificate, FloorEvidence, Scenario, Space
+from tcplan.process import Variation, step_groups
 
+NEAR = 1e-9  # K; rounding of the end of a piece
 MARGIN = 1e-13  # floating point without directed rounding
 CELLS = 400
 CHUNK = 20_000
@@ -61,6 +62,9 @@ def _lines(
     variation: Variation | None,
 ) -> list[Line]:
     """Evaluate every dual vector of the evidence from the materials' laws."""
+    evidence = _sound(evidence, need, devices=variation is not None)
+    if not evidence.nodes or not evidence.weights:
+        return []
     if variation is None:
         rows = _nominal_rows(space, evidence, need, materials)
         y = np.array(evidence.weights)
@@ -70,6 +74,24 @@ def _lines(
     n, b, d = y @ rows.n, y @ rows.b, np.abs(y) @ rows.d
     used = slice(None) if space.fixed else slice(-1)  # the last column is that of fixed members
     return [Line(n[k], b[k], d[k]) for k in range(len(y)) if np.all(d[k][used] > 0)]
+
+
+def _sound(evidence: Certificate, need: Requirement, *, devices: bool) -> Certificate:
+    """Return the evidence without what is none: nodes outside their piece or of no side, wild numbers."""
+
+    def good(node: Scenario) -> bool:
+        if not 0 <= node.piece < len(need.pieces) or (node.side in (1, -1)) is not devices:
+            return False
+        piece = need.pieces[node.piece]
+        return piece.low - NEAR <= node.temperature <= piece.high + NEAR
+
+    kept = [k for k, node in enumerate(evidence.nodes) if good(node)]
+    weights = [
+        tuple(row[k] for k in kept)
+        for row in evidence.weights
+        if np.isfinite(row).all() and len(row) > max(kept, default=0)
+    ]
+    return replace(evidence, nodes=tuple(evidence.nodes[k] for k in kept), weights=tuple(weights))
 
 
 def _nominal_rows(
@@ -127,7 +149,7 @@ def _pressed(
     half = np.array([value_half_width(materials[n].law, variation.spreads[n], need.reference) for n in names])
     with np.errstate(invalid="ignore", divide="ignore"):
         own = np.where(half > 0, np.clip((factors - 1.0) / half, -1.0, 1.0), 0.0)
-    groups = variation.process.value_groups(names)
+    groups = step_groups(names, materials, variation.spreads, variation.process, need.reference)
     for g in set(groups):
         members = [k for k, group in enumerate(groups) if group == g]
         moving = [k for k in members if half[k] > 0]
@@ -215,6 +237,8 @@ def arrangement_bound(
         return 0.0
     tangents: dict[tuple[int, ...], list[tuple[float, ...]]] = {}
     for support, shares in evidence.tangents:
+        if not np.isfinite(shares).all():
+            continue
         tangents.setdefault(support, []).append(shares)
     lowest = np.inf
     for chunk in _chunks(space):

@@ -43,7 +43,8 @@ def inverted(hull: Hull) -> Hull:
     least, most = hull.vertices.min(axis=1), hull.vertices.max(axis=1)
     with np.errstate(divide="ignore", invalid="ignore"):
         bend = (1.0 / np.sqrt(least) - 1.0 / np.sqrt(most)) ** 2
-        below = bend + hull.above / (least * (least + hull.above))
+        moved = np.where(np.isfinite(hull.above), hull.above / (least * (least + hull.above)), 1.0 / least)
+        below = bend + moved
         above = hull.below / (least * (least - hull.below))
     known = (least > 0) & (least > hull.below)
     return Hull(1.0 / hull.vertices, np.where(known, below, np.inf), np.where(known, above, np.inf))
@@ -58,9 +59,14 @@ def mixed(low: FloatArray, high: FloatArray, first: Hull, second: Hull) -> Hull:
         both = one + other
         parts.append(both.reshape(len(x), -1, both.shape[-1]))
     ends = [(x[:, None], 1.0 - x[:, None]) for x in (low, high)]
-    below = np.maximum(*(x * first.below + y * second.below for x, y in ends))
-    above = np.maximum(*(x * first.above + y * second.above for x, y in ends))
+    below = np.maximum(*(_part(x, first.below) + _part(y, second.below) for x, y in ends))
+    above = np.maximum(*(_part(x, first.above) + _part(y, second.above) for x, y in ends))
     return Hull(np.concatenate(parts, axis=1), below, above)
+
+
+def _part(share: FloatArray, margin: FloatArray) -> FloatArray:
+    """Return a share of a margin; none of an infinite one is nothing."""
+    return np.asarray(share * np.where(share > 0, margin, 0.0))
 
 
 @dataclass(frozen=True, slots=True)

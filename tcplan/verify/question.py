@@ -181,8 +181,7 @@ def device_question(
     lo, hi = KindBounds(space, materials, variation, need.reference).at(T)
     half, groups = kind_half_widths(space, materials, variation, need.reference)
     names = space.materials
-    # The device of a network says nothing of materials that it does not use: they are nominal there.
-    factors = [[*(device.get(name, 1.0) for name in names), 1.0] for device in devices]
+    factors = [_completed(device, space, half, groups) for device in devices]
     corners = 2 ** min(space.most + (1 if space.fixed else 0), space.legs + 1) - 1
     curves = DeviceCurves(lo, hi, half, groups, np.array(factors).reshape(-1, len(names) + 1), corners)
     count = corners + len(factors)
@@ -195,6 +194,24 @@ def device_question(
         sides=np.tile(np.repeat([1.0, -1.0], len(T)), count),
         reach=0.0,
     )
+
+
+def _completed(device: Mapping[str, float], space: Space, half: FloatArray, groups: IntArray) -> list[float]:
+    """Return the factors of all kinds at a device of some materials, pressed into the box.
+
+    A material that it does not name takes the coordinate of one that it moves in full step with, and is
+    nominal without one; so do the fixed members.
+    """
+    kinds: list[str | None] = [*space.materials, None]
+    fixed = {leg.material for leg in space.fixed}
+    if len(fixed) == 1:
+        kinds[-1] = next(iter(fixed))
+    step: dict[int, float] = {}
+    for kind, name in enumerate(kinds):
+        if name is not None and name in device and half[kind] > 0:
+            own = (device[name] - 1.0) / float(half[kind])
+            step.setdefault(int(groups[kind]), min(1.0, max(-1.0, own)))
+    return [1.0 + float(h) * step.get(int(group), 0.0) for h, group in zip(half, groups, strict=True)]
 
 
 def _asked(
@@ -253,7 +270,9 @@ def _outside(ask: Question, centre: FloatArray, lowest: FloatArray, highest: Flo
     if ask.sides is None:
         return np.concatenate([lowest - high, low - highest], axis=2)
     (hot_low, cold_low), (hot_high, cold_high) = np.split(lowest, 2, axis=2), np.split(highest, 2, axis=2)
-    return np.where(ask.sides > 0, hot_low - high * cold_high, low * cold_low - hot_high)
+    # Without a lower limit above zero nothing can be below it.
+    below = np.where(low > 0, low * np.where(low > 0, cold_low, 0.0) - hot_high, -1.0)
+    return np.where(ask.sides > 0, hot_low - high * cold_high, below)
 
 
 def _outside_inverse(
@@ -267,7 +286,8 @@ def _outside_inverse(
     low = (ask.low + centre[:, 0:1] * ask.free)[:, None, :]
     if ask.sides is not None:
         (hot_low, cold_low), (hot_high, cold_high) = np.split(lowest, 2, axis=2), np.split(highest, 2, axis=2)
-        return np.where(ask.sides > 0, cold_low - high * hot_high, low * hot_low - cold_high)
+        under = np.where(low > 0, low * np.where(low > 0, hot_low, 0.0) - cold_high, -1.0)
+        return np.where(ask.sides > 0, cold_low - high * hot_high, under)
     below = np.where(low > 0, low * lowest - 1.0, -1.0)
     return np.concatenate([1.0 - high * highest, below], axis=2)
 

@@ -107,12 +107,12 @@ def _makes_needless(other: Option, option: Option, judge: str) -> bool:
     return fewer and smaller and fewer_materials and judged[0] < judged[1]
 
 
-def _chosen(options: Sequence[Option], judge: str) -> Option:
-    """Return the simplest option that meets the limit, else the best one."""
+def _chosen(options: Sequence[Option], judge: str, *, free: bool) -> Option:
+    """Return the simplest option that meets the limit, else the best one; of a free total the least."""
     met = [o for o in options if o.verdict == "MET"]
     totals = [o for o in met if o.role in ("least total", "greatest total")]
-    if totals:
-        return totals[0]
+    if totals and free:
+        return min(totals, key=lambda o: value(o.network) * (1 if o.role == "least total" else -1))
     if met:
         return min(met, key=lambda o: (len(legs(o.network)), judged_ppm(o, judge)))
     return options[0]
@@ -176,12 +176,13 @@ def make_plan(brief: Brief, *, gap: float = 0.01, effort: Effort | None = None) 
         gap=gap,
     )
     checked = [(proposal, check(proposal, case, str(n))) for n, proposal in enumerate(found, 1)]
-    case = replace(case, mixed_ppm=0.0 if effort.stopped else _mixed_ppm(checked, case, gap))
+    case = replace(case, mixed_ppm=effort.unless_stopped(lambda: _mixed_ppm(checked, case, gap), 0.0))
     options = _shortlist([proved(option, p, case) for p, option in checked], brief.goal.judge)
     options = tuple(
         replace(with_likely(option, case), id=_option_id(options, n)) for n, option in enumerate(options)
     )
-    more = () if effort.stopped else _one_more(brief, case, options)
+    none: tuple[str, ...] = ()
+    more = effort.unless_stopped(lambda: _one_more(brief, case, options), none)
     plan = Plan(
         tcplan=__version__,
         brief=brief.to_dict(),
@@ -195,7 +196,7 @@ def make_plan(brief: Brief, *, gap: float = 0.01, effort: Effort | None = None) 
         ),
         materials=brief.materials,
         floor=bottom,
-        chosen=_chosen(options, brief.goal.judge).id,
+        chosen=_chosen(options, brief.goal.judge, free=_is_free(brief)).id,
         options=options,
         notes=(
             *([STOPPED] if effort.stopped else []),
@@ -207,6 +208,11 @@ def make_plan(brief: Brief, *, gap: float = 0.01, effort: Effort | None = None) 
     if effort.stopped:
         raise Stopped("the best so far is shown", best=plan)
     return plan
+
+
+def _is_free(brief: Brief) -> bool:
+    """Whether the total is what is looked for, beside fixed members."""
+    return bool(brief.fixed) and brief.target.ohms is None and brief.target.at_most is None
 
 
 def _largest_total(brief: Brief, options: Sequence[Option]) -> tuple[str, ...]:

@@ -13,7 +13,7 @@ from tcplan.goal import Judged, Requirement, judged
 from tcplan.material.model import Material
 from tcplan.material.spread import Spread, law_bounds, law_vertices, shifted_ratio, value_half_width
 from tcplan.network import Network, deviated, resistance, used_materials, value
-from tcplan.process import INDEPENDENT, Process
+from tcplan.process import INDEPENDENT, Process, step_groups
 
 
 @dataclass(frozen=True, slots=True)
@@ -72,13 +72,18 @@ class Box:
 
     def coordinate_of(self) -> IntArray:
         """Return the position of the coordinate that each material follows, 0, 1, ... in order."""
-        groups = self.process.value_groups(self.names)
+        groups = step_groups(self.names, self.materials, self.spreads, self.process, self.need.reference)
         order = sorted(set(groups))
         return np.array([order.index(group) for group in groups])
 
     def factors_at(self, coordinates: FloatArray) -> FloatArray:
         """Return the value factors, shape (.., materials), at coordinates, shape (.., coordinates)."""
         return np.asarray(1.0 + self.half_widths() * coordinates[..., self.coordinate_of()])
+
+    def in_step_with(self, name: str) -> tuple[str, ...]:
+        """Return the materials of the network whose values move in full step with one, itself among them."""
+        own = dict(zip(self.names, self.coordinate_of().tolist(), strict=True))
+        return tuple(other for other in self.names if own[other] == own[name])
 
     def in_step(self) -> bool:
         """Whether the materials of each coordinate have one half-width, so that their factors are equal."""

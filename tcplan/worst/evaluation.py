@@ -19,6 +19,7 @@ from dataclasses import replace
 import numpy as np
 
 from tcplan.arrays import FloatArray
+from tcplan.drift import panels, stationary_points
 from tcplan.errors import InternalError
 from tcplan.goal import Judged, Requirement
 from tcplan.material.model import Material
@@ -29,7 +30,7 @@ from tcplan.worst.box import Box, Device, Worst
 from tcplan.worst.cells import Found, cell_search, excursions, grid_of, halved, start_cells
 from tcplan.worst.factors import one_node_factors
 
-GRID = 65
+GRID = 193
 CELL_GRID = 33
 STARTS = 3
 NEAR = 0.97
@@ -44,6 +45,27 @@ def _temperatures(need: Requirement, count: int) -> tuple[FloatArray, FloatArray
         T.append(points)
         weight.append(np.full(len(points), piece.weight))
     return np.concatenate(T), np.concatenate(weight)
+
+
+def _examined(box: Box, count: int) -> tuple[FloatArray, FloatArray]:
+    """Return temperatures [K] over all pieces, and where the nominal drift is stationary, with weights.
+
+    What is narrow in a law is so in the nominal drift as well, which is followed over the continuous range.
+    """
+    T, weight = _temperatures(box.need, count)
+    curve = box.curve(Device(dict.fromkeys(box.names, 1.0), dict.fromkeys(box.names, (0.0, 0.0))))
+    splits = [*box.need.breakpoints(), *(b for n in box.names for b in box.materials[n].law.breakpoints)]
+
+    def drift(at: FloatArray) -> FloatArray:
+        return curve(at) - box.need.wanted(at)
+
+    more, weights = [], []
+    for piece in box.need.pieces:
+        for low, high in panels(piece.low, piece.high, splits) if piece.high > piece.low else ():
+            own = stationary_points(drift, low, high)
+            more.extend(own)
+            weights.extend([piece.weight] * len(own))
+    return np.r_[T, more], np.r_[weight, weights]
 
 
 def _settled(box: Box, device: Device) -> tuple[Device, Judged]:
@@ -67,12 +89,13 @@ def _settled(box: Box, device: Device) -> tuple[Device, Judged]:
 
 def _one_node(box: Box) -> Worst:
     """Return the worst case of a single, series or parallel network: exact."""
-    grid = grid_of(box, *_temperatures(box.need, GRID))
+    grid = grid_of(box, *_examined(box, GRID))
+    order = np.argsort(grid.T, kind="stable")
     starts: list[tuple[float, Device]] = []
     for sign, ratios in ((1, grid.hi), (-1, grid.lo)):
         rho, factors = one_node_factors(box, ratios, sign)
         figure = sign * (rho - grid.wanted) / grid.weight
-        for k in _local_maxima(figure)[:STARTS]:
+        for k in [int(order[j]) for j in _local_maxima(figure[order])[:STARTS]]:
             chosen = dict(zip(box.names, factors[:, k].tolist(), strict=True))
             starts.append((float(figure[k]), Device(chosen, box.shifts_at(float(grid.T[k]), sign))))
     highest = max(figure for figure, _ in starts)
@@ -95,7 +118,7 @@ def _mixed(box: Box) -> Worst:
     Every temperature near the worst is followed to where its device is worst; these join the grid,
     until none of them moves the figure.
     """
-    T, weight = _temperatures(box.need, CELL_GRID)
+    T, weight = _examined(box, CELL_GRID)
     best: tuple[Device, Judged] | None = None
     upper = 0.0
     for _ in range(4):

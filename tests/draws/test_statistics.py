@@ -5,7 +5,6 @@ import pytest
 
 from tcplan.draws.products import own_products, product
 from tcplan.draws.statistics import (
-    Moments,
     Tally,
     bin_of,
     capability,
@@ -87,9 +86,13 @@ def test_bins_and_their_middles():
 
 
 def test_capability():
-    # Cpk = (limit - mean)/(3 sigma) of a one-sided limit: common practice (ISO 22514-2, from memory).
-    assert capability(10.0, Moments(101, 4.0, 400.0)) == pytest.approx(1.0)
-    assert capability(10.0, Moments(1, 4.0, 0.0)) is None
+    # Cpk = the nearer limit less the mean, over 3 sigma: common practice (ISO 22514-2, from memory).
+    drift = np.array([[3.0, 5.0, 3.0, 5.0], [-1.0, 1.0, -1.0, 1.0], [2.0, 2.0, 2.0, 2.0]])
+    sigma = np.sqrt(4 / 3)  # by hand: four values one off their mean
+    assert capability(np.array([10.0, 10.0, 10.0]), drift) == pytest.approx(6.0 / (3 * sigma))
+    assert capability(np.array([10.0, 2.0, 10.0]), drift) == pytest.approx(2.0 / (3 * sigma))
+    assert capability(np.array([10.0]), drift[2:]) is None
+    assert capability(np.array([10.0]), drift[:1, :1]) is None
 
 
 def test_shares_of_variance():

@@ -277,3 +277,69 @@ def test_the_nominal_best_is_not_the_worst_case_best():
     option = check(nominal, case, "x")
     assert option.nominal.peak_ppm == pytest.approx(1401.9, abs=0.1)
     assert option.worst_case.peak_ppm == pytest.approx(6866, abs=1)
+
+
+# --- what a review found -----------------------------------------------------------------------
+
+
+def test_a_device_of_other_materials_is_completed_in_step():
+    """Evidence that names a but not its mate b, which is in full step with it: b moves along."""
+    films = by_name(
+        film("a", -1200, 1.0, value_percent=40),
+        film("b", 1300, 1.2, value_percent=40),
+        film("c", 200, value_percent=5),
+    )
+    need, process = need_of(), full_step("a", "b")
+    variation, of = variation_of(films, process), space(films, "mixed", 2, legs=3)
+    found = mixed_proposals(of, need, films, 3, None, variation)
+    best = min(worst_ppm(p.network, films, need, process)[0] for p in found) * 1e-6
+    for part in (1.02, 1.5, 4.0):
+        bound = mixed_bound(
+            of, need, films, [], best * part, 0.01, variation, [(400.0, {"a": 0.6, "c": 1.01})]
+        )
+        assert bound <= best * (1 + 1e-9)
+
+
+@pytest.mark.parametrize("fixed", [("a",), ("a", "c")])
+def test_fixed_members_that_are_on_offer_too_are_one_material(fixed):
+    films = by_name(
+        film("a", 900, 1.0, value_percent=40),
+        film("b", -1300, 1.2, value_percent=40),
+        film("c", 2500, value_percent=30),
+    )
+    need, process = need_of(), full_step("a", "b")
+    variation = variation_of(films, process)
+    of = Space(
+        arrangement="mixed",
+        materials=("a", "b"),
+        most=2,
+        min_share=0.0,
+        legs=2,
+        ohms=1000.0,
+        fixed=tuple(leg(name, 300.0 / len(fixed)) for name in fixed),
+        fixed_share=(0.3, 0.3),
+    )
+    found = mixed_proposals(of, need, films, 3, None, variation)
+    worst = [worst_case(p.network, films, variation.spreads, need, process) for p in found]
+    best = min(w.judged.figure for w in worst)
+    devices = [(w.judged.at, w.device.factors) for w in worst]
+    for part in (1.02, 1.3):
+        bound = mixed_bound(of, need, films, [], best * part, 0.01, variation, devices)
+        assert bound <= best * (1 + 1e-6)
+
+
+def test_evidence_outside_its_piece_or_of_no_side_is_no_evidence():
+    films, need = six_films(), need_of()
+    variation = variation_of(films)
+    for of, own in ((None, "series"), (variation, "parallel")):
+        best = search_space(space(films, own, 6), need, films, 1, of)[0]
+        good = arrangement_bound(best.space, best.certificate, need, films, 0.05, of)
+        nodes = best.certificate.nodes
+        hot = tuple(replace(n, temperature=298.15 + 1.06 * (n.temperature - 298.15)) for n in nodes)
+        odd = tuple(replace(n, side=2) for n in nodes)
+        lost = tuple(replace(n, piece=7) for n in nodes)
+        for wrong in (hot, odd, lost, ()):
+            evidence = replace(best.certificate, nodes=wrong)
+            assert arrangement_bound(best.space, evidence, need, films, 0.05, of) <= good * (1 + 1e-9)
+        empty = replace(best.certificate, weights=())
+        assert arrangement_bound(best.space, empty, need, films, 0.05, of) == 0.0

@@ -4,6 +4,7 @@ import numpy as np
 import pytest
 from makers import BRIEF, FILMS, SIX_FILMS, brief
 
+from tcplan.errors import InputError
 from tcplan.plan_file import plan_from_dict
 from tcplan.workflow.planning import make_plan
 
@@ -124,3 +125,44 @@ def test_values_in_full_step_are_kept_in_step():
     assert figures[0] < 0.98 * figures[1]
     point = joined.best.worst_case.point
     assert len({round(d.ohm_per_square, 12) for d in point.values()}) == 1
+
+
+STEP = '[[correlation]]\nbetween = ["pp.ohm_per_square", "np.ohm_per_square"]\nvalue = 1\n'
+
+
+def test_a_corner_that_tears_a_full_step_is_refused():
+    """Half the limits of both is a device of the box; of one alone it is none, and would be worse than it."""
+    fits = '[corner.slow.pp]\nohm_per_square = "+10 %"\n[corner.slow.np]\nohm_per_square = "+5 %"\n'
+    plan = judged("worst-case", FILMS, STEP + fits)
+    assert all(o.corners["slow"] <= o.worst_case.upper_bound_ppm for o in plan.options)
+    torn = '[corner.odd.pp]\nohm_per_square = "+20 %"\n[corner.odd.np]\nohm_per_square = "-10 %"\n'
+    for corner in (torn, '[corner.odd.pp]\nohm_per_square = "+20 %"\n'):
+        with pytest.raises(InputError, match="the same part of both limits"):
+            judged("worst-case", FILMS, STEP + corner)
+
+
+def test_values_in_full_step_are_undone_together():
+    """With equal half-widths the ratio is exact: undoing both values moves nothing, so neither is a mover."""
+    same = FILMS.replace('"10 %"', '"20 %"')
+    plan = judged("worst-case", same, STEP)
+    two = next(o for o in plan.options if o.arrangement == "series")
+    assert {m.parameter for m in two.worst_case.movers} <= {"tc1", "tc2"}
+    free = judged("worst-case", same)
+    assert any(
+        m.parameter == "ohm_per_square"
+        for o in free.options
+        if o.arrangement == "series"
+        for m in o.worst_case.movers
+    )
+
+
+def test_at_most_is_a_bound_and_free_is_the_least():
+    """With a bound the simplest of the least figure is chosen, though a smaller total would do."""
+    coil = '[[fixed]]\nmaterial = "np"\nvalue = "400 ohm"\n'
+    text = BRIEF.replace('drift = "6000 ppm"', 'drift = "12000 ppm"')
+    free = make_plan(brief(text.replace('value = "18 kohm"', 'value = "free"') + coil + FILMS))
+    most = make_plan(brief(text.replace('value = "18 kohm"', 'at_most = "40 kohm"') + coil + FILMS))
+    assert free.best.role == "least total"
+    assert most.best.verdict == "MET"
+    same = [o for o in most.options if len(o.squares) == len(most.best.squares) and o.verdict == "MET"]
+    assert most.best.nominal.figure_ppm == min(o.nominal.figure_ppm for o in same)

@@ -1,5 +1,6 @@
 """The worst case against brute force over the box, and against the prototype's figures."""
 
+from dataclasses import replace
 from itertools import product
 
 import numpy as np
@@ -7,6 +8,8 @@ import pytest
 from makers import brute_ratio, by_name, film, grid, leg, need_of, random_films, random_tree, six_films
 
 from tcplan.goal import Limit
+from tcplan.material.law import Expression
+from tcplan.material.model import Film
 from tcplan.material.spread import shifted_ratio
 from tcplan.network import Parallel, Series, deviated, resistance, used_materials, value
 from tcplan.process import Correlation, Parameter, Process
@@ -253,3 +256,58 @@ def test_a_band_of_values_in_full_step():
         worst_case(network, nominal, spreads(nominal), need).judged.figure, rel=1e-9
     )
     assert found.upper >= found.judged.figure
+
+
+# --- what a review found -----------------------------------------------------------------------
+
+
+def with_width(material, bias):
+    """Return a film 2 um wide whose width is off by up to ``bias``; its spread covers that."""
+    wide = replace(
+        material,
+        spread=replace(material.spread, width_bias=bias),
+        film=Film(min_width=2e-6, spacing=1e-6),
+    )
+    return wide, wide.effective_spread(240.0, 400.0)
+
+
+def test_a_width_error_is_no_step():
+    """Values in full step, each film with a width error of its own: by hand a 1.05/0.95, b 1.05/1.05."""
+    films = by_name(film("a", 1500, value_percent=5), film("b", -1625, value_percent=5))
+    pairs = {name: with_width(m, 0.1e-6) for name, m in films.items()}
+    films = {name: m for name, (m, _) in pairs.items()}
+    own = {name: s for name, (_, s) in pairs.items()}
+    network = Series((leg("a", 520.0), leg("b", 480.0)))
+    found = worst_case(network, films, own, need_of(high=125.0), in_step("a", "b"))
+    a, b = 520 / 0.95, 480 / 1.05  # the step itself cancels
+    by_hand = max(abs((a * 1500e-6 - b * 1625e-6) / (a + b) * x) for x in (-65.0, 100.0))
+    assert found.upper >= by_hand
+
+
+def test_the_shift_of_another_reference_is_no_step():
+    """A law that is known at 50 degC moves its value at 25 degC on its own."""
+    films = by_name(
+        film("a", 2199, -0.289, value_percent=10, tc1_spread_ppm=259),
+        film("b", -854, 0.614, value_percent=1, tc1_spread_ppm=287, reference=323.15),
+    )
+    network, need = Series((leg("a", 300.0), leg("b", 700.0))), need_of()
+    found = worst_case(network, films, spreads(films), need, in_step("a", "b"))
+    free = worst_case(network, films, spreads(films), need)
+    assert found.upper == pytest.approx(free.upper, rel=1e-12)
+
+
+@pytest.mark.parametrize("node", [Series, Parallel])
+def test_a_feature_narrower_than_the_grid_is_in_the_worst_case(node):
+    """A bump of 1.2 K: whatever the spread, the worst case is not below nominal, nor below its device."""
+    bump = Expression(
+        reference=298.15,
+        text="1 + 0.0018*exp(-((T - 350.63)/1.2)**2)",
+    )
+    narrow = replace(film("a", 0.0, value_percent=30), law=bump)
+    films = by_name(narrow, film("b", 16, value_percent=30))
+    found = worst_case(node((leg("a", 1.0), leg("b", 1.0))), films, spreads(films), need_of(high=125.0))
+    share = 1.3 / (1.3 + 0.7)  # of a at its largest, of conductance or resistance
+    x = 350.63 - 298.15
+    by_hand = share * 0.0018 + (1 - share) * 16e-6 * x
+    assert found.upper >= by_hand * (1 - 1e-2)
+    assert found.upper >= found.judged.figure >= 0.0018 * 0.6
