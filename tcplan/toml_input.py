@@ -152,7 +152,7 @@ def _bytes_of(path: Path) -> bytes:
     name = str(path)
     try:
         if path.is_dir():
-            raise InputError(Problem(where=name, found="a folder", expected="a TOML file"))
+            raise InputError(Problem(where=name, found="a folder", expected="a file"))
         if not path.exists():
             raise InputError(_missing_file(path))
         if not path.is_file():
@@ -178,7 +178,7 @@ def _missing_file(path: Path) -> Problem:
     if path.parent.is_dir():
         near = nearest_name(path.name, sorted(entry.name for entry in path.parent.glob("*.toml"))[:1000])
     todo = f"Did you mean {path.parent / near}?" if near else "Check the name and the folder."
-    return Problem(where=str(path), found="no such file", expected="a TOML file", todo=todo)
+    return Problem(where=str(path), found="no such file", expected="a file", todo=todo)
 
 
 def _decoded(content: bytes, name: str) -> str:

@@ -18,6 +18,7 @@ from tcplan.names import nearest_name, shown
 from tcplan.network import used_materials
 from tcplan.plan import Option, Plan
 from tcplan.plan_file import read_plan
+from tcplan.process import INDEPENDENT
 from tcplan.ranges import GRADES, TemperatureRange, named_range, temperature_range
 from tcplan.ratio.check import RatioCheck
 from tcplan.toml_input import file_text
@@ -293,6 +294,8 @@ def _changes(names: Sequence[str], case: Case, new: Mapping[str, Material]) -> I
         yield f"New data for {', '.join(replaced)}."
     if kept:
         yield f"Not in the new data, so as in the plan: {', '.join(kept)}."
+    if case.process != INDEPENDENT:
+        yield "Correlations, tracking and corners are those of the plan."
     for name in replaced:
         factor = case.redrawn.get(name, 1.0)
         if abs(factor - 1.0) > EDGE:
