@@ -4,14 +4,16 @@ from __future__ import annotations
 
 from collections.abc import Mapping
 from dataclasses import dataclass
+from functools import cached_property
 
 import numpy as np
 
 from tcplan.arrays import FloatArray, IntArray
 from tcplan.drift import Curve
 from tcplan.goal import Judged, Requirement, judged
+from tcplan.material.bounds import LawBounds
 from tcplan.material.model import Material
-from tcplan.material.spread import Spread, law_bounds, law_vertices, shifted_ratio, value_half_width
+from tcplan.material.spread import Spread, law_vertices, shifted_ratio, value_half_width
 from tcplan.network import Network, deviated, resistance, used_materials, value
 from tcplan.process import INDEPENDENT, Process, step_groups
 
@@ -42,7 +44,7 @@ class Worst:
     method: str
 
 
-@dataclass(frozen=True, slots=True)
+@dataclass(frozen=True, eq=False)  # without slots: what is asked for in every cell is worked out once
 class Box:
     """A network with the limits of its materials.
 
@@ -56,25 +58,40 @@ class Box:
     need: Requirement
     process: Process = INDEPENDENT
 
-    @property
+    @cached_property
     def names(self) -> tuple[str, ...]:
         """The materials of the network."""
         return used_materials(self.network)
 
-    def half_widths(self) -> FloatArray:
-        """Return the half-width of each value factor at the brief's reference."""
+    @cached_property
+    def _half_widths(self) -> FloatArray:
+        laws = [self.materials[n].law for n in self.names]
+        reference = self.need.reference
         return np.array(
             [
-                value_half_width(self.materials[n].law, self.spreads[n], self.need.reference)
-                for n in self.names
+                value_half_width(law, self.spreads[n], reference)
+                for law, n in zip(laws, self.names, strict=True)
             ]
         )
 
-    def coordinate_of(self) -> IntArray:
-        """Return the position of the coordinate that each material follows, 0, 1, ... in order."""
+    @cached_property
+    def _coordinates(self) -> IntArray:
         groups = step_groups(self.names, self.materials, self.spreads, self.process, self.need.reference)
         order = sorted(set(groups))
         return np.array([order.index(group) for group in groups])
+
+    @cached_property
+    def _law_bounds(self) -> LawBounds:
+        laws = [self.materials[n].law for n in self.names]
+        return LawBounds(laws, [self.spreads[n] for n in self.names], self.need.reference)
+
+    def half_widths(self) -> FloatArray:
+        """Return the half-width of each value factor at the brief's reference."""
+        return self._half_widths
+
+    def coordinate_of(self) -> IntArray:
+        """Return the position of the coordinate that each material follows, 0, 1, ... in order."""
+        return self._coordinates
 
     def factors_at(self, coordinates: FloatArray) -> FloatArray:
         """Return the value factors, shape (.., materials), at coordinates, shape (.., coordinates)."""
@@ -92,10 +109,7 @@ class Box:
 
     def bounds(self, T: FloatArray) -> tuple[FloatArray, FloatArray]:
         """Return the lowest and highest law ratios, shape (materials, T)."""
-        pairs = [
-            law_bounds(self.materials[n].law, self.spreads[n], self.need.reference, T) for n in self.names
-        ]
-        return np.stack([lo for lo, _ in pairs]), np.stack([hi for _, hi in pairs])
+        return self._law_bounds.at(T)
 
     def shifts_at(self, T: float, sign: int) -> dict[str, tuple[float, float]]:
         """Return the corner of (TC1, TC2) of each material that is highest (or lowest) at T."""
