@@ -9,10 +9,11 @@ from typing import TYPE_CHECKING
 import click
 
 from tcplan.cli.exits import DONE, NOT_MET
+from tcplan.cli.paragraphs import COLOURS, labelled, wrapped
 from tcplan.cli.talk import colourful, say, say_json, width
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Sequence
+    from collections.abc import Sequence
 
     from tcplan.brief import Brief
     from tcplan.budget import Account, Draws
@@ -22,7 +23,6 @@ if TYPE_CHECKING:
 STDIN = "-"
 LABEL = 9
 MOST_PLAN_BYTES = 2_000_000
-COLOURS = {"MET": "green", "NOT MET": "red", "NOT JUDGED": "yellow"}
 
 EXAMPLES = """\
 \b
@@ -149,19 +149,19 @@ def _show(plan: Plan, accounts: Sequence[Account], *, as_json: bool) -> None:
     blocks = [_block(budget_text(plan, account), across) for account in accounts]
     made = [account.budget for account in accounts if account.budget is not None]
     assumed = budget_assumptions(made[0]) if made else ()
-    blocks.append(_labelled("Assumed", assumed, across))
-    title = _wrapped(str(plan.brief["title"]), across)
-    nothing = [] if accounts else _wrapped("No named range fits: the materials are valid for none.", across)
+    blocks.append(labelled("Assumed", assumed, across, LABEL))
+    title = wrapped(str(plan.brief["title"]), across)
+    nothing = [] if accounts else wrapped("No named range fits: the materials are valid for none.", across)
     say("\n\n".join("\n".join(block) for block in (title, nothing, *blocks) if block))
 
 
 def _block(text: BudgetText, across: int) -> list[str]:
-    lines = _coloured(_wrapped(text.head, across), text.verdict)
+    lines = _coloured(wrapped(text.head, across), text.verdict)
     if text.rows:
         lines += ["", *_table(text, across)]
     if text.changes:
         lines += ["", *_change_table(text, across)]
-    facts = [line for label, texts in text.facts for line in _labelled(label, texts, across)]
+    facts = [line for label, texts in text.facts for line in labelled(label, texts, across, LABEL)]
     return [*lines, "", *facts] if facts else lines
 
 
@@ -202,19 +202,3 @@ def _coloured(lines: list[str], verdict: str) -> list[str]:
         return lines
     last = lines[-1].removesuffix(verdict)
     return [*lines[:-1], f"{last}{click.style(verdict, fg=COLOURS[verdict])}"]
-
-
-def _wrapped(text: str, across: int, first: str = "", rest: str = "") -> list[str]:
-    return textwrap.wrap(
-        text, across, initial_indent=first, subsequent_indent=rest, break_on_hyphens=False
-    ) or [first.rstrip()]
-
-
-def _labelled(label: str, texts: Iterable[str], across: int) -> list[str]:
-    """Return texts after a label in a column of its own; nothing when there are none."""
-    lines: list[str] = []
-    for text in texts:
-        if text:
-            first = label if not lines else ""
-            lines.extend(_wrapped(text, across, first.ljust(LABEL), " " * LABEL))
-    return lines

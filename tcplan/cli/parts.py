@@ -9,16 +9,16 @@ from typing import TYPE_CHECKING
 import click
 
 from tcplan.cli.exits import DONE, NOT_MET
+from tcplan.cli.paragraphs import COLOURS, labelled, wrapped
 from tcplan.cli.talk import colourful, complain, say, say_json_text, width
 
 if TYPE_CHECKING:
-    from collections.abc import Iterable, Sequence
+    from collections.abc import Sequence
 
     from tcplan.workflow.making import MadePlan, PartsRules
 
 LABEL = 9
 WAYS = ("area", "judged", "error", "units, W x L")
-COLOURS = {"MET": "green", "NOT MET": "red", "NOT JUDGED": "yellow"}
 
 EXAMPLES = """\
 \b
@@ -117,9 +117,9 @@ def _screen(made: MadePlan, across: int) -> str:
         ("Note", _notes(made)),
         ("Assumed", CAUTIONS),
     )
-    lines = [line for label, texts in facts for line in _labelled(label, texts, across)]
+    lines = [line for label, texts in facts for line in labelled(label, texts, across, LABEL)]
     return "\n".join(
-        [*_coloured(_wrapped(head, across), verdict), "", *table, *(trades if made.ways else []), "", *lines]
+        [*_coloured(wrapped(head, across), verdict), "", *table, *(trades if made.ways else []), "", *lines]
     )
 
 
@@ -148,20 +148,6 @@ def _columns(rows: Sequence[Sequence[str]], across: int) -> list[str]:
         start = "  ".join(f"{cell:<{w}}" for cell, w in zip(row[:-1], widths, strict=True)) + "  "
         rest = textwrap.wrap(row[-1], max(12, across - first)) or [""]
         lines += [(start + rest[0]).rstrip(), *(" " * first + more for more in rest[1:])]
-    return lines
-
-
-def _wrapped(text: str, across: int) -> list[str]:
-    return textwrap.wrap(text, across, break_on_hyphens=False)
-
-
-def _labelled(label: str, texts: Iterable[str], across: int) -> list[str]:
-    lines: list[str] = []
-    for text in texts:
-        first = (label if not lines else "").ljust(LABEL)
-        lines += textwrap.wrap(
-            text, across, initial_indent=first, subsequent_indent=" " * LABEL, break_on_hyphens=False
-        )
     return lines
 
 

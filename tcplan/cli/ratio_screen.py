@@ -3,10 +3,11 @@
 from __future__ import annotations
 
 import textwrap
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 
 import click
 
+from tcplan.cli.paragraphs import COLOURS, labelled, wrapped
 from tcplan.goal import Limit
 from tcplan.network import Network, network_text, used_materials
 from tcplan.ranges import GRADES
@@ -18,7 +19,6 @@ from tcplan.units import format_ohms, to_celsius
 
 LABEL = 10
 SMALLEST = 5e-10  # a contribution below this is rounding
-COLOURS = {"MET": "green", "NOT MET": "red", "NOT JUDGED": "yellow"}
 CAUTION = (
     "Figures are design estimates, to be confirmed on silicon or hardware. Package stress, ageing, humidity "
     "and self-heating need their own allowance and check. Power parts can burn. Safety-related use follows "
@@ -44,7 +44,7 @@ def ratio_screen(check: RatioCheck, width: int, *, colour: bool = False) -> str:
     """
     blocks = (
         _asked(check, width, colour=colour),
-        _labelled("Assumed", _assumed(check), width),
+        labelled("Assumed", _assumed(check), width, LABEL),
         _found(check, width),
         _account(check, width),
     )
@@ -64,7 +64,7 @@ def _asked(check: RatioCheck, width: int, *, colour: bool) -> list[str]:
         f"{ratio.kind.capitalize()} of {numbers.number(check.value)}, {limits} "
         f"({judge.get(goal.judge, 'nominal')}), {low} to {high} degC: {_verdict(check)}"
     )
-    lines = _wrapped(head, width)
+    lines = wrapped(head, width)
     if colour and check.verdict in COLOURS and lines[-1].endswith(check.verdict):
         rest = lines[-1].removesuffix(check.verdict)
         lines[-1] = f"{rest}{click.style(check.verdict, fg=COLOURS[check.verdict])}"
@@ -77,7 +77,7 @@ def _asked(check: RatioCheck, width: int, *, colour: bool) -> list[str]:
         f"The ratio is {formula}, first {_shown(ratio.first)}, second {_shown(ratio.second)}.",
         *(f"Mask, {line}." for limit in goal.limits for line in _mask(limit)),
     ]
-    return [*lines, *(line for text in texts for line in _wrapped(text, width))]
+    return [*lines, *(line for text in texts for line in wrapped(text, width))]
 
 
 def _limit(limit: Limit) -> str:
@@ -182,7 +182,7 @@ def _found(check: RatioCheck, width: int) -> list[str]:
         ("Mismatch", _mismatch(check)),
         ("Verdict", f"{_verdict(check)}."),
     )
-    return [line for label, text in facts for line in _labelled(label, [text], width)]
+    return [line for label, text in facts for line in labelled(label, [text], width, LABEL)]
 
 
 def _value(check: RatioCheck) -> str:
@@ -290,7 +290,7 @@ def _account(check: RatioCheck, width: int) -> list[str]:
         *_against(check),
         *notes,
     ]
-    return [*lines[:-1], rule, lines[-1], "", *_labelled("Account", told, width)]
+    return [*lines[:-1], rule, lines[-1], "", *labelled("Account", told, width, LABEL)]
 
 
 def _against(check: RatioCheck) -> list[str]:
@@ -323,19 +323,4 @@ def _columns(rows: Sequence[tuple[str, ...]], across: int) -> list[str]:
         cells = [name.ljust(widths[0]), row[1].ljust(widths[1])]
         cells += [cell.rjust(wide) for cell, wide in zip(row[2:], widths[2:], strict=True)]
         lines += ["  ".join(cells).rstrip(), *more]
-    return lines
-
-
-def _wrapped(text: str, width: int, first: str = "", rest: str = "") -> list[str]:
-    return textwrap.wrap(
-        text, width, initial_indent=first, subsequent_indent=rest, break_on_hyphens=False
-    ) or [first.rstrip()]
-
-
-def _labelled(label: str, texts: Iterable[str], width: int) -> list[str]:
-    """Return texts after a label in a column of its own."""
-    lines: list[str] = []
-    for text in texts:
-        first = label if not lines else ""
-        lines.extend(_wrapped(text, width, first.ljust(LABEL), " " * LABEL))
     return lines

@@ -2,11 +2,11 @@
 
 from __future__ import annotations
 
-import textwrap
-from collections.abc import Iterable, Sequence
+from collections.abc import Sequence
 
 import click
 
+from tcplan.cli.paragraphs import coloured, labelled, wrapped
 from tcplan.spec.rows import OptionRow
 from tcplan.spec.spec import Spec
 
@@ -16,7 +16,6 @@ LONGEST_PIECE = 34  # longer pieces are broken in any case
 MOST_LINES = 6  # of one network; longer ones are shortened in the middle
 MOST_OPTIONS = 12
 NO_BREAK = "\u00a0"
-COLOURS = {"MET": "green", "NOT MET": "red", "NOT JUDGED": "yellow"}
 
 
 def screen(spec: Spec, width: int, *, colour: bool = False) -> str:
@@ -37,7 +36,10 @@ def screen(spec: Spec, width: int, *, colour: bool = False) -> str:
     """
     blocks = (
         _asked(spec, width, colour=colour),
-        [*_labelled("Assumed", spec.assumptions, width), *_labelled("Floor", [spec.floor], width)],
+        [
+            *labelled("Assumed", spec.assumptions, width, LABEL),
+            *labelled("Floor", [spec.floor], width, LABEL),
+        ],
         _options(spec.options, spec.fraction, width, colour=colour),
         _chosen(spec, width),
     )
@@ -45,11 +47,11 @@ def screen(spec: Spec, width: int, *, colour: bool = False) -> str:
 
 
 def _asked(spec: Spec, width: int, *, colour: bool) -> list[str]:
-    lines = _wrapped(spec.headline, width)
+    lines = wrapped(spec.headline, width)
     if colour:
         lines = [click.style(line, bold=True) for line in lines]
     rest = [f"{spec.title}: {spec.over}.", *(f"Mask, {line}." for line in spec.mask), *spec.outcome]
-    return [*lines, *(line for text in rest for line in _wrapped(text, width))]
+    return [*lines, *(line for text in rest for line in wrapped(text, width))]
 
 
 def _chosen(spec: Spec, width: int) -> list[str]:
@@ -64,22 +66,7 @@ def _chosen(spec: Spec, width: int) -> list[str]:
         ("Note", spec.notes),
         ("Proof", [spec.proof]),
     )
-    return [line for label, texts in facts for line in _labelled(label, texts, width)]
-
-
-def _wrapped(text: str, width: int, first: str = "", rest: str = "") -> list[str]:
-    return textwrap.wrap(
-        text, width, initial_indent=first, subsequent_indent=rest, break_on_hyphens=False
-    ) or [first.rstrip()]
-
-
-def _labelled(label: str, texts: Iterable[str], width: int) -> list[str]:
-    """Return texts after a label in a column of its own; nothing when there are none."""
-    lines: list[str] = []
-    for text in texts:
-        first = label if not lines else ""
-        lines.extend(_wrapped(text, width, first.ljust(LABEL), " " * LABEL))
-    return lines
+    return [line for label, texts in facts for line in labelled(label, texts, width, LABEL)]
 
 
 # --- the table of options -----------------------------------------------------------------------
@@ -88,12 +75,12 @@ def _labelled(label: str, texts: Iterable[str], width: int) -> list[str]:
 def _options(rows: Sequence[OptionRow], fraction: str, width: int, *, colour: bool) -> list[str]:
     shown = [row for n, row in enumerate(rows) if n < MOST_OPTIONS or row.chosen]
     left = len(rows) - len(shown)
-    more = _wrapped(f"{left} more in plan.json.", width, "  ", "  ") if left else []
+    more = wrapped(f"{left} more in plan.json.", width, "  ", "  ") if left else []
     heads = _heads(shown, fraction)
     columns = _column_widths(shown, heads, width)
     if columns[1] < max(LEAST_NETWORK, *(_longest_piece(row.network) for row in shown)):
         lines = [line for row in shown for line in _stacked(row, fraction, width, colour=colour)]
-        return [*_wrapped("Options, figures in ppm, * the chosen one", width), *lines, *more]
+        return [*wrapped("Options, figures in ppm, * the chosen one", width), *lines, *more]
     title = _row("  ", heads, columns)
     lines = [line for row in shown for line in _tabled(row, heads, columns, colour=colour)]
     units = _row("  ", ("", "", *("ppm" for _ in heads[2:-1]), ""), columns)
@@ -131,7 +118,7 @@ def _tabled(row: OptionRow, heads: Sequence[str], columns: Sequence[int], *, col
     height = max(len(network), len(worst))
     network += [""] * (height - len(network))
     worst += [""] * (height - len(worst))
-    verdict = _coloured(row.verdict, colour=colour)
+    verdict = coloured(row.verdict, colour=colour)
     mark = "* " if row.chosen else "  "
     first = _row(mark, (row.id, network[0], *_figures(row, heads, worst[0]), verdict), columns)
     blank = [""] * (len(heads) - 4)
@@ -140,17 +127,17 @@ def _tabled(row: OptionRow, heads: Sequence[str], columns: Sequence[int], *, col
 
 
 def _stacked(row: OptionRow, fraction: str, width: int, *, colour: bool) -> list[str]:
-    head = f"{'* ' if row.chosen else '  '}{row.id}  {_coloured(row.verdict, colour=colour)}"
+    head = f"{'* ' if row.chosen else '  '}{row.id}  {coloured(row.verdict, colour=colour)}"
     likely = f"{fraction} of lots {row.likely}, " if row.likely else ""
     figures = f"nominal {row.nominal}, {likely}worst case {row.worst_case}"
-    below = [*_network_lines(row, width - 4), *_wrapped(figures, width - 4)]
+    below = [*_network_lines(row, width - 4), *wrapped(figures, width - 4)]
     return [head, *(f"    {line}" for line in below)]
 
 
 def _network_lines(row: OptionRow, width: int) -> list[str]:
     """Return the network, broken between legs, and the sizes of its legs."""
-    lines = _wrapped(_glued(row.network, (" + ", " || ")), width)
-    sizes = _wrapped(_glued(row.sizes, (", ",)), width, "  ", "  ") if row.sizes else []
+    lines = wrapped(_glued(row.network, (" + ", " || ")), width)
+    sizes = wrapped(_glued(row.sizes, (", ",)), width, "  ", "  ") if row.sizes else []
     half = MOST_LINES // 2
     if len(lines) > MOST_LINES:
         lines = [*lines[:half], "...", *lines[-half + 1 :]]
@@ -177,7 +164,3 @@ def _worst_lines(row: OptionRow) -> list[str]:
     """Return a worst case; its guaranteed bound, where it differs, goes below."""
     found, _, most = row.worst_case.partition(" (")
     return [found, f"({most}"] if most else [found]
-
-
-def _coloured(verdict: str, *, colour: bool) -> str:
-    return click.style(verdict, fg=COLOURS[verdict]) if colour and verdict in COLOURS else verdict
