@@ -193,11 +193,11 @@ def mixed() -> None:
     print(
         f"time against legs, six films: log-log slope {np.polyfit(np.log(legs), np.log(by_legs), 1)[0]:.2f}"
     )
-    twelve = {**six, **more}
-    one = timed(twelve, 5, 3, proof=False)
+    sixteen = {**six, **curved_films(1, 10)}
+    one = timed(sixteen, 5, 3, proof=False)
     with executor_for(2, None) as pool:
         timed(six, 3, 2, proof=False, effort=Effort(executor=pool))  # starts the workers
-        two = timed(twelve, 5, 3, proof=False, effort=Effort(executor=pool))
+        two = timed(sixteen, 5, 3, proof=False, effort=Effort(executor=pool))
     print(f"one worker / two workers, 5 legs: {one / two:.2f} (limit 1.6)")
     memory = resource.getrusage(resource.RUSAGE_SELF).ru_maxrss / 1024
     print(f"most memory of this process: {memory:.0f} MB (limit 500)")
