@@ -8,6 +8,7 @@ import pytest
 from makers import by_name, film, grid, leg, need_of, over, random_films, six_films
 
 from tcplan.goal import Limit, Window
+from tcplan.mixes import mixed_trees
 from tcplan.network import Network, Parallel, Series, deviated, legs, network_text, resistance, shares, value
 from tcplan.plan import Sizes, Space
 from tcplan.process import Correlation, Parameter, Process, Variation
@@ -15,7 +16,8 @@ from tcplan.search.linear import least_total, search_space
 from tcplan.search.mixed_search import mixed_proposals
 from tcplan.verify.bound import arrangement_bound
 from tcplan.verify.option import Case, check
-from tcplan.verify.tree_bound import mixed_bound
+from tcplan.verify.question import device_question
+from tcplan.verify.tree_bound import mixed_bound, none_within
 from tcplan.worst.evaluation import worst_case
 
 
@@ -343,3 +345,29 @@ def test_evidence_outside_its_piece_or_of_no_side_is_no_evidence():
             assert arrangement_bound(best.space, evidence, need, films, 0.05, of) <= good * (1 + 1e-9)
         empty = replace(best.certificate, weights=())
         assert arrangement_bound(best.space, empty, need, films, 0.05, of) == 0.0
+
+
+def test_a_lower_limit_below_zero_rules_nothing_out():
+    """A mask whose wide line lets R fall to nothing at 1.5 times the figure: the tree stays."""
+    windows = (
+        Window(low=297.15, high=299.15, limit=1e-6),
+        Window(low=233.15, high=423.15, limit=0.3),
+    )
+    need = need_of(Limit(kind="mask", value=1e-6, windows=windows))
+    films = by_name(
+        film("a", -3000, value_percent=70, tc1_spread_ppm=5),
+        film("b", 6000, value_percent=70, tc1_spread_ppm=5),
+    )
+    variation, rng = variation_of(films), np.random.default_rng(0)
+    best = np.inf
+    for _ in range(20):
+        x = 10 ** rng.uniform(-1, 1, 4)
+        inner = Parallel((leg("b", x[1]), Series((leg("a", x[2]), leg("b", x[3])))))
+        network = Series((leg("a", x[0]), inner))
+        best = min(best, worst_case(network, films, variation.spreads, need).upper)
+    of = space(films, "mixed", 2, legs=4, ohms=1000.0)
+    ask = device_question(of, need, films, variation, 1.5 * best)
+    assert ask.low.min() < 0
+    own = ("series", (0, ("parallel", (1, ("series", (0, 1))))))
+    assert own in mixed_trees(of)
+    assert not none_within([own], ask, {}, most_cells=4000).proved
