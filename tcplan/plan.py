@@ -2,6 +2,8 @@
 
 A :class:`Proposal` is a claim with the evidence for it; only ``verify`` turns it into an
 :class:`Option`. Field names of the records are those of plan.json, units included.
+
+Long, since it is the list of the records of plan.json, each of them short.
 """
 
 from __future__ import annotations

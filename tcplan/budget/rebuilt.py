@@ -5,6 +5,7 @@ The inverse of ``Brief.to_dict`` for the parts that a budget needs, so that plan
 
 from __future__ import annotations
 
+import math
 from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from typing import Any, TypeVar, get_args
@@ -24,7 +25,11 @@ T = TypeVar("T")
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Asked:
-    """What a plan was made for; ``tolerance`` and ``trim_step`` are fractions."""
+    """What a plan was made for; ``tolerance`` and ``trim_step`` are fractions.
+
+    ``fixed`` holds material and value [ohm] of each given member, ``stock_values`` the least and greatest
+    value [ohm] of a bought part.
+    """
 
     goal: Goal
     over: TemperatureRange
@@ -32,6 +37,8 @@ class Asked:
     allowances: tuple[Allowance, ...]
     tolerance: float | None
     trim_step: float | None
+    fixed: tuple[tuple[str, float], ...]
+    stock_values: tuple[float, float]
 
 
 def asked_of(plan: Plan) -> Asked:
@@ -52,7 +59,26 @@ def asked_of(plan: Plan) -> Asked:
         ),
         tolerance=_read("brief.resistor.tolerance", lambda: _fraction(brief["resistor"]["tolerance"])),
         trim_step=_read("brief.resistor.trim_step", lambda: _fraction(brief["resistor"]["trim_step"])),
+        fixed=_read(
+            "brief.fixed",
+            lambda: tuple((str(row["material"]), _above_zero(row["ohms"])) for row in brief["fixed"]),
+        ),
+        stock_values=_read(
+            "brief.search.stock_values_ohms", lambda: _two(brief["search"]["stock_values_ohms"])
+        ),
     )
+
+
+def _two(values: Any) -> tuple[float, float]:
+    low, high = (_above_zero(value) for value in values)
+    return low, high
+
+
+def _above_zero(value: Any) -> float:
+    number = float(value)
+    if not (math.isfinite(number) and number > 0.0):
+        raise ValueError(f"{number:g}")
+    return number
 
 
 def _read(where: str, make: Callable[[], T]) -> T:

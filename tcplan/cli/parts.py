@@ -15,7 +15,8 @@ from tcplan.cli.talk import colourful, complain, say, say_json_text, width
 if TYPE_CHECKING:
     from collections.abc import Sequence
 
-    from tcplan.workflow.making import MadePlan, PartsRules
+    from tcplan.parts.record import MadePlan
+    from tcplan.workflow.making import PartsRules
 
 LABEL = 9
 WAYS = ("area", "judged", "error", "units, W x L")
@@ -65,8 +66,9 @@ def command(
     Exit code 0: it meets the limit, or there is none. 1: it does not, or could not be judged. 2: a leg
     can not be made, which says the rule that stops it and the nearest that can.
     """
+    from tcplan.parts.record import parts_json
     from tcplan.workflow.budgeting import plan_to_budget
-    from tcplan.workflow.making import make_parts, parts_json, write_parts
+    from tcplan.workflow.making import make_parts, write_parts
 
     rules = _rules(error, most_units, max_area, mismatch, pairs=pairs)
     made = make_parts(plan_to_budget(file), rules, option)
@@ -115,7 +117,7 @@ def _screen(made: MadePlan, across: int) -> str:
         ("Cut", cutting(legs)),
         ("Reaches", against_ideal(made.ideal, made.checked)),
         ("Note", _notes(made)),
-        ("Assumed", CAUTIONS),
+        ("Assumed", ("Figures are design estimates, to be confirmed on silicon or hardware.", *CAUTIONS[1:])),
     )
     lines = [line for label, texts in facts for line in labelled(label, texts, across, LABEL)]
     return "\n".join(

@@ -77,6 +77,7 @@ def draw_drift(ax: Axes, residual_ax: Axes, plan: Plan) -> DriftArtists:
     -------
     DriftArtists
     """
+    # Long: one panel after the other, on curves, limits and units that both of them need.
     T = temperatures(plan)
     own, worst, best = option_drift(plan, plan.best), worst_drift(plan), best_of_each(plan)
     singles = {material.name: material_drift(plan, material.name)(T) for material in plan.materials}
@@ -192,6 +193,6 @@ def _mark(ax: Axes, curve: Curve, at_degC: float, unit: Unit, *, filled: bool) -
         markeredgewidth=1.3,
         zorder=6,
         clip_on=False,
-        label="its verified peak" if filled else "its peak, verified",
+        label="nominal peak, verified" if filled else "worst peak, verified",
     )
     return mark

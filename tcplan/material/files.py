@@ -34,6 +34,8 @@ Beside the materials a file may hold what they share, ``[[correlation]]``, ``[[t
 ``[corner.NAME]``. It may name materials of other files, so only its shape is checked here; a brief reads
 it: see `tcplan.brief.process_tables`. Long for a module of this package: all shapes of the file stand
 together, and pydantic with them.
+
+Long, since the keys of a materials file, their units and their mistakes are told in one place.
 """
 
 from __future__ import annotations

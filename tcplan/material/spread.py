@@ -7,6 +7,8 @@ A shift (da, db) of TC1 and TC2 is additive at the material's own reference temp
 For a polynomial law this moves TC1 and TC2 themselves; for any other law it moves the slope and the
 curvature at T0 by the same amounts. The worst case of a network is built from the range of
 device(T)/device(reference) over the box of (da, db).
+
+Long, since what a spread is, what it must satisfy and what it does to a law belong together.
 """
 
 from __future__ import annotations

@@ -8,6 +8,8 @@ and ln of the resistance of any network is concave. In a cell the first two term
 tangents at its centre; what is then left is convex in the factors m, and convex in the shifts of the laws,
 so it is largest at a vertex. Common spreads cancel in it to second order in the size of the cell. Cells are
 halved until no device can be beyond the best one found by more than `GAP`, or the work allowed is done.
+
+Long, since the bound, the cells and the vertices that it is taken at are one argument.
 """
 
 from __future__ import annotations

@@ -1,4 +1,7 @@
-"""A budget in words and numbers: the same on the screen, in Markdown and as JSON."""
+"""A budget in words and numbers: the same on the screen, in Markdown and as JSON.
+
+Long, since it is all the words of a budget, each function a sentence or a row.
+"""
 
 from __future__ import annotations
 

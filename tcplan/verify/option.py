@@ -139,16 +139,15 @@ def _movers(network: Network, case: Case, worst: Worst) -> tuple[Mover, ...]:
     found = []
     for name in used_materials(network):
         tc1, tc2 = worst.device.shifts[name]
-        # Values that move in full step can only be undone together: they count once.
-        mates = box.in_step_with(name)
-        level = worst.device
-        for mate in mates:
-            level = level.with_factor(mate, 1.0)
         undone: dict[Parameter, Device] = {
-            "ohm_per_square": level if mates[0] == name else worst.device,
             "tc1": worst.device.with_shift(name, (0.0, tc2)),
             "tc2": worst.device.with_shift(name, (tc1, 0.0)),
         }
+        # Values that move in full step can only be undone together: they count once.
+        mates = box.in_step_with(name)
+        if mates[0] == name:
+            level = {**worst.device.factors, **dict.fromkeys(mates, 1.0)}
+            undone["ohm_per_square"] = Device(level, worst.device.shifts)
         for parameter, device in undone.items():
             fall = worst.judged.figure - box.judge(device).figure
             if fall > 1e-9:

@@ -2,7 +2,6 @@
 
 from __future__ import annotations
 
-import json
 from collections.abc import Mapping, Sequence
 from dataclasses import dataclass, replace
 from itertools import product
@@ -15,11 +14,12 @@ from tcplan.errors import InputError, Problem
 from tcplan.goal import requirement
 from tcplan.material.model import Material
 from tcplan.names import nearest_name, shown
-from tcplan.network import Leg, Network, leg_names, legs, network_text, used_materials, value
+from tcplan.network import Leg, Network, leg_names, legs, used_materials, value
 from tcplan.output import check_folder, write_files
-from tcplan.parts import FilmLeg, Made, MadeLeg, PlainLeg, StockLeg, WireLeg, ends_material, made_network
+from tcplan.parts import Made, MadeLeg, PlainLeg, StockLeg, made_network
 from tcplan.parts.films import FilmChoice, FilmRules, film_legs
-from tcplan.parts.stock import stock_choices
+from tcplan.parts.record import FilmWay, MadePlan, made_materials, parts_json
+from tcplan.parts.stock_choice import stock_choices
 from tcplan.parts.wire import wire_legs
 from tcplan.plan import Option, Plan, Proposal
 from tcplan.process import Process
@@ -41,55 +41,6 @@ class PartsRules:
     films: FilmRules
     pairs: bool = True
     wire_step: float = 1e-3
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class FilmWay:
-    """One unit cell for every film together, and the judged figure of what they make (a fraction)."""
-
-    choices: tuple[FilmChoice, ...]
-    figure: float
-
-    @property
-    def area(self) -> float:
-        """Of all films [m^2]."""
-        return sum(choice.area for choice in self.choices)
-
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class MadePlan:
-    """An option as made, and what it reaches.
-
-    ``ways`` are the ways to draw its films that none beats in both area and judged figure, least area
-    first. ``checked`` is the made network, verified like any other.
-    """
-
-    plan: Plan
-    ideal: Option
-    made: Made
-    checked: Option
-    ways: tuple[FilmWay, ...]
-
-    @property
-    def value_error(self) -> float:
-        """The value as made over the ideal one, less 1."""
-        return value(self.checked.network) / value(self.ideal.network) - 1.0
-
-    def to_dict(self) -> dict[str, Any]:
-        """Return parts.json; see docs/parts.md."""
-        return {
-            "schema": 1,
-            "tcplan": self.plan.tcplan,
-            "plan": {"title": self.plan.brief["title"], "sha256": self.plan.brief["sha256"]},
-            "option": self.ideal.id,
-            "legs": [_leg_dict(leg) for leg in self.made.legs],
-            "value_error": self.value_error,
-            "ideal": {"network": network_text(self.ideal.network), **_figures(self.ideal)},
-            "made": {
-                **self.checked.to_dict(),
-                "materials": {m.name: m.to_dict() for m in made_materials(self.plan, self.checked.network)},
-            },
-        }
 
 
 def make_parts(plan: Plan, rules: PartsRules, option: str | None = None) -> MadePlan:
@@ -128,21 +79,6 @@ def write_parts(made: MadePlan, folder: Path, *, force: bool = False) -> tuple[P
     return write_files(folder, {name: texts[name].encode() for name in PARTS_FILES}, force=force)
 
 
-def parts_json(made: MadePlan) -> str:
-    """Return parts.json as text, at full precision; never NaN or infinity."""
-    return json.dumps(made.to_dict(), indent=2, ensure_ascii=False, allow_nan=False) + "\n"
-
-
-def made_materials(plan: Plan, network: Network) -> tuple[Material, ...]:
-    """Return the materials of a made network, the ends of its films among them."""
-    known = dict(plan.by_name)
-    for material in plan.materials:
-        ends = ends_material(material)
-        if ends is not None:
-            known[ends.name] = ends
-    return tuple(known[name] for name in used_materials(network))
-
-
 def _option(plan: Plan, name: str | None) -> Option:
     if name is None:
         return plan.best
@@ -161,7 +97,7 @@ def _option(plan: Plan, name: str | None) -> Option:
 
 def _made(plan: Plan, asked: Asked, ideal: Option, rules: PartsRules) -> tuple[Made, tuple[FilmWay, ...]]:
     """Return the parts of every leg; stock parts are chosen last, all together."""
-    fixed = _fixed(plan, ideal.network)
+    fixed = _fixed(asked, ideal.network)
     names = leg_names(len(legs(ideal.network)))
     done: dict[str, MadeLeg] = {}
     films: list[tuple[FilmChoice, ...]] = []
@@ -296,7 +232,7 @@ def _stock(
     names = leg_names(len(own))
     ohms = [done[name].ohms if name in done else leg.ohms for name, leg in zip(names, own, strict=True)]
     network = _with_values(ideal.network, iter(ohms))
-    lowest, highest = plan.brief["search"]["stock_values_ohms"]
+    lowest, highest = asked.stock_values
     choices = stock_choices(
         network,
         plan.by_name,
@@ -321,9 +257,9 @@ def _with_values(node: Network, ohms: Any) -> Network:
     return type(node)(tuple(_with_values(child, ohms) for child in node.children))
 
 
-def _fixed(plan: Plan, network: Network) -> frozenset[int]:
+def _fixed(asked: Asked, network: Network) -> frozenset[int]:
     """Return the positions of the fixed members, which are as they are."""
-    left = [(row["material"], float(row["ohms"])) for row in plan.brief["fixed"]]
+    left = list(asked.fixed)
     found = set()
     for k, leg in enumerate(legs(network)):
         for row in left:
@@ -348,41 +284,3 @@ def _case(plan: Plan, asked: Asked, network: Network) -> Case:
         need=requirement(asked.goal, asked.over),
         process=process,
     )
-
-
-def _figures(option: Option) -> dict[str, Any]:
-    worst = option.worst_case
-    return {
-        "nominal_ppm": option.nominal.figure_ppm,
-        "worst_case_ppm": worst.peak_ppm if worst else None,
-        "verdict": option.verdict,
-    }
-
-
-def _leg_dict(leg: MadeLeg) -> dict[str, Any]:
-    own: dict[str, Any] = {
-        "id": leg.id,
-        "material": leg.material,
-        "wanted_ohms": leg.wanted_ohms,
-        "ohms": leg.ohms,
-    }
-    if isinstance(leg, FilmLeg):
-        unit = leg.unit
-        own |= {
-            "kind": "film",
-            "in_series": leg.in_series,
-            "in_parallel": leg.in_parallel,
-            "width_m": unit.width,
-            "length_m": unit.length,
-            "unit_body_ohms": unit.body_ohms,
-            "unit_ends_ohms": unit.ends_ohms,
-            "area_m2": leg.area,
-            "mismatch": leg.mismatch,
-        }
-    elif isinstance(leg, StockLeg):
-        own |= {"kind": "stock", "values_ohms": list(leg.values), "joined": leg.joined}
-    elif isinstance(leg, WireLeg):
-        own |= {"kind": "wire", "length_m": leg.length, "ohm_per_metre": leg.ohm_per_metre}
-    else:
-        own |= {"kind": "plain"}
-    return own

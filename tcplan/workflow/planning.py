@@ -5,14 +5,11 @@ from __future__ import annotations
 from collections.abc import Sequence
 from dataclasses import replace
 
-import numpy as np
-
 from tcplan import __version__
 from tcplan.brief import Brief
 from tcplan.effort import Effort
 from tcplan.errors import InputError, NoAnswer, Problem, Stopped
 from tcplan.goal import requirement
-from tcplan.material.spread import law_bounds, value_half_width
 from tcplan.network import legs, network_text, used_materials, value
 from tcplan.plan import LimitRecord, Option, Plan, Proposal, RangeRecord, TargetRecord
 from tcplan.units import format_ppm, from_celsius, round_outward
@@ -150,7 +147,6 @@ def make_plan(brief: Brief, *, gap: float = 0.01, effort: Effort | None = None) 
         )
     effort = effort or Effort()
     need = requirement(brief.goal, brief.over)
-    _check_spreads(brief)
     case = Case(
         materials=brief.by_name,
         spreads=spreads_of(brief),
@@ -223,21 +219,6 @@ def _largest_total(brief: Brief, options: Sequence[Option]) -> tuple[str, ...]:
     if brief.fixed[0].place == "series":
         return (f"Totals up to {1.0 / low:.0f} times the fixed members were searched.",)
     return (f"Totals down to 1/{1.0 / low:.0f} of the fixed members were searched.",)
-
-
-def _check_spreads(brief: Brief) -> None:
-    """Refuse a spread over which a law reaches zero, with the name of its material."""
-    ends = np.linspace(brief.over.low, brief.over.high, 33)
-    problems: list[Problem] = []
-    for name, spread in spreads_of(brief).items():
-        law = brief.by_name[name].law
-        try:
-            law_bounds(law, spread, brief.over.reference, ends)
-            value_half_width(law, spread, brief.over.reference)
-        except InputError as error:
-            problems.extend(problem.inside(f"material.{name}") for problem in error.problems)
-    if problems:
-        raise InputError(problems)
 
 
 def _one_more(brief: Brief, case: Case, options: Sequence[Option]) -> tuple[str, ...]:

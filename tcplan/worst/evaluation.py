@@ -18,7 +18,7 @@ from dataclasses import replace
 
 import numpy as np
 
-from tcplan.arrays import FloatArray
+from tcplan.arrays import BoolArray, FloatArray
 from tcplan.drift import panels, stationary_points
 from tcplan.errors import InternalError
 from tcplan.goal import Judged, Requirement
@@ -37,35 +37,32 @@ NEAR = 0.97
 BAND_CELLS = 512
 
 
-def _temperatures(need: Requirement, count: int) -> tuple[FloatArray, FloatArray]:
-    """Return temperatures [K] over all pieces and the weights there."""
-    T, weight = [], []
-    for piece in need.pieces:
-        points = np.linspace(piece.low, piece.high, count if piece.high > piece.low else 1)
-        T.append(points)
-        weight.append(np.full(len(points), piece.weight))
-    return np.concatenate(T), np.concatenate(weight)
+def _nominal(box: Box) -> Device:
+    return Device(dict.fromkeys(box.names, 1.0), dict.fromkeys(box.names, (0.0, 0.0)))
 
 
-def _examined(box: Box, count: int) -> tuple[FloatArray, FloatArray]:
-    """Return temperatures [K] over all pieces, and where the nominal drift is stationary, with weights.
+def _examined(box: Box, count: int) -> tuple[FloatArray, FloatArray, BoolArray]:
+    """Return temperatures [K] over all pieces, their weights, and whether their centre is free.
 
-    What is narrow in a law is so in the nominal drift as well, which is followed over the continuous range.
+    They are evenly spaced, and where the nominal drift is stationary: what is narrow in a law is so in
+    the nominal drift as well, which is followed over the continuous range.
     """
-    T, weight = _temperatures(box.need, count)
-    curve = box.curve(Device(dict.fromkeys(box.names, 1.0), dict.fromkeys(box.names, (0.0, 0.0))))
+    curve = box.curve(_nominal(box))
     splits = [*box.need.breakpoints(), *(b for n in box.names for b in box.materials[n].law.breakpoints)]
 
     def drift(at: FloatArray) -> FloatArray:
         return curve(at) - box.need.wanted(at)
 
-    more, weights = [], []
+    T, weight, free = [], [], []
     for piece in box.need.pieces:
-        for low, high in panels(piece.low, piece.high, splits) if piece.high > piece.low else ():
-            own = stationary_points(drift, low, high)
-            more.extend(own)
-            weights.extend([piece.weight] * len(own))
-    return np.r_[T, more], np.r_[weight, weights]
+        wide = piece.high > piece.low
+        own = np.linspace(piece.low, piece.high, count if wide else 1).tolist()
+        for low, high in panels(piece.low, piece.high, splits) if wide else ():
+            own.extend(stationary_points(drift, low, high))
+        T.extend(own)
+        weight.extend([piece.weight] * len(own))
+        free.extend([piece.centred] * len(own))
+    return np.array(T), np.array(weight), np.array(free)
 
 
 def _settled(box: Box, device: Device) -> tuple[Device, Judged]:
@@ -89,7 +86,8 @@ def _settled(box: Box, device: Device) -> tuple[Device, Judged]:
 
 def _one_node(box: Box) -> Worst:
     """Return the worst case of a single, series or parallel network: exact."""
-    grid = grid_of(box, *_examined(box, GRID))
+    T, weight, _ = _examined(box, GRID)
+    grid = grid_of(box, T, weight)
     order = np.argsort(grid.T, kind="stable")
     starts: list[tuple[float, Device]] = []
     for sign, ratios in ((1, grid.hi), (-1, grid.lo)):
@@ -118,7 +116,7 @@ def _mixed(box: Box) -> Worst:
     Every temperature near the worst is followed to where its device is worst; these join the grid,
     until none of them moves the figure.
     """
-    T, weight = _examined(box, CELL_GRID)
+    T, weight, _ = _examined(box, CELL_GRID)
     best: tuple[Device, Judged] | None = None
     upper = 0.0
     for _ in range(4):
@@ -166,10 +164,13 @@ def _banded(box: Box) -> Worst:
     signs = np.where(np.arange(count) % 2, 1.0, -1.0)
     ends = (box.need.pieces[0].low, box.need.pieces[0].high)
     starts = [
-        Device(_named(box, f * signs), box.shifts_at(T, sign))
-        for T in ends
-        for sign in (1, -1)
-        for f in (0.0, 1.0, -1.0)
+        _nominal(box),
+        *(
+            Device(_named(box, f * signs), box.shifts_at(T, sign))
+            for T in ends
+            for sign in (1, -1)
+            for f in (0.0, 1.0, -1.0)
+        ),
     ]
     best = max(((d, box.judge(d)) for d in starts), key=lambda pair: pair[1].figure)
     for _ in range(12):
@@ -204,8 +205,7 @@ def _band_bound(box: Box) -> float:
 
     A band is at most the worst excursions of all devices, up and down, together.
     """
-    T, weight = _temperatures(box.need, CELL_GRID)
-    free = np.concatenate([np.full(CELL_GRID if p.high > p.low else 1, p.centred) for p in box.need.pieces])
+    T, weight, free = _examined(box, CELL_GRID)
     grid = grid_of(box, T, weight)
     if _one_comparison(box):
         up = one_node_factors(box, grid.hi, 1)[0] - grid.wanted

@@ -86,7 +86,8 @@ def main() -> None:
 
     from tcplan.goal import Limit
     from tcplan.network import Parallel, Series, value
-    from tcplan.parts.stock import stock_choices, stock_values
+    from tcplan.parts.stock import stock_values
+    from tcplan.parts.stock_choice import stock_choices
 
     a, b, c, d, e, f = (leg(name, ohms) for name, ohms in LEGS)
     network = Parallel((Series((a, b)), c, Series((d, Parallel((e, f))))))

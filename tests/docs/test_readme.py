@@ -54,6 +54,9 @@ def test_links_lead_somewhere():
 
 def test_the_mixing_table_is_the_real_one():
     plan = make_plan(read_brief(ROOT / "examples" / "flat_mixed_films" / "brief.toml"))
+    assert {len(o.squares) for o in plan.options if o.verdict == "MET"} == {
+        4
+    }  # "only a network of four legs"
     for kind in ("single", "series", "parallel", "mixed"):
         option = next(o for o in plan.options if o.arrangement == kind)
         figures = option.nominal.peak_ppm, option.worst_case.peak_ppm, option.area * 1e12
@@ -72,3 +75,9 @@ def test_the_table_of_the_judges_is_what_the_example_gives():
             option = next(o for o in plan.options if o.arrangement == kind)
             figures = option.nominal.figure_ppm, option.likely.peak_ppm, option.worst_case.peak_ppm
             assert [int(cell) for cell in row.split("|")] == [round(figure) for figure in figures]
+            if judge == "worst-case":
+                assert (option.proof.kind, option.proof.of) == ("global", "worst-case")
+            if judge == "nominal":
+                flattest = min(plan.options, key=lambda o: o.nominal.figure_ppm)
+                assert flattest.nominal.figure_ppm < 0.11 * 9000  # "a tenth of the limit"
+                assert flattest.worst_case.peak_ppm > 3 * 9000  # "more than three times the limit"

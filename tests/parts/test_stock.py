@@ -15,15 +15,8 @@ from tcplan.goal import Limit, Window, judged
 from tcplan.material.law_table import Table
 from tcplan.network import Leg, Network, Parallel, Series, legs, mapped, value
 from tcplan.parts.model import StockLeg
-from tcplan.parts.stock import (
-    MOST_COMBINATIONS,
-    Candidate,
-    StockChoice,
-    candidates,
-    stock_choices,
-    stock_refusals,
-    stock_values,
-)
+from tcplan.parts.stock import Candidate, candidates, stock_refusals, stock_values
+from tcplan.parts.stock_choice import MOST_COMBINATIONS, StockChoice, stock_choices
 
 DRIFT = Limit(kind="drift", value=0.01)
 BAND = Limit(kind="band", value=0.01)

@@ -17,7 +17,8 @@ from tcplan.search.mixed_search import mixed_proposals
 from tcplan.verify.bound import arrangement_bound
 from tcplan.verify.option import Case, check
 from tcplan.verify.question import device_question
-from tcplan.verify.tree_bound import mixed_bound, none_within
+from tcplan.verify.sieve import none_within
+from tcplan.verify.tree_bound import mixed_bound
 from tcplan.worst.evaluation import worst_case
 
 

@@ -13,7 +13,9 @@ from tcplan.plan import Sizes, Space
 from tcplan.search.mixed_search import mixed_proposals
 from tcplan.trees import assigned_trees, is_mixed, leaves
 from tcplan.verify.option import Case, nominal_figure
-from tcplan.verify.tree_bound import MixedBound, closing_gap, mixed_bound, none_within, question
+from tcplan.verify.question import question
+from tcplan.verify.sieve import none_within
+from tcplan.verify.tree_bound import MixedBound, closing_gap, mixed_bound
 
 INF = float("inf")
 T = grid(count=96)  # 2 K apart, the reference and the edges of the mask among them

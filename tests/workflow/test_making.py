@@ -1,6 +1,7 @@
 """Parts of a plan: what is made, recomputed from parts.json alone, and what is refused."""
 
 import json
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -12,8 +13,9 @@ from tcplan.cli.main import cli
 from tcplan.errors import InputError
 from tcplan.network import legs, value
 from tcplan.parts.films import FilmRules
+from tcplan.parts.record import parts_json
 from tcplan.plan import plan_json
-from tcplan.workflow.making import PartsRules, make_parts, parts_json
+from tcplan.workflow.making import PartsRules, make_parts
 from tcplan.workflow.planning import make_plan
 
 FILMS = """
@@ -218,3 +220,16 @@ def test_the_command(tmp_path, monkeypatch):
     assert data == json.loads(Path("made/parts.json").read_text())
     for wrong in (["--error", "2 ohm"], ["--max-area", "0.00001 um^2"], ["--error", "0 %"]):
         assert CliRunner().invoke(cli, ["parts", "plan.json", *wrong]).exit_code == 2
+
+
+def test_a_plan_that_lacks_what_parts_need_says_where():
+    """A plan.json is input too: a part of its brief that is missing or wrong is told with its place."""
+    plan = plan_of(STOCK)
+    without = replace(plan, brief={k: v for k, v in plan.brief.items() if k != "fixed"})
+    with pytest.raises(InputError, match=r"plan\.brief\.fixed"):
+        make_parts(without, RULES)
+    wrong = replace(
+        plan, brief={**plan.brief, "search": {**plan.brief["search"], "stock_values_ohms": [0, 1]}}
+    )
+    with pytest.raises(InputError, match="stock_values_ohms"):
+        make_parts(wrong, RULES)

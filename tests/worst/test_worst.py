@@ -311,3 +311,20 @@ def test_a_feature_narrower_than_the_grid_is_in_the_worst_case(node):
     by_hand = share * 0.0018 + (1 - share) * 16e-6 * x
     assert found.upper >= by_hand * (1 - 1e-2)
     assert found.upper >= found.judged.figure >= 0.0018 * 0.6
+
+
+def test_a_band_is_never_below_that_of_the_nominal_device():
+    """The same bump in a band: a device that is nominal is one of the box."""
+    bump = Expression(reference=298.15, text="1 + 0.0018*exp(-((T - 350.63)/1.2)**2)")
+    films = by_name(replace(film("a", 0.0, value_percent=30), law=bump), film("b", 16, value_percent=30))
+    network, need = (
+        Series((leg("a", 1.0), leg("b", 1.0))),
+        need_of(Limit(kind="band", value=0.01), high=125.0),
+    )
+    found = worst_case(network, films, spreads(films), need)
+    T = np.sort(np.r_[np.linspace(233.15, 398.15, 4001), 350.63])
+    nominal = brute_ratio(network, films, T) - 1
+    # By hand: the bump is most with a at 1.3 and b at 0.7; the band is at least bump plus the cold end.
+    worst = 0.65 * 0.0018 + 0.35 * 16e-6 * 52.48 + 0.35 * 16e-6 * 65
+    assert found.judged.figure >= np.ptp(nominal) * (1 - 1e-9)
+    assert found.upper >= worst
