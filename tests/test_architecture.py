@@ -20,7 +20,7 @@ ORDER = [
     {"ranges", "preferred", "toml_input", "table_reader", "material"},
     {"process"},
     {"network"},
-    {"network_text"},
+    {"network_text", "made"},
     {"drift"},
     {"goal"},
     {"brief"},

@@ -5,9 +5,9 @@ from __future__ import annotations
 from collections.abc import Sequence
 from itertools import takewhile
 
+from tcplan.made import Refusal
 from tcplan.parts.counts import Point
 from tcplan.parts.film_task import FilmTask
-from tcplan.parts.model import Refusal
 from tcplan.units import format_ohms, format_si, round_outward
 
 _LARGEST_ERROR = 0.9

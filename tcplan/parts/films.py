@@ -13,11 +13,11 @@ from dataclasses import dataclass
 
 import numpy as np
 
+from tcplan.made import FilmLeg, FilmUnit, Refusal
 from tcplan.material.model import Film, Material
 from tcplan.parts.counts import ALIKE, Point, trade
 from tcplan.parts.film_refusals import refusals
 from tcplan.parts.film_task import FilmRules, FilmTask, ends_ohms, film_task, per_length
-from tcplan.parts.model import FilmLeg, FilmUnit, Refusal
 from tcplan.parts.network import ends_material
 
 __all__ = ["FilmChoice", "FilmResult", "FilmRules", "film_legs", "zero_tc_length"]

@@ -8,11 +8,11 @@ from __future__ import annotations
 
 from collections.abc import Iterator
 
+from tcplan.made import FilmLeg, Made, MadeLeg, StockLeg
 from tcplan.material.law import Polynomial
 from tcplan.material.model import Material
 from tcplan.material.spread import Spread
 from tcplan.network import Leg, Network, Parallel, Series
-from tcplan.parts.model import FilmLeg, Made, MadeLeg, StockLeg
 
 ENDS = "_ends"
 

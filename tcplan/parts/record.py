@@ -6,10 +6,10 @@ import json
 from dataclasses import dataclass
 from typing import Any
 
+from tcplan.made import FilmLeg, Made, MadeLeg, StockLeg, WireLeg
 from tcplan.material.model import Material
 from tcplan.network import Network, network_text, used_materials, value
 from tcplan.parts.films import FilmChoice
-from tcplan.parts.model import FilmLeg, Made, MadeLeg, StockLeg, WireLeg
 from tcplan.parts.network import ends_material
 from tcplan.plan import Option, Plan
 

@@ -10,9 +10,9 @@ import numpy as np
 
 from tcplan.arrays import FloatArray
 from tcplan.errors import InputError, Problem
+from tcplan.made import Joined, Refusal
 from tcplan.material.model import Material
 from tcplan.network import Network, leg_names, legs
-from tcplan.parts.model import Joined, Refusal
 from tcplan.preferred import preferred_values
 from tcplan.units import format_ohms
 

@@ -16,9 +16,9 @@ from tcplan.arrays import BoolArray, FloatArray, IntArray
 from tcplan.drift import breakpoints
 from tcplan.errors import InputError, Problem
 from tcplan.goal import Piece, Requirement
+from tcplan.made import Refusal, StockLeg
 from tcplan.material.model import Material
 from tcplan.network import Leg, Network, Series, leg_names, legs, used_materials
-from tcplan.parts.model import Refusal, StockLeg
 from tcplan.parts.stock import Candidate, candidates, check_counts, rounded, stock_positions, stock_refusals
 
 MOST_COMBINATIONS = 200_000

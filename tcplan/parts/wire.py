@@ -8,8 +8,8 @@ from collections.abc import Sequence
 from decimal import Decimal
 
 from tcplan.errors import InputError, Problem
+from tcplan.made import Refusal, WireLeg
 from tcplan.material.model import Material
-from tcplan.parts.model import Refusal, WireLeg
 from tcplan.units import format_ohms, format_si
 
 STEP = 1e-3  # m

@@ -12,9 +12,9 @@ from makers import by_name, film, leg, need_of
 from tcplan.drift import ratio_curve
 from tcplan.errors import InputError
 from tcplan.goal import Limit, Window, judged
+from tcplan.made import StockLeg
 from tcplan.material.law_table import Table
 from tcplan.network import Leg, Network, Parallel, Series, legs, mapped, value
-from tcplan.parts.model import StockLeg
 from tcplan.parts.stock import Candidate, candidates, stock_refusals, stock_values
 from tcplan.parts.stock_choice import MOST_COMBINATIONS, StockChoice, stock_choices
 

@@ -6,7 +6,7 @@ import pytest
 from makers import film
 
 from tcplan.errors import InputError
-from tcplan.parts.model import WireLeg
+from tcplan.made import WireLeg
 from tcplan.parts.wire import cutting_list, relative_error_of, wire_legs, wire_refusals
 
 AT_20, AT_25 = 293.15, 298.15
