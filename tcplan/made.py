@@ -2,10 +2,15 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
-from typing import Literal, TypeAlias
+import math
+import sys
+from collections.abc import Mapping
+from dataclasses import dataclass, replace
+from typing import Any, Literal, TypeAlias, get_args
 
 Joined: TypeAlias = Literal["one", "series", "parallel"]
+MOST_COUNT = 4096
+"""Of units in series, or strings in parallel, in one leg of a file."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -22,7 +27,7 @@ class FilmUnit:
     ends_ohms : float
         Of both ends together [ohm], at the same temperature; 0 where no end resistance is stated.
     area : float
-        With its spacing [m^2].
+        Of its place in an array [m^2]: with the spacing and the two ends, each 0 where it is not stated.
     """
 
     material: str
@@ -65,7 +70,7 @@ class FilmLeg:
 
     @property
     def area(self) -> float:
-        """Of the leg, spacing included [m^2]."""
+        """Of its units, spacing and ends included [m^2]."""
         return self.units * self.unit.area
 
 
@@ -125,20 +130,115 @@ class Refusal:
     """Why a leg can not be made: the rule that stops it, and the nearest feasible figure."""
 
     leg: str
-    rule: Literal["width", "length", "count", "grid", "stock", "area", "current", "length of wire"]
+    rule: Literal["mismatch", "count", "grid", "stock", "area", "current", "length of wire"]
     found: str
     nearest: str
 
 
-@dataclass(frozen=True, slots=True, kw_only=True)
-class Made:
-    """An option as it is made, leg by leg in the order of its network."""
+def exact(leg: MadeLeg, ohms: float) -> MadeLeg:
+    """Return a leg of the same kind of exactly a value [ohm], as if counts, steps and stock were no matter.
 
-    option: str
-    legs: tuple[MadeLeg, ...]
-    refusals: tuple[Refusal, ...] = ()
+    The same part of a film leg is ends; a leg of two stock parts keeps their ratio.
+    """
+    factor = ohms / leg.ohms
+    if isinstance(leg, FilmLeg):
+        unit = leg.unit
+        own = replace(unit, body_ohms=unit.body_ohms * factor, ends_ohms=unit.ends_ohms * factor)
+        return replace(leg, unit=own)
+    if isinstance(leg, StockLeg):
+        return replace(leg, values=tuple(value * factor for value in leg.values))
+    if isinstance(leg, WireLeg):
+        return replace(leg, length=leg.length * factor)
+    return replace(leg, wanted_ohms=ohms)
 
-    @property
-    def area(self) -> float:
-        """Of all film legs [m^2]."""
-        return sum(leg.area for leg in self.legs if isinstance(leg, FilmLeg))
+
+# --- plain data -----------------------------------------------------------------------------------------
+
+
+def leg_to_dict(leg: MadeLeg) -> dict[str, Any]:
+    """Return a made leg as plan.json holds it, units in the names; the inverse of :func:`leg_from_dict`."""
+    own: dict[str, Any] = {
+        "id": leg.id,
+        "material": leg.material,
+        "wanted_ohms": leg.wanted_ohms,
+        "ohms": leg.ohms,
+    }
+    if isinstance(leg, FilmLeg):
+        unit = leg.unit
+        return own | {
+            "kind": "film",
+            "in_series": leg.in_series,
+            "in_parallel": leg.in_parallel,
+            "width_m": unit.width,
+            "length_m": unit.length,
+            "unit_body_ohms": unit.body_ohms,
+            "unit_ends_ohms": unit.ends_ohms,
+            "unit_area_m2": unit.area,
+            "mismatch": leg.mismatch,
+        }
+    if isinstance(leg, StockLeg):
+        return own | {"kind": "stock", "values_ohms": list(leg.values), "joined": leg.joined}
+    if isinstance(leg, WireLeg):
+        return own | {"kind": "wire", "length_m": leg.length, "ohm_per_metre": leg.ohm_per_metre}
+    return own | {"kind": "plain"}
+
+
+def leg_from_dict(row: Mapping[str, Any]) -> MadeLeg:
+    """Return the made leg that :func:`leg_to_dict` wrote.
+
+    Raises
+    ------
+    KeyError, TypeError, ValueError
+        When it is not one; the reader of the file says where.
+    """
+    name, material = str(row["id"]), str(row["material"])
+    wanted, kind = _size(row["wanted_ohms"]), row["kind"]
+    if kind == "film":
+        return _film_leg(row, name, material, wanted)
+    if kind == "stock":
+        if row["joined"] not in get_args(Joined):
+            raise ValueError(f"joined {row['joined']!r}")
+        values = tuple(_size(value) for value in row["values_ohms"])
+        if len(values) != (1 if row["joined"] == "one" else 2):
+            raise ValueError(f"{len(values)} values joined as {row['joined']}")
+        return StockLeg(id=name, material=material, wanted_ohms=wanted, values=values, joined=row["joined"])
+    if kind == "wire":
+        length, per_metre = _size(row["length_m"]), _size(row["ohm_per_metre"])
+        return WireLeg(id=name, material=material, wanted_ohms=wanted, length=length, ohm_per_metre=per_metre)
+    if kind == "plain":
+        return PlainLeg(id=name, material=material, wanted_ohms=wanted)
+    raise ValueError(f"kind {kind!r}")
+
+
+def _film_leg(row: Mapping[str, Any], name: str, material: str, wanted: float) -> FilmLeg:
+    ends, mismatch = row["unit_ends_ohms"], row["mismatch"]
+    return FilmLeg(
+        id=name,
+        material=material,
+        wanted_ohms=wanted,
+        unit=FilmUnit(
+            material=material,
+            width=_size(row["width_m"]),
+            length=_size(row["length_m"]),
+            body_ohms=_size(row["unit_body_ohms"]),
+            ends_ohms=0.0 if ends == 0.0 and not isinstance(ends, bool) else _size(ends),
+            area=_size(row["unit_area_m2"]),
+        ),
+        in_series=_count(row["in_series"]),
+        in_parallel=_count(row["in_parallel"]),
+        mismatch=None if mismatch is None else _size(mismatch),
+    )
+
+
+def _size(value: Any) -> float:
+    if isinstance(value, bool) or not isinstance(value, int | float) or not 0.0 < value < math.inf:
+        raise ValueError(f"{value!r}, not a number above zero")
+    if value > sys.float_info.max:  # a whole number can be
+        raise ValueError("a number that is too large")
+    return float(value)
+
+
+def _count(value: Any) -> int:
+    if isinstance(value, bool) or not isinstance(value, int) or not 1 <= value <= MOST_COUNT:
+        raise ValueError(f"{value!r}, not a count")
+    return value

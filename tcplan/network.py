@@ -7,7 +7,7 @@ parallel adds conductance, for all temperatures at once.
 from __future__ import annotations
 
 from collections.abc import Callable, Iterator, Mapping, Sequence
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from functools import reduce
 from typing import TYPE_CHECKING, Any, Literal, TypeAlias
 
@@ -25,12 +25,25 @@ Arrangement: TypeAlias = Literal["single", "series", "parallel", "mixed"]
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Leg:
-    """One leaf of a network: a material and its value [ohm] at the reference temperature."""
+    """One leaf of a network: a material and its value [ohm] at the reference temperature.
+
+    ``strings`` says of how many alike in parallel it is made: a film of the same value then takes more
+    area, and is better matched. It changes nothing else.
+    """
 
     material: str
     ohms: float
+    strings: int = 1
 
     def __post_init__(self) -> None:
+        if self.strings < 1:
+            raise InputError(
+                Problem(
+                    where=f"leg of {self.material}",
+                    found=f"{self.strings} strings",
+                    expected="at least 1",
+                )
+            )
         if not (0 < self.ohms < float("inf")):
             raise InputError(
                 Problem(
@@ -186,13 +199,13 @@ def mapped(network: Network, change: Callable[[Leg], Leg]) -> Network:
 
 def scaled(network: Network, factor: float) -> Network:
     """Return the network with every leg multiplied by ``factor``."""
-    return mapped(network, lambda leg: Leg(material=leg.material, ohms=leg.ohms * factor))
+    return mapped(network, lambda leg: replace(leg, ohms=leg.ohms * factor))
 
 
 def deviated(network: Network, factors: Mapping[str, float]) -> Network:
     """Return the network with every leg multiplied by the value factor of its material."""
     return mapped(
-        network, lambda leg: Leg(material=leg.material, ohms=leg.ohms * factors.get(leg.material, 1.0))
+        network, lambda leg: replace(leg, ohms=leg.ohms * factors.get(leg.material, 1.0))
     )
 
 

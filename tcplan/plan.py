@@ -14,6 +14,7 @@ from dataclasses import asdict, dataclass, field, replace
 from typing import Any, Literal, TypeAlias
 
 from tcplan.goal import Judge
+from tcplan.made import MadeLeg, leg_to_dict
 from tcplan.material.model import Material
 from tcplan.network import (
     Arrangement,
@@ -27,7 +28,7 @@ from tcplan.network import (
     tree,
 )
 
-SCHEMA = 2
+SCHEMA = 3
 Verdict: TypeAlias = Literal["MET", "NOT MET", "NOT JUDGED"]
 Parameter: TypeAlias = Literal["ohm_per_square", "tc1", "tc2"]
 
@@ -280,6 +281,7 @@ class Option:
                     "id": i,
                     "material": leg.material,
                     "ohms": leg.ohms,
+                    "strings": leg.strings,
                     "share": share,
                     "squares": squares,
                     "area_m2": area,
@@ -338,6 +340,48 @@ class Floor:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class MadeValue:
+    """An option at one value, as it is made: its legs, and the network of them, checked like any other."""
+
+    target_ohms: float
+    value_error: float
+    legs: tuple[MadeLeg, ...]
+    option: Option
+
+    def to_dict(self) -> dict[str, Any]:
+        """Return it as plan.json holds it."""
+        return {
+            "target_ohms": self.target_ohms,
+            "value_error": self.value_error,
+            "legs": [leg_to_dict(leg) for leg in self.legs],
+            "option": self.option.to_dict(),
+        }
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class PartsRecord:
+    """What an option is made of, at each of its values.
+
+    ``materials`` are those of the made networks: the ends of films and every bought part are materials of
+    their own. ``details`` holds what is only read by people, as JSON data: ways, load, placement, trim.
+    """
+
+    option: str
+    materials: tuple[Material, ...]
+    made: tuple[MadeValue, ...]
+    details: dict[str, Any] = field(default_factory=dict)
+
+    def to_dict(self) -> dict[str, Any]:
+        """Return the parts as plan.json holds them."""
+        return {
+            "option": self.option,
+            "materials": {material.name: material.to_dict() for material in self.materials},
+            "made": [made.to_dict() for made in self.made],
+            "details": self.details,
+        }
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Plan:
     """The ranked list of options for one brief, best first; ``chosen`` is an option id."""
 
@@ -351,6 +395,7 @@ class Plan:
     chosen: str
     options: tuple[Option, ...]
     notes: tuple[str, ...] = field(default=())
+    parts: PartsRecord | None = None
 
     @property
     def best(self) -> Option:
@@ -376,6 +421,7 @@ class Plan:
             "chosen": self.chosen,
             "options": [option.to_dict() for option in self.options],
             "notes": list(self.notes),
+            "parts": self.parts.to_dict() if self.parts else None,
         }
 
 

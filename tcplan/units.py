@@ -113,6 +113,18 @@ _KINDS: Mapping[str, _Kind] = {
     "K/W": _Kind(
         words="a thermal resistance", example="150 K/W", pint_units=("K/W",), exponents={"K/W": 0, "K/mW": 3}
     ),
+    "1/V": _Kind(
+        words="a voltage coefficient",
+        example="20 ppm/V",
+        pint_units=("1/V", "tcplan_ratio/V"),
+        exponents={"ppm/V": -6, "ppb/V": -9, "%/V": -2, "1/V": 0},
+    ),
+    "m/V": _Kind(
+        words="a voltage coefficient times a length",
+        example="30 ppm*um/V",
+        pint_units=("tcplan_ratio*m/V",),
+        exponents={"ppm*um/V": -12, "%*um/V": -8, "ppm*mm/V": -9},
+    ),
     "1*m": _Kind(
         words="a matching coefficient",
         example="1.2 %*um",
@@ -173,7 +185,8 @@ def parse_quantity(text: object, unit: str, *, where: str = "") -> float:
         IEC 60062 code such as ``"4k7"``. Anything but text is refused, so that no unit is guessed.
     unit : str
         The SI unit of the answer: ohm, K (an absolute temperature), delta_K (a difference), 1/K, 1/K^2,
-        1/K^3, 1 (a ratio), m, m^2, ohm/m, ohm*m, A, A/m, V, W, K/W or 1*m (a ratio times a length).
+        1/K^3, 1 (a ratio), m, m^2, ohm/m, ohm*m, A, A/m, V, W, K/W, 1/V, m/V (a ratio times a
+        length, per volt) or 1*m (a ratio times a length).
     where : str
         The place of the text in the input, for the message.
 
@@ -418,6 +431,11 @@ def format_ohms(value: float, digits: int = 4) -> str:
         Such as ``14.24 kohm``.
     """
     return format_si(value, "ohm", digits)
+
+
+def format_length(metres: float) -> str:
+    """Return a length [m] as it is drawn or cut, with all its digits: ``37.755 um``, ``97.611 m``."""
+    return format_si(metres, "m", 9)
 
 
 def format_ppm(fraction: float, digits: int = 3) -> str:

@@ -157,6 +157,9 @@ def check_agreement(
     """Check that the value, the fixed members and the goal can go together."""
     resistor = reader.inner("resistor") or TableReader({}, f"{reader.where}: resistor", reader.problems)
     free = target.ohms is None
+    if target.also and given is not None and not (reader.inner("given") or reader).table.get("scaled"):
+        todo = "Write scaled = true in [given]: its network is then made at each of them."
+        resistor.refuse("value", "several values beside a network as it is written", "one value", todo)
     asked = resistor.has("value") and resistor.text("value") != "free"
     if not reader.has("given") and free and not asked and not fixed:
         resistor.refuse("value", "no value", 'the value, such as "18 kohm" (free only beside [[fixed]])')
@@ -166,6 +169,8 @@ def check_agreement(
         resistor.refuse("value", "no value and no limit", "a value, or a limit in [goal] to bound it")
     if fixed:
         _room(resistor, target, fixed)
+        if target.also:
+            resistor.refuse("value", "several values beside fixed members", "one value", "The mix differs.")
     _total_needed(reader, target, fixed)
 
 

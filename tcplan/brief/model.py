@@ -18,11 +18,14 @@ Place: TypeAlias = Literal["series", "parallel"]
 Sides: TypeAlias = Literal["both", "up", "down"]
 Nature: TypeAlias = Literal["systematic", "random"]
 RatioKind: TypeAlias = Literal["divider", "gain"]
+TrimMethod: TypeAlias = Literal["one-temperature", "two-temperatures", "cut"]
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Target:
     """The wanted total [ohm]: a number, at most a number, or free (both None).
+
+    ``also`` are further values of the same mix: the plan is for ``ohms``, its parts are for all of them.
 
     How well it is met at the reference, as fractions: ``tolerance`` is that of the value as bought or
     made; ``trim_step`` one step of a trim, of which half remains. At most one of the two.
@@ -32,6 +35,7 @@ class Target:
     at_most: float | None = None
     tolerance: float | None = None
     trim_step: float | None = None
+    also: tuple[float, ...] = ()
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -89,6 +93,37 @@ class Allowance:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Operating:
+    """What the resistor works at: a voltage [V] or a current [A], one of the two, and what heats it.
+
+    ``thermal_resistance`` [K/W] is common to the whole resistor; ``leg_thermal_resistance`` holds those of
+    each leg of a material, by its name, and the others do not heat. At most one of the two; with neither
+    nothing heats.
+    """
+
+    voltage: float | None = None
+    current: float | None = None
+    thermal_resistance: float | None = None
+    leg_thermal_resistance: tuple[tuple[str, float], ...] = ()
+
+    @property
+    def heats(self) -> bool:
+        """Whether a thermal resistance is stated."""
+        return self.thermal_resistance is not None or bool(self.leg_thermal_resistance)
+
+    def to_dict(self) -> dict[str, Any]:
+        """Return JSON data, units in the names."""
+        return {
+            "voltage_V": self.voltage,
+            "current_A": self.current,
+            "thermal_resistance_K_per_W": self.thermal_resistance,
+            "leg_thermal_resistance_K_per_W": [
+                {"material": name, "K_per_W": size} for name, size in self.leg_thermal_resistance
+            ],
+        }
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Ratio:
     """Two resistors whose ratio counts: second/(first + second) of a divider, first/second of a gain.
 
@@ -112,6 +147,35 @@ class Ratio:
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Trim:
+    """How the value is set after the part is made.
+
+    ``step`` is the largest step of the whole value, ``largest_cut`` how much of the value of a leg a cut
+    may add; both fractions. ``switch_resistance`` [ohm] and ``switch_tc1`` [1/K] are those of the switch
+    of one bit when it is on. ``temperatures`` [K] are those of two measurements, lower one first.
+    """
+
+    method: TrimMethod
+    step: float = 1e-3
+    switch_resistance: float = 0.0
+    switch_tc1: float = 0.0
+    temperatures: tuple[float, float] | None = None
+    largest_cut: float = 0.5
+
+    def to_dict(self) -> dict[str, Any]:
+        """Return JSON data, units in the names."""
+        both = self.temperatures
+        return {
+            "method": self.method,
+            "step_ppm": self.step * 1e6,
+            "switch_ohms": self.switch_resistance,
+            "switch_tc1_ppm_per_K": self.switch_tc1 * 1e6,
+            "temperatures_degC": None if both is None else [to_celsius(t) for t in both],
+            "largest_cut": self.largest_cut,
+        }
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Brief:
     """A checked request. ``materials`` are those in use, sorted by name."""
 
@@ -127,6 +191,8 @@ class Brief:
     process: Process = field(default_factory=Process)
     allowances: tuple[Allowance, ...] = ()
     ratio: Ratio | None = None
+    trim: Trim | None = None
+    operating: Operating | None = None
 
     @property
     def by_name(self) -> dict[str, Material]:
@@ -141,6 +207,7 @@ class Brief:
             "sha256": self.sha256,
             "resistor": {
                 "value_ohms": self.target.ohms,
+                "also_ohms": list(self.target.also),
                 "at_most_ohms": self.target.at_most,
                 "tolerance": self.target.tolerance,
                 "trim_step": self.target.trim_step,
@@ -167,6 +234,8 @@ class Brief:
             "given": network_text(self.given) if self.given else None,
             "process": self.process.to_dict(),
             "allowances": [allowance.to_dict() for allowance in self.allowances],
+            "operating": None if self.operating is None else self.operating.to_dict(),
+            "trim": None if self.trim is None else self.trim.to_dict(),
             **({"ratio": self.ratio.to_dict()} if self.ratio else {}),
         }
 

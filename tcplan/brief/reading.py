@@ -15,9 +15,11 @@ from tcplan.brief.allowance_tables import read_allowances
 from tcplan.brief.goal_table import read_goal
 from tcplan.brief.members import check_agreement, read_fixed, read_given, read_rules
 from tcplan.brief.model import Brief, Fixed, Ratio, SearchRules, Target
+from tcplan.brief.operating_table import read_operating
 from tcplan.brief.process_tables import read_process
 from tcplan.brief.ratio_table import check_tracking, read_ratio, together
 from tcplan.brief.shape import shape_mistakes
+from tcplan.brief.trim_table import read_trim
 from tcplan.errors import InputError
 from tcplan.material.files import MaterialFile, parse_materials, published, read_material_file
 from tcplan.material.model import Material
@@ -73,6 +75,8 @@ def parse_brief(text: str, name: str, folder: Path) -> Brief:
     shared = (*read.files, reader)
     process = read_process(shared, materials, {m.name for m in used}, all_read=read.complete)
     allowances = read_allowances(reader, over)
+    trim = read_trim(reader, over)
+    operating = read_operating(reader, materials)
     if over is not None:
         _validity(reader, used, over)
         _areas(reader, used, over)
@@ -93,6 +97,8 @@ def parse_brief(text: str, name: str, folder: Path) -> Brief:
         process=process,
         allowances=allowances,
         ratio=ratio,
+        trim=trim,
+        operating=operating,
     )
 
 
@@ -165,10 +171,27 @@ def _target(reader: TableReader) -> Target:
     if table.has("tolerance") and table.has("trim_step"):
         todo = "What is trimmed keeps no more than half a step of its tolerance."
         table.refuse("trim_step", "tolerance and trim_step together", "one of the two", todo)
-    errors = {key: _part_of_one(table, key) for key in ("tolerance", "trim_step")}
+    target = Target(tolerance=_part_of_one(table, "tolerance"), trim_step=_part_of_one(table, "trim_step"))
     if table.text("value") == "free":
-        return Target(**errors)
-    return Target(ohms=table.above_zero("value", "ohm"), at_most=table.above_zero("at_most", "ohm"), **errors)
+        return target
+    if isinstance(table.table.get("value"), list):
+        first, *also = _values(table)
+        return replace(target, ohms=first, also=tuple(also))
+    return replace(target, ohms=table.above_zero("value", "ohm"), at_most=table.above_zero("at_most", "ohm"))
+
+
+def _values(table: TableReader) -> tuple[float, ...]:
+    """Return the values of a list, each once and above zero; 1 ohm when one is wrong."""
+    texts = table.texts("value")
+    found = tuple(ohms for text in texts if (ohms := table.parsed(text, "ohm", "value")) is not None)
+    if not found or len(found) < len(table.table["value"]):
+        return (1.0,)
+    if min(found) <= 0.0:
+        table.refuse("value", texts[found.index(min(found))], "values above zero")
+        return (1.0,)
+    if len({f"{ohms:.6g}" for ohms in found}) < len(found):  # nearer ones have one name in 6 digits
+        table.refuse("value", "a value twice", "values that differ in their first 6 digits")
+    return found
 
 
 def _part_of_one(table: TableReader, key: str) -> float | None:

@@ -13,6 +13,7 @@ from tcplan.toml_input import shape_problems
 
 MOST_ROWS = 200
 MOST_ALLOWANCES = 50
+MOST_VALUES = 16
 
 
 class _Shape(BaseModel):
@@ -28,7 +29,7 @@ _Pair = Annotated[list[str], Field(min_length=2, max_length=2)]
 
 
 class _ResistorShape(_Shape):
-    value: str | None = _text("18 kohm")
+    value: str | Annotated[list[str], Field(min_length=1, max_length=MOST_VALUES)] | None = _text("18 kohm")
     at_most: str | None = _text("3 kohm")
     tolerance: str | None = _text("1 %")
     trim_step: str | None = _text("0.1 %")
@@ -88,6 +89,22 @@ class _RatioShape(_Shape):
     tracking: str | None = _text("3 ppm/K")
 
 
+class _TrimShape(_Shape):
+    method: Literal["one-temperature", "two-temperatures", "cut"]
+    step: str | None = _text("0.05 %")
+    switch_resistance: str | None = _text("150 ohm")
+    switch_tc1: str | None = _text("3500 ppm/K")
+    temperatures: _Pair | None = Field(default=None, examples=['["25 degC", "125 degC"]'])
+    largest_cut: str | None = _text("30 %")
+
+
+class _OperatingShape(_Shape):
+    voltage: str | None = _text("5 V")
+    current: str | None = _text("2 mA")
+    thermal_resistance: str | None = _text("150 K/W")
+    leg_thermal_resistance: dict[str, str] | None = None
+
+
 class _AllowanceShape(_Shape):
     name: str = Field(examples=['"ageing"'])
     size: str = Field(examples=['"200 ppm"'])
@@ -108,6 +125,8 @@ class _BriefShape(_Shape):
     fixed: Annotated[list[_FixedShape], Field(max_length=16)] | None = None
     given: _GivenShape | None = None
     ratio: _RatioShape | None = None
+    trim: _TrimShape | None = None
+    operating: _OperatingShape | None = None
     allowance: Annotated[list[_AllowanceShape], Field(max_length=MOST_ALLOWANCES)] | None = None
     # What the materials share has one shape here and in materials files: `process_mistakes` checks it.
     correlation: Any = None

@@ -1,4 +1,4 @@
-"""What moves the value beside the network's own materials: ends, mismatch, and stated allowances."""
+"""What moves the value beside the network's own materials: ends, mismatch, power, stated allowances."""
 
 from __future__ import annotations
 
@@ -13,9 +13,11 @@ from tcplan.budget.model import Nature
 from tcplan.draws.sampling import leg_mismatch
 from tcplan.material.model import Material
 from tcplan.network import Leg, Network, leg_shares, legs, resistance, shares, used_materials, value
+from tcplan.operating import OperatingPoint, operating_point
 
 SIGMAS = 3.0
 ENDS, MISMATCH = "ends (not in the plan)", "mismatch"
+HEATING, VOLTAGE = "self-heating", "voltage coefficient"
 NO_FILMS = "no films"
 
 
@@ -33,7 +35,14 @@ class Extra:
 def extras(network: Network, case: Case, T: FloatArray) -> tuple[Extra, ...]:
     """Return the rows beside the spreads of the materials, at temperatures T [K]."""
     stated = tuple(allowance_row(a, T, case.over.reference) for a in case.allowances)
-    return (end_row(network, case, T), mismatch_row(network, case, T), *stated)
+    # As made, the ends are leaves of the network, so in its rows already.
+    ends = (end_row(network, case, T),) if case.elements is None else ()
+    return (
+        *ends,
+        mismatch_row(network, case, T),
+        *operating_rows(network, case, T),
+        *stated,
+    )
 
 
 def allowance_row(allowance: Allowance, T: FloatArray, reference: float) -> Extra:
@@ -124,3 +133,42 @@ def share_changes(network: Network, case: Case, T: FloatArray) -> tuple[FloatArr
     ratio = resistance(network, ratios) / value(network)
     pairs = zip(leg_shares(network, ratios), shares(network), strict=True)
     return tuple(np.asarray((at - own) * ratio) for at, own in pairs)
+
+
+# --- the operating point ------------------------------------------------------------------------------
+
+
+def operating_rows(network: Network, case: Case, T: FloatArray) -> tuple[Extra, ...]:
+    """Return what power adds to the drift of the nominal device; no rows without an operating point.
+
+    First by how much heating alone moves R from the cold one at each ambient temperature, then what the
+    voltage coefficients add to that: together they are the whole change, over the cold R at the reference.
+    """
+    operating = case.operating
+    if operating is None:
+        return ()
+    elements, reference = case.made_of(network), case.over.reference
+    hot = operating_point(network, case.materials, elements, operating, reference, T, by_heat_only=True)
+    whole = operating_point(network, case.materials, elements, operating, reference, T)
+    own, names = value(network), set(used_materials(network))
+    known = not whole.no_length and set(whole.not_stated) < names
+    heated = (hot.ohms - hot.cold_ohms) / own if operating.heats else None
+    stretched = (whole.ohms - hot.ohms) / own if known else None
+    return (
+        Extra(HEATING, "systematic", heated, heated, _heat_note(whole, heats=operating.heats)),
+        Extra(VOLTAGE, "systematic", stretched, stretched, _voltage_note(whole, known=known)),
+    )
+
+
+def _heat_note(point: OperatingPoint, *, heats: bool) -> str:
+    if not heats:
+        return "thermal_resistance not stated"
+    still = f"; not heated: {', '.join(point.not_heated)}" if point.not_heated else ""
+    return f"of the nominal device; the value at the reference is that without power{still}"
+
+
+def _voltage_note(point: OperatingPoint, *, known: bool) -> str:
+    law = "R = V/I, R(V) = R(0) (1 + k |V|), V across one unit" if known else ""
+    unknown = f"length of a unit not known: {', '.join(point.no_length)}" if point.no_length else ""
+    missing = f"voltage_coefficient not stated: {', '.join(point.not_stated)}" if point.not_stated else ""
+    return "; ".join(note for note in (law, unknown, missing) if note)

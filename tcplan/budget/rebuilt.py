@@ -10,7 +10,9 @@ from collections.abc import Callable, Mapping
 from dataclasses import dataclass
 from typing import Any, TypeVar, get_args
 
-from tcplan.brief.model import Allowance, Nature, Sides
+from tcplan.brief.model import Allowance, Nature, Operating, Sides, Trim
+from tcplan.brief.operating_table import operating_from_dict
+from tcplan.brief.trim_table import trim_from_dict
 from tcplan.errors import InputError, Problem
 from tcplan.goal import KINDS, Goal, Judge, Limit, Window
 from tcplan.material.law import law_from_parameters
@@ -27,7 +29,7 @@ T = TypeVar("T")
 class Asked:
     """What a plan was made for; ``tolerance`` and ``trim_step`` are fractions.
 
-    ``fixed`` holds material and value [ohm] of each given member, ``stock_values`` the least and greatest
+    ``also`` are the further values [ohm] of the same mix. ``fixed`` holds material and value [ohm] of each given member, ``stock_values`` the least and greatest
     value [ohm] of a bought part.
     """
 
@@ -39,6 +41,9 @@ class Asked:
     trim_step: float | None
     fixed: tuple[tuple[str, float], ...]
     stock_values: tuple[float, float]
+    also: tuple[float, ...] = ()
+    trim: Trim | None = None
+    operating: Operating | None = None
 
 
 def asked_of(plan: Plan) -> Asked:
@@ -66,6 +71,12 @@ def asked_of(plan: Plan) -> Asked:
         stock_values=_read(
             "brief.search.stock_values_ohms", lambda: _two(brief["search"]["stock_values_ohms"])
         ),
+        also=_read(
+            "brief.resistor.also_ohms", lambda: tuple(map(_above_zero, brief["resistor"]["also_ohms"]))
+        ),
+        # A plan made before there was a trim has no such entry.
+        trim=_read("brief.trim", lambda: trim_from_dict(brief.get("trim"))),
+        operating=_read("brief.operating", lambda: operating_from_dict(brief.get("operating"))),
     )
 
 

@@ -42,6 +42,7 @@ Examples:
     "--range", "ranges", metavar="RANGE", multiple=True, help="A named range, LOW:HIGH in degC, or all."
 )
 @click.option("--materials", metavar="FILE", help="New data for the plan's materials: old, new, change.")
+@click.option("--as-made", is_flag=True, help="Of the parts of the plan, not of its options.")
 @click.option("--all", "every", is_flag=True, help="Every option of the plan, not only the chosen one.")
 @click.option("--draws", type=int, default=20_000, show_default=True, help="Lots to draw; 0 for none.")
 @click.option("--seed", type=click.IntRange(0), default=1, show_default=True, help="Of the draws.")
@@ -51,6 +52,7 @@ def command(
     file: str,
     ranges: tuple[str, ...],
     materials: str | None,
+    as_made: bool,
     every: bool,
     draws: int,
     seed: int,
@@ -65,11 +67,17 @@ def command(
     Exit code 0: the limit is met in all that is shown, or none was given. 1: not met, not judged, or
     a range that the data do not cover.
     """
-    from tcplan.workflow.budgeting import budget_of, plan_to_budget
+    from tcplan.errors import InputError, Problem
+    from tcplan.workflow.budgeting import budget_of, plan_as_made, plan_to_budget
     from tcplan.workflow.conversions import materials_of
 
     if file.casefold().endswith(".toml") and (brief := _ratio_brief(file)) is not None:
-        return _ratio(brief, ranges, only_ranges=not (materials or every or precision), as_json=as_json)
+        return _ratio(
+            brief, ranges, only_ranges=not (materials or as_made or every or precision), as_json=as_json
+        )
+    if as_made and (materials is not None or every):
+        found = "--as-made with --materials or --all"
+        raise InputError(Problem(where="command line", found=found, expected="--as-made alone"))
     asked = _draws(draws, seed, precision)
     new = None if materials is None else materials_of(materials)
     content = sys.stdin.buffer.read(MOST_PLAN_BYTES + 1) if file == STDIN else None
@@ -80,8 +88,9 @@ def command(
         ranges=ranges,
         materials=new,
         draws=asked,
+        as_made=as_made,
     )
-    _show(plan, accounts, as_json=as_json)
+    _show(plan_as_made(plan) if as_made else plan, accounts, as_json=as_json)
     return _code(accounts)
 
 
@@ -102,7 +111,7 @@ def _ratio(brief: Brief, ranges: tuple[str, ...], *, only_ranges: bool, as_json:
     from tcplan.workflow.budgeting import ratio_budgets
 
     if not only_ranges:
-        found = "--materials, --all or --precision with the brief of a ratio"
+        found = "--materials, --as-made, --all or --precision with the brief of a ratio"
         raise InputError(Problem(where="command line", found=found, expected="--range and --json only"))
     checks = ratio_budgets(brief, ranges)
     if as_json:

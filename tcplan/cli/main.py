@@ -13,7 +13,7 @@ from tcplan import __version__
 from tcplan.cli.exits import exit_code
 from tcplan.names import nearest_name
 
-COMMANDS = ("plan", "budget", "parts", "materials", "ranges", "coefficients", "new")
+COMMANDS = ("plan", "budget", "parts", "fit", "compare", "materials", "ranges", "coefficients", "new")
 
 START = """\
 \b

@@ -20,6 +20,7 @@ Examples:
   tcplan materials
   tcplan materials films.toml
   tcplan materials published:metals --json
+  tcplan materials process.lib --valid "-40 degC" "150 degC" --block
 """
 
 
@@ -27,22 +28,40 @@ Examples:
     "materials", short_help="Show the materials of a file, or the published sets.", epilog=EXAMPLES
 )
 @click.argument("file", required=False)
+@click.option(
+    "--lines", is_flag=True, help="Read FILE as parameter lines (SPICE text form), whatever its name."
+)
+@click.option("--block", is_flag=True, help="Print parameter lines as a materials file (TOML).")
+@click.option(
+    "--valid",
+    nargs=2,
+    metavar="LOW HIGH",
+    help="Range of the laws of parameter lines; -40 to 125 degC is assumed.",
+)
 @click.option("--json", "as_json", is_flag=True, help="Print JSON.")
-def command(file: str | None, as_json: bool) -> None:
+def command(file: str | None, lines: bool, block: bool, valid: tuple[str, str] | None, as_json: bool) -> None:
     """Show the materials of FILE, or of a set that comes with tcplan (published:NAME).
 
-    Without FILE the published sets are listed.
+    Without FILE the published sets are listed. A file named .lib, .mod, .cir, .sp or .spi holds parameter
+    lines: resistor lines and models in the common SPICE text form. What is not understood is listed.
     """
+    from tcplan.workflow.conversions import PARAMETER_SUFFIXES, materials_of
+
+    if lines or (file is not None and file.lower().endswith(PARAMETER_SUFFIXES)):
+        from tcplan.cli.parameter_screen import show_lines
+
+        show_lines(file, valid, material_text, block=block, as_json=as_json)
+        return
+    if block or valid is not None:
+        raise click.UsageError("--block and --valid are for parameter lines; add --lines.")
     if file is None:
         _published(as_json=as_json)
         return
-    from tcplan.workflow.conversions import materials_of
-
     found = materials_of(file)
     if as_json:
         say_json({name: material.to_dict() for name, material in found.items()})
     else:
-        say("\n\n".join(_block(material) for material in found.values()))
+        say("\n\n".join(material_text(material) for material in found.values()))
 
 
 def _published(*, as_json: bool) -> None:
@@ -56,7 +75,7 @@ def _published(*, as_json: bool) -> None:
     say("\n".join(lines))
 
 
-def _block(material: Material) -> str:
+def material_text(material: Material) -> str:
     """Return what is known of a material, a label a fact."""
     from tcplan.spec.rows import material_row
 

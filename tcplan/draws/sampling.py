@@ -31,7 +31,7 @@ from tcplan.draws.columns import Column, Slot, Term, columns_of
 from tcplan.draws.products import product
 from tcplan.material.model import Material
 from tcplan.material.spread import SIGMAS_PER_LIMIT, Spread
-from tcplan.network import Network, legs
+from tcplan.network import Leg, Network, legs
 from tcplan.process import Parameter, Process
 
 BLOCK = 8192
@@ -228,11 +228,12 @@ def leg_mismatch(
     ----------
     Pelgrom, Duinmaijer, Welbers, IEEE J. Solid-State Circuits 24 (1989) 1433.
     """
-    return tuple(_own_mismatch(materials[leg.material], leg.ohms, reference) for leg in legs(network))
+    return tuple(_own_mismatch(materials[leg.material], leg, reference) for leg in legs(network))
 
 
-def _own_mismatch(material: Material, ohms: float, reference: float) -> float | None:
-    squares, width, film = material.squares(ohms, reference), material.width, material.film
+def _own_mismatch(material: Material, leg: Leg, reference: float) -> float | None:
+    squares = material.squares(leg.ohms * leg.strings, reference)  # of one of its strings
+    width, film = material.width, material.film
     if squares is None or width is None or film is None or film.matching is None:
         return None
-    return float(film.matching / np.sqrt(2.0) / (width * np.sqrt(squares)))
+    return float(film.matching / np.sqrt(2.0) / (width * np.sqrt(squares * leg.strings)))

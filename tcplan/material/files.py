@@ -27,6 +27,7 @@ and its law in exactly one of these forms::
 in films also ``end_resistance``, ``end_tc1`` and ``width_bias``, in parts ``tcr`` in place of the TCs.
 ``shape`` says how draws take them: see `tcplan.material.spread.Spread`.
 ``[material.NAME.film]`` holds what is needed to make a film: see `tcplan.material.model.Film`.
+``voltage_coefficient`` is "20 ppm/V" of one unit, or of a film "30 ppm*um/V" times its length.
 ``extrapolate_to = ["-55 degC", "175 degC"]`` with the half-widths ``tc1``, ``tc2`` that it adds, in
 ``[material.NAME.extrapolation]``, allows a law outside ``valid``.
 
@@ -40,6 +41,7 @@ Long, since the keys of a materials file, their units and their mistakes are tol
 
 from __future__ import annotations
 
+import re
 from collections.abc import Mapping
 from dataclasses import dataclass, replace
 from importlib import resources
@@ -51,7 +53,16 @@ from pydantic import BaseModel, ConfigDict, Field, ValidationError
 from tcplan.errors import InputError, InternalError, Problem
 from tcplan.material.file_laws import MAX_POINTS, read_law, read_temperature
 from tcplan.material.law import Law, check_positive
-from tcplan.material.model import NAME, Film, Interval, Kind, Material, interval_problem, text_problems
+from tcplan.material.model import (
+    NAME,
+    Film,
+    Interval,
+    Kind,
+    Material,
+    VoltageCoefficient,
+    interval_problem,
+    text_problems,
+)
 from tcplan.material.spread import Meaning, Shape, Spread
 from tcplan.names import nearest_name, shown
 from tcplan.table_reader import TableReader
@@ -284,6 +295,7 @@ class _FilmShape(_Shape):
     end_tc1: str | None = _text("-900 ppm/K")
     matching: str | None = _text("1.2 %*um")
     spacing: str | None = _text("0.6 um")
+    end_length: str | None = _text("0.8 um")
     grid: str | None = _text("5 nm")
     max_current: str | None = _text("0.6 mA/um")
     etch: str | None = _text("poly")
@@ -315,6 +327,7 @@ class _MaterialShape(_Shape):
     ohm_per_square: str | None = _text("320 ohm")
     ohm_per_metre: str | None = _text("8.5 ohm/m")
     series: str | None = _text("E96")
+    voltage_coefficient: str | None = _text("20 ppm/V")
     spread: _SpreadShape | None = None
     film: _FilmShape | None = None
     extrapolate_to: _Pair | None = None
@@ -392,6 +405,7 @@ def _values(reader: TableReader, name: str) -> dict[str, Any]:
         "film": _film(reader),
         "extrapolated": _interval(reader, "extrapolate_to"),
         "extrapolation": _extrapolation(reader),
+        "voltage_coefficient": _voltage_coefficient(reader),
     }
 
 
@@ -484,6 +498,17 @@ def _extrapolation(reader: TableReader) -> Spread | None:
     return reader.guarded(lambda: Spread(meaning="limits", tc1=tc1, tc2=tc2))
 
 
+def _voltage_coefficient(reader: TableReader) -> VoltageCoefficient | None:
+    """Return the voltage coefficient: per volt, or with a length in its unit times the length."""
+    text = reader.text("voltage_coefficient") or ""
+    # ppm holds an m of its own, and that of mV is no length.
+    if re.search(r"m(?!V)|\binch", text.replace("ppm", "")):
+        size = reader.quantity("voltage_coefficient", "m/V")
+        return None if size is None else VoltageCoefficient(metre_per_volt=size)
+    size = reader.quantity("voltage_coefficient", "1/V")
+    return None if size is None else VoltageCoefficient(per_volt=size)
+
+
 _FILM_UNITS = {
     "min_width": "m",
     "preferred_width": "m",
@@ -492,6 +517,7 @@ _FILM_UNITS = {
     "end_tc1": "1/K",
     "matching": "1*m",
     "spacing": "m",
+    "end_length": "m",
     "grid": "m",
     "max_current": "A/m",
 }

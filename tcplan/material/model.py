@@ -20,7 +20,7 @@ from tcplan.material.law import Law, Table, check_positive, law_from_parameters
 from tcplan.material.spread import Spread, spread_from_dict
 from tcplan.names import nearest_name, shown
 from tcplan.preferred import SERIES
-from tcplan.units import format_celsius
+from tcplan.units import format_celsius, format_si
 
 Kind = Literal["film", "wire", "part", "plain"]
 Interval = tuple[float, float]
@@ -54,6 +54,8 @@ class Film:
         sigma(dR/R) of a pair times sqrt(W L) [m].
     spacing : float, optional
         Between two bodies [m].
+    end_length : float, optional
+        Of one end, beyond the inner edge [m].
     grid : float, optional
         Step of the drawn dimensions [m].
     max_current : float, optional
@@ -69,6 +71,7 @@ class Film:
     end_tc1: float | None = None
     matching: float | None = None
     spacing: float | None = None
+    end_length: float | None = None
     grid: float | None = None
     max_current: float | None = None
     etch: str | None = None
@@ -76,6 +79,37 @@ class Film:
     def __post_init__(self) -> None:
         if problems := tuple(_film_problems(self)):
             raise InputError(problems)
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class VoltageCoefficient:
+    """k in R = R(0) (1 + k |V|), V across one unit and R = V/I; one of the two.
+
+    Parameters
+    ----------
+    per_volt : float, optional
+        k [1/V] of any unit: one resistor, one unit cell or one bought part.
+    metre_per_volt : float, optional
+        k times the length of the unit [m/V]; films only.
+    """
+
+    per_volt: float | None = None
+    metre_per_volt: float | None = None
+
+    def __post_init__(self) -> None:
+        given = [size for size in (self.per_volt, self.metre_per_volt) if size is not None]
+        if len(given) != 1 or not math.isfinite(given[0]):
+            raise InputError(
+                Problem(
+                    where="voltage_coefficient",
+                    found=" and ".join(f"{size:g}" for size in given) or "nothing",
+                    expected="one finite value, per volt or length per volt",
+                )
+            )
+
+    def to_dict(self) -> dict[str, float | None]:
+        """Return JSON data, units in the names."""
+        return {"per_V": self.per_volt, "m_per_V": self.metre_per_volt}
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -108,6 +142,8 @@ class Material:
         Wider range [K] in which the law may be used, with ``extrapolation`` added to the spread.
     extrapolation : Spread, optional
         The added half-widths, as limits; required with ``extrapolated``.
+    voltage_coefficient : VoltageCoefficient, optional
+        ``None`` is "not stated".
 
     Raises
     ------
@@ -128,6 +164,7 @@ class Material:
     film: Film | None = None
     extrapolated: Interval | None = None
     extrapolation: Spread | None = None
+    voltage_coefficient: VoltageCoefficient | None = None
 
     def __post_init__(self) -> None:
         if problems := (*text_problems(self.name, self.label, self.source), *_data_problems(self)):
@@ -235,6 +272,9 @@ class Material:
             "film": None if self.film is None else _film_to_dict(self.film),
             "extrapolated_K": None if self.extrapolated is None else list(self.extrapolated),
             "extrapolation": None if self.extrapolation is None else self.extrapolation.to_dict(),
+            "voltage_coefficient": None
+            if self.voltage_coefficient is None
+            else self.voltage_coefficient.to_dict(),
         }
 
     def _at(self, reference: float) -> float:
@@ -319,6 +359,14 @@ def _data_problems(material: Material) -> Iterator[Problem]:
             found=f"the table [film] in a material without ohm_per_square (a {material.kind})",
             expected="[film] in films only",
             todo="Add ohm_per_square, or remove the table.",
+        )
+    coefficient = material.voltage_coefficient
+    if coefficient is not None and coefficient.metre_per_volt is not None and material.kind != "film":
+        yield Problem(
+            where=f"{where}.voltage_coefficient",
+            found=f"a coefficient times a length, of a {material.kind}",
+            expected='one per volt, such as "20 ppm/V"',
+            todo="A coefficient per length is for films.",
         )
     yield from _spread_problems(material, where)
     yield from _extrapolation_problems(material, where)
@@ -433,14 +481,14 @@ def _film_problems(film: Film) -> Iterator[Problem]:
     if film.preferred_width is not None and film.preferred_width < film.min_width:
         yield Problem(
             where="film.preferred_width",
-            found=f"{film.preferred_width:g} m, below min_width",
-            expected=f"at least min_width, {film.min_width:g} m",
+            found=f"{format_si(film.preferred_width, 'm')}, below min_width",
+            expected=f"at least min_width, {format_si(film.min_width, 'm')}",
         )
     if film.width_bias is not None and film.width_bias >= film.min_width:
         yield Problem(
             where="film.width_bias",
-            found=f"{film.width_bias:g} m, which leaves no effective width",
-            expected=f"less than min_width, {film.min_width:g} m",
+            found=f"{format_si(film.width_bias, 'm')}, which leaves no effective width",
+            expected=f"less than min_width, {format_si(film.min_width, 'm')}",
         )
 
 
@@ -456,6 +504,7 @@ _FILM_KEYS = {
     "end_tc1": "end_tc1_per_K",
     "matching": "matching_m",
     "spacing": "spacing_m",
+    "end_length": "end_length_m",
     "grid": "grid_m",
     "max_current": "max_current_A_per_m",
     "etch": "etch",
@@ -482,7 +531,15 @@ def _from_dict(data: Mapping[str, Any]) -> Material:
         film=None if film is None else Film(**{name: film[key] for name, key in _FILM_KEYS.items()}),
         extrapolated=None if data["extrapolated_K"] is None else _interval(data["extrapolated_K"]),
         extrapolation=None if extrapolation is None else spread_from_dict(extrapolation),
+        voltage_coefficient=_coefficient(data.get("voltage_coefficient")),  # older plans have none
     )
+
+
+def _coefficient(data: Mapping[str, Any] | None) -> VoltageCoefficient | None:
+    if data is None:
+        return None
+    sizes = [None if data[key] is None else float(data[key]) for key in ("per_V", "m_per_V")]
+    return VoltageCoefficient(per_volt=sizes[0], metre_per_volt=sizes[1])
 
 
 def _interval(values: list[float]) -> Interval:

@@ -2,8 +2,9 @@
 
 from __future__ import annotations
 
-from collections.abc import Sequence
+from collections.abc import Mapping, Sequence
 from itertools import takewhile
+from math import ceil, floor, log10
 
 from tcplan.made import Refusal
 from tcplan.parts.counts import Point
@@ -11,6 +12,9 @@ from tcplan.parts.film_task import FilmTask
 from tcplan.units import format_ohms, format_si, round_outward
 
 _LARGEST_ERROR = 0.9
+_SLACK = 1e-9  # relative, of the arithmetic
+_BISECTED = 1e-5  # decades
+_CURRENT_DIGITS = 6  # finer than a step of the grid in any usual width: the same width is found again
 
 
 def refusals(task: FilmTask, too_large: Sequence[Point]) -> tuple[Refusal, ...]:
@@ -24,7 +28,8 @@ def refusals(task: FilmTask, too_large: Sequence[Point]) -> tuple[Refusal, ...]:
     """
     if too_large:
         return (_area(task, too_large),)
-    return _grid(task) or _reach(task) or _ratio(task) or (_error(task),)
+    free = task.with_currents({})
+    return _grid(free) or _reach(free) or _ratio(free) or _mismatch(free) or _current(task) or (_error(free),)
 
 
 def _area(task: FilmTask, points: Sequence[Point]) -> Refusal:
@@ -62,13 +67,14 @@ def _reach(task: FilmTask) -> tuple[Refusal, ...]:
             smallest.append(cell.per_length * low * task.grid + cell.ends)
             largest.append(cell.per_length * high * task.grid + cell.ends)
     count, error = task.rules.most_count, task.rules.error
+    digits = max(4, 1 + ceil(-log10(error)))  # so that the nearest value, as printed, is within the error
     least, most = min(smallest) / count, max(largest) * count
     found: list[Refusal] = []
     for name, ohms in zip(task.names, task.wanted, strict=True):
         if least > ohms * (1.0 + error):
-            nearest = f"{format_ohms(least)}: {count} of the shortest unit in parallel"
+            nearest = f"{format_ohms(least, digits)}: {count} of the shortest unit in parallel"
         elif most < ohms * (1.0 - error):
-            nearest = f"{format_ohms(most)}: {count} of the longest unit in series"
+            nearest = f"{format_ohms(most, digits)}: {count} of the longest unit in series"
         else:
             continue
         found.append(Refusal(leg=name, rule="count", found=format_ohms(ohms), nearest=nearest))
@@ -89,6 +95,94 @@ def _ratio(task: FilmTask) -> tuple[Refusal, ...]:
             nearest=f"a ratio of at most {most}: {format_ohms(large / most)} for the smallest",
         ),
     )
+
+
+def _mismatch(task: FilmTask) -> tuple[Refusal, ...]:
+    """Return that no unit within the largest width has the mismatch, and the least one that some has."""
+    wanted = task.rules.mismatch
+    if wanted is None or _can(task) or not _can(task.with_mismatch(None)):
+        return ()
+    low, high = log10(wanted), 0.0
+    while high - low > _BISECTED:
+        middle = 0.5 * (low + high)
+        low, high = (low, middle) if _can(task.with_mismatch(10.0**middle)) else (middle, high)
+    width, count = f"{format_si(task.widest, 'm')} wide", task.rules.most_count
+    return (
+        Refusal(
+            leg=task.names[task.wanted.index(min(task.wanted))],
+            rule="mismatch",
+            found=f"a mismatch of {_percent(100.0 * wanted)} with units up to {width}, counts up to {count}",
+            nearest=f"a mismatch of {_percent(round_outward(100.0 * 10.0**high, 4))}",
+        ),
+    )
+
+
+def _current(task: FilmTask) -> tuple[Refusal, ...]:
+    """Return the legs whose current nothing carries, with the largest one that something does.
+
+    Leg by leg: what is carried beside it are the currents of the legs before, as far as they can be.
+    """
+    if not _can(task.with_currents({})):
+        return ()
+    held: dict[str, float] = {}
+    found: list[Refusal] = []
+    for name, current in task.currents.items():
+        held[name] = current
+        if not _can(task.with_currents(held)):
+            width, strings = _widest_together(task, held, name)
+            held[name] = _rounded_down(width * strings * (task.film.max_current or 0.0))
+            found.append(
+                _too_much(name, current, held[name], f"{_strings(strings)}, {format_si(width, 'm')} wide")
+            )
+    return tuple(found)
+
+
+def _too_much(name: str, current: float, most: float, by: str) -> Refusal:
+    return Refusal(
+        leg=name,
+        rule="current",
+        found=f"{format_si(current, 'A')} through leg {name}",
+        nearest=f"{format_si(most, 'A', _CURRENT_DIGITS)}: {by}",
+    )
+
+
+def _can(task: FilmTask) -> bool:
+    return any(task.can(width) for width in sorted(task.widths(), reverse=True))
+
+
+def _widest_together(task: FilmTask, held: Mapping[str, float], name: str) -> tuple[float, int]:
+    """Return the width [m] and the strings of a leg that carry most beside the other currents [A]."""
+    others = task.with_currents({key: value for key, value in held.items() if key != name})
+    best_width, best_strings = 0.0, 0
+    for width in sorted({*task.widths(), *others.widths()}, reverse=True):
+        enough = floor(best_width * best_strings / width * (1.0 + _SLACK))
+        strings = _most_strings(task, held, name, width, enough)
+        if strings > enough:
+            best_width, best_strings = width, strings
+    return best_width, best_strings
+
+
+def _most_strings(task: FilmTask, held: Mapping[str, float], name: str, width: float, enough: int) -> int:
+    """Return the most strings that a leg can have at a width [m]; ``enough`` where no more than that."""
+    of_string = width * (task.film.max_current or 0.0)
+    low, high = enough, task.rules.most_count
+    middle = low + 1  # no more than enough is the usual answer
+    while low < high:
+        can = task.with_currents({**held, name: middle * of_string}).can(width)
+        if not can and middle == enough + 1:
+            return enough
+        low, high = (middle, high) if can else (low, middle - 1)
+        middle = (low + high + 1) // 2
+    return low
+
+
+def _rounded_down(current: float) -> float:
+    scale = 10.0 ** (_CURRENT_DIGITS - 1 - floor(log10(current)))
+    return floor(current * scale * (1.0 + _SLACK)) / scale
+
+
+def _strings(count: int) -> str:
+    return "1 string" if count == 1 else f"{count} strings in parallel"
 
 
 def _error(task: FilmTask) -> Refusal:

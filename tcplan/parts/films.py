@@ -1,8 +1,8 @@
 """Film parts: one unit cell for all legs of a film, and how many units each leg takes.
 
 The unit is R = ohm_per_square L / (W - width_bias) + 2 end_resistance / W. W is the drawn width, across the
-current; L is along it, between the inner edges of the two ends. Its area is L (W + spacing): as that of
-`Material.area` where no width bias is stated, without ends and dummies.
+current; L is along it, between the inner edges of the two ends. Its area is that of its place in an array,
+(L + 2 end_length + spacing) (W + spacing), with what is not stated 0; dummies are not in it.
 """
 
 from __future__ import annotations
@@ -15,12 +15,16 @@ import numpy as np
 
 from tcplan.made import FilmLeg, FilmUnit, Refusal
 from tcplan.material.model import Film, Material
-from tcplan.parts.counts import ALIKE, Point, trade
+from tcplan.parts.count_bounds import ALIKE
+from tcplan.parts.count_trade import trade
+from tcplan.parts.counts import Point
 from tcplan.parts.film_refusals import refusals
-from tcplan.parts.film_task import FilmRules, FilmTask, ends_ohms, film_task, per_length
+from tcplan.parts.film_rules import FilmRules
+from tcplan.parts.film_task import FilmTask, film_task
+from tcplan.parts.film_unit import ends_ohms, per_length
 from tcplan.parts.network import ends_material
 
-__all__ = ["FilmChoice", "FilmResult", "FilmRules", "film_legs", "zero_tc_length"]
+__all__ = ["FilmChoice", "FilmResult", "FilmRules", "current_density", "film_legs", "zero_tc_length"]
 
 MOST_CHOICES = 12
 _Drawn = tuple[float, Point]
@@ -55,8 +59,9 @@ def film_legs(
 ) -> FilmResult:
     """Return how all legs of one film can be made of one unit cell.
 
-    W starts at the preferred width, else the least one; a wanted mismatch adds wider ones. W and L are on
-    the grid of the film, 5 nm where none is stated. Where the grid offers more lengths than can be looked
+    W starts at the preferred width, else the least one; a wanted mismatch adds wider ones, and so does a
+    current above the limit of the film, which more strings in parallel carry as well. W and L are on the
+    grid of the film, 5 nm where none is stated. Where the grid offers more lengths than can be looked
     through, closely spaced ones and those that make one leg exact are taken, and the best are refined.
 
     Parameters
@@ -78,14 +83,14 @@ def film_legs(
     ------
     InputError
         If the material can not be drawn, a value is not above zero, or a mismatch is wanted of a film
-        that states no matching.
+        that states no matching, or the largest width is below the one to start from.
 
     References
     ----------
     Pelgrom, Duinmaijer, Welbers, IEEE J. Solid-State Circuits 24 (1989) 1433, for the mismatch.
     """
     task = film_task(material, legs, reference, rules)
-    drawn = [(width, p) for width in task.widths() for p in task.points(width, rules.error)]
+    drawn = task.all_points()
     inside = task.inside(drawn)
     if not inside:
         return FilmResult(choices=(), refusals=refusals(task, [point for _, point in drawn]))
@@ -120,6 +125,18 @@ def zero_tc_length(material: Material, width: float, reference: float) -> float 
     if body_tc1 * end_tc1 >= 0.0 or of_ends == 0.0:
         return None
     return -of_ends * end_tc1 / body_tc1 / per_length(material, width, reference)
+
+
+def current_density(leg: FilmLeg, current: float) -> float:
+    """Return the current per drawn width in each unit of a leg [A/m]: current / in_parallel / W.
+
+    Parameters
+    ----------
+    leg : FilmLeg
+    current : float
+        Through the whole leg [A].
+    """
+    return current / leg.in_parallel / leg.unit.width
 
 
 def _joint_front(drawn: Iterable[_Drawn]) -> tuple[_Drawn, ...]:
@@ -183,7 +200,7 @@ def _unit(task: FilmTask, width: float, length: float) -> FilmUnit:
         length=length,
         body_ohms=cell.per_length * length,
         ends_ohms=cell.ends,
-        area=length * cell.pitch,
+        area=cell.area(length),
     )
 
 

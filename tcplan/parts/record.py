@@ -1,116 +1,141 @@
-"""What was made of an option, with what it reaches: the content of parts.json."""
+"""What was made of an option or of a ratio, with all that is said of it."""
 
 from __future__ import annotations
 
-import json
 from dataclasses import dataclass
 from typing import Any
 
-from tcplan.made import FilmLeg, Made, MadeLeg, StockLeg, WireLeg
-from tcplan.material.model import Material
-from tcplan.network import Network, network_text, used_materials, value
+from tcplan.errors import InternalError
+from tcplan.made import MadeLeg, leg_to_dict
 from tcplan.parts.films import FilmChoice
-from tcplan.parts.network import ends_material
-from tcplan.plan import Option, Plan
+from tcplan.parts.network import Assembly
+from tcplan.parts.placement import Placement
+from tcplan.parts.trim import TrimPlan
+from tcplan.plan import Option, PartsRecord, Plan
+from tcplan.ratio.check import RatioCheck
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class FilmWay:
-    """One unit cell for every film together, and the judged figure of what they make (a fraction)."""
+    """One unit cell for every film together, and the judged figure of what they make (a fraction).
+
+    ``area`` is that of all arrays together, dummies included [m^2].
+    """
 
     choices: tuple[FilmChoice, ...]
     figure: float
+    area: float
 
     @property
-    def area(self) -> float:
-        """Of all films [m^2]."""
-        return sum(choice.area for choice in self.choices)
+    def error(self) -> float:
+        """The largest relative value error of a leg."""
+        return max(choice.error for choice in self.choices)
+
+    def to_dict(self) -> dict[str, Any]:
+        """Return the way as plan.json holds it."""
+        return {
+            "area_m2": self.area,
+            "figure_ppm": self.figure * 1e6,
+            "value_error": self.error,
+            "units": [
+                {"material": c.unit.material, "width_m": c.unit.width, "length_m": c.unit.length}
+                for c in self.choices
+            ],
+        }
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Load:
+    """What one leg carries at the operating point, the largest over the range.
+
+    ``density`` is the current per drawn width of a string of units [A/m], None where it is not drawn.
+    """
+
+    leg: str
+    voltage: float
+    current: float
+    power: float
+    density: float | None = None
+
+    def to_dict(self) -> dict[str, Any]:
+        """Return the load as plan.json holds it."""
+        return {
+            "leg": self.leg,
+            "voltage_V": self.voltage,
+            "current_A": self.current,
+            "power_W": self.power,
+            "current_density_A_per_m": self.density,
+        }
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class MadePlan:
-    """An option as made, and what it reaches.
+    """A plan with the parts of one of its options.
 
-    ``ways`` are the ways to draw its films that none beats in both area and judged figure, least area
-    first. ``checked`` is the made network, verified like any other.
+    Parameters
+    ----------
+    plan : Plan
+        With its ``parts``.
+    ideal : Option
+    assemblies : tuple of Assembly
+        The made network of each value.
+    ways : tuple of FilmWay
+        Those to draw the films that none beats in both area and judged figure, least area first.
+    way : FilmWay, optional
+        The one that is taken; None without films.
+    loads : tuple of tuple of Load
+        Of the legs at each value; empty without an operating point.
+    placements : tuple of tuple of Placement
+        Of the films at each value.
+    trim : TrimPlan, optional
+        Of the first value; None where none is asked.
+    stops : str
+        Which rule keeps a plan that meets its limit from meeting it as made; empty when none does.
     """
 
     plan: Plan
     ideal: Option
-    made: Made
-    checked: Option
-    ways: tuple[FilmWay, ...]
+    assemblies: tuple[Assembly, ...]
+    ways: tuple[FilmWay, ...] = ()
+    way: FilmWay | None = None
+    loads: tuple[tuple[Load, ...], ...] = ()
+    placements: tuple[tuple[Placement, ...], ...] = ()
+    trim: TrimPlan | None = None
+    stops: str = ""
 
     @property
-    def value_error(self) -> float:
-        """The value as made over the ideal one, less 1."""
-        return value(self.checked.network) / value(self.ideal.network) - 1.0
+    def parts(self) -> PartsRecord:
+        """The parts of the plan."""
+        if self.plan.parts is None:
+            raise InternalError("a made plan without parts")
+        return self.plan.parts
+
+    @property
+    def verdict(self) -> str:
+        """That of all values: MET only when each is."""
+        verdicts = [made.option.verdict for made in self.parts.made]
+        return next((v for v in ("NOT MET", "NOT JUDGED") if v in verdicts), "MET")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class MadeRatio:
+    """A ratio with the parts of both its resistors; ``first`` and ``second`` are their legs."""
+
+    ideal: RatioCheck
+    checked: RatioCheck
+    first: tuple[MadeLeg, ...]
+    second: tuple[MadeLeg, ...]
+    choices: tuple[FilmChoice, ...]
+    placements: tuple[Placement, ...]
 
     def to_dict(self) -> dict[str, Any]:
-        """Return parts.json; see docs/parts.md."""
+        """Return ratio.json with its parts; see docs/ratio.md."""
         return {
-            "schema": 1,
-            "tcplan": self.plan.tcplan,
-            "plan": {"title": self.plan.brief["title"], "sha256": self.plan.brief["sha256"]},
-            "option": self.ideal.id,
-            "legs": [_leg_dict(leg) for leg in self.made.legs],
-            "value_error": self.value_error,
-            "ideal": {"network": network_text(self.ideal.network), **_figures(self.ideal)},
-            "made": {
-                **self.checked.to_dict(),
-                "materials": {m.name: m.to_dict() for m in made_materials(self.plan, self.checked.network)},
+            **self.ideal.to_dict(),
+            "parts": {
+                "first": [leg_to_dict(leg) for leg in self.first],
+                "second": [leg_to_dict(leg) for leg in self.second],
+                "placement": [placement.to_dict() for placement in self.placements],
+                "made": self.checked.to_dict(),
             },
         }
-
-
-def parts_json(made: MadePlan) -> str:
-    """Return parts.json as text, at full precision; never NaN or infinity."""
-    return json.dumps(made.to_dict(), indent=2, ensure_ascii=False, allow_nan=False) + "\n"
-
-
-def made_materials(plan: Plan, network: Network) -> tuple[Material, ...]:
-    """Return the materials of a made network, the ends of its films among them."""
-    known = dict(plan.by_name)
-    for material in plan.materials:
-        ends = ends_material(material)
-        if ends is not None:
-            known[ends.name] = ends
-    return tuple(known[name] for name in used_materials(network))
-
-
-def _figures(option: Option) -> dict[str, Any]:
-    worst = option.worst_case
-    return {
-        "nominal_ppm": option.nominal.figure_ppm,
-        "worst_case_ppm": worst.peak_ppm if worst else None,
-        "verdict": option.verdict,
-    }
-
-
-def _leg_dict(leg: MadeLeg) -> dict[str, Any]:
-    own: dict[str, Any] = {
-        "id": leg.id,
-        "material": leg.material,
-        "wanted_ohms": leg.wanted_ohms,
-        "ohms": leg.ohms,
-    }
-    if isinstance(leg, FilmLeg):
-        unit = leg.unit
-        own |= {
-            "kind": "film",
-            "in_series": leg.in_series,
-            "in_parallel": leg.in_parallel,
-            "width_m": unit.width,
-            "length_m": unit.length,
-            "unit_body_ohms": unit.body_ohms,
-            "unit_ends_ohms": unit.ends_ohms,
-            "area_m2": leg.area,
-            "mismatch": leg.mismatch,
-        }
-    elif isinstance(leg, StockLeg):
-        own |= {"kind": "stock", "values_ohms": list(leg.values), "joined": leg.joined}
-    elif isinstance(leg, WireLeg):
-        own |= {"kind": "wire", "length_m": leg.length, "ohm_per_metre": leg.ohm_per_metre}
-    else:
-        own |= {"kind": "plain"}
-    return own

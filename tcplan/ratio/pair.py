@@ -9,7 +9,7 @@ resistors; with tracking, the law of a material may differ from the common one i
 from __future__ import annotations
 
 from collections.abc import Mapping
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 
 import numpy as np
 
@@ -131,11 +131,11 @@ def alias(name: str, side: int) -> str:
 
 def aliased(network: Network, side: int) -> Network:
     """Return the network of one resistor, its legs by their aliases."""
-    return mapped(network, lambda leg: Leg(material=alias(leg.material, side), ohms=leg.ohms))
+    return mapped(network, lambda leg: replace(leg, material=alias(leg.material, side)))
 
 
 def _deviated(network: Network, factors: Mapping[str, float]) -> Network:
-    return mapped(network, lambda leg: Leg(material=leg.material, ohms=leg.ohms * factors[leg.material]))
+    return mapped(network, lambda leg: replace(leg, ohms=leg.ohms * factors[leg.material]))
 
 
 def _normal(network: Network) -> Network:

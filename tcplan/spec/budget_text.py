@@ -11,7 +11,7 @@ from math import ceil, floor
 from typing import Any
 
 from tcplan.budget import Account, Budget, Contribution, LotFigures, Sensitivity
-from tcplan.budget.extras import NO_FILMS
+from tcplan.budget.extras import ENDS, HEATING, NO_FILMS
 from tcplan.material.model import Material
 from tcplan.plan import Plan
 from tcplan.spec import numbers
@@ -319,11 +319,21 @@ def budget_assumptions(made: Budget) -> tuple[str, ...]:
         "only those marked 3 sigma (99.73 %) add in root-sum-square.",
         "Spreads count as limits; a stated sigma counts 3 times. Costs are of the nominal figure, for small "
         "steps.",
-        "Ends are an estimate, each leg drawn as one body. Not included: what is marked not known, "
-        "self-heating beyond the stated rise, and what no allowance is given for.",
+        f"{_ends(made)}Not included: what is marked not known, {_heating(made)}and what no allowance is "
+        "given for.",
         "Figures are design estimates, to be confirmed on silicon or hardware.",
         *CAUTIONS[1:],
     )
+
+
+def _ends(made: Budget) -> str:
+    known = any(row.name == ENDS for row in made.rows)
+    return "Ends are an estimate, each leg drawn as one body. " if known else ""
+
+
+def _heating(made: Budget) -> str:
+    known = any(row.name == HEATING for row in made.rows)
+    return "" if known else "self-heating beyond the stated rise, "
 
 
 # --- new data -----------------------------------------------------------------------------------------

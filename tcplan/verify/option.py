@@ -22,7 +22,7 @@ from tcplan.errors import InternalError
 from tcplan.goal import Requirement, judged
 from tcplan.material.model import Material
 from tcplan.material.spread import Spread
-from tcplan.network import Network, legs, shares, used_materials, value
+from tcplan.network import Leg, Network, legs, shares, used_materials, value
 from tcplan.plan import (
     Deviation,
     Likely,
@@ -276,6 +276,12 @@ def with_likely(option: Option, case: Case) -> Option:
     return option if option.likely else replace(option, likely=likely_figures(option.network, case))
 
 
+def _area(leg: Leg, material: Material, reference: float) -> float | None:
+    """Return the area of all strings of a leg [m^2]."""
+    one = material.area(leg.ohms * leg.strings, reference)
+    return None if one is None else one * leg.strings
+
+
 def check(proposal: Proposal, case: Case, name: str) -> Option:
     """Return the checked option of a proposal.
 
@@ -305,7 +311,7 @@ def check(proposal: Proposal, case: Case, name: str) -> Option:
         id=name,
         network=network,
         squares=tuple(case.materials[leg.material].squares(leg.ohms, reference) for leg in legs(network)),
-        areas=tuple(case.materials[leg.material].area(leg.ohms, reference) for leg in legs(network)),
+        areas=tuple(_area(leg, case.materials[leg.material], reference) for leg in legs(network)),
         nominal=nominal,
         worst_case=worst,
         proof=_proof(proposal, figure * 1e-6, case),

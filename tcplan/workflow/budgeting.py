@@ -16,7 +16,9 @@ from tcplan.material.law import Table
 from tcplan.material.model import Material
 from tcplan.names import nearest_name, shown
 from tcplan.network import used_materials
-from tcplan.plan import Option, Plan
+from tcplan.operating import Element
+from tcplan.parts.network import assembled, made_operating, made_process
+from tcplan.plan import Option, PartsRecord, Plan
 from tcplan.plan_file import read_plan
 from tcplan.process import INDEPENDENT
 from tcplan.ranges import GRADES, TemperatureRange, named_range, temperature_range
@@ -82,6 +84,7 @@ def budget_of(
     ranges: Sequence[str] = (),
     materials: Mapping[str, Material] | None = None,
     draws: Draws | None = None,
+    as_made: bool = False,
 ) -> tuple[Account, ...]:
     """Return the budget of each option over each range.
 
@@ -98,12 +101,16 @@ def budget_of(
         a new sheet resistance or resistance per metre.
     draws : Draws, optional
         How many lots to draw; none when not given.
+    as_made : bool
+        Whether the budget is that of the parts of the plan, at each of its values, in place of options.
 
     Raises
     ------
     InputError
         For an unknown option or range, or new data that fit none of the plan's materials.
     """
+    if as_made:
+        return _made_budgets(plan, ranges, draws)
     asked, chosen = asked_of(plan), _options(plan, options)
     _check_new(plan, materials)
     found = []
@@ -111,6 +118,56 @@ def budget_of(
         for over in _ranges(plan, asked, ranges, option, materials):
             found.append(_account(plan, asked, option, over, materials, draws))
     return tuple(found)
+
+
+def _made_budgets(plan: Plan, ranges: Sequence[str], draws: Draws | None) -> tuple[Account, ...]:
+    """Return the budget of what is made at each value over each range."""
+    made_plan, parts = plan_as_made(plan), _parts(plan)
+    ideal = next(option for option in plan.options if option.id == parts.option)
+    found = []
+    for made in parts.made:
+        assembly = assembled(ideal.network, made.legs, plan.by_name)
+        if assembly.network != made.option.network:
+            raise InputError(_contradiction(made.option.id))
+        asked = replace(
+            asked_of(plan),
+            process=made_process(asked_of(plan).process, assembly),
+            operating=made_operating(asked_of(plan).operating, assembly),
+        )
+        for over in _ranges(made_plan, asked, ranges, made.option, None):
+            found.append(_account(made_plan, asked, made.option, over, None, draws, assembly.elements))
+    return tuple(found)
+
+
+def plan_as_made(plan: Plan) -> Plan:
+    """Return a plan whose options are what its parts make, at each value.
+
+    Raises
+    ------
+    InputError
+        When it has no parts.
+    """
+    parts = _parts(plan)
+    options = tuple(made.option for made in parts.made)
+    return replace(plan, materials=parts.materials, options=options, chosen=options[0].id, parts=None)
+
+
+def _parts(plan: Plan) -> PartsRecord:
+    if plan.parts is None:
+        todo = "Make them first: tcplan parts PLAN -o DIR writes the plan again with its parts."
+        raise InputError(
+            Problem(where="plan.parts", found="a plan without parts", expected="a plan with parts", todo=todo)
+        )
+    return plan.parts
+
+
+def _contradiction(name: str) -> Problem:
+    return Problem(
+        where=f"plan.parts {name}",
+        found="a network that is not the one of its legs",
+        expected="the network of the legs",
+        todo="Make the parts again.",
+    )
 
 
 def _options(plan: Plan, ids: Sequence[str] | None) -> tuple[Option, ...]:
@@ -253,13 +310,17 @@ def _account(
     over: TemperatureRange,
     new: Mapping[str, Material] | None,
     draws: Draws | None,
+    elements: tuple[Element, ...] | None = None,
 ) -> Account:
-    """Return the budget of one option over one range; with new data also that before them."""
+    """Return the budget of one option over one range; with new data also that before them.
+
+    With ``elements`` the option is as made: what its leaves are made of is known, its ends are leaves.
+    """
     names = used_materials(option.network)
     merged = {**plan.by_name, **{name: m for name, m in (new or {}).items() if name in plan.by_name}}
     if why := _not_covered(option, merged, asked, over):
         return Account(option=option.id, over=over, budget=None, not_covered=why)
-    case = _case(asked, over, merged)
+    case = replace(_case(asked, over, merged), elements=elements)
     before = None
     if new is not None:
         case = replace(case, redrawn=_redrawn(plan, new, over.reference))
@@ -284,6 +345,7 @@ def _case(asked: Asked, over: TemperatureRange, materials: Mapping[str, Material
         allowances=asked.allowances,
         tolerance=asked.tolerance,
         trim_step=asked.trim_step,
+        operating=asked.operating,
     )
 
 

@@ -55,11 +55,11 @@ def write_plan(plan: Plan, folder: Path, *, force: bool = False) -> tuple[Path, 
     contents = {**{name: text.encode() for name, text in texts.items()}, **figure_files(plan)}
     made = {name: contents[name] for name in PLAN_FILES if name in contents}
     paths = write_files(folder, made, force=force)
-    _remove(folder / name for name in PLAN_FILES if name not in made)
+    remove_earlier(folder / name for name in PLAN_FILES if name not in made)
     return paths
 
 
-def _remove(paths: Iterable[Path]) -> None:
+def remove_earlier(paths: Iterable[Path]) -> None:
     """Remove what an earlier plan left here and this one does not have: it would pass for its own."""
     for path in paths:
         try:

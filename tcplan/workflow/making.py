@@ -2,49 +2,41 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
-from dataclasses import dataclass, replace
-from itertools import product
-from math import inf, prod
-from pathlib import Path
-from typing import Any
+from collections.abc import Mapping
+from dataclasses import replace
+
+import numpy as np
 
 from tcplan.budget.rebuilt import Asked, asked_of
 from tcplan.errors import InputError, Problem
 from tcplan.goal import requirement
-from tcplan.material.model import Material
+from tcplan.made import FilmLeg, MadeLeg, StockLeg
 from tcplan.names import nearest_name, shown
-from tcplan.network import Leg, Network, leg_names, legs, used_materials, value
-from tcplan.output import check_folder, write_files
-from tcplan.parts import Made, MadeLeg, PlainLeg, StockLeg, made_network
-from tcplan.parts.films import FilmChoice, FilmRules, film_legs
-from tcplan.parts.record import FilmWay, MadePlan, made_materials, parts_json
-from tcplan.parts.stock_choice import stock_choices
+from tcplan.network import Network, legs, scaled, used_materials, value
+from tcplan.operating import operating_point, worst_by_leg
+from tcplan.parts.network import Assembly, alike, made_operating, made_process
+from tcplan.parts.placement import Placement, place
+from tcplan.parts.record import Load, MadePlan
+from tcplan.parts.retune import with_values
+from tcplan.parts.stock_choice import StockChoice, stock_choices
+from tcplan.parts.trim import TrimPlan, trim_plan
 from tcplan.parts.wire import wire_legs
-from tcplan.plan import Option, Plan, Proposal
-from tcplan.process import Process
-from tcplan.spec.parts_text import parts_csv
-from tcplan.verify.option import Case, check, nominal_figure, with_likely
-from tcplan.worst.evaluation import worst_case
+from tcplan.plan import MadeValue, Option, PartsRecord, Plan, Proposal
+from tcplan.units import format_ohms
+from tcplan.verify.option import check, with_likely
+from tcplan.workflow.made_films import film_legs_of, film_ways, taken
+from tcplan.workflow.made_stops import what_stops
+from tcplan.workflow.made_task import NEAR, POINTS, PartsRules, Task
 
-NEAR = 1e-9
-MOST_WAYS = 100
-BETTER = 0.99  # a way with more area is of interest when its figure is below this part of the last
-LONGER = (4.0, 12.0, 40.0, 120.0)  # least squares of a unit that are tried
-PARTS_FILES = ("parts.json", "parts.csv")
+__all__ = ["MadePlan", "PartsRules", "make_parts"]
 
-
-@dataclass(frozen=True, slots=True, kw_only=True)
-class PartsRules:
-    """What parts may be: rules of films, and whether a stock leg may be two parts."""
-
-    films: FilmRules
-    pairs: bool = True
-    wire_step: float = 1e-3
+FARTHER = (1.0003, 1.001, 1.003, 1.01)  # by which legs of a free total grow until the limit is kept
+MOST_REDRAWN = 3  # times that films are drawn anew for a larger current
+MOST_JUDGED = 12  # combinations of stock parts whose judged figure is worked out
 
 
 def make_parts(plan: Plan, rules: PartsRules, option: str | None = None) -> MadePlan:
-    """Return an option of a plan as parts.
+    """Return a plan with an option of it as parts.
 
     Parameters
     ----------
@@ -58,25 +50,132 @@ def make_parts(plan: Plan, rules: PartsRules, option: str | None = None) -> Made
     InputError
         When a leg can not be made: which rule stops it, and the nearest feasible figure.
     """
-    asked, ideal = asked_of(plan), _option(plan, option)
-    made, ways = _made(plan, asked, ideal, rules)
-    network = made_network(ideal.network, made)
-    case = _case(plan, asked, network)
-    checked = with_likely(check(Proposal(network=network, role="made"), case, f"{ideal.id}-made"), case)
-    return MadePlan(plan=plan, ideal=ideal, made=made, checked=checked, ways=ways)
+    task = task_of(plan, rules, option)
+    made = _carried(task)
+    if plan.target.ohms is None and task.ideal.verdict == "MET":
+        for factor in FARTHER:
+            if made.verdict == "MET":
+                break
+            made = _carried(_farther(task, factor))
+    return made
 
 
-def write_parts(made: MadePlan, folder: Path, *, force: bool = False) -> tuple[Path, ...]:
-    """Write parts.json and parts.csv, both or neither.
+def _carried(task: Task) -> MadePlan:
+    """Return the parts of a task, its films drawn anew for the current of what is made where that is more."""
+    made = _made(task)
+    for _ in range(MOST_REDRAWN):
+        excess = _excess(task, made)
+        if excess <= 1.0 + NEAR:
+            break
+        task = replace(task, room=task.room * excess * (1.0 + task.rules.films.error))
+        made = _made(task)
+    return made
 
-    Raises
-    ------
-    OutputError
-        When a file is in the way or cannot be written.
+
+def _excess(task: Task, made: MadePlan) -> float:
+    """Return the largest current density over that of its film; 0 where none is limited."""
+    found = 0.0
+    for one, loads in zip(made.parts.made, made.loads, strict=bool(made.loads)):
+        for leg, load in zip(one.legs, loads, strict=True):
+            film = task.plan.by_name[leg.material].film
+            if film is not None and film.max_current and load.density is not None:
+                found = max(found, load.density / film.max_current)
+    return found
+
+
+def _farther(task: Task, factor: float) -> Task:
+    """Return the task with the chosen legs larger, where the total is free: the limit is then kept with room.
+
+    Of the greatest total beside parallel members they get smaller.
     """
-    check_folder(folder, PARTS_FILES, force=force)
-    texts = {"parts.json": parts_json(made), "parts.csv": parts_csv(made.made.legs)}
-    return write_files(folder, {name: texts[name].encode() for name in PARTS_FILES}, force=force)
+    by = 1.0 / factor if task.ideal.role == "greatest total" else factor
+    own = legs(task.ideal.network)
+    ohms = [leg.ohms if k in task.fixed else leg.ohms * by for k, leg in enumerate(own)]
+    return replace(task, networks=(with_values(task.ideal.network, ohms),))
+
+
+def _made(task: Task) -> MadePlan:
+    """Return the parts of a task."""
+    plan, done = task.plan, _cut(task)
+    ways = film_ways(task, done)
+    way = taken(task, ways) if ways else None
+    if way is not None:
+        done.update(film_legs_of(way.choices))
+    owned = [task.whole(k, {**done, **_stock(task, k, done)}) for k in range(len(task.networks))]
+    assemblies = alike([task.assembly(own) for own in owned])
+    made = [
+        _checked(task, k, network, own, assembly)
+        for k, (network, own, assembly) in enumerate(zip(task.networks, owned, assemblies, strict=True))
+    ]
+    loads = tuple(_loads(task, one.legs, a) for one, a in zip(made, assemblies, strict=True))
+    loads = loads if task.asked.operating else ()
+    placements = tuple(_placed(task, one) for one in made)
+    trim = _trim(task, made[0], assemblies[0])
+    parts = PartsRecord(
+        option=task.ideal.id,
+        materials=tuple({m.name: m for a in assemblies for m in a.materials}.values()),
+        made=tuple(made),
+        details={
+            "ways": [one.to_dict() for one in ways],
+            "loads": [[load.to_dict() for load in own] for own in loads],
+            "placement": [[one.to_dict() for one in own] for own in placements],
+            "trim": None if trim is None else trim.to_dict(),
+        },
+    )
+    return MadePlan(
+        plan=replace(plan, parts=parts),
+        ideal=task.ideal,
+        assemblies=assemblies,
+        ways=ways,
+        way=way,
+        loads=loads,
+        placements=placements,
+        trim=trim,
+        stops=what_stops(task, [one.option for one in made], [one.legs for one in made]),
+    )
+
+
+def _placed(task: Task, made: MadeValue) -> tuple[Placement, ...]:
+    """Return one array for each film that is drawn."""
+    drawn = [leg for leg in made.legs if isinstance(leg, FilmLeg)]
+    of = format_ohms(made.target_ohms) if task.asked.also else ""
+    return tuple(
+        place([leg for leg in drawn if leg.material == name], task.plan.by_name[name], of=of)
+        for name in dict.fromkeys(leg.material for leg in drawn)
+    )
+
+
+def _trim(task: Task, made: MadeValue, assembly: Assembly) -> TrimPlan | None:
+    """Return the trim of what is made; None where the brief asks for none."""
+    if task.asked.trim is None:
+        return None
+    over = task.asked.over
+    drawn = {m.name: m.drawn_spread(over.low, over.high) for m in assembly.materials}
+    return trim_plan(
+        assembly.network,
+        made.legs,
+        assembly.by_name,
+        {name: spread for name, spread in drawn.items() if spread is not None},
+        made_process(task.asked.process, assembly),
+        requirement(task.asked.goal, over),
+        task.asked.trim,
+        made.target_ohms,
+    )
+
+
+def task_of(plan: Plan, rules: PartsRules, option: str | None = None) -> Task:
+    """Return what an option of a plan is to be made of."""
+    asked, ideal = asked_of(plan), _option(plan, option)
+    whole = value(ideal.network)
+    networks = (ideal.network, *(scaled(ideal.network, ohms / whole) for ohms in asked.also))
+    return Task(
+        plan=plan,
+        asked=asked,
+        ideal=ideal,
+        rules=rules,
+        networks=networks,
+        fixed=_fixed(asked, ideal.network),
+    )
 
 
 def _option(plan: Plan, name: str | None) -> Option:
@@ -92,171 +191,6 @@ def _option(plan: Plan, name: str | None) -> Option:
     return known[name]
 
 
-# --- the legs -------------------------------------------------------------------------------------------
-
-
-def _made(plan: Plan, asked: Asked, ideal: Option, rules: PartsRules) -> tuple[Made, tuple[FilmWay, ...]]:
-    """Return the parts of every leg; stock parts are chosen last, all together."""
-    fixed = _fixed(asked, ideal.network)
-    names = leg_names(len(legs(ideal.network)))
-    done: dict[str, MadeLeg] = {}
-    films: list[tuple[FilmChoice, ...]] = []
-    problems: list[Problem] = []
-    for material in used_materials(ideal.network):
-        data = plan.by_name[material]
-        mine = [
-            (name, leg.ohms)
-            for k, (name, leg) in enumerate(zip(names, legs(ideal.network), strict=True))
-            if leg.material == material and k not in fixed
-        ]
-        try:
-            if mine and data.kind == "film" and data.film is not None:
-                films.append(_choices(data, mine, asked.over.reference, rules.films))
-            elif mine and data.kind == "wire":
-                cut = wire_legs(data, mine, asked.over.reference, step=rules.wire_step)
-                done.update({leg.id: leg for leg in cut})
-        except InputError as error:
-            problems.extend(error.problems)
-    if problems:
-        raise InputError(problems)
-    ways = _ways(plan, asked, ideal, done, films)
-    done.update({leg.id: leg for choice in _taken(plan, ways) for leg in choice.legs})
-    done.update(_stock(plan, asked, ideal, rules, done, fixed))
-    return _whole(ideal, done), ways
-
-
-def _whole(ideal: Option, done: Mapping[str, MadeLeg]) -> Made:
-    """Return all legs of an option; those that are not made stay as they are."""
-    own = legs(ideal.network)
-    names = leg_names(len(own))
-    return Made(
-        option=ideal.id,
-        legs=tuple(
-            done.get(name) or PlainLeg(id=name, material=leg.material, wanted_ohms=leg.ohms)
-            for name, leg in zip(names, own, strict=True)
-        ),
-    )
-
-
-def _choices(
-    data: Material, legs_: Sequence[tuple[str, float]], reference: float, rules: FilmRules
-) -> tuple[FilmChoice, ...]:
-    """Return the unit cells of a film that are tried, and refuse when there is none.
-
-    Of least area within the error asked: without more, then with longer and longer units, which have
-    less of their ends; and the one whose body and ends cancel.
-    """
-    first = film_legs(data, legs_, reference, rules)
-    if first.refusals:
-        raise InputError(
-            Problem(
-                where=f"leg {r.leg}", found=r.found, expected=f"a leg within the {r.rule}", todo=r.nearest
-            )
-            for r in first.refusals
-        )
-    results = [first]
-    for least in LONGER:
-        if rules.min_squares < least <= rules.max_length_squares:
-            results.append(film_legs(data, legs_, reference, replace(rules, min_squares=least)))
-    found = [
-        next((c for c in result.choices if c.error <= rules.error), result.choices[-1])
-        for result in results
-        if result.choices
-    ]
-    if first.zero_tc is not None and first.zero_tc.error <= rules.error:
-        found.append(first.zero_tc)
-    return tuple({(c.unit, c.area): c for c in found}.values())
-
-
-def _ways(
-    plan: Plan,
-    asked: Asked,
-    ideal: Option,
-    done: Mapping[str, MadeLeg],
-    films: Sequence[Sequence[FilmChoice]],
-) -> tuple[FilmWay, ...]:
-    """Return the ways to draw all films together that none beats in both area and judged figure."""
-    if not films:
-        return ()
-    while prod(len(choices) for choices in films) > MOST_WAYS:
-        films = [_thinned(choices) if len(choices) == max(map(len, films)) else choices for choices in films]
-    found = []
-    for choices in product(*films):
-        legs_ = {**done, **{leg.id: leg for choice in choices for leg in choice.legs}}
-        network = made_network(ideal.network, _whole(ideal, legs_))
-        figure = _judged(plan, network, _case(plan, asked, network))
-        found.append(FilmWay(choices=choices, figure=figure))
-    found.sort(key=lambda way: (way.area, way.figure))
-    best, ways = inf, []
-    for way in found:
-        if way.figure < best * BETTER:
-            best = way.figure
-            ways.append(way)
-    return tuple(ways)
-
-
-def _thinned(choices: Sequence[FilmChoice]) -> Sequence[FilmChoice]:
-    """Return one choice fewer: the last but one is left out."""
-    return [*choices[:-2], choices[-1]]
-
-
-def _judged(plan: Plan, network: Network, case: Case) -> float:
-    """Return the figure that the plan judges, as far as the spreads are known (a fraction)."""
-    known = all(name in case.spreads for name in used_materials(network))
-    if plan.limit.judge == "nominal" or not known:
-        return nominal_figure(network, case)
-    return worst_case(network, case.materials, case.spreads, case.need, case.process).upper
-
-
-def _taken(plan: Plan, ways: Sequence[FilmWay]) -> tuple[FilmChoice, ...]:
-    """Return the way of least area that keeps the limit, else the one of the least figure."""
-    if not ways:
-        return ()
-    limit = plan.limit.drift_ppm
-    within = [way for way in ways if limit is not None and way.figure <= limit * 1e-6 * (1.0 + NEAR)]
-    return (within or [ways[-1]])[0].choices
-
-
-def _stock(
-    plan: Plan,
-    asked: Asked,
-    ideal: Option,
-    rules: PartsRules,
-    done: Mapping[str, MadeLeg],
-    fixed: frozenset[int],
-) -> dict[str, StockLeg]:
-    """Return the stock parts, chosen with the other legs as they are made."""
-    own = legs(ideal.network)
-    if not any(plan.by_name[leg.material].kind == "part" for k, leg in enumerate(own) if k not in fixed):
-        return {}
-    names = leg_names(len(own))
-    ohms = [done[name].ohms if name in done else leg.ohms for name, leg in zip(names, own, strict=True)]
-    network = _with_values(ideal.network, iter(ohms))
-    lowest, highest = asked.stock_values
-    choices = stock_choices(
-        network,
-        plan.by_name,
-        requirement(asked.goal, asked.over),
-        plan.target.ohms or value(ideal.network),
-        lowest=lowest,
-        highest=highest,
-        pairs=rules.pairs,
-        given=fixed,
-    )
-    best = min(choices, key=lambda c: (not _good(c.value_error, rules), c.figure, c.parts))
-    return {name: leg for name, leg in zip(names, best.legs, strict=True) if leg is not None}
-
-
-def _good(value_error: float, rules: PartsRules) -> bool:
-    return abs(value_error) <= rules.films.error
-
-
-def _with_values(node: Network, ohms: Any) -> Network:
-    if isinstance(node, Leg):
-        return replace(node, ohms=next(ohms))
-    return type(node)(tuple(_with_values(child, ohms) for child in node.children))
-
-
 def _fixed(asked: Asked, network: Network) -> frozenset[int]:
     """Return the positions of the fixed members, which are as they are."""
     left = list(asked.fixed)
@@ -270,17 +204,99 @@ def _fixed(asked: Asked, network: Network) -> frozenset[int]:
     return frozenset(found)
 
 
-# --- what it reaches ------------------------------------------------------------------------------------
-
-
-def _case(plan: Plan, asked: Asked, network: Network) -> Case:
-    materials = {m.name: m for m in made_materials(plan, network)}
-    spreads = {n: m.effective_spread(asked.over.low, asked.over.high) for n, m in materials.items()}
-    process: Process = asked.process
-    return Case(
-        materials=materials,
-        spreads={n: spread for n, spread in spreads.items() if spread is not None},
-        over=asked.over,
-        need=requirement(asked.goal, asked.over),
-        process=process,
+def _checked(task: Task, k: int, network: Network, own: tuple[MadeLeg, ...], assembly: Assembly) -> MadeValue:
+    """Return what is made at one value, its network verified like any other."""
+    case = task.case(assembly)
+    name = f"{task.ideal.id}-made" if len(task.networks) == 1 else f"{task.ideal.id}-made-{k + 1}"
+    option = with_likely(check(Proposal(network=assembly.network, role="made"), case, name), case)
+    target = value(network)
+    return MadeValue(
+        target_ohms=target, value_error=value(option.network) / target - 1.0, legs=own, option=option
     )
+
+
+# --- wire and stock -------------------------------------------------------------------------------------
+
+
+def _cut(task: Task) -> dict[str, MadeLeg]:
+    """Return the legs of wire of every value."""
+    done: dict[str, MadeLeg] = {}
+    problems: list[Problem] = []
+    for name in used_materials(task.ideal.network):
+        data, mine = task.plan.by_name[name], tuple(task.wanted(name))
+        if data.kind != "wire" or not mine:
+            continue
+        try:
+            cut = wire_legs(data, mine, task.asked.over.reference, step=task.rules.wire_step)
+        except InputError as error:
+            problems.extend(error.problems)
+            continue
+        done.update({leg.id: replace(leg, id=leg.id.split(" ")[0]) for leg in cut})
+    if problems:
+        raise InputError(problems)
+    return done
+
+
+def _stock(task: Task, k: int, done: Mapping[str, MadeLeg]) -> dict[str, StockLeg]:
+    """Return the stock parts of one value by their label, chosen with the other legs as they are made."""
+    own, plan = legs(task.networks[k]), task.plan
+    bought = [n for n, leg in enumerate(own) if plan.by_name[leg.material].kind == "part"]
+    if not set(bought) - task.fixed:
+        return {}
+    parts = task.whole(k, done)
+    network = with_values(task.networks[k], [part.ohms for part in parts])
+    lowest, highest = task.asked.stock_values
+    choices = stock_choices(
+        network,
+        plan.by_name,
+        requirement(task.asked.goal, task.asked.over),
+        value(task.networks[k]),
+        lowest=lowest,
+        highest=highest,
+        pairs=task.rules.pairs,
+        given=task.fixed,
+    )
+    good = [c for c in choices if abs(c.value_error) <= task.rules.films.error]
+    tried = sorted(good, key=lambda c: (c.figure, c.parts))[:MOST_JUDGED]
+    if not tried:
+        best = min(choices, key=lambda c: (abs(c.value_error), c.figure, c.parts))
+    else:
+        best = min(tried, key=lambda c: (task.judged(_joined(parts, c)), c.parts))
+    return {
+        task.label(k, name): leg for name, leg in zip(task.names, best.legs, strict=True) if leg is not None
+    }
+
+
+def _joined(parts: tuple[MadeLeg, ...], choice: StockChoice) -> tuple[MadeLeg, ...]:
+    """Return the legs of an option with a choice of stock parts in it."""
+    return tuple(leg or part for leg, part in zip(choice.legs, parts, strict=True))
+
+
+# --- what it carries ------------------------------------------------------------------------------------
+
+
+def _loads(task: Task, own: tuple[MadeLeg, ...], assembly: Assembly) -> tuple[Load, ...]:
+    """Return what each leg carries at the operating point; empty where none is asked."""
+    over = task.asked.over
+    operating = made_operating(task.asked.operating, assembly)
+    if operating is None:
+        return ()
+    T = np.linspace(over.low, over.high, POINTS)
+    point = operating_point(
+        assembly.network, assembly.by_name, assembly.elements, operating, over.reference, T
+    )
+    by_leg = worst_by_leg(point)
+    return tuple(
+        Load(
+            leg=part.id,
+            voltage=by_leg[part.id].voltage,
+            current=by_leg[part.id].current,
+            power=by_leg[part.id].power,
+            density=_density(part, by_leg[part.id].current),
+        )
+        for part in own
+    )
+
+
+def _density(part: MadeLeg, current: float) -> float | None:
+    return current / part.in_parallel / part.unit.width if isinstance(part, FilmLeg) else None

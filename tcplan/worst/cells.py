@@ -179,11 +179,18 @@ def _at_vertices(box: Box, found: Found, width: FloatArray, grid: Grid) -> Found
     points[:, width > 0] += steps * width[width > 0]
     k = found.at
     law = (grid.hi if found.sign > 0 else grid.lo)[:, k : k + 1]
-    factors = box.factors_at(points)
-    ratio = (_values(box, factors, law) / _values(box, factors, np.ones_like(law)))[:, 0]
+    ratio = device_values(box, points, law)[:, 0]
     figure = found.sign * (ratio - grid.wanted[k]) / grid.weight[k]
     best = int(np.argmax(figure))
     return replace(found, figure=float(figure[best]), point=points[best])
+
+
+def device_values(box: Box, points: FloatArray, ratios: FloatArray) -> FloatArray:
+    """Return R(T)/R(T_ref) of devices at points of the box, shape (points, T), for laws at ``ratios``."""
+    factors = box.factors_at(points)
+    at_reference = _values(box, factors, np.ones_like(ratios[:, :1]))
+    values: FloatArray = _values(box, factors, ratios) / at_reference
+    return values
 
 
 def start_cells(box: Box) -> tuple[FloatArray, FloatArray]:

@@ -86,6 +86,7 @@ def test_how_well_the_value_is_met():
     made = brief(changed(('value = "18 kohm"', 'value = "18 kohm"\ntrim_step = "0.1 %"')))
     assert made.to_dict()["resistor"] == {
         "value_ohms": 18000.0,
+        "also_ohms": [],
         "at_most_ohms": None,
         "tolerance": None,
         "trim_step": pytest.approx(0.001),

@@ -136,7 +136,9 @@ def test_chords_of_platinum_from_25_degc(folder: Path) -> None:
     hot = json.loads(
         invoke("coefficients", *PLATINUM, "--to", "25 degC", "--hot", "125 degC", "--json").stdout
     )
-    assert hot["chords"] == [{"to_degC": 125.0, "tcr_ppm_per_K": pytest.approx(3482.651, abs=1e-3)}]
+    [chord] = hot["chords"]
+    assert (chord["to_degC"], chord["u_ppm_per_K"]) == (125.0, None)
+    assert chord["tcr_ppm_per_K"] == pytest.approx(3482.651, abs=1e-3)
 
 
 def test_two_chords_to_coefficients_by_exact_arithmetic(folder: Path) -> None:
@@ -154,9 +156,10 @@ def test_a_value_may_begin_with_a_minus_sign(folder: Path) -> None:
     joined = invoke("coefficients", "--tc1=-120 ppm/K", "--tc2=0.55 ppm/K^2", "--cold=-55 degC")
     assert apart.exit_code == 0
     assert apart.stdout == joined.stdout
-    # -120 - 0.55 * 80 = -164
-    assert re.fullmatch(
-        r"TC1 at 25 degC +-120 ppm/K\nTC2 at 25 degC +0\.55 ppm/K\^2\nchord TCR to -55 degC +-164 ppm/K\n",
+    # -120 - 0.55 * 80 = -164; the peak is 120/(2 * 0.55) K above 25 degC
+    assert re.match(
+        r"TC1 at 25 degC +-120 ppm/K\nTC2 at 25 degC +0\.55 ppm/K\^2\n"
+        r"chord TCR to -55 degC +-164 ppm/K\npeak at +134\.091 degC\n",
         apart.stdout,
     )
 
