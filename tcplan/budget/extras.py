@@ -116,9 +116,10 @@ def mismatch_row(network: Network, case: Case, T: FloatArray) -> Extra:
     (p(T) - p(T_ref)) R(T)/R(T_ref), p the share of the leg; the legs are independent.
     """
     sigmas = leg_mismatch(network, case.materials, case.over.reference)
-    names = [leg.material for leg, sigma in zip(legs(network), sigmas, strict=True) if sigma is None]
+    own = zip(legs(network), sigmas, case.made_of(network), strict=True)
+    names = [leg.material for leg, sigma, element in own if sigma is None and not element.ends]
     missing = f"film.matching not stated: {', '.join(dict.fromkeys(names))}" if names else "by area"
-    if len(names) == len(sigmas):
+    if all(sigma is None for sigma in sigmas):
         return Extra(MISMATCH, "random", None, None, missing)
     moved = share_changes(network, case, T)
     parts = [sigma * move for sigma, move in zip(sigmas, moved, strict=True) if sigma is not None]
@@ -150,7 +151,9 @@ def operating_rows(network: Network, case: Case, T: FloatArray) -> tuple[Extra, 
     elements, reference = case.made_of(network), case.over.reference
     hot = operating_point(network, case.materials, elements, operating, reference, T, by_heat_only=True)
     whole = operating_point(network, case.materials, elements, operating, reference, T)
-    own, names = value(network), set(used_materials(network))
+    own = value(network)
+    pairs = zip(legs(network), elements, strict=True)
+    names = {leg.material for leg, element in pairs if not element.ends}
     known = not whole.no_length and set(whole.not_stated) < names
     heated = (hot.ohms - hot.cold_ohms) / own if operating.heats else None
     stretched = (whole.ohms - hot.ohms) / own if known else None

@@ -29,8 +29,8 @@ T = TypeVar("T")
 class Asked:
     """What a plan was made for; ``tolerance`` and ``trim_step`` are fractions.
 
-    ``also`` are the further values [ohm] of the same mix. ``fixed`` holds material and value [ohm] of each given member, ``stock_values`` the least and greatest
-    value [ohm] of a bought part.
+    ``also`` are the further values [ohm] of the same mix. ``fixed`` holds material and value [ohm] of each
+    given member, ``stock_values`` the least and greatest value [ohm] of a bought part.
     """
 
     goal: Goal

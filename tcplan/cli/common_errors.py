@@ -19,7 +19,13 @@ _OPTIONS = (
     ("lead_tc1", "--lead-tc1", "TC", "The known TC1 of that lead, such as '3900 ppm/K'."),
     ("meter_scale", "--meter-scale", "PART", "Of the gain of the meter, such as '15 ppm'."),
 )
-_UNITS = {"chamber_offset": "K", "chamber_scale": "1", "lead": "ohm", "lead_tc1": "1/K", "meter_scale": "1"}
+_UNITS = {
+    "chamber_offset": "delta_K",
+    "chamber_scale": "1",
+    "lead": "ohm",
+    "lead_tc1": "1/K",
+    "meter_scale": "1",
+}
 
 
 def common_error_options(command: Command) -> Command:

@@ -56,7 +56,7 @@ def command(
     """Compare the readings of SWEEP with what PLAN predicts of the resistor.
 
     PLAN is a plan.json, a brief (.toml, which is planned first), or - for a plan.json on stdin. SWEEP is a
-    CSV or XLSX file with columns such as T [degC], R [ohm], u(R [ohm]) and device. Shown are R at the
+    CSV or XLSX file with columns such as T [degC], R [ohm], u(R) [ohm] and device. Shown are R at the
     reference against its tolerance, the drift against the worst case of the plan, which deviations of the
     materials explain it best, and which leg values would centre it.
 
@@ -65,7 +65,8 @@ def command(
     Exit code 0: no device is outside of its band, limit or tolerance. 1: one is.
     """
     from tcplan.measure.reading import read_sweep
-    from tcplan.spec.compare_text import compare_text, comparison_data
+    from tcplan.spec.compare_data import comparison_data
+    from tcplan.spec.compare_text import compare_text
     from tcplan.workflow.budgeting import plan_as_made, plan_to_budget
     from tcplan.workflow.comparing import Asking, check_compare_out, compare_plan, write_comparison
 

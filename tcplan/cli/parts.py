@@ -22,7 +22,7 @@ if TYPE_CHECKING:
     from tcplan.workflow.made_task import PartsRules
 
 STDIN = "-"
-MOST_PLAN_BYTES = 20_000_000
+MOST_PLAN_BYTES = 2_000_000
 LABEL = 9
 LEAST = 12  # characters in which the last column of a table can stand
 

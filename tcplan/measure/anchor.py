@@ -113,7 +113,7 @@ def _fit(sweep: Sweep, reference: float) -> Fit:
                 where=device_place(sweep),
                 found=f"{len(sweep.T)} readings in the range of the plan, without u(R)",
                 expected="u(R), or three readings or more at two temperatures, so that their scatter shows",
-                todo="Add a column u(R [ohm]), or measure at more temperatures.",
+                todo="Add a column u(R) [ohm], or measure at more temperatures.",
             )
         )
     plain = sweep if sweep.u_R is not None else replace(sweep, u_T=None)

@@ -9,25 +9,23 @@ the search meets first from the plan.
 from __future__ import annotations
 
 from collections.abc import Callable, Sequence
-from dataclasses import dataclass
 from math import exp, log
 from typing import Any
 
 import numpy as np
 
-from tcplan.arrays import FloatArray, IntArray
+from tcplan.arrays import FloatArray
 from tcplan.drift import Curve
 from tcplan.errors import InternalError
 from tcplan.goal import judged
+from tcplan.measure.centring_task import POINTS, ROUNDING, Task, changed, task_of
 from tcplan.measure.comparison import Centred, Centring, Expected, Explanation
 from tcplan.measure.composite import Composite
 from tcplan.measure.explained import values_of
-from tcplan.network import Leg, Network, leg_shares, legs, resistance, used_materials, value
+from tcplan.network import Network, legs, resistance, used_materials
 
-POINTS = 41  # temperatures a piece
 MOST_CHANGE = 4.0  # of a leg, as a factor either way
 NO_WORSE = 1e-2  # of the least figure: what the least change may give away
-ROUNDING = 1e-10  # a figure that is no drift
 MOST_STEPS = 200
 
 
@@ -39,62 +37,9 @@ def why_not_centred(expected: Expected) -> str:
         return "All members are given: there is no value to change."
     if len(set(groups)) == 1:
         return "Of one leg the value moves R and not the drift."
-    if len(free) == 1 and not expected.value_free:
+    if len(free) == 1:
         return "With one value to change, R at the reference sets it, and not the drift."
     return ""
-
-
-@dataclass(frozen=True, slots=True, eq=False)
-class _Task:
-    """A device whose leg values may change: x are the logarithms of the factors of the free legs.
-
-    ``leaf`` is for each leaf its position in x, -1 where it cannot change. ``ratios`` are at the temperatures
-    of the points and then the reference.
-    """
-
-    network: Network
-    leaf: IntArray
-    ratios: dict[str, FloatArray]
-    wanted: FloatArray
-    weight: FloatArray
-    centred: FloatArray
-    ohms: float
-    scale: float
-    value_free: bool
-
-    @property
-    def free(self) -> int:
-        return int(self.leaf.max()) + 1
-
-    def factors(self, x: FloatArray) -> tuple[float, ...]:
-        return tuple(exp(x[k]) if k >= 0 else 1.0 for k in self.leaf.tolist())
-
-    def drift(self, x: FloatArray) -> FloatArray:
-        """Return the drift at the points, in units of the scale."""
-        ohms = resistance(changed(self.network, self.factors(x)), self.ratios)
-        return np.asarray((ohms[:-1] / ohms[-1] - self.wanted) / self.scale)
-
-    def drift_slopes(self, x: FloatArray) -> FloatArray:
-        """Return d(drift)/dx, shape (points, free)."""
-        network = changed(self.network, self.factors(x))
-        ohms, share = resistance(network, self.ratios), self._shares(network)
-        return np.asarray((ohms[:-1] / ohms[-1])[:, None] * (share[:-1] - share[-1]) / self.scale)
-
-    def level(self, x: FloatArray) -> float:
-        """Return ln R(reference) less that of the wanted value."""
-        ohms = resistance(changed(self.network, self.factors(x)), self.ratios)
-        return log(float(ohms[-1]) / self.ohms)
-
-    def level_slopes(self, x: FloatArray) -> FloatArray:
-        return np.asarray(self._shares(changed(self.network, self.factors(x)))[-1])
-
-    def _shares(self, network: Network) -> FloatArray:
-        """Return d ln R/dx, shape (points and the reference, free)."""
-        found = np.zeros((len(self.wanted) + 1, self.free))
-        for k, share in zip(self.leaf.tolist(), leg_shares(network, self.ratios), strict=True):
-            if k >= 0:
-                found[:, k] += share
-        return found
 
 
 def centred(
@@ -116,11 +61,10 @@ def centred(
     Returns
     -------
     Centring
-        R at the reference becomes the planned value, or, where its level says nothing, stays; where the plan
-        leaves it free it is as it comes out.
+        R at the reference becomes the planned value, or, where its level says nothing, stays.
     """
     mean = values_of(explanations)
-    task = _task(expected, composite, mean)
+    task = task_of(expected, composite, mean)
     x = _least_change(task)
     factors = task.factors(x)
     network = changed(expected.network, factors)
@@ -132,50 +76,13 @@ def centred(
         factors=factors,
         ohms=tuple(leg.ohms for leg in legs(network)),
         value=task.ohms * exp(task.level(x)),
-        level="free" if expected.value_free else "planned" if expected.level_known else "kept",
+        level="planned" if expected.level_known else "kept",
         devices=devices,
         limited=bool(np.max(np.abs(x)) >= log(MOST_CHANGE) * (1.0 - 1e-6)),
     )
 
 
-def changed(network: Network, factors: Sequence[float]) -> Network:
-    """Return the network with each leaf multiplied by its factor."""
-    rest = iter(factors)
-
-    def made(node: Network) -> Network:
-        if isinstance(node, Leg):
-            return Leg(material=node.material, ohms=node.ohms * next(rest), strings=node.strings)
-        return type(node)(tuple(made(child) for child in node.children))
-
-    return made(network)
-
-
-def _task(expected: Expected, composite: Composite, deviations: FloatArray) -> _Task:
-    pieces = [(p, np.linspace(p.low, p.high, POINTS if p.high > p.low else 1)) for p in expected.need.pieces]
-    T = np.concatenate([points for _, points in pieces])
-    ratios = composite.ratios(deviations, np.r_[T, composite.reference])
-    if ratios is None:
-        raise InternalError("the mean of devices reaches zero, and none of them does")
-    groups = expected.changed or tuple(range(len(legs(expected.network))))
-    free = sorted(set(groups) - expected.fixed)
-    ohms = resistance(expected.network, ratios)
-    wanted = expected.need.wanted(T)
-    weight = np.concatenate([np.full(len(points), p.weight) for p, points in pieces])
-    drift = ohms[:-1] / ohms[-1] - wanted
-    return _Task(
-        network=expected.network,
-        leaf=np.array([free.index(g) if g in free else -1 for g in groups], dtype=np.intp),
-        ratios=ratios,
-        wanted=wanted,
-        weight=weight,
-        centred=np.concatenate([np.full(len(points), float(p.centred)) for p, points in pieces]),
-        ohms=value(expected.network) if expected.level_known else float(ohms[-1]),
-        scale=max(float(np.max(np.abs(drift) / weight)), ROUNDING),
-        value_free=expected.value_free,
-    )
-
-
-def _least_change(task: _Task) -> FloatArray:
+def _least_change(task: Task) -> FloatArray:
     """Return x: of all that give the least figure, the one of least norm."""
     start = _start(task)
     limits = _margins(task, None)
@@ -192,10 +99,10 @@ def _least_change(task: _Task) -> FloatArray:
     return np.asarray(second[: task.free])
 
 
-def _start(task: _Task) -> FloatArray:
+def _start(task: Task) -> FloatArray:
     """Return (x, figure, centre) with all free legs changed alike, so far that the level is right."""
     x = np.zeros(task.free)
-    for _ in range(0 if task.value_free else 20):  # Newton on one number
+    for _ in range(20):  # Newton on one number
         x = x - task.level(x) / max(float(task.level_slopes(x).sum()), 1e-3)
     x = np.clip(x, -log(MOST_CHANGE), log(MOST_CHANGE))
     return np.asarray(np.r_[x, np.max(np.abs(task.drift(x)) / task.weight), 0.0])
@@ -204,7 +111,7 @@ def _start(task: _Task) -> FloatArray:
 Margins = tuple[Callable[[FloatArray], FloatArray], Callable[[FloatArray], FloatArray]]
 
 
-def _margins(task: _Task, bound: float | None) -> Margins:
+def _margins(task: Task, bound: float | None) -> Margins:
     """Return what must not be below zero at y = (x, figure, centre), and its derivatives."""
 
     def margins(y: FloatArray) -> FloatArray:
@@ -222,7 +129,7 @@ def _margins(task: _Task, bound: float | None) -> Margins:
 
 
 def _solved(
-    task: _Task,
+    task: Task,
     start: FloatArray,
     aim: Callable[[FloatArray], float],
     slope: Callable[[FloatArray], FloatArray],
@@ -234,15 +141,12 @@ def _solved(
     far = log(MOST_CHANGE)
     constraints: list[dict[str, Any]] = [
         {"type": "ineq", "fun": margins[0], "jac": margins[1]},
+        {
+            "type": "eq",
+            "fun": lambda y: np.array([task.level(y[:-2])]),
+            "jac": lambda y: np.r_[task.level_slopes(y[:-2]), 0.0, 0.0][None, :],
+        },
     ]
-    if not task.value_free:
-        constraints.append(
-            {
-                "type": "eq",
-                "fun": lambda y: np.array([task.level(y[:-2])]),
-                "jac": lambda y: np.r_[task.level_slopes(y[:-2]), 0.0, 0.0][None, :],
-            }
-        )
     found = minimize(
         aim,
         start,
@@ -253,7 +157,7 @@ def _solved(
         options={"maxiter": MOST_STEPS, "ftol": 1e-14},
     )
     y = np.asarray(found.x)
-    level = 0.0 if task.value_free else abs(task.level(y[:-2]))
+    level = abs(task.level(y[:-2]))
     kept = level <= 1e-9 and bool(np.all(margins[0](y) >= -1e-7))
     return y if kept and aim(y) <= aim(start) else start
 

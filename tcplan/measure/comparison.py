@@ -1,4 +1,7 @@
-"""What comparing a measured composite with its plan finds, as plain frozen records."""
+"""What comparing a measured composite with its plan finds, as plain frozen records.
+
+Long, since it is a list of records, each of them short.
+"""
 
 from __future__ import annotations
 
@@ -48,8 +51,6 @@ class Expected:
         Legs that cannot change.
     level_known : bool
         Whether R at the reference says something of the materials: not when it was trimmed.
-    value_free : bool
-        Whether R at the reference may be any: a new leg then need not keep it.
     seed : int
         Of the lots.
     """
@@ -67,7 +68,6 @@ class Expected:
     changed: tuple[int, ...] = ()
     fixed: frozenset[int] = frozenset()
     level_known: bool = True
-    value_free: bool = False
     seed: int = 1
 
 
@@ -268,8 +268,8 @@ class Centring:
         The new values of the leaves, as planned ones [ohm].
     value : float
         R at the reference of the mean device after [ohm].
-    level : {"planned", "kept", "free"}
-        Whether that is the planned value, what it was measured to be, or just what comes out.
+    level : {"planned", "kept"}
+        Whether that is the planned value, or what it was measured to be.
     devices : tuple of Centred
     limited : bool
         Whether a leg stopped at the largest change that is looked at.
@@ -278,7 +278,7 @@ class Centring:
     factors: tuple[float, ...]
     ohms: tuple[float, ...]
     value: float
-    level: Literal["planned", "kept", "free"]
+    level: Literal["planned", "kept"]
     devices: tuple[Centred, ...]
     limited: bool
 

@@ -18,15 +18,15 @@ from dataclasses import dataclass
 import numpy as np
 
 from tcplan.arrays import FloatArray
-from tcplan.errors import InputError, InternalError, Problem
+from tcplan.errors import InternalError
 from tcplan.measure.common import common_changes
 from tcplan.measure.comparison import Check, Explanation, FoundDeviation
 from tcplan.measure.composite import Composite, Response
 from tcplan.measure.model import CommonErrors
 
-MOST_STEPS = 60
-SETTLED = 1e-7  # of a step, in standard deviations
-ROUNDING = 1e-9  # relative; what arithmetic moves the sum by near its least value
+MOST_STEPS = 100
+SETTLED = 1e-10  # what a step can gain, of the sum
+LEAST_PART = 1e-6  # of a step; of less the sum falls by rounding only
 SEEN = 1e-2  # squared singular value from which the readings say something of a direction
 TWINS = 0.9  # correlation from which two deviations are hardly told apart
 FREE_LEVEL = 10.0  # standard deviation of a level that is not known, a fraction
@@ -84,7 +84,6 @@ def explain(
     common: CommonErrors,
     *,
     level_known: bool = True,
-    where: str = "sweep",
 ) -> Explanation:
     """Return the deviations that explain a device best, with what the readings leave open.
 
@@ -98,55 +97,47 @@ def explain(
         Standard uncertainties of what is common to the sweep; they take part as deviations.
     level_known : bool
         Whether the level of R says something; else it is free, and the drift alone explains.
-    where : str
-        What messages call the device.
 
     Returns
     -------
     Explanation
-
-    Raises
-    ------
-    InputError
-        When no device of these materials comes near the readings.
+        Of readings that no device of these materials comes near, one with a misfit that says so.
     """
     model = _Model(composite=composite, measured=measured, common=common, level_known=level_known)
-    u = _least(model, where)
+    u = _least(model)
     found = model.at(u)
     if found is None:
         raise InternalError("an explanation that reaches zero")
     return _told(model, u, found[0], found[1] / measured.sigma[:, None])
 
 
-def _least(model: _Model, where: str) -> FloatArray:
-    """Return u of the least sum: Gauss-Newton, steps halved until the sum falls."""
-    u, best = np.zeros(model.count), np.inf
-    step = np.zeros(model.count)
+def _least(model: _Model) -> FloatArray:
+    """Return u of the least sum: Gauss-Newton, steps halved until the sum falls.
+
+    It ends where the next step can gain nothing, or after many steps: readings that the materials do not
+    explain make the steps slow, and their misfit is told.
+    """
+    u: FloatArray = np.zeros(model.count)
+    found = model.at(u)
+    if found is None:
+        raise InternalError("a nominal device that reaches zero")
+    best = _sum(model, u, found[0])
     for _ in range(MOST_STEPS):
-        part, found = 1.0, model.at(u + step)
-        while found is None or _sum(model, u + part * step, found[0]) > best * (1.0 + ROUNDING):
-            part *= 0.5
-            if part < 1e-9:
-                return u
-            found = model.at(u + part * step)
-        u = u + part * step
-        best = _sum(model, u, found[0])
         jacobian = found[1] / model.measured.sigma[:, None]
-        rest = (model.measured.ohms - found[0]) / model.measured.sigma
+        rest = np.concatenate([(model.measured.ohms - found[0]) / model.measured.sigma, -u])
         stacked = np.vstack([jacobian, np.eye(model.count)])
-        step = np.linalg.lstsq(stacked, np.concatenate([rest, -u]), rcond=None)[0]
-        if part == 1.0 and np.max(np.abs(step), initial=0.0) <= SETTLED * (
-            1.0 + np.max(np.abs(u), initial=0.0)
-        ):
-            return np.asarray(u + step) if model.at(u + step) is not None else u
-    raise InputError(
-        Problem(
-            where=where,
-            found="readings that no device of the plan's materials comes near",
-            expected="readings of the resistor that was planned",
-            todo="Check the unit of R, and which option was measured (--option).",
-        )
-    )
+        step = np.linalg.lstsq(stacked, rest, rcond=None)[0]
+        gain = float(rest @ (stacked @ step))
+        part = 1.0
+        while (trial := model.at(u + part * step)) is None or _sum(model, u + part * step, trial[0]) > best:
+            part *= 0.5
+            if part < LEAST_PART:
+                return u
+        u, found = u + part * step, trial
+        best = _sum(model, u, found[0])
+        if gain <= SETTLED * (1.0 + best):
+            return u
+    return u
 
 
 def _sum(model: _Model, u: FloatArray, ohms: FloatArray) -> float:

@@ -2,7 +2,11 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+import math
+from collections.abc import Sequence
+from dataclasses import dataclass, replace
+
+import numpy as np
 
 from tcplan.errors import InputError, Problem
 from tcplan.measure.fit import fit
@@ -12,6 +16,8 @@ from tcplan.measure.model import CommonErrors, Fit, Sweep
 from tcplan.measure.population import population
 from tcplan.measure.request import SpreadRules, SweepRequest
 from tcplan.measure.spread import Population
+
+_SMALLEST = 1e-300  # a probability that is 0 in double precision has a logarithm all the same
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -30,8 +36,8 @@ class FittedMaterial:
     found : Population
         All devices together.
     quadratic : float, optional
-        The largest probability, over the devices, of such a quadratic term if there were none; None for
-        laws without one.
+        Probability of quadratic terms at least as large, all devices together, if there were none; None
+        where no choice was made.
     notes : tuple of str
         What the reader of the file said.
     """
@@ -64,26 +70,70 @@ def fitted(
 ) -> FittedMaterial:
     """Return what the sweep of one material says.
 
-    All devices are fitted with one order: where none is asked, the quadratic if any device needs it.
+    All devices are fitted with one order: where none is asked, the quadratic if the data of all devices
+    together show it. A device whose readings are all left out is not there.
 
     Raises
     ------
     InputError
         Naming the devices that can not be fitted.
     """
-    kept = excluded(sweep, request.exclude)
-    orders = [request.order] if request.order is not None or request.model != "polynomial" else [2, 1]
-    fits = _all(request, kept, common, orders[0])
-    quadratic = None
-    if len(orders) > 1:
-        quadratic = min(f.last_term if f.last_term is not None else 1.0 for f in fits)
-        if quadratic > RISK:
-            fits = _all(request, kept, common, 1)
+    kept, gone = _without_empty(excluded(sweep, request.exclude))
+    if not kept.devices:
+        raise InputError(Problem(where=sweep.source, found="no reading left", expected="readings to fit"))
+    fits, quadratic = _fits(request, kept, common)
     lots = tuple(kept.lots[int(kept.lot[kept.device == k][0])] for k in range(len(kept.devices)))
-    found = population(fits, lots, kept.devices, coverage=rules.coverage, confidence=rules.confidence)
+    try:
+        found = population(fits, lots, kept.devices, coverage=rules.coverage, confidence=rules.confidence)
+    except InputError as error:
+        raise InputError(problem.inside(sweep.source) for problem in error.problems) from None
     return FittedMaterial(
-        request=request, sweep=kept, fits=fits, lots=lots, found=found, quadratic=quadratic, notes=notes
+        request=request,
+        sweep=kept,
+        fits=fits,
+        lots=lots,
+        found=found,
+        quadratic=quadratic,
+        notes=(*notes, *(f"All readings of device {name or '1'} are left out." for name in gone)),
     )
+
+
+def _without_empty(sweep: Sweep) -> tuple[Sweep, tuple[str, ...]]:
+    """Return the sweep without devices that have no reading, and their names."""
+    there = np.unique(sweep.device)
+    if len(there) == len(sweep.devices):
+        return sweep, ()
+    devices = tuple(sweep.devices[k] for k in there)
+    gone = tuple(name for k, name in enumerate(sweep.devices) if k not in set(there.tolist()))
+    return replace(sweep, devices=devices, device=np.searchsorted(there, sweep.device)), gone
+
+
+def _fits(
+    request: SweepRequest, sweep: Sweep, common: CommonErrors
+) -> tuple[tuple[Fit, ...], float | None]:
+    """Return the fits of all devices, with one order, and the probability of the quadratic term."""
+    if request.order is not None or request.model != "polynomial":
+        return _all(request, sweep, common, request.order), None
+    try:
+        curved = _all(request, sweep, common, 2)
+    except InputError:
+        # too few readings for it in some device: a line, where that can be fitted to all
+        return _all(request, sweep, common, 1), None
+    together = _together([fit.last_term for fit in curved if fit.last_term is not None])
+    return (curved if together <= RISK else _all(request, sweep, common, 1)), together
+
+
+def _together(probabilities: Sequence[float]) -> float:
+    """Return the probability of several devices together, by Fisher's sum of -2 ln p.
+
+    References
+    ----------
+    R. A. Fisher, "Statistical Methods for Research Workers", on combining tests of significance.
+    """
+    from scipy.special import chdtrc
+
+    total = -2.0 * sum(math.log(max(p, _SMALLEST)) for p in probabilities)
+    return float(chdtrc(2 * len(probabilities), total))
 
 
 def _all(request: SweepRequest, sweep: Sweep, common: CommonErrors, order: int | None) -> tuple[Fit, ...]:

@@ -2,7 +2,9 @@
 
 from __future__ import annotations
 
+from dataclasses import replace
 from pathlib import Path
+from typing import Any
 
 from tcplan.errors import InputError
 from tcplan.material.model import text_problems
@@ -15,7 +17,7 @@ from tcplan.measure.request_shape import shape_mistakes
 from tcplan.names import shown
 from tcplan.ranges import REFERENCE
 from tcplan.table_reader import TableReader
-from tcplan.toml_input import file_text, join, read_toml_text
+from tcplan.toml_input import file_text, join, place, read_toml_text
 
 ERROR_UNITS = {
     "chamber_offset": "K",
@@ -49,11 +51,15 @@ def parse_request(text: str, name: str, folder: Path) -> FitRequest:
     folder : Path
         What the names of sweeps are relative to.
     """
-    data = read_toml_text(text, name)
+    return request_of(read_toml_text(text, name), name, folder)
+
+
+def request_of(data: dict[str, Any], name: str, folder: Path) -> FitRequest:
+    """Return the checked request of plain data in the shape of a measurement file; see `parse_request`."""
     reader = TableReader(data, name, list(shape_mistakes(data, name)))
     tables = data.get("sweep")
     sweeps = [
-        _sweep(TableReader(table, join(name, f"sweep.{key}"), reader.problems), key, folder)
+        _sweep(TableReader(table, join(name, place(("sweep", key))), reader.problems), key, folder)
         for key, table in (tables.items() if isinstance(tables, dict) else ())
         if isinstance(table, dict)
     ]
@@ -69,7 +75,11 @@ def _sweep(table: TableReader, name: str, folder: Path) -> SweepRequest | None:
     """Return one sweep; None when it has mistakes, which are noted."""
     before = len(table.problems)
     file, source, label = (table.text(key) for key in ("file", "source", "label"))
-    table.problems.extend(text_problems(name, label or name, source or "none"))
+    known = name if label is None else label, "none" if source is None else source
+    for problem in text_problems(name, *known):
+        key = problem.where.rpartition(".")[2]
+        inside = key if key in ("label", "source") else ""
+        table.problems.append(replace(problem, where=join(table.where, inside)))
     if file is not None and "\0" in file:
         table.refuse("file", shown(file), "the name of a file")
     model, size = _model(table), _size(table)

@@ -25,12 +25,15 @@ class Element:
         How many strings in parallel share its current.
     length : float, optional
         Of one unit [m]; None where it is not known.
+    ends : bool
+        Whether it is the ends of the units of a film, which have no voltage coefficient of their own.
     """
 
     leg: str
     units: int = 1
     strings: int = 1
     length: float | None = None
+    ends: bool = False
 
     def __post_init__(self) -> None:
         for what, count in (("units", self.units), ("strings", self.strings)):

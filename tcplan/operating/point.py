@@ -136,7 +136,11 @@ def operating_point(
         temperature=state.temperature,
         elements=tuple(elements),
         joined=joined_legs(network, elements),
-        not_stated=_once(m.name for m in leaves if m.voltage_coefficient is None),
+        not_stated=_once(
+            m.name
+            for m, e in zip(leaves, elements, strict=True)
+            if m.voltage_coefficient is None and not e.ends
+        ),
         no_length=_once(m.name for m, e in zip(leaves, elements, strict=True) if _per_volt(m, e) is None),
         not_heated=_once(m.name for m, row in zip(leaves, device.heating, strict=True) if not row.any()),
     )

@@ -2,13 +2,12 @@
 
 All units of a film are alike, so in a leg of strings of units the bodies together and the ends together
 are two resistors in series, each with its own temperature coefficient. Every bought part has its own
-tolerance and its own TCR: it is a material of its own, and so is every cut of a wire that has several,
-and a given member beside units or cuts of its material.
+tolerance and its own TCR: it is a material of its own, and so is a given member beside units or cuts of
+its material. The cuts of one wire are of one spool, off together, the shortest cut the most.
 """
 
 from __future__ import annotations
 
-from collections import Counter
 from collections.abc import Iterable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, replace
 
@@ -120,9 +119,10 @@ def assembled(
     leaves: list[_Leaf] = []
     rest = iter(own)
     network = _opened(_made(ideal, rest, leaves, _apart(own)))
+    cut = _cut_errors(own, cut_error)
     found: dict[str, tuple[Material, str]] = {}
     for leaf in leaves:
-        made = (_material(leaf, materials, cut_error), leaf.of)
+        made = (_material(leaf, materials, cut), leaf.of)
         name = made[0].name
         if found.setdefault(name, made) != made or (name != leaf.of and name in materials):
             raise InputError(_taken(name, leaf.of))
@@ -164,16 +164,19 @@ def _value_spread(material: Material) -> float:
 def _apart(own: tuple[MadeLeg, ...]) -> set[str]:
     """Return the ids of the legs that take a name of their own: what they share with the others is not known.
 
-    Cuts of one wire, and given members beside what is made of their material.
+    Given members beside what is made of their material.
     """
-    wires = Counter(leg.material for leg in own if isinstance(leg, WireLeg))
     made = {leg.material for leg in own if isinstance(leg, FilmLeg | WireLeg)}
-    return {
-        leg.id
-        for leg in own
-        if (isinstance(leg, WireLeg) and wires[leg.material] > 1)
-        or (isinstance(leg, PlainLeg) and leg.material in made)
-    }
+    return {leg.id for leg in own if isinstance(leg, PlainLeg) and leg.material in made}
+
+
+def _cut_errors(own: tuple[MadeLeg, ...], cut_error: float) -> dict[str, float]:
+    """Return by what part of its length the shortest cut of each wire may be off."""
+    found: dict[str, float] = {}
+    for leg in own:
+        if isinstance(leg, WireLeg):
+            found[leg.material] = max(found.get(leg.material, 0.0), cut_error / leg.length)
+    return found
 
 
 def _made(node: Network, legs: Iterator[MadeLeg], leaves: list[_Leaf], apart: set[str]) -> Network:
@@ -215,7 +218,7 @@ def _film_leaves(part: FilmLeg) -> Iterator[_Leaf]:
     yield _Leaf(body, part.material, element, part)
     if unit.ends_ohms > 0:
         ends = Leg(material=ends_name(part.material), ohms=unit.ends_ohms * factor, strings=strings)
-        yield _Leaf(ends, part.material, replace(element, length=None), part, ends=True)
+        yield _Leaf(ends, part.material, replace(element, length=None, ends=True), part, ends=True)
 
 
 def _opened(network: Network) -> Network:
@@ -231,7 +234,7 @@ def _opened(network: Network) -> Network:
 # --- its materials --------------------------------------------------------------------------------------
 
 
-def _material(leaf: _Leaf, materials: Mapping[str, Material], cut_error: float) -> Material:
+def _material(leaf: _Leaf, materials: Mapping[str, Material], cut: Mapping[str, float]) -> Material:
     """Return the material of a leaf: at the width as drawn, with the tolerance of its cut."""
     plain = materials[leaf.of]
     if leaf.ends:
@@ -241,9 +244,8 @@ def _material(leaf: _Leaf, materials: Mapping[str, Material], cut_error: float) 
     if isinstance(leaf.part, FilmLeg) and plain.film is not None:
         film = replace(plain.film, preferred_width=leaf.part.unit.width)
         return replace(own, film=film)
-    if isinstance(leaf.part, WireLeg) and own.spread is not None and cut_error > 0.0:
-        error = Spread(meaning="limits", value=cut_error / leaf.part.length)
-        return replace(own, spread=own.spread.widened(error))
+    if isinstance(leaf.part, WireLeg) and own.spread is not None and cut[leaf.of] > 0.0:
+        return replace(own, spread=own.spread.widened(Spread(meaning="limits", value=cut[leaf.of])))
     return own
 
 

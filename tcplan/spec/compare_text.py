@@ -1,16 +1,17 @@
-"""A comparison of measured devices with their plan in words and numbers, for the screen and as JSON."""
+"""A comparison of measured devices with their plan in words and numbers, for the screen."""
 
 from __future__ import annotations
 
 from collections.abc import Iterator, Sequence
-from dataclasses import asdict, dataclass
+from dataclasses import dataclass
 from math import ceil, floor, log10
 from typing import Any
 
 from tcplan.measure.comparison import Centring, Compared, Comparison, Explanation, FoundDeviation, Point
 from tcplan.network import leg_names, legs
-from tcplan.plan import Option, Plan
+from tcplan.plan import Plan
 from tcplan.spec import numbers
+from tcplan.spec.compare_data import compared_option
 from tcplan.units import format_celsius, format_ohms, to_celsius
 
 HEAD = ("degC", "drift", "u", "nominal", "lowest", "highest", "band")
@@ -277,12 +278,8 @@ def _outward(value: float, digits: int, to: Any) -> float:
 # --- what would centre it -------------------------------------------------------------------------------
 
 
-def _option(plan: Plan, comparison: Comparison) -> Option:
-    return next(option for option in plan.options if option.id == comparison.name)
-
-
 def _legs(plan: Plan, comparison: Comparison, centring: Centring) -> Iterator[tuple[str, ...]]:
-    own = legs(_option(plan, comparison).network)
+    own = legs(compared_option(plan, comparison).network)
     for name, leg, ohms, factor in zip(
         leg_names(len(own)), own, centring.ohms, centring.factors, strict=True
     ):
@@ -305,7 +302,6 @@ def _centring(comparison: Comparison) -> Iterator[str]:
     levels = {
         "planned": f"becomes the planned {format_ohms(centring.value)}",
         "kept": f"stays at {format_ohms(centring.value)}",
-        "free": f"is then {format_ohms(centring.value)}",
     }
     yield f"R {whose}at the reference {levels[centring.level]}."
     yield "Of all values within 1 % of the least figure these change least."
@@ -319,126 +315,3 @@ def _assumed(comparison: Comparison) -> Iterator[str]:
     if comparison.unspread:
         yield f"No spread is stated for {', '.join(comparison.unspread)}: taken as exact."
     yield CAUTION
-
-
-# --- data -----------------------------------------------------------------------------------------------
-
-
-def comparison_data(plan: Plan, comparison: Comparison) -> dict[str, Any]:
-    """Return a comparison as plain JSON data, units in the names, at full precision."""
-    curves = comparison.curves
-    return {
-        "title": plan.brief["title"],
-        "option": comparison.name,
-        "source": comparison.source,
-        "good": comparison.good,
-        "reference_degC": to_celsius(comparison.reference),
-        "planned_ohms": comparison.planned,
-        "tolerance": comparison.tolerance,
-        "limit_ppm": plan.limit.drift_ppm,
-        "level_known": comparison.level_known,
-        "no_spread_stated": list(comparison.unspread),
-        "devices": [_device_data(one) for one in comparison.devices],
-        "predicted": {
-            "degC": [to_celsius(T) for T in curves.T],
-            "nominal_ppm": _ppm(curves.nominal),
-            "lowest_ppm": _ppm(curves.lowest),
-            "highest_ppm": _ppm(curves.highest),
-            "likely_low_ppm": _ppm(curves.likely_low),
-            "likely_high_ppm": _ppm(curves.likely_high),
-            "likely_part": plan.limit.quantile,
-        },
-        "centring": _centring_data(plan, comparison),
-    }
-
-
-def _ppm(fractions: Sequence[float] | None) -> list[float] | None:
-    return None if fractions is None else [1e6 * one for one in fractions]
-
-
-def _device_data(one: Compared) -> dict[str, Any]:
-    explanation = one.explanation
-    return {
-        "device": one.device,
-        "ohms": one.ohms,
-        "ohms_uncertainty": one.ohms_uncertainty,
-        "ohms_by": one.by,
-        "fit_order": one.order,
-        "uncertainty_stated": one.stated,
-        "value_place": one.value_place,
-        "place": one.place,
-        "farthest": one.farthest,
-        "outside_from_uncertainties": one.factor,
-        "left_out": one.left_out,
-        "figure": None
-        if one.figure is None
-        else {
-            "figure_ppm": 1e6 * one.figure.figure,
-            "at_degC": to_celsius(one.figure.at),
-            "uncertainty_ppm": 1e6 * one.figure.uncertainty,
-            "place": one.figure.place,
-        },
-        "points": [_point_data(point) for point in one.points],
-        "explanation": {
-            "deviations": [_deviation_data(d) for d in explanation.deviations],
-            "common_errors": [_deviation_data(d) for d in explanation.common],
-            "covariance": [list(row) for row in explanation.covariance],
-            "hardly_told_apart": [list(pair) for pair in explanation.twins],
-            "norm_sigmas": explanation.norm,
-            "spread_check": asdict(explanation.spread),
-            "misfit_check": asdict(explanation.misfit),
-            "residual_rms_ppm": 1e6 * explanation.residual,
-            "residual_largest_ppm": 1e6 * explanation.largest,
-            "drift_ppm": _ppm(one.curve),
-        },
-    }
-
-
-def _point_data(point: Point) -> dict[str, Any]:
-    drifts = ("drift", "uncertainty", "nominal", "lowest", "highest", "explained")
-    return {
-        "line": point.line,
-        "degC": to_celsius(point.T),
-        "ohms": point.ohms,
-        **{f"{name}_ppm": 1e6 * getattr(point, name) for name in drifts},
-        "beyond_uncertainties": point.beyond,
-    }
-
-
-def _deviation_data(one: FoundDeviation) -> dict[str, Any]:
-    """Return a deviation in SI: a fraction, 1/K or 1/K^2 of a material; K, a fraction or ohm of the sweep."""
-    named = {"material": one.material} if one.material else {}
-    return {
-        **named,
-        "parameter": one.slot,
-        "value": one.value,
-        "uncertainty": one.uncertainty,
-        "sigma": one.sigma,
-        "sigmas": one.sigmas,
-    }
-
-
-def _centring_data(plan: Plan, comparison: Comparison) -> dict[str, Any]:
-    centring = comparison.centring
-    if centring is None:
-        return {"why_not": comparison.why_not}
-    own = legs(_option(plan, comparison).network)
-    rows = zip(leg_names(len(own)), own, centring.ohms, centring.factors, strict=True)
-    return {
-        "legs": [
-            {"id": name, "material": leg.material, "planned_ohms": leg.ohms, "ohms": ohms, "factor": factor}
-            for name, leg, ohms, factor in rows
-        ],
-        "reference_ohms": centring.value,
-        "level": centring.level,
-        "limited": centring.limited,
-        "devices": [
-            {
-                "device": one.device,
-                "before_ppm": 1e6 * one.before,
-                "after_ppm": 1e6 * one.after,
-                "uncertainty_ppm": 1e6 * one.uncertainty,
-            }
-            for one in centring.devices
-        ],
-    }

@@ -2,12 +2,13 @@
 
 from __future__ import annotations
 
+import math
 from collections.abc import Mapping
 from dataclasses import asdict
 from typing import Any
 
 from tcplan.measure.fitted import FittedMaterial
-from tcplan.measure.model import Fit
+from tcplan.measure.model import Fit, LackOfFit
 from tcplan.measure.spread import Estimate, Scatter
 from tcplan.units import to_celsius
 
@@ -18,8 +19,11 @@ def fit_data(one: FittedMaterial, refused: Mapping[str, int]) -> dict[str, Any]:
     return {
         "source": asked.source,
         "file": asked.file.name,
+        "law": found.law.parameters(),
         "reference_degC": to_celsius(asked.reference),
         "readings": len(one.sweep.T),
+        "low_degC": to_celsius(found.low),
+        "high_degC": to_celsius(found.high),
         "excluded_lines": list(asked.exclude),
         "refused_rows": refused.get(asked.name, 0),
         "refused": [asdict(row) for row in one.sweep.refused],
@@ -68,7 +72,14 @@ def _fit(fit: Fit) -> dict[str, Any]:
         "high_degC": to_celsius(fit.high),
         "residuals": list(fit.residuals),
         "flags": [asdict(flag) for flag in fit.flags],
-        "lack_of_fit": None if fit.lack_of_fit is None else asdict(fit.lack_of_fit),
+        "lack_of_fit": _lack_of_fit(fit.lack_of_fit),
         "last_term_probability": fit.last_term,
         "hysteresis": None if fit.hysteresis is None else asdict(fit.hysteresis),
     }
+
+
+def _lack_of_fit(found: LackOfFit | None) -> dict[str, Any] | None:
+    """Return the test as data; F is None where the repeats do not differ at all."""
+    if found is None:
+        return None
+    return asdict(found) | {"f": found.f if math.isfinite(found.f) else None}

@@ -1,20 +1,28 @@
-"""What a fit found, in words: the law with its uncertainties, the spread, and what stands out."""
+"""What a fit found, in words: the law with its uncertainties, the spread, and what stands out.
+
+Long, since each thing that a fit can find has words of its own.
+"""
 
 from __future__ import annotations
 
-from collections.abc import Callable, Iterator, Sequence
+import math
+from collections.abc import Iterator, Sequence
 
+from tcplan.measure.fit_checks import RISK
 from tcplan.measure.fitted import FittedMaterial
 from tcplan.measure.model import Fit
-from tcplan.measure.spread import Scatter
+from tcplan.measure.spread import Population, Scatter
+from tcplan.measure.tracking import MeasuredTracking
 from tcplan.spec import numbers
 from tcplan.units import format_celsius, format_ohms
 
-MOST_SAID = 8  # devices or lines that are named
-RISK = 0.05
+MOST_LINES = 8  # that are told of each kind
+MOST_DEVICES = 4  # that are named
+LEAST_TOLD = 1e-3  # of a probability
 SCALES = {"tc1": (1e6, "ppm/K"), "tc2": (1e6, "ppm/K^2"), "tc3": (1e6, "ppm/K^3")}
 WORDS = {"value": "R", "tc1": "TC1", "tc2": "TC2", "tc3": "TC3"}
 SCATTER_SCALES = {"value": (1e2, "%"), "tc1": (1e6, "ppm/K"), "tc2": (1e6, "ppm/K^2")}
+NAME_LETTERS = 16  # of a device or a lot in the table
 
 Fact = tuple[str, tuple[str, ...]]
 
@@ -29,141 +37,237 @@ def head(one: FittedMaterial) -> str:
 
 
 def facts(one: FittedMaterial, refused: int) -> tuple[Fact, ...]:
-    """Return the labels and sentences of a material; those that have nothing to say are left out."""
+    """Return the labels and sentences of a material; those that have nothing to say are left out.
+
+    Parameters
+    ----------
+    one : FittedMaterial
+    refused : int
+        How many rows of its file were no readings.
+    """
     found: Sequence[Fact] = (
         ("Law", tuple(_law(one))),
-        ("Spread", tuple(_spread(one))),
-        ("Fit", tuple(_quality(one))),
+        ("Spread", tuple(_spread(one.found))),
+        ("Readings", tuple(_quality(one))),
         ("Flags", tuple(_flags(one))),
+        ("Left out", tuple(_left_out(one))),
         ("Refused", tuple(_refused(one, refused))),
-        ("Note", (*one.notes, *one.found.notes)),
+        ("Note", (*one.notes, *map(_capital, one.found.notes))),
     )
-    return tuple((label, kept) for label, texts in found if (kept := tuple(t for t in texts if t)))
+    return tuple((label, texts) for label, texts in found if texts)
+
+
+def _capital(note: str) -> str:
+    """Return a note that begins with the name of a component with its word instead."""
+    word, colon, rest = note.partition(":")
+    return f"{WORDS[word]}{colon}{rest}" if word in WORDS else note
+
+
+def tracking_text(names: Sequence[str], tracked: MeasuredTracking) -> str:
+    """Return what is said of two materials whose TC1 track."""
+    ppm = numbers.worst(tracked.half_width * 1e6)
+    return f"TC1 of {names[0]} and {names[1]} track within {ppm} ppm/K of their mean difference."
+
+
+# --- the law --------------------------------------------------------------------------------------------
 
 
 def _law(one: FittedMaterial) -> Iterator[str]:
-    found = one.found
+    found, several = one.found, one.found.devices > 1
     values = zip(found.names, found.values, found.uncertainties, strict=True)
-    for name, value, uncertainty in values:
+    for name, value, u in values:
         if name == "R":
-            percent = numbers.number(uncertainty / value * 100.0, 2)
             at = format_celsius(one.request.reference)
-            yield f"R({at}) {format_ohms(value)} +- {percent} % (standard uncertainty of the mean)."
+            of = " of the mean of the lots" if found.lots > 1 else " of the mean" if several else ""
+            share = numbers.number(u / value * 100.0, 2)
+            yield f"R({at}) {format_ohms(value)} +- {share} % (standard uncertainty{of})."
         else:
             scale, unit = SCALES.get(name, (1.0, ""))
-            word = WORDS.get(name, name)
-            spread = numbers.number(uncertainty * scale, 2)
-            yield f"{word} {numbers.number(value * scale, 5)} +- {spread} {unit}".rstrip() + "."
+            yield f"{WORDS.get(name, name)} {_known(value * scale, u * scale)} {unit}".rstrip() + "."
+    yield from _quadratic(one)
+
+
+def _quadratic(one: FittedMaterial) -> Iterator[str]:
     if one.quadratic is not None:
-        dropped = one.quadratic > RISK
-        p = numbers.number(one.quadratic, 2) if one.quadratic >= 1e-3 else "below 0.001"
-        yield (
-            f"The quadratic term is not significant in any device (p {p} or more): a line was fitted."
-            if dropped
-            else f"The quadratic term is significant (p {p} in the device that shows it best)."
-        )
+        together = ", all devices together" if len(one.fits) > 1 else ""
+        p = f"(p {_probability(one.quadratic)}{together})"
+        if one.quadratic > RISK:
+            yield f"The quadratic term is not significant {p}: a line was fitted."
+        else:
+            yield f"The quadratic term is significant {p}."
+    elif one.request.model == "polynomial" and one.request.order is None:
+        yield "A line was fitted: there are too few readings for a quadratic term."
 
 
-def _spread(one: FittedMaterial) -> Iterator[str]:
+def _known(value: float, uncertainty: float) -> str:
+    """Return a value to the second digit of its uncertainty, with it."""
+    if not 0.0 < uncertainty < math.inf:
+        return f"{numbers.number(value, 6)} +- {numbers.number(uncertainty, 2)}"
+    place = math.floor(math.log10(uncertainty)) - 1
+    if not -12 <= place <= 0:
+        digits = max(1, math.floor(math.log10(abs(value) or uncertainty)) - place + 1)
+        return f"{numbers.number(value, min(digits, 15))} +- {numbers.number(uncertainty, 2)}"
+    return f"{value + 0.0:.{-place}f} +- {uncertainty:.{-place}f}"
+
+
+def _probability(p: float) -> str:
+    return numbers.number(p, 2) if p >= LEAST_TOLD else "below 0.001"
+
+
+# --- the spread -----------------------------------------------------------------------------------------
+
+
+def _spread(found: Population) -> Iterator[str]:
     """Yield the scatter of each component over devices and lots, with what the data support."""
-    found = one.found
+    if found.devices == 1:
+        yield "One device says nothing of it: the material is written without a spread."
+        return
+    part, sure = numbers.percent(found.coverage), numbers.percent(found.confidence)
     for scatter in found.scatters:
-        yield _scatter(scatter, found.coverage, found.confidence)
+        yield _scatter(scatter)
+    of = "all devices" if found.lots > 1 else "devices of such a lot"
+    yield f"Limits hold {part} of {of} with {sure} confidence."
     correlation = found.correlation
     if correlation is not None:
         shown = "written as a correlation" if correlation.is_shown else "not shown by the data"
-        yield (
-            f"Correlation of R with TC1 {numbers.number(correlation.value, 2)} "
-            f"({numbers.number(correlation.low, 2)} to {numbers.number(correlation.high, 2)}): {shown}."
+        value, low, high = (
+            numbers.number(x, 2) for x in (correlation.value, correlation.low, correlation.high)
         )
+        yield f"Correlation of R with TC1 {value} ({low} to {high}): {shown}."
 
 
-def _scatter(scatter: Scatter, coverage: float, confidence: float) -> str:
+def _scatter(scatter: Scatter) -> str:
     scale, unit = SCATTER_SCALES[scatter.name]
-    parts = [
-        f"{word} {numbers.number(estimate.sigma * scale, 2)}"
-        for word, estimate in (("device", scatter.device), ("lot", scatter.lot))
-        if estimate is not None
-    ]
-    if not parts:
-        return f"{WORDS[scatter.name]}: one device says nothing of the spread."
-    half = ""
-    if scatter.half_width is not None:
-        half = (
-            f"; +-{numbers.number(scatter.half_width * scale, 3)} {unit} holds "
-            f"{numbers.percent(coverage)} of devices at {numbers.percent(confidence)} confidence"
-        )
-    return f"{WORDS[scatter.name]}: sigma of {' and '.join(parts)} {unit}{half}."
+    pairs = (("device", scatter.device), ("lot", scatter.lot))
+    told = [(word, estimate) for word, estimate in pairs if estimate is not None]
+    if not told and scatter.total is not None:  # one device of each lot
+        told = [("any device", scatter.total)]
+    sigmas = " and ".join(f"{word} {numbers.number(e.sigma * scale, 2)}" for word, e in told)
+    half = "" if scatter.half_width is None else f"; limits +-{numbers.worst(scatter.half_width * scale)}"
+    return f"{WORDS[scatter.name]}: sigma of {sigmas}{half} {unit}."
+
+
+# --- the readings ---------------------------------------------------------------------------------------
 
 
 def _quality(one: FittedMaterial) -> Iterator[str]:
     """Yield how the readings lie about their laws."""
-    sigmas = [fit.sigma for fit in one.fits]
-    yield f"Readings scatter by {_ppm(min(sigmas))} to {_ppm(max(sigmas))} about their law, 1 sigma."
-    lacking = _named(one, lambda fit: fit.lack_of_fit is not None and fit.lack_of_fit.probability < RISK)
-    if lacking:
-        yield f"Lack of fit (95 %) in {lacking}: the law is too simple for these readings."
+    yield from _scatter_of_readings(one)
+    lacking = [fit.lack_of_fit is not None and fit.lack_of_fit.probability < RISK for fit in one.fits]
+    tested = sum(fit.lack_of_fit is not None for fit in one.fits)
+    if any(lacking):
+        least = min(fit.lack_of_fit.probability for fit in one.fits if fit.lack_of_fit is not None)
+        p = _probability(least)
+        yield f"Lack of fit (p {p} at least) {_where(one, lacking)}: the law is too simple for them."
+    elif tested:
+        yield "Repeats show no lack of fit (p above 0.05)."
     moved = [fit.hysteresis for fit in one.fits if fit.hysteresis is not None]
     if moved:
-        significant = _named(one, lambda fit: fit.hysteresis is not None and fit.hysteresis.significant)
-        most = max(abs(h.most) for h in moved)
-        told = f"significant in {significant}" if significant else "not significant"
-        yield f"Hysteresis between the ways up and down: {_ppm(most)} at most, {told}."
+        significant = [fit.hysteresis is not None and fit.hysteresis.significant for fit in one.fits]
+        most = max((h.most for h in moved), key=abs)
+        mean = sum(h.mean for h in moved) / len(moved)
+        told = f"significant {_where(one, significant)}" if any(significant) else "not significant"
+        yield f"Hysteresis, down less up: {_ppm(mean)} in the mean, {_ppm(most)} at most; {told}."
 
 
-def _named(one: FittedMaterial, is_so: Callable[[Fit], bool]) -> str:
-    names = [
-        name or "the device" for name, fit in zip(one.sweep.devices, one.fits, strict=True) if is_so(fit)
-    ]
-    more = f" and {len(names) - MOST_SAID} more" if len(names) > MOST_SAID else ""
-    return ", ".join(names[:MOST_SAID]) + more
+def _scatter_of_readings(one: FittedMaterial) -> Iterator[str]:
+    low, high = (_ppm(pick(fit.sigma for fit in one.fits)) for pick in (min, max))
+    sigma = low if low == high else f"{low} to {high}"
+    squares = [fit.chi_squared for fit in one.fits if fit.chi_squared is not None]
+    dof = sum(fit.dof for fit in one.fits)
+    if not squares:
+        yield f"Readings scatter by {sigma} about their law (1 sigma)."
+    elif not dof:
+        yield f"Readings are known to {sigma} as stated; none is left over to check that."
+    else:
+        factor = math.sqrt(sum(squares) / dof)
+        p = _more(sum(squares), dof)
+        told = f": more than stated (p {_probability(p)})" if p < RISK else ""
+        shown = numbers.number(factor, 3)
+        yield f"Readings are known to {sigma} as stated (1 sigma), and scatter by {shown} times that{told}."
+
+
+def _more(chi_squared: float, dof: int) -> float:
+    """Return the probability of more than this sum of squares (Wilson and Hilferty, 1931).
+
+    Good to about 0.001 for any number of degrees of freedom, which is what is printed; no library is needed.
+    """
+    middle, width = 1.0 - 2.0 / (9.0 * dof), math.sqrt(2.0 / (9.0 * dof))
+    z = ((chi_squared / dof) ** (1.0 / 3.0) - middle) / width
+    return 0.5 * math.erfc(z / math.sqrt(2.0))
+
+
+def _where(one: FittedMaterial, is_so: Sequence[bool]) -> str:
+    names = [name or "the device" for name, so in zip(one.sweep.devices, is_so, strict=True) if so]
+    if len(one.fits) > 1 and len(names) == len(one.fits):
+        return "in every device"
+    if len(names) > MOST_DEVICES:
+        return f"in {len(names)} of {len(one.fits)} devices"
+    return f"in {', '.join(names)}"
+
+
+# --- what stands out ------------------------------------------------------------------------------------
 
 
 def _flags(one: FittedMaterial) -> Iterator[str]:
-    """Yield the readings that stand out; none is left out unasked."""
+    """Yield the readings that stand out, the farthest first; none is left out unasked."""
     flags = [flag for fit in one.fits for flag in fit.flags]
-    outliers = [
-        f"line {flag.line} ({numbers.number(flag.studentised, 3)} sigma)" for flag in flags if flag.outlier
-    ]
-    levers = [f"line {flag.line}" for flag in flags if not flag.outlier]
+    outliers = sorted((f for f in flags if f.outlier), key=lambda f: -abs(f.studentised))
+    levers = sorted((f for f in flags if not f.outlier), key=lambda f: -f.leverage)
     if outliers:
-        yield f"Outliers, kept unless excluded: {_listed(outliers)}."
+        told = [f"line {f.line} ({numbers.signed(f.studentised, 2)} sigma)" for f in outliers]
+        yield f"Outliers, kept unless excluded: {_listed(told)}."
     if levers:
-        yield f"High leverage, the law hangs on them: {_listed(levers)}."
+        yield f"High leverage, the law hangs on them: {_listed([f'line {f.line}' for f in levers])}."
 
 
-def _listed(words: Sequence[str]) -> str:
-    more = f" and {len(words) - MOST_SAID} more" if len(words) > MOST_SAID else ""
-    return ", ".join(words[:MOST_SAID]) + more
+def _left_out(one: FittedMaterial) -> Iterator[str]:
+    lines = sorted(set(one.request.exclude))
+    if lines:
+        word = "line" if len(lines) == 1 else "lines"
+        yield f"As asked, {word} {_listed([str(line) for line in lines])}."
 
 
 def _refused(one: FittedMaterial, count: int) -> Iterator[str]:
     """Yield the rows that are no readings, by line."""
     if not count:
         return
-    yield f"{count} {'rows are' if count > 1 else 'row is'} no reading; fit.json lists them."
-    for row in one.sweep.refused[:MOST_SAID]:
-        yield f"line {row.line}: found {row.found}; expected {row.expected}."
+    yield f"{count} {'rows are no readings' if count > 1 else 'row is no reading'}; fit.json lists them."
+    for row in one.sweep.refused[:MOST_LINES]:
+        yield f"Line {row.line}: found {row.found}; expected {row.expected}."
+
+
+def _listed(words: Sequence[str]) -> str:
+    more = f" and {len(words) - MOST_LINES} more" if len(words) > MOST_LINES else ""
+    return ", ".join(words[:MOST_LINES]) + more
 
 
 def _ppm(figure: float) -> str:
     return f"{numbers.number(figure * 1e6, 3)} ppm"
 
 
+# --- the devices ----------------------------------------------------------------------------------------
+
+
 def device_rows(one: FittedMaterial) -> tuple[tuple[str, ...], ...]:
-    """Return a table of the devices, its head first."""
-    names = [name for name in one.found.names if name in ("R", *SCALES)]
-    table = [("device", "lot", *(f"{WORDS.get(n, n)}{_unit(n)}" for n in names), "sigma, ppm")]
-    for name, lot, fit in zip(one.sweep.devices, one.lots, one.fits, strict=True):
-        table.append((name or "-", lot or "-", *(_cell(fit, n) for n in names), f"{fit.sigma * 1e6:.3g}"))
-    return tuple(table)
+    """Return a table of the devices, its head first: parameters with standard uncertainties, and sigma."""
+    names = one.found.names
+    head = ("device", "lot", *(f"{WORDS.get(name, name)}{_unit(name)}" for name in names), "sigma, ppm")
+    rows = (
+        (_short(name), _short(lot), *(_cell(fit, n) for n in names), numbers.number(fit.sigma * 1e6, 3))
+        for name, lot, fit in zip(one.sweep.devices, one.lots, one.fits, strict=True)
+    )
+    return (head, *rows)
+
+
+def _short(name: str) -> str:
+    return (name if len(name) <= NAME_LETTERS else f"{name[: NAME_LETTERS - 2]}..") or "-"
 
 
 def _unit(name: str) -> str:
-    return ", ohm" if name == "R" else f", {SCALES[name][1]}"
+    return ", ohm" if name == "R" else f", {SCALES[name][1]}" if name in SCALES else ""
 
 
 def _cell(fit: Fit, name: str) -> str:
-    scale = 1.0 if name == "R" else SCALES[name][0]
-    value, uncertainty = fit.value(name) * scale, fit.uncertainty(name) * scale
-    return f"{numbers.number(value, 6)} +- {numbers.number(uncertainty, 2)}"
+    scale = SCALES[name][0] if name in SCALES else 1.0
+    return _known(fit.value(name) * scale, fit.uncertainty(name) * scale)

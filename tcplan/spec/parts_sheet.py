@@ -12,7 +12,7 @@ from tcplan.spec import numbers
 from tcplan.spec.parts_text import against_ideal, buying, cutting, load_text, units_text
 from tcplan.spec.spec import CAUTIONS
 from tcplan.spec.trim_text import trim_text
-from tcplan.units import format_ohms, from_celsius
+from tcplan.units import format_length, format_ohms, from_celsius
 
 Fact = tuple[str, tuple[str, ...]]
 """A label, and the sentences after it."""
@@ -70,7 +70,8 @@ def _notes(made: MadePlan) -> Iterator[str]:
     if any(isinstance(leg, StockLeg) for leg in legs):
         yield "As made, every bought part varies on its own, within its tolerance and its TCR."
     if any(isinstance(leg, WireLeg) for leg in legs):
-        yield "As made, the error of the cut is part of the tolerance of the wire."
+        cut = format_length(made.parts.details["rules"]["cut_error_m"])
+        yield f"As made, the error of a cut, {cut}, is part of the tolerance of the wire."
 
 
 def _farther(made: MadePlan) -> str:

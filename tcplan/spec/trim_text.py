@@ -2,16 +2,22 @@
 
 from __future__ import annotations
 
-from tcplan.parts.trim import Cut, Row, Stat, Swing, TrimPlan
+from tcplan.parts.trim import Cut, Drawn, Row, Stat, Swing, TrimPlan
 from tcplan.spec import numbers
-from tcplan.units import format_celsius, format_ohms
+from tcplan.units import format_celsius, format_ohms, format_si
 
 
 def trim_text(plan: TrimPlan) -> tuple[str, ...]:
     """Return short sentences about a trim."""
     if plan.method == "cut":
         return (*_cut_head(plan), *_reached(plan), *_cut_tail(plan))
-    return (_codes_head(plan), *map(_row, plan.rows), *_reached(plan), *_remains(plan))
+    rows = (sentence for row in plan.rows for sentence in (_row(row), _gaps(row), _drawn(row)))
+    table = ("Every bit is in the table of bits.",) if any(row.bits for row in plan.rows) else ()
+    return (_codes_head(plan), *rows, *table, *_reached(plan), *_switches(plan), *_remains(plan))
+
+
+def _trim(plan: TrimPlan) -> str:
+    return f"Trim of {plan.label}" if plan.label else "Trim"
 
 
 # --- codes ----------------------------------------------------------------------------------------------
@@ -20,9 +26,11 @@ def trim_text(plan: TrimPlan) -> tuple[str, ...]:
 def _codes_head(plan: TrimPlan) -> str:
     target = format_ohms(plan.target_ohms)
     if plan.temperatures is None:
-        return f"Trim at one temperature: the codes restore the mix of the films, and the value, {target}."
+        what = f"the codes restore the mix of the films, and the value, {target}"
+        return f"{_trim(plan)} at one temperature: {what}."
     low, high = map(format_celsius, plan.temperatures)
-    return f"Trim at {low} and {high}: the codes set the value, {target}, and null the slope between the two."
+    what = f"the codes set the value, {target}, and null the slope between the two"
+    return f"{_trim(plan)} at {low} and {high}: {what}."
 
 
 def _row(row: Row) -> str:
@@ -34,6 +42,53 @@ def _row(row: Row) -> str:
         f"Leg {row.leg} ({row.material}): {format_ohms(row.base_ohms)} and {bits} "
         f"{'bit' if bits == 1 else 'bits'} of {units}; least step {format_ohms(row.step_ohms)}, "
         f"{numbers.number(row.step * 1e6, 3)} ppm of the whole."
+    )
+
+
+def _gaps(row: Row) -> str:
+    """Return the largest gap between codes where the film is at its limits."""
+    low, high = (numbers.worst(gap * 1e6) for gap in (row.gaps[0], row.gaps[-1]))
+    limit = numbers.percent(row.half_width)
+    return (
+        f"Between its codes are at most {low} ppm of the whole in a device at -{limit}, "
+        f"{high} ppm at +{limit}."
+    )
+
+
+def _drawn(row: Row) -> str:
+    """Return how a leg with bits is drawn: its rest, its least bit and its largest."""
+    if row.base is None or row.area is None:
+        return f"Leg {row.leg} has no drawing: {row.material} has no unit cell."
+    ends = {1: row.bits[0], len(row.bits): row.bits[-1]}
+    bits = ", ".join(f"bit {k} {_segments(bit)}" for k, bit in ends.items())
+    area = numbers.number(row.area * 1e12, 4)
+    return f"Drawn {_size(row.base.width)} wide: rest {_segments(row.base)}; {bits}; {area} um^2 in all."
+
+
+def _segments(piece: Drawn) -> str:
+    strings = f"{piece.strings} string{'s' if piece.strings > 1 else ''} of "
+    units = f"{piece.units} unit{'s' if piece.units > 1 else ''} and " if piece.units else ""
+    return f"{strings}{units}L {_size(piece.length)}"
+
+
+def _size(metres: float) -> str:
+    return format_si(metres, "m", 6)
+
+
+def _switches(plan: TrimPlan) -> tuple[str, ...]:
+    """Return why the drift is larger after the trim, where it is."""
+    before, after, ideal = plan.before.drift, plan.after.drift, plan.ideal_switches
+    if after.median <= before.median and after.quantile <= before.quantile and after.worst <= before.worst:
+        return ()
+    larger = "The drift is larger after the trim than before"
+    if ideal is None:
+        return (f"{larger}, with switches of 0 ohm.",)
+    pairs = ((after.median, ideal.median), (after.quantile, ideal.quantile), (after.worst, ideal.worst))
+    costs = [numbers.number(round((own - without) * 1e6, 9), 3) for own, without in pairs]
+    return (
+        f"{larger}: the switches cost {costs[0]} ppm in the median, {costs[1]} ppm at 99.73 %, "
+        f"{costs[2]} ppm at worst. With the same codes and switches of 0 ohm it would be {_figures(ideal)}.",
+        "Switches of less resistance, or fewer bits by a coarser step, cost less.",
     )
 
 
@@ -68,7 +123,7 @@ def _cut_head(plan: TrimPlan) -> tuple[str, ...]:
         f"{leg} to {numbers.number(aim)} of its nominal value (gain needed {_gain(gain)})"
         for leg, aim, gain in zip(chosen.legs, chosen.aims, chosen.gains, strict=True)
     )
-    head = f"Trim by a cut, which only raises a value. Draw leg {drawn}."
+    head = f"{_trim(plan)} by a cut, which only raises a value. Draw leg {drawn}."
     if plan.whole_aim is None or plan.whole_gain is None:
         return (head,)
     whole = f"{numbers.number(plan.whole_aim)} of target, gain {numbers.number(plan.whole_gain)}"

@@ -129,7 +129,6 @@ def _expected(
         changed=changed,
         fixed=fixed,
         level_known=not (asking.drift_only or asked.trim is not None),
-        value_free=plan.target.ohms is None,
         seed=option.likely.seed if option.likely is not None else 1,
     )
 
@@ -211,7 +210,7 @@ def write_comparison(
         When a file is in the way or cannot be written.
     """
     from tcplan.figures.compare import compare_figure_files
-    from tcplan.spec.compare_text import comparison_data
+    from tcplan.spec.compare_data import comparison_data
 
     shown_plan = plan_as_made(plan) if asking.as_made else plan
     data = comparison_data(shown_plan, comparison)

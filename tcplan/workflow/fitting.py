@@ -10,7 +10,7 @@ from pathlib import Path
 
 from tcplan import __version__
 from tcplan.errors import InputError, Problem
-from tcplan.measure.block import Size, correlation_block, material_block, tracking_block
+from tcplan.measure.block import correlation_block, material_block, tracking_block
 from tcplan.measure.fitted import FittedMaterial, fitted
 from tcplan.measure.reading import ReadSweep, parse_sweep, read_sweep
 from tcplan.measure.request import FitRequest
@@ -19,6 +19,8 @@ from tcplan.output import check_folder, write_files
 from tcplan.spec.fit_data import fit_data
 
 FIT_FILES = ("materials.toml", "fit.json")
+FIGURES = ("fit", "residuals", "devices")
+"""What the figures of a material are called, after its name."""
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -128,13 +130,9 @@ def materials_text(fits: Fitted) -> str:
         )
     for one in fits.materials:
         if _is_correlated(one):
-            blocks.append(correlation_block(one.request.name, one.found, size=_size(one)))
+            blocks.append(correlation_block(one.request.name, one.found, size=one.request.size))
     blocks.extend(tracking_block(names, [tracked]) for names, tracked in fits.tracking)
     return "\n".join(block.rstrip("\n") + "\n" for block in blocks)
-
-
-def _size(one: FittedMaterial) -> Size | None:
-    return one.request.size
 
 
 def fit_json(fits: Fitted) -> str:
@@ -150,6 +148,19 @@ def fit_json(fits: Fitted) -> str:
     return json.dumps(data, indent=2, ensure_ascii=False, allow_nan=False) + "\n"
 
 
+def check_fit_out(request: FitRequest, folder: Path, *, force: bool = False) -> None:
+    """Refuse a folder in which the files of a fit cannot be written, before anything is computed.
+
+    Raises
+    ------
+    OutputError
+        With every file that is in the way.
+    """
+    names = [one.name for one in request.sweeps]
+    figures = [f"{name}-{kind}.{end}" for name in names for kind in FIGURES for end in ("svg", "png")]
+    check_folder(folder, (*FIT_FILES, *figures), force=force)
+
+
 def write_fit(fits: Fitted, folder: Path, *, force: bool = False) -> tuple[Path, ...]:
     """Write materials.toml, fit.json and the figures of every material, all of them or none.
 
@@ -160,14 +171,8 @@ def write_fit(fits: Fitted, folder: Path, *, force: bool = False) -> tuple[Path,
     """
     from tcplan.figures.fit import fit_figure_files
 
-    names = [one.request.name for one in fits.materials]
-    figures = [f"{name}-{kind}.{end}" for name in names for kind in FIGURES for end in ("svg", "png")]
-    check_folder(folder, (*FIT_FILES, *figures), force=force)
+    check_fit_out(fits.request, folder, force=force)
     contents = {"materials.toml": materials_text(fits).encode(), "fit.json": fit_json(fits).encode()}
     for one in fits.materials:
         contents |= fit_figure_files(one)
     return write_files(folder, contents, force=force)
-
-
-FIGURES = ("fit", "residuals", "devices")
-"""What the figures of a material are called, after its name."""

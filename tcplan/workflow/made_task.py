@@ -4,6 +4,7 @@ from __future__ import annotations
 
 from collections.abc import Callable, Iterator, Mapping, Sequence
 from dataclasses import dataclass, field
+from typing import Any
 
 import numpy as np
 
@@ -33,6 +34,20 @@ class PartsRules:
     pairs: bool = True
     wire_step: float = 1e-3
     cut_error: float = 0.5e-3
+
+    def to_dict(self) -> dict[str, Any]:
+        """Return the rules as plan.json holds them."""
+        films = self.films
+        return {
+            "value_error": films.error,
+            "most_units": films.most_count,
+            "max_area_m2": films.max_area,
+            "max_width_m": films.max_width,
+            "mismatch": films.mismatch,
+            "pairs": self.pairs,
+            "wire_step_m": self.wire_step,
+            "cut_error_m": self.cut_error,
+        }
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)

@@ -116,6 +116,7 @@ def _made(task: Task) -> MadePlan:
         materials=tuple({m.name: m for a in assemblies for m in a.materials}.values()),
         made=tuple(made),
         details={
+            "rules": task.rules.to_dict(),
             "ways": [one.to_dict() for one in ways],
             "loads": [[load.to_dict() for load in own] for own in loads],
             "placement": [[one.to_dict() for one in own] for own in placements],

@@ -209,7 +209,7 @@ def test_help_has_examples_and_keeps_to_the_width(command: list[str]) -> None:
     ("arguments", "told"),
     [
         (["pan"], "no such command 'pan'. Did you mean plan?"),
-        (["frobnicate"], "Choose one of plan, budget, parts, materials"),
+        (["frobnicate"], "Choose one of plan, budget, parts, fit"),
         (["plan"], "BRIEF"),
         (["plan", "x.toml", "--jsn"], "--json"),
         (["ranges", "x"], "x"),

@@ -23,7 +23,7 @@ from tcplan.material.model import Material
 from tcplan.material.spread import Spread
 from tcplan.network import Leg, Parallel, Series, legs, value
 from tcplan.parts.trim import codes_csv, trim_plan
-from tcplan.parts.trim.bits import code_ohms, codes_beside, row_for
+from tcplan.parts.trim.bits import Factor, code_ohms, codes_beside
 from tcplan.parts.trim.coded import coded_drift, coded_network
 from tcplan.parts.trim.codes import (
     TwoPoints,
@@ -34,6 +34,7 @@ from tcplan.parts.trim.codes import (
 )
 from tcplan.parts.trim.devices import draw_devices, needed, whole
 from tcplan.parts.trim.members import Member, members_of
+from tcplan.parts.trim.sizing import row_for
 from tcplan.process import INDEPENDENT, Correlation, Parameter, Process
 
 REFERENCE = 298.15
@@ -86,6 +87,8 @@ def member(half_width, share=1.0, ohms=1000.0, name="a"):
         mismatch=0.0,
         half_width=half_width,
         film=True,
+        parts=(ohms,),
+        limits=tuple((f, f) for f in (1.0 - half_width, 1.0, 1.0 + half_width)),
     )
 
 
@@ -99,18 +102,31 @@ def test_the_bits_of_a_leg_by_hand():
     assert row.step_ohms == pytest.approx((1000.0 / 0.8 - 1000.0 / 1.2) / 63.0, rel=1e-12)
     assert row.bit_ohms == pytest.approx([row.step_ohms * 2**k for k in range(6)], rel=1e-12)
     assert row.step == pytest.approx(row.step_ohms / 1000.0, rel=1e-12)
-    # Of a leg that is a third of the whole, the same step of the whole takes two bits less: 27.8 ohm.
-    assert len(row_for(member(0.2, share=1.0 / 3.0), 1000.0, 0.01, 0.0).bit_ohms) == 4
+    # The highest device has the largest steps, 1.2 of nominal.
+    assert row.gaps == pytest.approx([row.step * f for f in (0.8, 1.0, 1.2)], rel=1e-9)
+    # Of a leg that is a third of the whole 30 ohm are allowed at 1.2 of nominal: 416.67/15 x 1.2 = 33.3, is
+    # too much, 416.67/31 x 1.2 = 16.1 ohm is not.
+    assert len(row_for(member(0.2, share=1.0 / 3.0), 1000.0, 0.01, 0.0).bit_ohms) == 5
 
 
 @pytest.mark.parametrize("switch", [0.0, 0.5, 20.0])
-def test_the_codes_cover_the_spread_and_step_evenly(switch):
+def test_the_codes_cover_the_spread_in_steps_within_the_one_asked(switch):
     row = row_for(member(0.15), 1000.0, 2e-3, switch)
-    codes = np.arange(2 ** len(row.bit_ohms))
-    assert code_ohms(row, codes[:1], 1.15)[0] == pytest.approx(1000.0, rel=1e-9)
-    assert code_ohms(row, codes[-1:], 0.85)[0] == pytest.approx(1000.0, rel=1e-9)
-    assert np.diff(code_ohms(row, codes, 1.0)) == pytest.approx(row.step_ohms, rel=1e-9)
-    assert row.step <= 2e-3
+    bits = np.array(row.bit_ohms)
+    sums = np.array([[bool(code & (1 << k)) for k in range(len(bits))] for code in range(2 ** len(bits))])
+    gaps = []
+    for factor in (0.85, 1.0, 1.15):  # twin: all codes of one device, sorted
+        cleared = factor * bits * switch / (factor * bits + switch)
+        ohms = factor * row.base_ohms + np.where(sums, factor * bits, cleared).sum(axis=1)
+        gaps.append(np.diff(np.sort(ohms)).max() / 1000.0)
+        if factor == 1.15:
+            assert ohms[0] == pytest.approx(1000.0, rel=1e-9)
+        if factor == 0.85:
+            assert ohms[-1] == pytest.approx(1000.0, rel=1e-9)
+    assert row.gaps == pytest.approx(gaps, rel=1e-9)
+    assert row.gap == max(row.gaps) <= 2e-3
+    # One bit less would leave a larger gap than was asked.
+    assert row.gap * 2.0 > 2e-3
 
 
 def test_a_code_is_its_units_and_switches():
@@ -120,7 +136,7 @@ def test_a_code_is_its_units_and_switches():
         ohms = 1.07 * row.base_ohms
         for k, unit in enumerate(row.bit_ohms):
             ohms += 1.07 * unit if code & (1 << k) else 1.0 / (1.0 / (1.07 * unit) + 1.0 / 12.0)
-        assert code_ohms(row, np.array([code]), 1.07)[0] == pytest.approx(ohms, rel=1e-14)
+        assert code_ohms(row, np.array([code]), Factor.of(1.07))[0] == pytest.approx(ohms, rel=1e-14)
 
 
 @pytest.mark.parametrize("switch", [0.0, 15.0])
@@ -129,23 +145,25 @@ def test_the_codes_beside_a_value_are_those_of_all_codes(switch, each_side):
     row = row_for(member(0.2), 1000.0, 4e-3, switch)
     rng = np.random.default_rng(5)
     factor, wanted = rng.uniform(0.75, 1.25, 60), rng.uniform(900.0, 1100.0, 60)
-    found = codes_beside(row, factor, wanted, each_side)
+    found = codes_beside(row, Factor(body=factor, ends=factor), wanted, each_side)
     everything = np.arange(2 ** len(row.bit_ohms))
     for k in range(60):
-        ohms = code_ohms(row, everything, factor[k])
+        own = Factor.of(factor[k])
+        ohms = code_ohms(row, everything, own)
         below = sorted(ohms[ohms <= wanted[k]])[::-1][:each_side]
         above = sorted(ohms[ohms > wanted[k]])[:each_side]
         if len(below) == each_side and len(above) == each_side:
-            assert code_ohms(row, found[k], factor[k]) == pytest.approx([*below, *above], rel=1e-12)
+            assert code_ohms(row, found[k], own) == pytest.approx([*below, *above], rel=1e-12)
         else:  # beyond the codes: the last ones are still among them
             nearest = ohms[np.argmin(np.abs(ohms - wanted[k]))]
-            assert np.min(np.abs(code_ohms(row, found[k], factor[k]) - nearest)) < 1e-9
+            assert np.min(np.abs(code_ohms(row, found[k], own) - nearest)) < 1e-9
 
 
 def test_too_fine_a_step_is_refused_with_the_nearest():
-    with pytest.raises(InputError, match=r"16 bits on leg a are not enough.*expected 6\.36 ppm or more"):
-        row_for(member(0.2), 1000.0, 1e-6, 0.0)  # 416.67 ohm in 65535 steps of 1 kohm: 6.358 ppm
-    assert len(row_for(member(0.2), 1000.0, 6.36e-6, 0.0).bit_ohms) == 16
+    with pytest.raises(InputError, match=r"16 bits on leg a are not enough.*expected 7\.63 ppm or more"):
+        # 416.67 ohm in 65535 steps of 1 kohm, 6.358 ppm, and 1.2 times that in the highest device.
+        row_for(member(0.2), 1000.0, 1e-6, 0.0)
+    assert len(row_for(member(0.2), 1000.0, 7.63e-6, 0.0).bit_ohms) == 16
 
 
 def test_switches_beyond_the_leg_are_refused():
@@ -199,15 +217,23 @@ def with_ends(mismatch=0.002):
 
 def scalar_curve(member_, row, code, leaves_at, switch_at):
     """Return the value of a leg with bits by a twin: bit by bit, at one temperature."""
-    factor = sum(leaves_at[k] for k in member_.leaves) / member_.ohms
-    ohms = factor * row.base_ohms
-    for k, unit in enumerate(row.bit_ohms):
+    factors = [leaves_at[k] / part for k, part in zip(member_.leaves, member_.parts, strict=True)]
+    base, *bits = [
+        factors[0] * (row.base_ohms if drawn is None else drawn.body_ohms)
+        + factors[-1] * (0.0 if drawn is None else drawn.ends_ohms)
+        for drawn in [row.base]
+    ] + [
+        factors[0] * (ohms if drawn is None else drawn.body_ohms)
+        + factors[-1] * (0.0 if drawn is None else drawn.ends_ohms)
+        for ohms, drawn in zip(row.bit_ohms, row.bits or [None] * len(row.bit_ohms), strict=True)
+    ]
+    switch = row.switch_ohms * switch_at
+    for k, unit in enumerate(bits):
         if code & (1 << k):
-            ohms += factor * unit
+            base += unit
         else:
-            switch = row.switch_ohms * switch_at
-            ohms += factor * unit * switch / (factor * unit + switch) if switch else 0.0
-    return ohms
+            base += unit * switch / (unit + switch) if switch else 0.0
+    return base
 
 
 @pytest.mark.parametrize("switch", [0.0, 30.0])
@@ -264,7 +290,7 @@ def test_codes_at_one_temperature_are_the_best_of_all():
     leaves = devices.ohms([REFERENCE])[0]
     for d in range(40):
         ohms = [
-            code_ohms(row, np.arange(2 ** len(row.bit_ohms)), leaves[k, d] / members[k].ohms)
+            code_ohms(row, np.arange(2 ** len(row.bit_ohms)), Factor.of(leaves[k, d] / members[k].ohms))
             for k, row in enumerate(rows)
         ]
         beside = [
@@ -308,8 +334,7 @@ def test_a_spread_of_tc1_alone_is_not_trimmed():
 
 def test_ends_and_mismatch_are_measured_with_their_leg():
     network, made, materials = with_ends()
-    trim = Trim(method="one-temperature", step=2e-5)
-    found = planned(network, materials, trim, made=made, draws=300)
+    found = planned(network, materials, ONE, made=made, draws=300)
     assert found.perfect.value.worst < 1e-9
     assert found.perfect.mix.worst < 1e-9
     # (11.6 x 15 % + 0.4 x 40 %)/12 with 3 sigma of mismatch on top.
@@ -379,7 +404,7 @@ def test_codes_at_two_temperatures_are_the_best_of_all(switch):
         def worst(codes, d=d):
             errors = []
             for n, ratio in ((0, 1.0), (1, points.switch)):
-                films = [leaves[n, k, d] / members[k].ohms for k in (0, 1)]
+                films = [Factor.of(leaves[n, k, d] / members[k].ohms) for k in (0, 1)]
                 first, second = (
                     code_ohms(row, c, f, row.switch_ohms * ratio)
                     for row, c, f in zip(rows, codes, films, strict=True)
@@ -546,7 +571,7 @@ def fields_of(material):
 def test_the_code_table():
     found = planned(TWO, two_films(), Trim(method="one-temperature", step=5e-3), draws=50)
     table = list(csv.reader(io.StringIO(codes_csv(found), newline="")))
-    assert table[0] == ["code", "leg", "ohms", "step_ppm_of_whole"]
+    assert table[0] == ["code", "leg", "ohms", "step_ppm_of_whole", "of"]
     assert codes_csv(found).endswith("\r\n")  # RFC 4180
     for row in found.rows:
         own = [line for line in table[1:] if line[1] == row.leg]

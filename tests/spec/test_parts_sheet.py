@@ -125,7 +125,7 @@ def test_bought_parts_and_wire_say_what_varies() -> None:
     """12 kohm to 0.1 % are two E96 values; the wire of 3 kohm is 3000/(13.8 (1 - 90e-6 * 5)) m."""
     notes = said(made_of("flat 9 kohm + up 3 kohm", FLAT + WIRE))
     assert "As made, every bought part varies on its own, within its tolerance and its TCR." in notes["Note"]
-    assert "As made, the error of the cut is part of the tolerance of the wire." in notes["Note"]
+    assert "As made, the error of a cut, 500 um, is part of the tolerance of the wire." in notes["Note"]
     [cut] = notes["Cut"]
     metres = 3000 / (13.8 * (1 - 90e-6 * 5))
     assert cut.startswith("1 x ")

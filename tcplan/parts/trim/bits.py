@@ -1,129 +1,45 @@
-"""A row of bits: its size for a range and a step, the value of a code, and the codes next to a value.
+"""A row of bits: the value of a code, the gaps between codes, and the codes next to a value.
 
-Clearing bit k of a row closes the switch across its unit r: what it takes away is d = r^2/(r + S), with S
-the resistance of the switch, so r = (d + sqrt(d^2 + 4 d S))/2 for d = 2^k times the step. That holds for
-the nominal device; in another one the steps are not alike, and a code is searched among all of them.
+The steps of a device are not alike: a code is searched among all of them.
 """
 
 from __future__ import annotations
 
-import math
+from collections.abc import Sequence
+from dataclasses import dataclass
 
 import numpy as np
 
 from tcplan.arrays import BoolArray, FloatArray, IntArray
-from tcplan.errors import InputError, Problem
-from tcplan.parts.trim.members import Member
 from tcplan.parts.trim.model import Row
-from tcplan.units import format_ohms
 
-MOST_BITS = 16
-AT_ONCE = 1 << 20  # values of codes in memory
-HALVINGS = 200
-ROUNDING = 1e-9
+AT_ONCE = 1 << 20  # values in memory
 
 
-def row_for(member: Member, wanted: float, step: float, switch: float, *, more: float = 0.0) -> Row:
-    """Return the row of fewest bits that covers the spread of a leg in small enough steps.
+@dataclass(frozen=True, slots=True, kw_only=True, eq=False)
+class Factor:
+    """What the body and the ends of a film are multiplied with, of one shape."""
 
-    Parameters
-    ----------
-    member : Member
-        With its half-width D and its share.
-    wanted : float
-        Value that the codes restore [ohm], in every device within (1 - D)..(1 + D).
-    step : float
-        The largest one of the whole that is allowed, as a fraction.
-    switch : float
-        Of a switch that is on [ohm].
-    more : float
-        By how much the wanted value itself may move to both sides, as a fraction.
+    body: FloatArray
+    ends: FloatArray
 
-    Raises
-    ------
-    InputError
-        When 16 bits are too coarse, with the step that they have, or the switches are too much.
-    """
-    for count in range(1, MOST_BITS + 1):
-        row = _row(member, wanted, switch, count, more)
-        if row.step <= step * (1.0 + ROUNDING):
-            return row
-    least = math.ceil(row.step * 1e6 * 100.0) / 100.0
-    raise InputError(
-        Problem(
-            where="trim.step",
-            found=f"{step * 1e6:g} ppm, for which {MOST_BITS} bits on leg {member.id} are not enough",
-            expected=f"{least:g} ppm or more",
-            todo=f'Write step = "{least:g} ppm", or use a film with less spread.',
-        )
-    )
+    @classmethod
+    def of(cls, body: float, ends: float | None = None) -> Factor:
+        """Return the factor of one device; its ends as its body if not given."""
+        return cls(body=np.asarray(body), ends=np.asarray(body if ends is None else ends))
 
+    @property
+    def each(self) -> Factor:
+        """The same with one more axis, for several codes of each device."""
+        return Factor(body=self.body[..., None], ends=self.ends[..., None])
 
-def _row(member: Member, wanted: float, switch: float, count: int, more: float) -> Row:
-    """Return the row of so many bits whose codes just cover the spread."""
-    low, high = 0.0, wanted
-    for _ in range(HALVINGS):
-        if _covers(member, wanted, switch, count, more, high) >= 0.0:
-            break
-        high *= 2.0
-    for _ in range(HALVINGS):
-        middle = 0.5 * (low + high)
-        if _covers(member, wanted, switch, count, more, middle) >= 0.0:
-            high = middle
-        else:
-            low = middle
-        if high - low <= 1e-14 * high:
-            break
-    units = _units(high, switch, count)
-    base = _base(member, wanted, switch, more, units)
-    if base <= 0.0:
-        raise InputError(_switches_problem(member, wanted, switch, count))
-    return Row(
-        leg=member.id,
-        material=member.material,
-        wanted_ohms=wanted,
-        base_ohms=base,
-        bit_ohms=tuple(units.tolist()),
-        switch_ohms=switch,
-        step_ohms=high,
-        step=member.share * high / wanted,
-        half_width=member.half_width,
-    )
+    def taken(self, part: slice) -> Factor:
+        """Return that of some devices."""
+        return Factor(body=self.body[part], ends=self.ends[part])
 
-
-def _units(step: float, switch: float, count: int) -> FloatArray:
-    taken = step * 2.0 ** np.arange(count)
-    return np.asarray(0.5 * (taken + np.sqrt(taken**2 + 4.0 * taken * switch)))
-
-
-def _base(member: Member, wanted: float, switch: float, more: float, units: FloatArray) -> float:
-    """Return the rest of the leg with which its highest device, all bits cleared, has the lowest value."""
-    factor = 1.0 + member.half_width
-    return (wanted * (1.0 - more) - float(_bypassed(factor * units, switch).sum())) / factor
-
-
-def _covers(member: Member, wanted: float, switch: float, count: int, more: float, step: float) -> float:
-    """Return by how much the lowest device with all bits set is above the highest value wanted."""
-    units = _units(step, switch, count)
-    total = _base(member, wanted, switch, more, units) + float(units.sum())
-    return (1.0 - member.half_width) * total - wanted * (1.0 + more)
-
-
-def _bypassed(units: FloatArray, switch: float | FloatArray) -> FloatArray:
-    return np.asarray(units * switch / (units + switch))
-
-
-def _switches_problem(member: Member, wanted: float, switch: float, count: int) -> Problem:
-    return Problem(
-        where="trim.switch_resistance",
-        found=f"{format_ohms(switch)}: with {count} bits the switches alone exceed leg {member.id}, "
-        f"{format_ohms(wanted)}",
-        expected="switches that are small beside the leg",
-        todo="Use larger switches, or a coarser step.",
-    )
-
-
-# --- codes ----------------------------------------------------------------------------------------------
+    def ohms(self, piece: tuple[float, float]) -> FloatArray:
+        """Return the value of a piece [ohm] from its body and its ends."""
+        return np.asarray(self.body * piece[0] + self.ends * piece[1])
 
 
 def set_bits(row: Row, codes: IntArray) -> BoolArray:
@@ -131,36 +47,48 @@ def set_bits(row: Row, codes: IntArray) -> BoolArray:
     return np.asarray((codes[..., None] >> np.arange(len(row.bit_ohms))) & 1, dtype=np.bool_)
 
 
-def code_ohms(
-    row: Row, codes: IntArray, factor: FloatArray | float, switch: float | None = None
-) -> FloatArray:
+def code_ohms(row: Row, codes: IntArray, factor: Factor, switch: float | None = None) -> FloatArray:
     """Return the value of a leg [ohm] at some codes.
 
     Parameters
     ----------
     row : Row
     codes : int array, any shape
-    factor : array or float
+    factor : Factor
         What the film is multiplied with, of a shape that goes with ``codes``.
     switch : float, optional
         Of a switch that is on [ohm], at the temperature of the factor; that of the row if not given.
     """
     own = row.switch_ohms if switch is None else switch
-    each = np.asarray(factor, dtype=np.float64)
-    total = np.asarray(each * row.base_ohms + np.zeros(codes.shape))
-    for k, unit in enumerate(row.bit_ohms):
-        units = each * unit
-        total = total + np.where((codes >> k) & 1, units, _bypassed(units, own))
+    base, *bits = row.pieces
+    total = np.asarray(factor.ohms(base) + np.zeros(codes.shape))
+    for k, bit in enumerate(bits):
+        unit = factor.ohms(bit)
+        total = total + np.where((codes >> k) & 1, unit, _bypassed(unit, own))
     return total
 
 
-def ends(row: Row, factor: FloatArray) -> tuple[FloatArray, FloatArray]:
+def ends(row: Row, factor: Factor) -> tuple[FloatArray, FloatArray]:
     """Return the values with all bits cleared and with all set, of the shape of ``factor``."""
-    none = np.zeros(factor.shape, dtype=np.intp)
+    none = np.zeros(factor.body.shape, dtype=np.intp)
     return code_ohms(row, none, factor), code_ohms(row, none + 2 ** len(row.bit_ohms) - 1, factor)
 
 
-def codes_beside(row: Row, factor: FloatArray, wanted: FloatArray, each_side: int = 1) -> IntArray:
+def largest_gap(row: Row, factor: Factor) -> float:
+    """Return the largest gap between neighbouring values of all codes of one device [ohm]."""
+    base, *bits = row.pieces
+    table = _sums(factor.ohms(base)[None], bits, factor.each, row.switch_ohms)
+    return float(np.diff(np.sort(table, axis=None)).max())
+
+
+def _bypassed(units: FloatArray, switch: float) -> FloatArray:
+    return np.asarray(units * switch / (units + switch))
+
+
+# --- the codes next to a value --------------------------------------------------------------------------
+
+
+def codes_beside(row: Row, factor: Factor, wanted: FloatArray, each_side: int = 1) -> IntArray:
     """Return the codes next to a wanted value, exactly, shape (devices, 2 each_side).
 
     First those at or below it, nearest first, then those above. Where one side has too few, its place is
@@ -169,49 +97,86 @@ def codes_beside(row: Row, factor: FloatArray, wanted: FloatArray, each_side: in
     Parameters
     ----------
     row : Row
-    factor, wanted : array, shape (devices,)
-        What the film is multiplied with, and the value wanted of the leg [ohm].
+    factor : Factor, shape (devices,)
+        What the film is multiplied with.
+    wanted : array, shape (devices,)
+        The value wanted of the leg [ohm].
     each_side : int
     """
-    if row.switch_ohms == 0.0:
-        return _even_codes_beside(row, factor, wanted, each_side)
-    count = 2 ** len(row.bit_ohms)
-    found = np.empty((len(factor), 2 * each_side), dtype=np.intp)
-    step = max(1, AT_ONCE // count)
-    for start in range(0, len(factor), step):
+    found = np.empty((len(wanted), 2 * each_side), dtype=np.intp)
+    width = 2 ** (len(row.bit_ohms) - len(row.bit_ohms) // 2)
+    step = max(1, AT_ONCE // width)
+    for start in range(0, len(wanted), step):
         part = slice(start, start + step)
-        off = _table(row, factor[part]) - wanted[part, None]
-        below, above = np.where(off <= 0.0, -off, np.inf), np.where(off > 0.0, off, np.inf)
-        found[part, :each_side], nearest = _least(below, each_side)
-        found[part, each_side:], other = _least(above, each_side)
-        lacking, over = ~np.isfinite(nearest), ~np.isfinite(other)
-        own = found[part]
-        own[lacking, :each_side] = own[lacking, each_side, None]
-        own[over, each_side:] = own[over, 0, None]
+        found[part] = _beside(row, factor.taken(part), wanted[part], each_side)
     return found
 
 
-def _even_codes_beside(row: Row, factor: FloatArray, wanted: FloatArray, each_side: int) -> IntArray:
-    """Return the same where the steps of a device are all alike."""
-    at = np.floor((wanted / factor - row.base_ohms) / row.step_ohms).astype(np.intp)
-    moves = np.r_[-np.arange(each_side), 1 + np.arange(each_side)]
-    return np.asarray(np.clip(at[:, None] + moves, 0, 2 ** len(row.bit_ohms) - 1))
+def _beside(row: Row, factor: Factor, wanted: FloatArray, each_side: int) -> IntArray:
+    """Return the same from the sums of the lower bits, in order, and those of the upper ones.
+
+    The nearest codes have no more upper parts than there are codes, and these are the upper parts whose own
+    nearest code is nearest.
+    """
+    base, *bits = row.pieces
+    half = len(bits) // 2
+    lower = _sums(factor.ohms(base), bits[:half], factor, row.switch_ohms)
+    upper = _sums(np.zeros(len(wanted)), bits[half:], factor, row.switch_ohms)
+    order = np.argsort(lower, axis=1)
+    lower = np.take_along_axis(lower, order, axis=1)
+    rest = wanted[:, None] - upper
+    at = np.stack(
+        [np.searchsorted(own, values, side="right") for own, values in zip(lower, rest, strict=True)]
+    )
+    below, nearest = _one_side(lower, rest, at, each_side, -1)
+    above, other = _one_side(lower, rest, at, each_side, 1)
+    lacking, over = ~np.isfinite(nearest), ~np.isfinite(other)
+    below[lacking], above[over] = above[lacking, :1], below[over, :1]
+    places = np.concatenate([below, above], axis=1)
+    low, high = places % lower.shape[1], places // lower.shape[1]
+    return np.asarray(np.take_along_axis(order, low, axis=1) + (high << half))
 
 
-def _table(row: Row, factor: FloatArray) -> FloatArray:
-    """Return the values of all codes, shape (devices, codes)."""
-    table = (factor * row.base_ohms)[:, None]
-    for unit in row.bit_ohms:
-        units = (factor * unit)[:, None]
-        table = np.concatenate([table + _bypassed(units, row.switch_ohms), table + units], axis=1)
+def _sums(
+    first: FloatArray, bits: Sequence[tuple[float, float]], factor: Factor, switch: float
+) -> FloatArray:
+    """Return the values of all codes of some bits, shape (devices, codes)."""
+    table = first[:, None]
+    for bit in bits:
+        units = factor.ohms(bit)[:, None]
+        table = np.concatenate([table + _bypassed(units, switch), table + units], axis=1)
     return table
+
+
+def _one_side(
+    lower: FloatArray, rest: FloatArray, at: IntArray, count: int, side: int
+) -> tuple[IntArray, FloatArray]:
+    """Return the places (upper part times all lower ones, and lower part) of the nearest codes of one side.
+
+    Nearest first; where there are too few the last one again. Beside them the distance of the nearest.
+    """
+    size = lower.shape[1]
+    first = at - 1 if side < 0 else at
+    few = min(count, rest.shape[1])
+    upper = np.argpartition(_off(lower, rest, first), few - 1, axis=1)[:, :few]
+    own = np.take_along_axis(first, upper, axis=1)[:, :, None] + side * np.arange(min(count, size))
+    wide = own.reshape(len(own), -1)
+    upper = np.repeat(upper, own.shape[2], axis=1)
+    off = _off(lower, np.take_along_axis(rest, upper, axis=1), wide)
+    chosen, nearest = _least(off, count)
+    places = upper * size + np.clip(wide, 0, size - 1)
+    return np.take_along_axis(places, chosen, axis=1), nearest
+
+
+def _off(lower: FloatArray, rest: FloatArray, at: IntArray) -> FloatArray:
+    """Return how far the lower parts at some places are from what is wanted of them; infinite beyond."""
+    size = lower.shape[1]
+    own = np.take_along_axis(lower, np.clip(at, 0, size - 1), axis=1)
+    return np.where((at >= 0) & (at < size), np.abs(own - rest), np.inf)
 
 
 def _least(distance: FloatArray, count: int) -> tuple[IntArray, FloatArray]:
     """Return the places of the least distances, least first, and the least one; infinite ones as the last."""
-    if count == 1:
-        at = np.argmin(distance, axis=1)[:, None]
-        return at, np.take_along_axis(distance, at, axis=1)[:, 0]
     some = min(count, distance.shape[1])
     at = np.argpartition(distance, some - 1, axis=1)[:, :some]
     own = np.take_along_axis(distance, at, axis=1)

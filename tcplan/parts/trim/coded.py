@@ -1,7 +1,7 @@
 """The made network with its bits and switches, and what a code does to each of its leaves.
 
-A bit is its unit, body and ends of the film in their proportion, with its switch parallel to it. Where the
-switch has no resistance it is left out, and a bypassed unit counts as zero.
+A bit is its unit, body and ends of the film as drawn, with its switch parallel to it. Where the switch has
+no resistance it is left out, and a bypassed unit counts as zero.
 """
 
 from __future__ import annotations
@@ -69,17 +69,22 @@ def coded_network(
     switch = _switch(materials, switch_tc1, reference)
     by_leg = {row.leg: row for row in rows}
     bodies = {m.leaves[0]: (m, by_leg[m.id]) for m in members if m.id in by_leg}
-    scales = {k: row.base_ohms / m.ohms for m, row in bodies.values() for k in m.leaves}
+    scaled = {
+        k: ohms
+        for m, row in bodies.values()
+        for k, ohms in zip(m.leaves, row.pieces[0][: len(m.leaves)], strict=True)
+    }
     leaves: list[CodedLeaf] = []
     old = legs(network)
     place = iter(range(len(old)))
 
     def rest(k: int) -> Leg:
         leaves.append(CodedLeaf(origin=k))
-        return replace(old[k], ohms=old[k].ohms * scales.get(k, 1.0))
+        return replace(old[k], ohms=scaled.get(k, old[k].ohms))
 
     def bit(member: Member, row: Row, n: int) -> Network:
-        unit = tuple(replace(old[k], ohms=old[k].ohms * row.bit_ohms[n] / member.ohms) for k in member.leaves)
+        own = row.pieces[n + 1][: len(member.leaves)]
+        unit = tuple(replace(old[k], ohms=ohms) for k, ohms in zip(member.leaves, own, strict=True))
         leaves.extend(CodedLeaf(origin=k, leg=row.leg, bit=n) for k in member.leaves)
         one: Network = unit[0] if len(unit) == 1 else Series(unit)
         if row.switch_ohms == 0.0:

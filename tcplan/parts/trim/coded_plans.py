@@ -4,6 +4,7 @@ from __future__ import annotations
 
 import itertools
 from collections.abc import Sequence
+from dataclasses import replace
 
 import numpy as np
 
@@ -11,19 +12,21 @@ from tcplan.arrays import FloatArray, IntArray
 from tcplan.errors import InputError, Problem
 from tcplan.material.spread import law_bounds
 from tcplan.network import legs
-from tcplan.parts.trim.bits import code_ohms, row_for
+from tcplan.parts.trim.bits import code_ohms
 from tcplan.parts.trim.coded import coded_drift, coded_network
 from tcplan.parts.trim.codes import (
     TwoPoints,
+    leg_factor,
     leg_ohms,
     one_temperature_codes,
     perfect_pair,
     two_temperature_codes,
     with_legs,
 )
-from tcplan.parts.trim.devices import whole
+from tcplan.parts.trim.devices import stat, whole
 from tcplan.parts.trim.members import Member, trimmed
-from tcplan.parts.trim.model import Reached, Row, TrimPlan
+from tcplan.parts.trim.model import Reached, Row, Stat, TrimPlan
+from tcplan.parts.trim.sizing import row_for
 from tcplan.parts.trim.task import Task
 
 LEAST_DIFFERENCE = 1e-6  # 1/K, between the TC1 of two legs
@@ -35,7 +38,8 @@ def one_temperature(task: Task) -> TrimPlan:
     members = tuple(m for m in trimmed(task.members) if m.half_width > 0.0)
     if not members:
         raise InputError(_no_range_problem())
-    rows = tuple(_row(task, member) for member in members)
+    others = _others(task, members)
+    rows = tuple(_row(task, member, others) for member in members)
     chosen = one_temperature_codes(task.devices, members, rows, task.target)
     leaves = task.devices.ohms([task.need.reference])[0]
     return TrimPlan(
@@ -48,6 +52,7 @@ def one_temperature(task: Task) -> TrimPlan:
         perfect=_perfect(task, members, chosen.exact),
         rows=rows,
         out_of_codes=float(np.mean(chosen.out)),
+        ideal_switches=_ideal_switches(task, rows, chosen.codes),
     )
 
 
@@ -86,12 +91,20 @@ def two_temperatures(task: Task) -> TrimPlan:
         rows=points.rows,
         out_of_codes=float(np.mean(chosen.out)),
         temperatures=task.trim.temperatures,
+        ideal_switches=_ideal_switches(task, points.rows, chosen.codes),
     )
 
 
 def _row(task: Task, member: Member, more: float = 0.0) -> Row:
     trim = task.trim
     return row_for(member, task.wanted_ohms(member), trim.step, trim.switch_resistance, more=more)
+
+
+def _others(task: Task, members: Sequence[Member]) -> float:
+    """Return by how much the legs with bits have to move for the spread of all others, as a fraction."""
+    own = {member.id for member in members}
+    spread = sum(member.share * member.half_width for member in task.members if member.id not in own)
+    return min(MOST_MOVE, spread / sum(member.share for member in members))
 
 
 # --- what is reached ------------------------------------------------------------------------------------
@@ -106,14 +119,13 @@ def _after(
 ) -> Reached:
     """Return what devices reach with their codes, switches included."""
     reference, tc1 = task.need.reference, task.trim.switch_tc1
-    coded = coded_network(task.network, task.members, rows, task.materials, tc1, reference)
-    drift = coded_drift(task.devices, coded, rows, codes)
+    drift = _drift(task, rows, codes)
 
     def values(temperature: float) -> list[FloatArray]:
         leaves = task.devices.ohms([temperature])[0]
         switch = 1.0 + tc1 * (temperature - reference)
         own = [
-            code_ohms(row, code, leg_ohms(leaves, m) / m.ohms, row.switch_ohms * switch)
+            code_ohms(row, code, leg_factor(leaves, m), row.switch_ohms * switch)
             for row, code, m in zip(rows, codes, members, strict=True)
         ]
         return with_legs(leaves, members, own)
@@ -121,6 +133,20 @@ def _after(
     first = values(reference)
     chord = None if other is None else _chord(task, first, values(other), other)
     return task.reached(drift, first, members, chord)
+
+
+def _drift(task: Task, rows: Sequence[Row], codes: Sequence[IntArray]) -> FloatArray:
+    """Return the judged drift of devices with their codes."""
+    reference, tc1 = task.need.reference, task.trim.switch_tc1
+    coded = coded_network(task.network, task.members, rows, task.materials, tc1, reference)
+    return coded_drift(task.devices, coded, rows, codes)
+
+
+def _ideal_switches(task: Task, rows: Sequence[Row], codes: Sequence[IntArray]) -> Stat | None:
+    """Return the drift of the same devices with the same codes, were the switches of 0 ohm."""
+    if task.trim.switch_resistance == 0.0:
+        return None
+    return stat(_drift(task, [replace(row, switch_ohms=0.0) for row in rows], codes))
 
 
 def _perfect(task: Task, members: Sequence[Member], exact: FloatArray, other: float | None = None) -> Reached:
@@ -184,8 +210,10 @@ def _slope_rows(task: Task, members: tuple[Member, Member], other: float) -> tup
 
 def _moved_rows(task: Task, members: tuple[Member, Member], other: float, switches: float) -> tuple[Row, Row]:
     """Return the bits of the two legs for a drift of the switches, as a fraction of the whole."""
-    moves = _slope_moves(task, members, other, switches)
-    first, second = (_row(task, m, more=more) for m, more in zip(members, moves, strict=True))
+    moves, others = _slope_moves(task, members, other, switches), _others(task, members)
+    first, second = (
+        _row(task, m, more=min(MOST_MOVE, more + others)) for m, more in zip(members, moves, strict=True)
+    )
     return first, second
 
 

@@ -9,7 +9,7 @@ from dataclasses import dataclass
 import numpy as np
 
 from tcplan.arrays import BoolArray, FloatArray, IntArray
-from tcplan.parts.trim.bits import code_ohms, codes_beside, ends
+from tcplan.parts.trim.bits import Factor, code_ohms, codes_beside, ends
 from tcplan.parts.trim.devices import Devices, whole
 from tcplan.parts.trim.members import Member
 from tcplan.parts.trim.model import Row
@@ -48,6 +48,12 @@ def with_legs(leaves: FloatArray, members: Sequence[Member], ohms: Sequence[Floa
 def leg_ohms(leaves: FloatArray, member: Member) -> FloatArray:
     """Return the value of a film leg [ohm]: its body and its ends."""
     return np.asarray(leaves[list(member.leaves)].sum(axis=0))
+
+
+def leg_factor(leaves: FloatArray, member: Member) -> Factor:
+    """Return what the body and the ends of a film leg are multiplied with."""
+    own = [leaves[k] / ohms for k, ohms in zip(member.leaves, member.parts, strict=True)]
+    return Factor(body=own[0], ends=own[-1])
 
 
 # --- at one temperature ---------------------------------------------------------------------------------
@@ -99,9 +105,9 @@ def one_temperature_codes(
     leaves = devices.ohms([devices.need.reference])[0]
     factor = restored(devices, leaves, members, [row.wanted_ohms for row in rows], target)
     exact = np.stack([factor * row.wanted_ohms for row in rows])
-    films = [leg_ohms(leaves, m) / m.ohms for m in members]
+    films = [leg_factor(leaves, m) for m in members]
     beside = [codes_beside(row, f, own) for row, f, own in zip(rows, films, exact, strict=True)]
-    values = [code_ohms(row, codes, f[:, None]) for row, codes, f in zip(rows, beside, films, strict=True)]
+    values = [code_ohms(row, codes, f.each) for row, codes, f in zip(rows, beside, films, strict=True)]
     best: FloatArray = np.full(leaves.shape[1], np.inf)
     picked = [codes[:, 0].copy() for codes in beside]
     for sides in itertools.product((0, 1), repeat=len(rows)):
@@ -114,7 +120,7 @@ def one_temperature_codes(
     return Chosen(codes=tuple(picked), exact=exact, out=_out(rows, films, exact))
 
 
-def _out(rows: Sequence[Row], films: Sequence[FloatArray], exact: FloatArray) -> BoolArray:
+def _out(rows: Sequence[Row], films: Sequence[Factor], exact: FloatArray) -> BoolArray:
     """Return which devices want a value beyond the codes of a leg by more than half a step."""
     out = np.zeros(exact.shape[1], dtype=np.bool_)
     for row, film, own in zip(rows, films, exact, strict=True):
@@ -148,9 +154,14 @@ class TwoPoints:
         first = whole(network, at_reference) / self.target - 1.0
         return first, whole(network, at_other) / (self.target * self.goal) - 1.0
 
-    def films(self, which: int) -> list[FloatArray]:
+    def films(self, which: int) -> list[Factor]:
         """Return what the film of each leg is multiplied with, at one of the temperatures."""
-        return [leg_ohms(self.leaves[which], m) / m.ohms for m in self.members]
+        return [leg_factor(self.leaves[which], m) for m in self.members]
+
+    def ratios(self) -> list[FloatArray]:
+        """Return the ratio of each leg as made between the two temperatures."""
+        first, other = self.leaves
+        return [leg_ohms(other, m) / leg_ohms(first, m) for m in self.members]
 
 
 def two_temperature_codes(points: TwoPoints) -> Chosen:
@@ -158,13 +169,13 @@ def two_temperature_codes(points: TwoPoints) -> Chosen:
 
     The two legs are solved for exactly; then of the 8 codes on each side, on either leg, the pair is taken
     whose larger one of the two errors is least. The solution is repeated with the ratios that the legs
-    have with these codes, since switches move them.
+    have with these codes, since switches, and the ends of bits, move them.
     """
     films = points.films(0)
-    ratios = [other / film for film, other in zip(films, points.films(1), strict=True)]
-    exact = _solved(points, ratios)
+    exact = _solved(points, points.ratios())
     aims, codes = exact, _best_pair(points, exact)
-    for _ in range(2 if any(row.switch_ohms for row in points.rows) else 0):
+    moved = any(row.switch_ohms or row.base is not None for row in points.rows)
+    for _ in range(2 if moved else 0):
         own = [_coded_ratio(points, k, code) for k, code in enumerate(codes)]
         aims = _solved(points, own)
         codes = _best_pair(points, aims)
@@ -173,8 +184,7 @@ def two_temperature_codes(points: TwoPoints) -> Chosen:
 
 def perfect_pair(points: TwoPoints) -> FloatArray:
     """Return the values of the two legs [ohm] with codes as fine as one likes, shape (2, devices)."""
-    films = zip(points.films(0), points.films(1), strict=True)
-    return _solved(points, [other / film for film, other in films])
+    return _solved(points, points.ratios())
 
 
 def _coded_ratio(points: TwoPoints, k: int, code: IntArray) -> FloatArray:
@@ -224,7 +234,7 @@ def _best_pair(points: TwoPoints, aims: FloatArray) -> tuple[IntArray, IntArray]
     for which, switch in ((0, 1.0), (1, points.switch)):
         values.append(
             [
-                code_ohms(row, codes, film[:, None], row.switch_ohms * switch)
+                code_ohms(row, codes, film.each, row.switch_ohms * switch)
                 for row, codes, film in zip(points.rows, beside, points.films(which), strict=True)
             ]
         )

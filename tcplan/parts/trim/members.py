@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
 from dataclasses import dataclass
 
 from tcplan.errors import InputError, Problem
@@ -10,6 +10,9 @@ from tcplan.made import FilmLeg, MadeLeg, PlainLeg, StockLeg
 from tcplan.material.model import Material
 from tcplan.material.spread import SIGMAS_PER_LIMIT, Spread, value_half_width
 from tcplan.network import Network, legs, shares
+from tcplan.parts.trim.drawing import Limit, Strip, strip_of
+
+LEAST_FACTOR = 0.01  # of a film at its lowest: wide limits of its ends would make them negative
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -31,6 +34,12 @@ class Member:
         Of its value as limits, mismatch included, as a fraction.
     film : bool
         Whether it can be trimmed.
+    parts : tuple of float
+        Of its leaves [ohm].
+    limits : tuple of (float, float)
+        What its body and its ends are multiplied with in the lowest device, the nominal and the highest.
+    strip : Strip, optional
+        What its pieces are drawn from; None where it has no unit.
     """
 
     id: str
@@ -41,6 +50,9 @@ class Member:
     mismatch: float
     half_width: float
     film: bool
+    parts: tuple[float, ...]
+    limits: tuple[Limit, ...]
+    strip: Strip | None = None
 
 
 def members_of(
@@ -49,8 +61,9 @@ def members_of(
     materials: Mapping[str, Material],
     spreads: Mapping[str, Spread],
     reference: float,
+    held: Collection[str] = (),
 ) -> tuple[Member, ...]:
-    """Return the made legs, in their order.
+    """Return the made legs, in their order; those whose id is in ``held`` are not trimmed.
 
     Raises
     ------
@@ -80,11 +93,22 @@ def members_of(
                 share=sum(parts[k] for k in own),
                 mismatch=mismatch,
                 half_width=(1.0 + half_width) * (1.0 + SIGMAS_PER_LIMIT * mismatch) - 1.0,
-                film=isinstance(leg, FilmLeg | PlainLeg)
+                film=leg.id not in held
+                and isinstance(leg, FilmLeg | PlainLeg)
                 and materials[leaves[own[0]].material].kind == "film",
+                parts=tuple(leaves[k].ohms for k in own),
+                limits=_limits([widths[k] for k in own], mismatch),
+                strip=strip_of(leg, materials[leg.material]) if isinstance(leg, FilmLeg) else None,
             )
         )
     return tuple(found)
+
+
+def _limits(widths: Sequence[float], mismatch: float) -> tuple[Limit, ...]:
+    """Return the factors of the body and the ends of a leg at its limits, and nominal."""
+    most = [(1.0 + width) * (1.0 + SIGMAS_PER_LIMIT * mismatch) for width in widths]
+    low = [max(2.0 - own, LEAST_FACTOR) for own in most]
+    return (low[0], low[-1]), (1.0, 1.0), (most[0], most[-1])
 
 
 def leaf_half_widths(
@@ -148,7 +172,7 @@ def trimmed(members: Sequence[Member]) -> tuple[Member, ...]:
         raise InputError(
             Problem(
                 where="trim",
-                found="a network without a film",
+                found="a network without a film that is not a fixed member",
                 expected="a film, of which units can be bypassed or cut",
                 todo="Remove [trim], or use a film.",
             )

@@ -2,10 +2,11 @@
 
 from __future__ import annotations
 
-from dataclasses import dataclass
+from dataclasses import dataclass, replace
 from typing import Any
 
 from tcplan.brief.model import TrimMethod
+from tcplan.parts.trim.drawing import Drawn
 from tcplan.units import to_celsius
 
 QUANTILE = 0.9973
@@ -76,7 +77,7 @@ class Row:
     """The bits of one leg, least first: units in series with the rest of it, each with its switch across.
 
     A bit that is set is in the leg; one that is cleared is bypassed, and what remains in its place is the
-    unit parallel to the switch. What clearing bit k takes away is 2^k times ``step_ohms``.
+    unit parallel to the switch. All values are those of what is drawn, where it is drawn.
 
     Parameters
     ----------
@@ -90,11 +91,18 @@ class Row:
     switch_ohms : float
         Of a switch that is on [ohm].
     step_ohms : float
-        By which one code moves the leg [ohm].
+        That clearing the least bit takes from the leg [ohm], nominal.
     step : float
-        By which it moves the whole, as a fraction.
+        That it takes from the whole, as a fraction.
     half_width : float
         Of the leg, which the codes cover, as a fraction.
+    gaps : (float, float, float)
+        Largest gap between neighbouring values of codes in the lowest, the nominal and the highest device,
+        of the whole, as fractions.
+    base : Drawn, optional
+        The leg without its bits as it is drawn; None where the film has no unit.
+    bits : tuple of Drawn
+        The units as they are drawn; empty where the film has no unit.
     """
 
     leg: str
@@ -106,6 +114,30 @@ class Row:
     step_ohms: float
     step: float
     half_width: float
+    gaps: tuple[float, ...] = ()
+    base: Drawn | None = None
+    bits: tuple[Drawn, ...] = ()
+
+    @property
+    def gap(self) -> float:
+        """The largest gap between codes over the devices, of the whole, as a fraction."""
+        return max(self.gaps, default=self.step)
+
+    @property
+    def pieces(self) -> tuple[tuple[float, float], ...]:
+        """Body and ends [ohm] of the leg without its bits, then of each bit; all body where not drawn."""
+        if self.base is None:
+            return tuple((ohms, 0.0) for ohms in (self.base_ohms, *self.bit_ohms))
+        return tuple((one.body_ohms, one.ends_ohms) for one in (self.base, *self.bits))
+
+    @property
+    def area(self) -> float | None:
+        """Of the leg with its bits, spacing and ends included [m^2]; None where it is not drawn."""
+        return None if self.base is None else sum(one.area for one in (self.base, *self.bits))
+
+    def with_gaps(self, gaps: tuple[float, ...]) -> Row:
+        """Return the row with its gaps."""
+        return replace(self, gaps=gaps)
 
     def to_dict(self) -> dict[str, Any]:
         """Return JSON data, units in the names."""
@@ -119,6 +151,10 @@ class Row:
             "step_ohms": self.step_ohms,
             "step_ppm_of_whole": self.step * 1e6,
             "half_width": self.half_width,
+            "largest_gap_ppm_of_whole": [gap * 1e6 for gap in self.gaps],
+            "base": None if self.base is None else self.base.to_dict(),
+            "bits": [bit.to_dict() for bit in self.bits],
+            "area_m2": self.area,
         }
 
 
@@ -173,7 +209,7 @@ class Cut:
         }
 
 
-def _scaled(swing: Swing | None, factor: float) -> dict[str, float] | None:
+def _scaled(swing: Swing | Stat | None, factor: float) -> dict[str, float] | None:
     return None if swing is None else swing.scaled(factor)
 
 
@@ -202,6 +238,10 @@ class TrimPlan:
         All candidates, the chosen one first; none of codes.
     whole_aim, whole_gain : float, optional
         Of a cut, for the whole: 1/(1 + D) of target, and (1 + D)/(1 - D).
+    ideal_switches : Stat, optional
+        Judged drift of the same devices with the same codes and switches of 0 ohm; None without switches.
+    label : str
+        Of which resistor, where there are several.
     """
 
     method: TrimMethod
@@ -217,11 +257,14 @@ class TrimPlan:
     cuts: tuple[Cut, ...] = ()
     whole_aim: float | None = None
     whole_gain: float | None = None
+    ideal_switches: Stat | None = None
+    label: str = ""
 
     def to_dict(self) -> dict[str, Any]:
         """Return the trim as plan.json holds it; see docs/trim.md."""
         both = self.temperatures
         return {
+            "label": self.label,
             "method": self.method,
             "target_ohms": self.target_ohms,
             "draws": self.draws,
@@ -236,4 +279,5 @@ class TrimPlan:
             "cuts": [cut.to_dict() for cut in self.cuts],
             "whole_aim": self.whole_aim,
             "whole_gain": self.whole_gain,
+            "ideal_switches_drift_ppm": _scaled(self.ideal_switches, 1e6),
         }

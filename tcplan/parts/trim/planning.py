@@ -2,7 +2,8 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping, Sequence
+from collections.abc import Collection, Mapping, Sequence
+from dataclasses import replace
 
 from tcplan.brief.model import Trim
 from tcplan.goal import Requirement
@@ -33,6 +34,8 @@ def trim_plan(
     *,
     draws: int = 2000,
     seed: int = 1,
+    held: Collection[str] = (),
+    label: str = "",
 ) -> TrimPlan:
     """Return how a made network is trimmed, and what that does to devices drawn over its spread.
 
@@ -53,6 +56,10 @@ def trim_plan(
         Of the whole at the reference [ohm].
     draws, seed : int
         How many devices, and from which seed. The result depends on the seed alone.
+    held : collection of str
+        Ids of legs that are not trimmed: fixed members.
+    label : str
+        Of which resistor, where there are several: it is said in the text.
 
     Returns
     -------
@@ -64,7 +71,7 @@ def trim_plan(
         When nothing can be trimmed, the range of the trim is not known, or a step or a cut is not
         feasible: with the nearest figure that is.
     """
-    members = members_of(network, legs, materials, spreads, need.reference)
+    members = members_of(network, legs, materials, spreads, need.reference, held)
     devices = draw_devices(network, members, materials, spreads, process, need, draws, seed)
     task = Task(
         network=network,
@@ -77,4 +84,4 @@ def trim_plan(
         target=target_ohms,
         seed=seed,
     )
-    return _METHODS[trim.method](task)
+    return replace(_METHODS[trim.method](task), label=label)
