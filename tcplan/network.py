@@ -204,9 +204,7 @@ def scaled(network: Network, factor: float) -> Network:
 
 def deviated(network: Network, factors: Mapping[str, float]) -> Network:
     """Return the network with every leg multiplied by the value factor of its material."""
-    return mapped(
-        network, lambda leg: replace(leg, ohms=leg.ohms * factors.get(leg.material, 1.0))
-    )
+    return mapped(network, lambda leg: replace(leg, ohms=leg.ohms * factors.get(leg.material, 1.0)))
 
 
 def tree(network: Network) -> dict[str, Any]:

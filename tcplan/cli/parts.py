@@ -73,7 +73,7 @@ def command(
     [ratio] both resistors are made.
 
     -o writes plan.json with its parts, parts.csv, and where there are films or a trim the figures
-    placement and trade and trim-codes.csv.
+    placement and trade, trim-codes.csv and trim-bits.csv.
 
     Exit code 0: it meets the limit, or there is none. 1: it does not, or could not be judged. 2: a leg
     can not be made: the message says which rule stops it, and the nearest that can.

@@ -108,9 +108,7 @@ def _without_empty(sweep: Sweep) -> tuple[Sweep, tuple[str, ...]]:
     return replace(sweep, devices=devices, device=np.searchsorted(there, sweep.device)), gone
 
 
-def _fits(
-    request: SweepRequest, sweep: Sweep, common: CommonErrors
-) -> tuple[tuple[Fit, ...], float | None]:
+def _fits(request: SweepRequest, sweep: Sweep, common: CommonErrors) -> tuple[tuple[Fit, ...], float | None]:
     """Return the fits of all devices, with one order, and the probability of the quadratic term."""
     if request.order is not None or request.model != "polynomial":
         return _all(request, sweep, common, request.order), None
@@ -119,12 +117,12 @@ def _fits(
     except InputError:
         # too few readings for it in some device: a line, where that can be fitted to all
         return _all(request, sweep, common, 1), None
-    together = _together([fit.last_term for fit in curved if fit.last_term is not None])
+    together = combined([fit.last_term for fit in curved if fit.last_term is not None])
     return (curved if together <= RISK else _all(request, sweep, common, 1)), together
 
 
-def _together(probabilities: Sequence[float]) -> float:
-    """Return the probability of several devices together, by Fisher's sum of -2 ln p.
+def combined(probabilities: Sequence[float]) -> float:
+    """Return the probability of several tests together, by Fisher's sum of -2 ln p.
 
     References
     ----------
@@ -134,6 +132,20 @@ def _together(probabilities: Sequence[float]) -> float:
 
     total = -2.0 * sum(math.log(max(p, _SMALLEST)) for p in probabilities)
     return float(chdtrc(2 * len(probabilities), total))
+
+
+def scatter_of(fits: Sequence[Fit]) -> tuple[float, float] | None:
+    """Return the scatter of the readings over what is stated, and the probability of more by chance.
+
+    None where no uncertainty is stated, or no reading is left over.
+    """
+    from scipy.special import chdtrc
+
+    dof, squares = sum(fit.dof for fit in fits), [fit.chi_squared for fit in fits]
+    total = math.fsum(square for square in squares if square is not None)
+    if None in squares or not dof:
+        return None
+    return math.sqrt(total / dof), float(chdtrc(dof, total))
 
 
 def _all(request: SweepRequest, sweep: Sweep, common: CommonErrors, order: int | None) -> tuple[Fit, ...]:

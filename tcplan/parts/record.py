@@ -87,8 +87,8 @@ class MadePlan:
         Of the legs at each value; empty without an operating point.
     placements : tuple of tuple of Placement
         Of the films at each value.
-    trim : TrimPlan, optional
-        Of the first value; None where none is asked.
+    trims : tuple of TrimPlan
+        Of each value; empty where none is asked.
     stops : str
         Which rule keeps a plan that meets its limit from meeting it as made; empty when none does.
     """
@@ -100,7 +100,7 @@ class MadePlan:
     way: FilmWay | None = None
     loads: tuple[tuple[Load, ...], ...] = ()
     placements: tuple[tuple[Placement, ...], ...] = ()
-    trim: TrimPlan | None = None
+    trims: tuple[TrimPlan, ...] = ()
     stops: str = ""
 
     @property

@@ -9,7 +9,7 @@ import math
 from collections.abc import Iterator, Sequence
 
 from tcplan.measure.fit_checks import RISK
-from tcplan.measure.fitted import FittedMaterial
+from tcplan.measure.fitted import FittedMaterial, combined, scatter_of
 from tcplan.measure.model import Fit
 from tcplan.measure.spread import Population, Scatter
 from tcplan.measure.tracking import MeasuredTracking
@@ -19,7 +19,12 @@ from tcplan.units import format_celsius, format_ohms
 MOST_LINES = 8  # that are told of each kind
 MOST_DEVICES = 4  # that are named
 LEAST_TOLD = 1e-3  # of a probability
-SCALES = {"tc1": (1e6, "ppm/K"), "tc2": (1e6, "ppm/K^2"), "tc3": (1e6, "ppm/K^3")}
+SCALES = {
+    "tc1": (1e6, "ppm/K"),
+    "tc2": (1e6, "ppm/K^2"),
+    "tc3": (1e6, "ppm/K^3"),
+    "beta": (1.0, "K"),
+}
 WORDS = {"value": "R", "tc1": "TC1", "tc2": "TC2", "tc3": "TC3"}
 SCATTER_SCALES = {"value": (1e2, "%"), "tc1": (1e6, "ppm/K"), "tc2": (1e6, "ppm/K^2")}
 NAME_LETTERS = 16  # of a device or a lot in the table
@@ -52,15 +57,16 @@ def facts(one: FittedMaterial, refused: int) -> tuple[Fact, ...]:
         ("Flags", tuple(_flags(one))),
         ("Left out", tuple(_left_out(one))),
         ("Refused", tuple(_refused(one, refused))),
-        ("Note", (*one.notes, *map(_capital, one.found.notes))),
+        ("Note", (*one.notes, *_notes(one.found))),
     )
     return tuple((label, texts) for label, texts in found if texts)
 
 
-def _capital(note: str) -> str:
-    """Return a note that begins with the name of a component with its word instead."""
-    word, colon, rest = note.partition(":")
-    return f"{WORDS[word]}{colon}{rest}" if word in WORDS else note
+def _notes(found: Population) -> Iterator[str]:
+    """Yield what the data of several devices do not tell, components by their words."""
+    for note in found.notes if found.devices > 1 else ():
+        word, colon, rest = note.partition(":")
+        yield f"{WORDS[word]}{colon}{rest}" if word in WORDS else note
 
 
 def tracking_text(names: Sequence[str], tracked: MeasuredTracking) -> str:
@@ -80,7 +86,8 @@ def _law(one: FittedMaterial) -> Iterator[str]:
             at = format_celsius(one.request.reference)
             of = " of the mean of the lots" if found.lots > 1 else " of the mean" if several else ""
             share = numbers.number(u / value * 100.0, 2)
-            yield f"R({at}) {format_ohms(value)} +- {share} % (standard uncertainty{of})."
+            digits = max(4, min(9, math.ceil(math.log10(value / u)) + 1)) if u > 0.0 else 6
+            yield f"R({at}) {format_ohms(value, digits)} +- {share} % (standard uncertainty{of})."
         else:
             scale, unit = SCALES.get(name, (1.0, ""))
             yield f"{WORDS.get(name, name)} {_known(value * scale, u * scale)} {unit}".rstrip() + "."
@@ -153,14 +160,18 @@ def _scatter(scatter: Scatter) -> str:
 def _quality(one: FittedMaterial) -> Iterator[str]:
     """Yield how the readings lie about their laws."""
     yield from _scatter_of_readings(one)
-    lacking = [fit.lack_of_fit is not None and fit.lack_of_fit.probability < RISK for fit in one.fits]
-    tested = sum(fit.lack_of_fit is not None for fit in one.fits)
-    if any(lacking):
-        least = min(fit.lack_of_fit.probability for fit in one.fits if fit.lack_of_fit is not None)
-        p = _probability(least)
-        yield f"Lack of fit (p {p} at least) {_where(one, lacking)}: the law is too simple for them."
-    elif tested:
-        yield "Repeats show no lack of fit (p above 0.05)."
+    tests = [fit.lack_of_fit.probability for fit in one.fits if fit.lack_of_fit is not None]
+    if tests:
+        p = combined(tests)
+        together = ", all devices together" if len(tests) > 1 else ""
+        found = f"(p {_probability(p)}{together})"
+        name = one.sweep.devices[tests.index(min(tests))] if len(tests) == len(one.fits) > 1 else ""
+        where = f", most in {_short(name)}" if name else ""
+        yield (
+            f"Lack of fit {found}{where}: the law is too simple for these readings."
+            if p < RISK
+            else f"Repeats show no lack of fit {found}."
+        )
     moved = [fit.hysteresis for fit in one.fits if fit.hysteresis is not None]
     if moved:
         significant = [fit.hysteresis is not None and fit.hysteresis.significant for fit in one.fits]
@@ -173,28 +184,16 @@ def _quality(one: FittedMaterial) -> Iterator[str]:
 def _scatter_of_readings(one: FittedMaterial) -> Iterator[str]:
     low, high = (_ppm(pick(fit.sigma for fit in one.fits)) for pick in (min, max))
     sigma = low if low == high else f"{low} to {high}"
-    squares = [fit.chi_squared for fit in one.fits if fit.chi_squared is not None]
-    dof = sum(fit.dof for fit in one.fits)
-    if not squares:
-        yield f"Readings scatter by {sigma} about their law (1 sigma)."
-    elif not dof:
-        yield f"Readings are known to {sigma} as stated; none is left over to check that."
+    found = scatter_of(one.fits)
+    if one.fits[0].chi_squared is None:
+        yield f"They scatter by {sigma} about their law (1 sigma)."
+    elif found is None:
+        yield f"They are known to {sigma} as stated; none is left over to check that."
     else:
-        factor = math.sqrt(sum(squares) / dof)
-        p = _more(sum(squares), dof)
+        factor, p = found
         told = f": more than stated (p {_probability(p)})" if p < RISK else ""
-        shown = numbers.number(factor, 3)
-        yield f"Readings are known to {sigma} as stated (1 sigma), and scatter by {shown} times that{told}."
-
-
-def _more(chi_squared: float, dof: int) -> float:
-    """Return the probability of more than this sum of squares (Wilson and Hilferty, 1931).
-
-    Good to about 0.001 for any number of degrees of freedom, which is what is printed; no library is needed.
-    """
-    middle, width = 1.0 - 2.0 / (9.0 * dof), math.sqrt(2.0 / (9.0 * dof))
-    z = ((chi_squared / dof) ** (1.0 / 3.0) - middle) / width
-    return 0.5 * math.erfc(z / math.sqrt(2.0))
+        times = numbers.number(factor, 3)
+        yield f"They are known to {sigma} as stated (1 sigma), and scatter by {times} times that{told}."
 
 
 def _where(one: FittedMaterial, is_so: Sequence[bool]) -> str:

@@ -30,7 +30,7 @@ def facts(made: MadePlan) -> tuple[Fact, ...]:
         ("Buy", buying(made.parts.made, made.loads, made.plan.by_name)),
         ("Cut", cutting(made.parts.made, made.plan.by_name, made.plan.range.reference_degC)),
         ("Carries", tuple(_carries(made))),
-        ("Trim", () if made.trim is None else trim_text(made.trim)),
+        ("Trim", tuple(sentence for trim in made.trims for sentence in trim_text(trim))),
         ("Note", tuple(_notes(made))),
         ("Assumed", ("Figures are design estimates, to be confirmed on silicon or hardware.", *CAUTIONS[1:])),
     )

@@ -22,6 +22,7 @@ PARTS_FILES = (
     "trade.svg",
     "trade.png",
     "trim-codes.csv",
+    "trim-bits.csv",
 )
 
 
@@ -64,7 +65,7 @@ def _write(
 def _contents(made: MadePlan) -> dict[str, bytes]:
     from tcplan.figures.placement import placement_figure_files
     from tcplan.figures.trade import trade_figure_files
-    from tcplan.parts.trim import codes_csv
+    from tcplan.parts.trim import bits_csv, codes_csv
     from tcplan.spec.parts_csv import parts_csv
 
     plan, parts = made.plan, made.parts
@@ -82,8 +83,9 @@ def _contents(made: MadePlan) -> dict[str, bytes]:
         found |= trade_figure_files(
             points, made.ways.index(made.way), None if limit is None else limit * 1e-6
         )
-    if made.trim is not None:
-        found["trim-codes.csv"] = codes_csv(made.trim).encode()
+    if any(trim.rows for trim in made.trims):
+        found["trim-codes.csv"] = codes_csv(*made.trims).encode()
+        found["trim-bits.csv"] = bits_csv(*made.trims).encode()
     return found
 
 

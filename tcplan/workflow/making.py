@@ -2,7 +2,7 @@
 
 from __future__ import annotations
 
-from collections.abc import Mapping
+from collections.abc import Iterator, Mapping, Sequence
 from dataclasses import replace
 
 import numpy as np
@@ -110,7 +110,7 @@ def _made(task: Task) -> MadePlan:
     loads = tuple(_loads(task, one.legs, a) for one, a in zip(made, assemblies, strict=True))
     loads = loads if task.asked.operating else ()
     placements = tuple(_placed(task, one) for one in made)
-    trim = _trim(task, made[0], assemblies[0])
+    trims = tuple(_trims(task, made, assemblies))
     parts = PartsRecord(
         option=task.ideal.id,
         materials=tuple({m.name: m for a in assemblies for m in a.materials}.values()),
@@ -120,7 +120,7 @@ def _made(task: Task) -> MadePlan:
             "ways": [one.to_dict() for one in ways],
             "loads": [[load.to_dict() for load in own] for own in loads],
             "placement": [[one.to_dict() for one in own] for own in placements],
-            "trim": None if trim is None else trim.to_dict(),
+            "trim": [trim.to_dict() for trim in trims],
         },
     )
     return MadePlan(
@@ -131,7 +131,7 @@ def _made(task: Task) -> MadePlan:
         way=way,
         loads=loads,
         placements=placements,
-        trim=trim,
+        trims=trims,
         stops=what_stops(task, [one.option for one in made], [one.legs for one in made]),
     )
 
@@ -146,22 +146,26 @@ def _placed(task: Task, made: MadeValue) -> tuple[Placement, ...]:
     )
 
 
-def _trim(task: Task, made: MadeValue, assembly: Assembly) -> TrimPlan | None:
-    """Return the trim of what is made; None where the brief asks for none."""
+def _trims(task: Task, made: Sequence[MadeValue], assemblies: Sequence[Assembly]) -> Iterator[TrimPlan]:
+    """Yield the trim of what is made at each value; nothing where the brief asks for none."""
     if task.asked.trim is None:
-        return None
+        return
     over = task.asked.over
-    drawn = {m.name: m.drawn_spread(over.low, over.high) for m in assembly.materials}
-    return trim_plan(
-        assembly.network,
-        made.legs,
-        assembly.by_name,
-        {name: spread for name, spread in drawn.items() if spread is not None},
-        made_process(task.asked.process, assembly),
-        requirement(task.asked.goal, over),
-        task.asked.trim,
-        made.target_ohms,
-    )
+    held = [task.names[k] for k in task.fixed]
+    for one, assembly in zip(made, assemblies, strict=True):
+        drawn = {m.name: m.drawn_spread(over.low, over.high) for m in assembly.materials}
+        yield trim_plan(
+            assembly.network,
+            one.legs,
+            assembly.by_name,
+            {name: spread for name, spread in drawn.items() if spread is not None},
+            made_process(task.asked.process, assembly),
+            requirement(task.asked.goal, over),
+            task.asked.trim,
+            one.target_ohms,
+            held=held,
+            label=format_ohms(one.target_ohms) if task.asked.also else "",
+        )
 
 
 def task_of(plan: Plan, rules: PartsRules, option: str | None = None) -> Task:

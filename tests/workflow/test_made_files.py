@@ -153,7 +153,7 @@ def test_without_films_there_is_no_figure(bought: MadePlan, tmp_path: Path) -> N
 
 
 def test_one_way_to_draw_it_is_no_trade(trimmed: MadePlan, tmp_path: Path) -> None:
-    write_parts(replace(trimmed, ways=trimmed.ways[:1], way=trimmed.ways[0], trim=None), tmp_path)
+    write_parts(replace(trimmed, ways=trimmed.ways[:1], way=trimmed.ways[0], trims=()), tmp_path)
     assert names(tmp_path) == ["parts.csv", "placement.png", "placement.svg", "plan.json"]
 
 

@@ -1,6 +1,6 @@
 """The readings of examples/film_campaign, made from films that are known: all invented, all from a seed.
 
-Run ``python tests/examples/film_campaign.py`` in the repository to write the files again. Python's own
+Run ``python tests/film_campaign.py`` in the repository to write the files again. Python's own
 ``random()`` gives the same numbers in every version, so the files can be compared with what is made here.
 """
 
@@ -12,7 +12,7 @@ from dataclasses import dataclass
 from pathlib import Path
 from statistics import NormalDist
 
-FOLDER = Path(__file__).parents[2] / "examples" / "film_campaign"
+FOLDER = Path(__file__).parents[1] / "examples" / "film_campaign"
 REFERENCE_DEGC = 25.0
 LOTS = ("K1", "K2", "K3", "K4", "K5", "K6", "K7", "K8")
 DEVICES = ("a", "b", "c")  # of each lot
