@@ -175,7 +175,7 @@ def test_the_keys_of_parts(made):
     parts = json.loads(plan_json(made))["parts"]
     assert list(parts) == ["option", "materials", "made", "details"]
     assert list(parts["made"][0]) == ["target_ohms", "value_error", "legs", "option"]
-    assert set(parts["details"]) == {"ways", "loads", "placement", "trim"}
+    assert set(parts["details"]) == {"rules", "ways", "loads", "placement", "trim"}
     assert {"pp", "pp_ends", "np", "np_ends", "chip_c1"} <= set(parts["materials"])
 
 

@@ -19,13 +19,6 @@ _OPTIONS = (
     ("lead_tc1", "--lead-tc1", "TC", "The known TC1 of that lead, such as '3900 ppm/K'."),
     ("meter_scale", "--meter-scale", "PART", "Of the gain of the meter, such as '15 ppm'."),
 )
-_UNITS = {
-    "chamber_offset": "delta_K",
-    "chamber_scale": "1",
-    "lead": "ohm",
-    "lead_tc1": "1/K",
-    "meter_scale": "1",
-}
 
 
 def common_error_options(command: Command) -> Command:
@@ -44,7 +37,7 @@ def common_errors_of(texts: dict[str, str | None]) -> CommonErrors:
         With every mistake found.
     """
     from tcplan.errors import InputError, Problem
-    from tcplan.measure.model import CommonErrors
+    from tcplan.measure.model import COMMON_ERROR_UNITS, CommonErrors
     from tcplan.units import parse_quantity
 
     values: dict[str, float] = {}
@@ -53,7 +46,7 @@ def common_errors_of(texts: dict[str, str | None]) -> CommonErrors:
         if (text := texts.get(name)) is None:
             continue
         try:
-            values[name] = parse_quantity(text, _UNITS[name], where=option)
+            values[name] = parse_quantity(text, COMMON_ERROR_UNITS[name], where=option)
         except InputError as error:
             problems.extend(error.problems)
             continue

@@ -33,7 +33,7 @@ Examples:
   tcplan fit campaign.toml -o fitted
   tcplan fit red_film.csv --source "chamber run 12" --squares 50 -o fitted
   tcplan fit probe.csv --model thermistor --source "lot 7" --lead "20 mohm"
-  tcplan fit probe.csv --law "exp(B*(1/T - 1/T0))" --start B=3400 --source "lot 7"
+  tcplan fit probe.csv --source "lot 7" --law "exp(B/T)" --start B=3400
 """
 
 

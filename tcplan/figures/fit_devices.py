@@ -24,6 +24,7 @@ from tcplan.measure.spread_laws import local
 DEVICES_INCHES = (7.2, 6.6)
 COVER = 2.0  # standard uncertainties of a bar, and standard deviations of the ellipse
 TICK_ROOM = 26.0  # points that the name of a lot or a device needs at least
+LEAST_SPAN = 1e-4  # of the values on an axis
 GAP = 1.0  # between lots, in devices
 
 
@@ -89,6 +90,7 @@ def draw_devices(ax: Axes, rows: tuple[Axes, Axes], one: FittedMaterial) -> Devi
     dress(ax, f"{one.request.name}: devices, bars of {COVER:g} standard uncertainties", "TC1 (ppm/K)")
     ax.set_xlabel("R less its mean (%)" if len(one.fits) > 1 else "R less its fit (%)")
     ax.margins(0.08)
+    _widened(ax)
     legend = put_legend(ax)
     drawn = (
         _row(rows[0], one, found.percent, found.percent_bar, "value", "R less mean (%)"),
@@ -146,6 +148,15 @@ def _ellipse_words(one: FittedMaterial) -> str:
     return f"{COVER:g} sigma of devices,\ncorrelation {value}\n({low} to {high})"
 
 
+def _widened(ax: Axes) -> None:
+    """Show no less than a part of the values: readings without noise would give ticks of one number."""
+    for (low, high), limits in ((ax.get_xlim(), ax.set_xlim), (ax.get_ylim(), ax.set_ylim)):
+        least = LEAST_SPAN * max(abs(low), abs(high), 1.0)
+        if high - low < least:
+            middle = 0.5 * (low + high)
+            limits(middle - 0.5 * least, middle + 0.5 * least)
+
+
 # --- one after the other --------------------------------------------------------------------------------
 
 
@@ -167,6 +178,7 @@ def _row(
         ax.axhspan(
             middle - half, middle + half, facecolor=SPREAD_FILL, edgecolor=SPREAD_EDGE, lw=0.6, zorder=1
         )
+    _widened(ax)
     dress(ax, "", label)
     ax.set_xlim(-GAP, float(at.max()) + GAP)
     _ticks(ax, one, at)

@@ -103,6 +103,16 @@ class CommonErrors:
     meter_scale: float = 0.0
 
 
+COMMON_ERROR_UNITS = {
+    "chamber_offset": "delta_K",
+    "chamber_scale": "1",
+    "lead": "ohm",
+    "lead_tc1": "1/K",
+    "meter_scale": "1",
+}
+"""What each of `CommonErrors` is read in; 0.15 degC of an offset is 0.15 K."""
+
+
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Flag:
     """A reading that stands out: its line, its studentised residual and its leverage."""

@@ -2,30 +2,24 @@
 
 from __future__ import annotations
 
+import math
 from dataclasses import replace
 from pathlib import Path
 from typing import Any
 
 from tcplan.errors import InputError
+from tcplan.material.law import Expression
 from tcplan.material.model import text_problems
 from tcplan.measure.block import Size
 from tcplan.measure.fit import MODELS, ModelName
 from tcplan.measure.fit_laws import Formula
-from tcplan.measure.model import CommonErrors
+from tcplan.measure.model import COMMON_ERROR_UNITS, CommonErrors
 from tcplan.measure.request import FitRequest, SpreadRules, SweepRequest
 from tcplan.measure.request_shape import shape_mistakes
 from tcplan.names import shown
 from tcplan.ranges import REFERENCE
 from tcplan.table_reader import TableReader
 from tcplan.toml_input import file_text, join, place, read_toml_text
-
-ERROR_UNITS = {
-    "chamber_offset": "K",
-    "chamber_scale": "1",
-    "lead": "ohm",
-    "lead_tc1": "1/K",
-    "meter_scale": "1",
-}
 
 
 def read_request(path: Path) -> FitRequest:
@@ -82,8 +76,8 @@ def _sweep(table: TableReader, name: str, folder: Path) -> SweepRequest | None:
         table.problems.append(replace(problem, where=join(table.where, inside)))
     if file is not None and "\0" in file:
         table.refuse("file", shown(file), "the name of a file")
-    model, size = _model(table), _size(table)
     reference = table.quantity("reference", "K") if table.has("reference") else REFERENCE
+    model, size = _model(table, reference), _size(table)
     exclude = table.table.get("exclude")
     if len(table.problems) > before or file is None or source is None or reference is None:
         return None
@@ -101,7 +95,7 @@ def _sweep(table: TableReader, name: str, folder: Path) -> SweepRequest | None:
     )
 
 
-def _model(table: TableReader) -> ModelName | Formula:
+def _model(table: TableReader, reference: float | None) -> ModelName | Formula:
     """Return what is fitted; "polynomial" where a mistake is noted."""
     known: dict[str | None, ModelName] = {name: name for name in MODELS}
     if not table.has("law"):
@@ -114,16 +108,17 @@ def _model(table: TableReader) -> ModelName | Formula:
     if table.has("model", "order"):
         table.refuse("law", "a law beside a model or an order", "one of the two")
     start = table.table.get("start")
-    if not isinstance(start, dict) or not start:
-        table.refuse("start", "no start values", "a first value for each parameter of the law")
-        return "polynomial"
-    values = tuple((str(key), float(value)) for key, value in start.items() if _is_number(value))
-    made = table.guarded(lambda: Formula(text=table.text("law") or "", start=values))
-    return made if made is not None else "polynomial"
+    pairs = start.items() if isinstance(start, dict) else ()
+    values = tuple((str(key), float(value)) for key, value in pairs if _is_number(value))
+    text = table.text("law")
+    if text is not None and reference is not None and len(values) == len(pairs):
+        # told once here, not once for each device
+        table.guarded(lambda: Expression(reference=reference, text=text, constants=values))
+    return Formula(text=text or "", start=values)
 
 
 def _is_number(value: object) -> bool:
-    return isinstance(value, (int, float)) and not isinstance(value, bool)
+    return isinstance(value, (int, float)) and not isinstance(value, bool) and math.isfinite(value)
 
 
 def _size(table: TableReader) -> Size | None:
@@ -133,7 +128,8 @@ def _size(table: TableReader) -> Size | None:
         return None
     if table.has("squares"):
         count = table.number("squares")
-        return None if count is None or count <= 0.0 else Size(key="ohm_per_square", count=count)
+        good = count is not None and 0.0 < count < math.inf  # what is not is told by the shape
+        return Size(key="ohm_per_square", count=count) if count is not None and good else None
     length = table.above_zero("length", "m") if table.has("length") else None
     return None if length is None else Size(key="ohm_per_metre", count=length)
 
@@ -142,7 +138,7 @@ def _errors(table: TableReader | None) -> CommonErrors:
     """Return the common errors; a mistake is noted."""
     if table is None:
         return CommonErrors()
-    found = {key: table.quantity(key, unit) for key, unit in ERROR_UNITS.items() if table.has(key)}
+    found = {key: table.quantity(key, unit) for key, unit in COMMON_ERROR_UNITS.items() if table.has(key)}
     for key, value in found.items():
         if value is not None and value < 0.0 and key != "lead_tc1":
             table.refuse(key, str(table.table[key]), "a standard uncertainty, zero or more")

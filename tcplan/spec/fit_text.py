@@ -114,7 +114,7 @@ def _known(value: float, uncertainty: float) -> str:
     if not -12 <= place <= 0:
         digits = max(1, math.floor(math.log10(abs(value) or uncertainty)) - place + 1)
         return f"{numbers.number(value, min(digits, 15))} +- {numbers.number(uncertainty, 2)}"
-    return f"{value + 0.0:.{-place}f} +- {uncertainty:.{-place}f}"
+    return f"{round(value, -place) + 0.0:.{-place}f} +- {uncertainty:.{-place}f}"  # no minus zero
 
 
 def _probability(p: float) -> str:

@@ -163,7 +163,7 @@ def test_the_dimensions_are_those_of_the_outline():
     # By hand: 3 rows of 7 and 2 dummies, 9 * 1.6 um by 3 * 5.6 um.
     assert [text.get_text() for text in artists.dimensions[2:]] == ["14.4 um", "16.8 um"]
     assert artists.title.get_text() == "pp: 19 units, 3 x 9 cells, 14.4 um x 16.8 um"
-    assert artists.note.get_text() == "Both sides of the ratio have one centroid."
+    assert artists.note.get_text() == "Unit: W 1 um, L 4 um. Both sides of the ratio have one centroid."
     assert [text.get_text() for text in artists.legend.get_texts()] == ["a: 12", "b: 7", "dummies: 8"]
 
 

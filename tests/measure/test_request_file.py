@@ -60,6 +60,11 @@ def test_models(model):
     assert one.model == model
 
 
+def test_a_formula_that_is_known_in_full_needs_no_start():
+    [one] = parse_request(f'{LEAST}law = "1 + 0.0039*(T - T0)"\n', "c.toml", Path()).sweeps
+    assert one.model == Formula(text="1 + 0.0039*(T - T0)")
+
+
 def test_a_wire_has_a_length():
     [one] = parse_request(f'{LEAST}length = "1.2 m"\n', "c.toml", Path()).sweeps
     assert one.size == Size(key="ohm_per_metre", count=1.2)
@@ -89,7 +94,8 @@ MISTAKES = {
         "sweep.film.law",
     ),
     "a law and an order": (f'{LEAST}order = 2\nlaw = "exp(B/T)"\nstart = {{ B = 1.0 }}\n', "sweep.film.law"),
-    "a law without start": (f'{LEAST}law = "exp(B/T)"\n', "sweep.film.start"),
+    "a parameter without start": (f'{LEAST}law = "exp(B/T)"\n', "sweep.film.law"),
+    "a formula that is not finite": (f'{LEAST}law = "1/(T - T0)"\n', "sweep.film.law"),
     "start without a law": (f"{LEAST}start = {{ B = 1.0 }}\n", "sweep.film.start"),
     "a start that is no number": (f'{LEAST}law = "B*T"\nstart = {{ B = "x" }}\n', "sweep.film.start.B"),
     "a start that is infinite": (f'{LEAST}law = "B*T"\nstart = {{ B = inf }}\n', "sweep.film.start.B"),
@@ -168,3 +174,9 @@ def test_every_key_is_in_the_document_and_no_other():
     told = set(re.findall(r"^\| `(\w+)` \|", part, re.M))
     assert told == known - {"schema", "sweep", "errors", "spread"}
     assert all(f"{name}" in EXAMPLE for name in ("schema", "[sweep.", "[errors]", "[spread]"))
+
+
+def test_an_offset_of_the_chamber_is_a_difference():
+    """0.15 degC of an offset is 0.15 K, not 273.3 K."""
+    text = f'{LEAST}[errors]\nchamber_offset = "0.15 degC"\n'
+    assert parse_request(text, "campaign.toml", Path()).errors.chamber_offset == pytest.approx(0.15)
