@@ -14,10 +14,12 @@ from pathlib import Path
 from typing import Any, get_args, get_origin
 
 from tcplan.errors import InputError, Problem
+from tcplan.input_file import file_bytes, too_large
 from tcplan.names import nearest_name, shown
 
 MAX_BYTES = 2_000_000
 MAX_DEPTH = 12
+_MEANT = "Is it the file you meant?"
 _TOML_PLACE = re.compile(
     r"^(?P<text>.*?) \(at (?:line (?P<line>\d+), column (?P<column>\d+)|end of document)\)$", re.S
 )
@@ -53,7 +55,7 @@ def file_text(path: Path) -> str:
     InputError
         When the file is missing, not a file, too large or not text.
     """
-    return _decoded(_bytes_of(path), str(path))
+    return _decoded(file_bytes(path, MAX_BYTES, (".toml",), "a readable TOML file", _MEANT), str(path))
 
 
 def read_toml_text(text: str, name: str) -> dict[str, Any]:
@@ -77,7 +79,7 @@ def read_toml_text(text: str, name: str) -> dict[str, Any]:
         When the text is too large, empty or not TOML.
     """
     if len(text) > MAX_BYTES:
-        raise InputError(_too_large(name, f"{len(text)} characters"))
+        raise InputError(too_large(name, f"{len(text)} characters", MAX_BYTES, _MEANT))
     if not text.strip():
         raise InputError(
             Problem(where=name, found="an empty file", expected="TOML text", todo="Is it the file you meant?")
@@ -148,39 +150,6 @@ def join(where: str, path: str) -> str:
 # ---- reading
 
 
-def _bytes_of(path: Path) -> bytes:
-    name = str(path)
-    try:
-        if path.is_dir():
-            raise InputError(Problem(where=name, found="a folder", expected="a file"))
-        if not path.exists():
-            raise InputError(_missing_file(path))
-        if not path.is_file():
-            raise InputError(Problem(where=name, found="a device or pipe", expected="a regular file"))
-        if (size := path.stat().st_size) > MAX_BYTES:
-            raise InputError(_too_large(name, f"{size} bytes"))
-        with path.open("rb") as stream:
-            return stream.read(MAX_BYTES + 1)
-    except (OSError, ValueError) as fault:
-        reason = getattr(fault, "strerror", None) or str(fault)
-        raise InputError(
-            Problem(
-                where=shown(name),
-                found=f"a file that cannot be read ({reason})",
-                expected="a readable TOML file",
-                todo="Check the name and the permissions.",
-            )
-        ) from fault
-
-
-def _missing_file(path: Path) -> Problem:
-    near = None
-    if path.parent.is_dir():
-        near = nearest_name(path.name, sorted(entry.name for entry in path.parent.glob("*.toml"))[:1000])
-    todo = f"Did you mean {path.parent / near}?" if near else "Check the name and the folder."
-    return Problem(where=str(path), found="no such file", expected="a file", todo=todo)
-
-
 def _decoded(content: bytes, name: str) -> str:
     try:
         text = content.decode("utf-8-sig")
@@ -190,10 +159,6 @@ def _decoded(content: bytes, name: str) -> str:
     if "\0" in text:
         raise InputError(Problem(where=name, found="a binary file", expected="TOML text in UTF-8"))
     return text
-
-
-def _too_large(name: str, found: str) -> Problem:
-    return Problem(where=name, found=found, expected=f"{MAX_BYTES} at most", todo="Is it the file you meant?")
 
 
 def _too_deep(name: str) -> Problem:

@@ -16,7 +16,7 @@ MODULES = sorted(PACKAGE.rglob("*.py"))
 ORDER = [
     {"arrays", "effort", "errors", "trees"},
     {"names", "minimax"},
-    {"units", "output"},
+    {"units", "output", "input_file"},
     {"ranges", "preferred", "toml_input", "table_reader", "material"},
     {"process"},
     {"network"},

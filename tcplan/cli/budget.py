@@ -68,7 +68,8 @@ def command(
     a range that the data do not cover.
     """
     from tcplan.errors import InputError, Problem
-    from tcplan.workflow.budgeting import budget_of, plan_as_made, plan_to_budget
+    from tcplan.workflow.as_made import plan_as_made
+    from tcplan.workflow.budgeting import budget_of, plan_to_budget
     from tcplan.workflow.conversions import materials_of
 
     if file.casefold().endswith(".toml") and (brief := _ratio_brief(file)) is not None:

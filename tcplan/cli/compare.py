@@ -67,7 +67,8 @@ def command(
     from tcplan.measure.reading import read_sweep
     from tcplan.spec.compare_data import comparison_data
     from tcplan.spec.compare_text import compare_text
-    from tcplan.workflow.budgeting import plan_as_made, plan_to_budget
+    from tcplan.workflow.as_made import plan_as_made
+    from tcplan.workflow.budgeting import plan_to_budget
     from tcplan.workflow.comparing import Asking, check_compare_out, compare_plan, write_comparison
 
     errors = common_errors_of(common)

@@ -9,16 +9,17 @@ from collections.abc import Iterator, Sequence
 from pathlib import Path
 
 from tcplan.errors import InputError, Problem
+from tcplan.input_file import file_bytes, too_large
 from tcplan.measure.reading_cells import Block, decimal_mark, read_rows, record_at, split_rows
 from tcplan.measure.reading_fast import read_lines
 from tcplan.measure.reading_header import EXAMPLE, Columns, has_both, parse_header
 from tcplan.measure.reading_rows import MAX_ROWS, Gathering, ReadSweep
 from tcplan.measure.reading_xlsx import XLSX_START, parse_xlsx_sweep
-from tcplan.names import nearest_name, shown
 
 __all__ = ["ReadSweep", "parse_sweep", "read_sweep"]
 
 MAX_BYTES = 100_000_000
+_PARTS = "Read it in parts."
 _DELIMITERS = ("\t", ";", ",")
 _LARGEST_BLOCK = 1024
 _SMALLEST_BLOCK = 64
@@ -42,7 +43,9 @@ def read_sweep(path: Path) -> ReadSweep:
     InputError
         When the file cannot be read, its header is wrong, or it holds no reading.
     """
-    return parse_sweep(_bytes_of(path), str(path))
+    return parse_sweep(
+        file_bytes(path, MAX_BYTES, (".csv", ".xlsx"), "a readable CSV or XLSX file", _PARTS), str(path)
+    )
 
 
 def parse_sweep(content: bytes, name: str) -> ReadSweep:
@@ -70,7 +73,7 @@ def parse_sweep(content: bytes, name: str) -> ReadSweep:
     RFC 4180, Common format for comma-separated values files, for quoted cells.
     """
     if len(content) > MAX_BYTES:
-        raise InputError(_too_large(name, len(content)))
+        raise InputError(too_large(name, f"{len(content)} bytes", MAX_BYTES, _PARTS))
     if content.startswith(XLSX_START):
         return parse_xlsx_sweep(content, name)
     lines = _lines(_text(content, name), name)
@@ -166,42 +169,3 @@ def _lines(text: str, name: str) -> list[str]:
             Problem(where=name, found=f"{text.count(chr(10))} lines", expected=f"{MAX_ROWS} at most")
         )
     return text.removesuffix("\n").split("\n")
-
-
-def _bytes_of(path: Path) -> bytes:
-    name = str(path)
-    try:
-        if path.is_dir():
-            raise InputError(Problem(where=name, found="a folder", expected="a file"))
-        if not path.exists():
-            raise InputError(_missing_file(path))
-        if not path.is_file():
-            raise InputError(Problem(where=name, found="a device or pipe", expected="a regular file"))
-        if (size := path.stat().st_size) > MAX_BYTES:
-            raise InputError(_too_large(name, size))
-        return path.read_bytes()
-    except (OSError, ValueError) as fault:  # ValueError: a zero byte in the name
-        reason = getattr(fault, "strerror", None) or str(fault)
-        raise InputError(
-            Problem(
-                where=shown(name),
-                found=f"a file that cannot be read ({reason})",
-                expected="a readable CSV or XLSX file",
-                todo="Check the name and the permissions.",
-            )
-        ) from fault
-
-
-def _missing_file(path: Path) -> Problem:
-    near = None
-    if path.parent.is_dir():
-        names = sorted(entry.name for entry in path.parent.iterdir() if entry.suffix in (".csv", ".xlsx"))
-        near = nearest_name(path.name, names[:1000])
-    todo = f"Did you mean {path.parent / near}?" if near else "Check the name and the folder."
-    return Problem(where=str(path), found="no such file", expected="a file", todo=todo)
-
-
-def _too_large(name: str, size: int) -> Problem:
-    return Problem(
-        where=name, found=f"{size} bytes", expected=f"{MAX_BYTES} at most", todo="Read it in parts."
-    )

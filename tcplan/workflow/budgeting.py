@@ -14,17 +14,19 @@ from tcplan.errors import InputError, Problem
 from tcplan.goal import requirement
 from tcplan.material.law import Table
 from tcplan.material.model import Material
-from tcplan.names import nearest_name, shown
+from tcplan.names import shown
 from tcplan.network import used_materials
 from tcplan.operating import Element
-from tcplan.parts.network import assembled, made_operating, made_process
-from tcplan.plan import Option, PartsRecord, Plan
+from tcplan.parts.network import made_operating, made_process
+from tcplan.plan import Option, Plan
 from tcplan.plan_file import read_plan
 from tcplan.process import INDEPENDENT
 from tcplan.ranges import GRADES, TemperatureRange, named_range, temperature_range
 from tcplan.ratio.check import RatioCheck
 from tcplan.toml_input import file_text
 from tcplan.units import format_celsius, from_celsius, parse_quantity
+from tcplan.workflow.as_made import assembly_of, parts_of, plan_as_made
+from tcplan.workflow.options import options_of
 from tcplan.workflow.planning import make_plan
 from tcplan.workflow.ratio import make_ratio, over_range
 
@@ -111,7 +113,7 @@ def budget_of(
     """
     if as_made:
         return _made_budgets(plan, ranges, draws)
-    asked, chosen = asked_of(plan), _options(plan, options)
+    asked, chosen = asked_of(plan), options_of(plan, options)
     _check_new(plan, materials)
     found = []
     for option in chosen:
@@ -122,13 +124,9 @@ def budget_of(
 
 def _made_budgets(plan: Plan, ranges: Sequence[str], draws: Draws | None) -> tuple[Account, ...]:
     """Return the budget of what is made at each value over each range."""
-    made_plan, parts = plan_as_made(plan), _parts(plan)
-    ideal = next(option for option in plan.options if option.id == parts.option)
-    found = []
-    for made in parts.made:
-        assembly = assembled(ideal.network, made.legs, plan.by_name)
-        if assembly.network != made.option.network:
-            raise InputError(_contradiction(made.option.id))
+    made_plan, found = plan_as_made(plan), []
+    for made in parts_of(plan).made:
+        assembly = assembly_of(plan, made)
         asked = replace(
             asked_of(plan),
             process=made_process(asked_of(plan).process, assembly),
@@ -137,54 +135,6 @@ def _made_budgets(plan: Plan, ranges: Sequence[str], draws: Draws | None) -> tup
         for over in _ranges(made_plan, asked, ranges, made.option, None):
             found.append(_account(made_plan, asked, made.option, over, None, draws, assembly.elements))
     return tuple(found)
-
-
-def plan_as_made(plan: Plan) -> Plan:
-    """Return a plan whose options are what its parts make, at each value.
-
-    Raises
-    ------
-    InputError
-        When it has no parts.
-    """
-    parts = _parts(plan)
-    options = tuple(made.option for made in parts.made)
-    return replace(plan, materials=parts.materials, options=options, chosen=options[0].id, parts=None)
-
-
-def _parts(plan: Plan) -> PartsRecord:
-    if plan.parts is None:
-        todo = "Make them first: tcplan parts PLAN -o DIR writes the plan again with its parts."
-        raise InputError(
-            Problem(where="plan.parts", found="a plan without parts", expected="a plan with parts", todo=todo)
-        )
-    return plan.parts
-
-
-def _contradiction(name: str) -> Problem:
-    return Problem(
-        where=f"plan.parts {name}",
-        found="a network that is not the one of its legs",
-        expected="the network of the legs",
-        todo="Make the parts again.",
-    )
-
-
-def _options(plan: Plan, ids: Sequence[str] | None) -> tuple[Option, ...]:
-    if ids is None:
-        return (plan.best,)
-    known = {option.id: option for option in plan.options}
-    problems = []
-    for name in ids:
-        if name not in known:
-            near = nearest_name(name, known)
-            todo = f"Did you mean {near}?" if near else ""
-            problems.append(
-                Problem(where="option", found=shown(name), expected=f"one of {', '.join(known)}", todo=todo)
-            )
-    if problems:
-        raise InputError(problems)
-    return tuple(known[name] for name in ids)
 
 
 # --- ranges -------------------------------------------------------------------------------------------

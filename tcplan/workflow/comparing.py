@@ -11,18 +11,17 @@ from tcplan.arrays import FloatArray
 from tcplan.budget import Case
 from tcplan.budget.contributions import class_extremes
 from tcplan.budget.rebuilt import Asked, asked_of
-from tcplan.errors import InputError, Problem
 from tcplan.goal import requirement
 from tcplan.measure.compare import compare
 from tcplan.measure.comparison import Comparison, Expected
 from tcplan.measure.model import CommonErrors, Sweep
-from tcplan.names import nearest_name, shown
-from tcplan.network import Network, legs, used_materials
+from tcplan.network import legs, used_materials
 from tcplan.output import check_folder, write_files
-from tcplan.parts.network import assembled, made_process
+from tcplan.parts.network import made_process
 from tcplan.plan import Option, Plan
 from tcplan.process import Process
-from tcplan.workflow.budgeting import plan_as_made
+from tcplan.workflow.as_made import assembly_of, parts_of, plan_as_made
+from tcplan.workflow.options import given_positions, option_of
 
 COMPARE_FILES = ("compare.json", "compare.svg", "compare.png")
 ONE_BY_ONE = (
@@ -73,34 +72,30 @@ def expected_of(plan: Plan, asking: Asking) -> Expected:
     asked = asked_of(plan)
     if asking.as_made:
         return _of_made(plan, asked, asking)
-    option = _option(plan, asking.option)
+    option = option_of(plan, asking.option)
     own = legs(option.network)
     return _expected(
-        plan, asked, option, asked.process, asking, tuple(range(len(own))), _given(asked, option.network)
+        plan,
+        asked,
+        option,
+        asked.process,
+        asking,
+        tuple(range(len(own))),
+        given_positions(asked, option.network),
     )
 
 
 def _of_made(plan: Plan, asked: Asked, asking: Asking) -> Expected:
     made_plan = plan_as_made(plan)
-    option = _option(made_plan, asking.option)
-    if plan.parts is None:  # plan_as_made has refused it
-        raise InputError(Problem(where="plan.parts", found="no parts", expected="a plan with parts"))
-    made = next(one for one in plan.parts.made if one.option.id == option.id)
-    ideal = _option(plan, plan.parts.option)
-    assembly = assembled(ideal.network, made.legs, plan.by_name)
-    if assembly.network != option.network:
-        raise InputError(
-            Problem(
-                where=f"plan.parts {option.id}",
-                found="a network that is not the one of its legs",
-                expected="the network of the legs",
-                todo="Make the parts again.",
-            )
-        )
+    option = option_of(made_plan, asking.option)
+    made = next(one for one in parts_of(plan).made if one.option.id == option.id)
+    ideal, assembly = option_of(plan, parts_of(plan).option), assembly_of(plan, made)
     order = [leg.id for leg in made.legs]
     changed = tuple(order.index(element.leg) for element in assembly.elements)
     process = made_process(asked.process, assembly)
-    return _expected(made_plan, asked, option, process, asking, changed, _given(asked, ideal.network))
+    return _expected(
+        made_plan, asked, option, process, asking, changed, given_positions(asked, ideal.network)
+    )
 
 
 def _expected(
@@ -150,30 +145,6 @@ def _band(
         return down[-1], up[-1]
 
     return band
-
-
-def _option(plan: Plan, name: str | None) -> Option:
-    if name is None:
-        return plan.best
-    known = {option.id: option for option in plan.options}
-    if name not in known:
-        near = nearest_name(name, known)
-        todo = f"Did you mean {near}?" if near else ""
-        raise InputError(
-            Problem(where="--option", found=shown(name), expected=f"one of {', '.join(known)}", todo=todo)
-        )
-    return known[name]
-
-
-def _given(asked: Asked, network: Network) -> frozenset[int]:
-    """Return the positions of the legs that are given members."""
-    left, found = list(asked.fixed), set()
-    for k, leg in enumerate(legs(network)):
-        own = [row for row in left if row[0] == leg.material and abs(row[1] - leg.ohms) <= NEAR * leg.ohms]
-        if own:
-            left.remove(own[0])
-            found.add(k)
-    return frozenset(found)
 
 
 # --- files ----------------------------------------------------------------------------------------------

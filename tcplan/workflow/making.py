@@ -7,11 +7,10 @@ from dataclasses import replace
 
 import numpy as np
 
-from tcplan.budget.rebuilt import Asked, asked_of
+from tcplan.budget.rebuilt import asked_of
 from tcplan.errors import InputError, Problem
 from tcplan.goal import requirement
 from tcplan.made import FilmLeg, MadeLeg, StockLeg
-from tcplan.names import nearest_name, shown
 from tcplan.network import Network, legs, scaled, used_materials, value
 from tcplan.operating import operating_point, worst_by_leg
 from tcplan.parts.network import Assembly, alike, made_operating, made_process
@@ -21,12 +20,13 @@ from tcplan.parts.retune import with_values
 from tcplan.parts.stock_choice import StockChoice, stock_choices
 from tcplan.parts.trim import TrimPlan, trim_plan
 from tcplan.parts.wire import wire_legs
-from tcplan.plan import MadeValue, Option, PartsRecord, Plan, Proposal
+from tcplan.plan import MadeValue, PartsRecord, Plan, Proposal
 from tcplan.units import format_ohms
 from tcplan.verify.option import check, with_likely
 from tcplan.workflow.made_films import film_legs_of, film_ways, taken
 from tcplan.workflow.made_stops import what_stops
 from tcplan.workflow.made_task import NEAR, POINTS, PartsRules, Task
+from tcplan.workflow.options import given_positions, option_of
 
 __all__ = ["MadePlan", "PartsRules", "make_parts"]
 
@@ -170,7 +170,7 @@ def _trims(task: Task, made: Sequence[MadeValue], assemblies: Sequence[Assembly]
 
 def task_of(plan: Plan, rules: PartsRules, option: str | None = None) -> Task:
     """Return what an option of a plan is to be made of."""
-    asked, ideal = asked_of(plan), _option(plan, option)
+    asked, ideal = asked_of(plan), option_of(plan, option)
     whole = value(ideal.network)
     networks = (ideal.network, *(scaled(ideal.network, ohms / whole) for ohms in asked.also))
     return Task(
@@ -179,34 +179,8 @@ def task_of(plan: Plan, rules: PartsRules, option: str | None = None) -> Task:
         ideal=ideal,
         rules=rules,
         networks=networks,
-        fixed=_fixed(asked, ideal.network),
+        fixed=given_positions(asked, ideal.network),
     )
-
-
-def _option(plan: Plan, name: str | None) -> Option:
-    if name is None:
-        return plan.best
-    known = {option.id: option for option in plan.options}
-    if name not in known:
-        near = nearest_name(name, known)
-        todo = f"Did you mean {near}?" if near else ""
-        raise InputError(
-            Problem(where="--option", found=shown(name), expected=f"one of {', '.join(known)}", todo=todo)
-        )
-    return known[name]
-
-
-def _fixed(asked: Asked, network: Network) -> frozenset[int]:
-    """Return the positions of the fixed members, which are as they are."""
-    left = list(asked.fixed)
-    found = set()
-    for k, leg in enumerate(legs(network)):
-        for row in left:
-            if row[0] == leg.material and abs(row[1] - leg.ohms) <= NEAR * leg.ohms:
-                left.remove(row)
-                found.add(k)
-                break
-    return frozenset(found)
 
 
 def _checked(task: Task, k: int, network: Network, own: tuple[MadeLeg, ...], assembly: Assembly) -> MadeValue:

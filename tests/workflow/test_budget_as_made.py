@@ -17,7 +17,8 @@ from tcplan.errors import InputError
 from tcplan.made import FilmLeg
 from tcplan.plan import Plan, plan_json
 from tcplan.plan_file import plan_from_dict, read_plan
-from tcplan.workflow.budgeting import budget_of, plan_as_made
+from tcplan.workflow.as_made import plan_as_made
+from tcplan.workflow.budgeting import budget_of
 from tcplan.workflow.making import PartsRules, make_parts
 from tcplan.workflow.planning import make_plan
 
