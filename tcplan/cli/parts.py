@@ -254,7 +254,7 @@ def _why(made: MadePlan) -> str:
     """Return why a way to draw the films is taken: the least area within the limit, else the least figure."""
     limit = made.plan.limit.drift_ppm
     kept = limit is not None and made.way is not None and made.way.figure <= limit * 1e-6 * (1.0 + 1e-9)
-    return "the smallest that keeps the limit" if kept else "of the least figure"
+    return "the smallest tried that keeps the limit" if kept else "of the least figure"
 
 
 def _columns(rows: Sequence[Sequence[str]], across: int) -> list[str]:

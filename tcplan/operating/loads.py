@@ -18,11 +18,12 @@ Joined: TypeAlias = Literal["one", "series", "parallel", "apart"]
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class LegLoad:
-    """The largest voltage [V], power [W] and current [A] of a leg, each where it is largest."""
+    """The largest voltage [V], power [W], current [A] and temperature [K] of a leg, each at its most."""
 
     voltage: float
     power: float
     current: float
+    temperature: float
 
 
 def worst_by_leg(point: OperatingPoint) -> dict[str, LegLoad]:
@@ -46,6 +47,7 @@ def worst_by_leg(point: OperatingPoint) -> dict[str, LegLoad]:
             voltage=_most(voltage, together=joined == "series"),
             power=_most(point.power[rows], together=True),
             current=_most(current, together=joined == "parallel"),
+            temperature=_most(point.temperature[rows], together=False),
         )
     return found
 

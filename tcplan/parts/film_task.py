@@ -226,7 +226,7 @@ def film_task(
 
 def _too_narrow(task: FilmTask, most: float) -> Problem:
     return Problem(
-        where="parts.max_width",
+        where="max_width of units",
         found=format_si(most, "m"),
         expected=f"at least {format_si(task.start, 'm')}, the width that {task.material.name} starts from",
         todo="Allow wider units, or state a smaller min_width or preferred_width.",

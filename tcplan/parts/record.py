@@ -13,6 +13,7 @@ from tcplan.parts.placement import Placement
 from tcplan.parts.trim import TrimPlan
 from tcplan.plan import Option, PartsRecord, Plan
 from tcplan.ratio.check import RatioCheck
+from tcplan.units import to_celsius
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -48,13 +49,15 @@ class FilmWay:
 class Load:
     """What one leg carries at the operating point, the largest over the range.
 
-    ``density`` is the current per drawn width of a string of units [A/m], None where it is not drawn.
+    ``temperature`` is that of the element [K]. ``density`` is the current per drawn width of a string of
+    units [A/m], None where it is not drawn.
     """
 
     leg: str
     voltage: float
     current: float
     power: float
+    temperature: float
     density: float | None = None
 
     def to_dict(self) -> dict[str, Any]:
@@ -64,6 +67,7 @@ class Load:
             "voltage_V": self.voltage,
             "current_A": self.current,
             "power_W": self.power,
+            "temperature_degC": to_celsius(self.temperature),
             "current_density_A_per_m": self.density,
         }
 

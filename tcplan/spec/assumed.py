@@ -5,6 +5,7 @@ from __future__ import annotations
 from collections.abc import Sequence
 
 from tcplan.plan import Plan
+from tcplan.process import process_from_dict, step_groups
 from tcplan.spec import numbers
 from tcplan.spec.asked import figure_text, wanted_text
 from tcplan.units import from_celsius
@@ -65,7 +66,32 @@ def _spreads(plan: Plan) -> list[str]:
     reference = from_celsius(plan.range.reference_degC)
     if any(m.spread is not None and m.spread.value and m.reference != reference for m in plan.materials):
         found.append("Value spreads are carried to the reference of the brief, which widens them a little.")
+    found.append(_on_their_own(plan))
     return found
+
+
+def _on_their_own(plan: Plan) -> str:
+    """Return which values are stated to move in full step and count as independent all the same."""
+    asked = plan.brief.get("process")
+    spreads = {m.name: m.spread for m in plan.materials if m.spread is not None}
+    names = tuple(spreads)
+    if not asked or len(names) < 2:
+        return ""
+    process, reference = process_from_dict(asked), from_celsius(plan.range.reference_degC)
+    stated = process.value_groups(names)
+    counted = step_groups(names, plan.by_name, spreads, process, reference)
+    apart = [
+        name
+        for name, group, own in zip(names, stated, counted, strict=True)
+        if stated.count(group) > 1 and counted.count(own) == 1
+    ]
+    if not apart:
+        return ""
+    return (
+        f"In the worst case the values of {named(apart)} count as independent, though stated to move in full "
+        "step: another reference, a width error or an extrapolation is each material's own. That is on the "
+        "safe side; draws hold the full step."
+    )
 
 
 def named(names: Sequence[str]) -> str:

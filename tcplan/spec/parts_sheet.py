@@ -12,7 +12,7 @@ from tcplan.spec import numbers
 from tcplan.spec.parts_text import against_ideal, buying, cutting, load_text, units_text
 from tcplan.spec.spec import CAUTIONS
 from tcplan.spec.trim_text import trim_text
-from tcplan.units import format_length, format_ohms, from_celsius
+from tcplan.units import format_length, format_ohms, format_si, from_celsius
 
 Fact = tuple[str, tuple[str, ...]]
 """A label, and the sentences after it."""
@@ -41,11 +41,15 @@ def _carries(made: MadePlan) -> Iterator[str]:
     """Yield the load of every leg, by value where there are several."""
     if not made.loads:
         return
-    yield "Each leg at the operating point, the most over the range (voltage, current, power):"
+    yield "Each leg at the operating point, the most over the range (voltage, current, power, temperature):"
     for one, loads in zip(made.parts.made, made.loads, strict=True):
         if len(made.loads) > 1:
             yield f"{format_ohms(one.target_ohms)}:"
         yield from load_text(loads)
+        yield f"Together {format_si(sum(load.power for load in loads), 'W')} at most."
+    asked = made.plan.brief.get("operating") or {}
+    if not asked.get("thermal_resistance_K_per_W") and not asked.get("leg_thermal_resistance_K_per_W"):
+        yield "No thermal resistance is stated: heating is not judged. Check it: power parts can burn."
 
 
 def _notes(made: MadePlan) -> Iterator[str]:

@@ -12,7 +12,7 @@ from tcplan.parts.record import FilmWay, Load
 from tcplan.parts.wire import cutting_list
 from tcplan.plan import MadeValue, Option
 from tcplan.spec import numbers
-from tcplan.units import format_length, format_ohms, format_si
+from tcplan.units import format_celsius, format_length, format_ohms, format_si
 
 HEAD = ("leg", "material", "wanted", "made", "of")
 WAYS_HEAD = ("", "area", "judged", "error", "units, W x L")
@@ -144,7 +144,7 @@ def load_text(loads: Sequence[Load]) -> tuple[str, ...]:
     """Return what each leg carries at the operating point, the largest over the range."""
     return tuple(
         f"{load.leg}: {format_si(load.voltage, 'V')}, {format_si(load.current, 'A')}, "
-        f"{format_si(load.power, 'W')}{_density(load)}"
+        f"{format_si(load.power, 'W')}, {format_celsius(load.temperature)}{_density(load)}"
         for load in loads
     )
 

@@ -84,6 +84,8 @@ def _switches(plan: TrimPlan) -> tuple[str, ...]:
     if ideal is None:
         return (f"{larger}, with switches of 0 ohm.",)
     pairs = ((after.median, ideal.median), (after.quantile, ideal.quantile), (after.worst, ideal.worst))
+    if all(own <= without for own, without in pairs):
+        return (f"{larger}; it is the curvature that the trim brings out, not the switches.",)
     costs = [numbers.number(round((own - without) * 1e6, 9), 3) for own, without in pairs]
     return (
         f"{larger}: the switches cost {costs[0]} ppm in the median, {costs[1]} ppm at 99.73 %, "

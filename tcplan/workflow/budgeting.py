@@ -45,6 +45,8 @@ def plan_to_budget(name: str, content: bytes | None = None) -> Plan:
         What came in on standard input: a plan.json.
     """
     if content is not None:
+        if not content.strip():
+            raise InputError(Problem(where=name, found="nothing", expected="a plan.json"))
         try:
             return read_plan(content.decode("utf-8-sig"))
         except UnicodeDecodeError as fault:
@@ -52,6 +54,10 @@ def plan_to_budget(name: str, content: bytes | None = None) -> Plan:
             raise InputError(Problem(where=name, found=found, expected="a plan.json")) from fault
     if name.casefold().endswith(".toml"):
         return make_plan(read_brief(Path(name)))
+    if (inside := Path(name) / "plan.json").is_file():
+        raise InputError(
+            Problem(where=name, found="a folder", expected="a plan.json", todo=f"Did you mean {inside}?")
+        )
     try:
         return read_plan(file_text(Path(name)))
     except InputError as error:

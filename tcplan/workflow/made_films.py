@@ -8,7 +8,7 @@ from itertools import product
 from math import inf, prod
 
 from tcplan.errors import InputError, Problem
-from tcplan.made import FilmLeg, MadeLeg, exact
+from tcplan.made import FilmLeg, MadeLeg, Refusal, exact
 from tcplan.material.model import Material
 from tcplan.network import Network, legs, scaled, used_materials, value
 from tcplan.parts.films import FilmChoice, FilmRules, film_legs
@@ -108,12 +108,7 @@ def film_choices(
     """
     first = film_legs(data, wanted, reference, rules)
     if first.refusals:
-        raise InputError(
-            Problem(
-                where=f"leg {r.leg}", found=r.found, expected=f"a leg within the {r.rule}", todo=r.nearest
-            )
-            for r in first.refusals
-        )
+        raise InputError(map(refused, first.refusals))
     results = [first]
     for least in LONGER:
         if rules.min_squares < least <= rules.max_length_squares:
@@ -125,6 +120,27 @@ def film_choices(
     if first.zero_tc is not None and first.zero_tc.error <= rules.error:
         found.append(first.zero_tc)
     return tuple({(c.unit, c.area): c for c in found}.values())
+
+
+RULES = {
+    "count": ("a value that whole counts of one unit reach", "Raise --most-units or --error"),
+    "grid": ("a length on the grid", "Change the grid, the width, or the least squares of a unit"),
+    "area": ("units within the area", "Raise --max-area"),
+    "current": ("units that carry the current", "Lower the current, or raise --max-width or --most-units"),
+    "mismatch": ("units that match as asked", "Raise --mismatch, --max-width or --most-units"),
+}
+"""What each rule expects, and what to do where it stops a leg."""
+
+
+def refused(refusal: Refusal) -> Problem:
+    """Return why a leg can not be drawn, with the nearest that can and what to do."""
+    expected, todo = RULES.get(refusal.rule, (f"a leg within the {refusal.rule}", "Change the brief"))
+    return Problem(
+        where=f"leg {refusal.leg}",
+        found=refusal.found,
+        expected=expected,
+        todo=f"{todo}; the nearest: {refusal.nearest}.",
+    )
 
 
 def _small(choices: Sequence[FilmChoice], error: float) -> FilmChoice:

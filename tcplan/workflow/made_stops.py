@@ -23,9 +23,10 @@ def what_stops(task: Task, made: Sequence[Option], parts: Sequence[Sequence[Made
     kept), the tolerance and the ends of the parts (at exact values the limit is not kept), and else the
     steps in which values come.
     """
-    if task.ideal.verdict != "MET" or all(option.verdict == "MET" for option in made):
+    missed = [n for n, option in enumerate(made) if option.verdict == "NOT MET"]
+    if task.ideal.verdict != "MET" or not missed:
         return ""
-    k = next(n for n, option in enumerate(made) if option.verdict != "MET")
+    k = missed[0]
     own = parts[k]
     if area := _area(task):
         return area

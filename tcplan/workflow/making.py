@@ -271,6 +271,7 @@ def _loads(task: Task, own: tuple[MadeLeg, ...], assembly: Assembly) -> tuple[Lo
             voltage=by_leg[part.id].voltage,
             current=by_leg[part.id].current,
             power=by_leg[part.id].power,
+            temperature=by_leg[part.id].temperature,
             density=_density(part, by_leg[part.id].current),
         )
         for part in own

@@ -12,7 +12,7 @@ from tcplan.errors import InputError, NoAnswer, Problem, Stopped
 from tcplan.goal import requirement
 from tcplan.network import legs, network_text, used_materials, value
 from tcplan.plan import LimitRecord, Option, Plan, Proposal, RangeRecord, TargetRecord
-from tcplan.units import format_ppm, from_celsius, round_outward
+from tcplan.units import format_ohms, format_ppm, format_si, from_celsius, round_outward
 from tcplan.verify.floor import floor
 from tcplan.verify.option import Case, check, nominal_figure, proved, with_likely
 from tcplan.verify.tree_bound import mixed_bound
@@ -63,6 +63,33 @@ def _mixed_ppm(checked: Sequence[tuple[Proposal, Option]], case: Case, gap: floa
         gap,
         case.variation,
         devices if case.designed else (),
+    )
+
+
+def _nothing_fits(brief: Brief) -> str:
+    """Return that nothing is left of the search, with the rules that can be the reason."""
+    rules, kinds = brief.rules, {material.kind for material in brief.materials}
+    low, high = (format_ohms(ohms) for ohms in rules.stock_values)
+    candidates = (
+        (
+            "film" in kinds,
+            f"min_squares = {rules.min_squares:g} and max_squares = {rules.max_squares:g} a leg",
+        ),
+        (rules.max_area is not None, f"max_area = {format_si(rules.max_area or 0.0, 'm^2')}"),
+        (
+            "wire" in kinds and rules.min_length > 0.0,
+            f"min_length = {format_si(rules.min_length, 'm')} a leg",
+        ),
+        ("part" in kinds, f"stock_values from {low} to {high}"),
+        (rules.min_share > 0.0, f"min_share = {100.0 * rules.min_share:g} %"),
+        (bool(brief.fixed), "the fixed members"),
+    )
+    total = "" if brief.target.ohms is None else f" for {format_ohms(brief.target.ohms)}"
+    stated = "; ".join(words for is_asked, words in candidates if is_asked)
+    return (
+        f"No network of these materials fits the brief{total}, in the arrangements "
+        f"{', '.join(rules.arrangements)}. What it must keep: {stated or 'the number of legs'}. "
+        "Change the value, or one of these in [search]."
     )
 
 
@@ -135,6 +162,14 @@ def make_plan(brief: Brief, *, gap: float = 0.01, effort: Effort | None = None) 
         When no network fits the brief at all.
     Stopped
         When the mixed search was interrupted; it carries the plan of the best so far.
+
+    Examples
+    --------
+    >>> from pathlib import Path
+    >>> from tcplan.brief import read_brief
+    >>> plan = make_plan(read_brief(Path("examples/cabinet_reference_wire/brief.toml")))
+    >>> plan.best.id, plan.best.verdict, round(plan.best.nominal.peak_ppm)
+    ('series-1', 'MET', 159)
     """
     if brief.ratio is not None:
         raise InputError(
@@ -157,10 +192,7 @@ def make_plan(brief: Brief, *, gap: float = 0.01, effort: Effort | None = None) 
     )
     found = proposals(brief, need, case, effort=effort)
     if not found:
-        raise NoAnswer(
-            "No network of these materials fits the brief: what is asked of shares, sizes and area, and "
-            "of the fixed members, leaves nothing in the arrangements searched."
-        )
+        raise NoAnswer(_nothing_fits(brief))
     best = min(nominal_figure(proposal.network, case) for proposal in found)
     evidence = floor_evidence(brief, need, best)
     names = {*evidence.space.materials, *(leg.material for leg in evidence.space.fixed)}

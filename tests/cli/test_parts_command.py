@@ -146,7 +146,7 @@ def test_the_screen_holds_legs_ways_arrays_and_facts(folder: Path) -> None:
     shown = invoke("brief.toml").stdout
     assert "leg  material  wanted  made" in shown
     assert "a    slate     8 kohm  " in shown
-    assert "* is taken, the smallest that keeps the limit:" in shown
+    assert "* is taken, the smallest tried that keeps the limit:" in shown
     assert ". a" in shown
     labels = ("Reaches", "Units", "Carries", "Note", "Assumed")
     places = [shown.index(f"\n{label:<9}") for label in labels]

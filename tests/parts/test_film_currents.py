@@ -371,7 +371,7 @@ def test_a_largest_width_below_the_first_is_refused_with_it():
     with pytest.raises(InputError) as caught:
         of(FOUR, rules, preferred_width=2 * UM)
     (problem,) = caught.value.problems
-    assert (problem.where, problem.found) == ("parts.max_width", "1.5 um")
+    assert (problem.where, problem.found) == ("max_width of units", "1.5 um")
     assert problem.expected == "at least 2 um, the width that pp starts from"
     assert of(FOUR, replace(rules, max_width=2 * UM, error=0.01), preferred_width=2 * UM).choices
 

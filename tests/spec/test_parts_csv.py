@@ -122,8 +122,15 @@ def test_loads_stand_beside_their_own_leg_at_every_value(option: Any) -> None:
     made = [value_of(option, FILM, PLAIN, target=1e3), value_of(option, FILM, PLAIN, target=2e3)]
     loads = [
         [
-            Load(leg="d", voltage=4.0 / k, current=1e-3 / k, power=4e-3 / k**2),
-            Load(leg="a", voltage=1.0 / k, current=1e-3 / k, power=1e-3 / k**2, density=82.6 / k),
+            Load(leg="d", voltage=4.0 / k, current=1e-3 / k, power=4e-3 / k**2, temperature=398.15),
+            Load(
+                leg="a",
+                voltage=1.0 / k,
+                current=1e-3 / k,
+                power=1e-3 / k**2,
+                temperature=398.15,
+                density=82.6 / k,
+            ),
         ]
         for k in (1, 2)
     ]

@@ -188,8 +188,16 @@ def test_the_power_of_a_part_is_its_own_not_that_of_its_leg(made: MadePlan) -> N
     """2 mA through 1 kohm + 2.2 kohm: 4 and 8.8 mW. 3 V across 1 kohm || 2.2 kohm: 9 and 4.09 mW."""
     flat = {"flat": made.plan.by_name["flat"]}
     for joined, load, powers in (
-        ("series", Load(leg="b", voltage=6.4, current=2e-3, power=12.8e-3), ("4 mW", "8.8 mW")),
-        ("parallel", Load(leg="b", voltage=3.0, current=4.36e-3, power=13.1e-3), ("9 mW", "4.09 mW")),
+        (
+            "series",
+            Load(leg="b", voltage=6.4, current=2e-3, power=12.8e-3, temperature=398.15),
+            ("4 mW", "8.8 mW"),
+        ),
+        (
+            "parallel",
+            Load(leg="b", voltage=3.0, current=4.36e-3, power=13.1e-3, temperature=398.15),
+            ("9 mW", "4.09 mW"),
+        ),
     ):
         told = buying([value_of(made, stock(1e3, 2.2e3, joined=joined))], [[load]], flat)
         ends = [text.rsplit(", at most ", 1)[1] for text in told]
@@ -199,12 +207,12 @@ def test_the_power_of_a_part_is_its_own_not_that_of_its_leg(made: MadePlan) -> N
 def test_what_a_leg_carries() -> None:
     """82.6 A/m of width is 0.0826 mA/um."""
     loads = [
-        Load(leg="a", voltage=5.0, current=1.652e-4, power=8.26e-4, density=82.6),
-        Load(leg="b", voltage=0.25, current=1e-3, power=2.5e-4),
+        Load(leg="a", voltage=5.0, current=1.652e-4, power=8.26e-4, temperature=398.15, density=82.6),
+        Load(leg="b", voltage=0.25, current=1e-3, power=2.5e-4, temperature=398.15),
     ]
     assert load_text(loads) == (
-        "a: 5 V, 165.2 uA, 826 uW, 0.0826 mA/um of width",
-        "b: 250 mV, 1 mA, 250 uW",
+        "a: 5 V, 165.2 uA, 826 uW, 125 degC, 0.0826 mA/um of width",
+        "b: 250 mV, 1 mA, 250 uW, 125 degC",
     )
 
 

@@ -139,3 +139,11 @@ def test_a_brief_or_a_plan_file(plan: Plan, tmp_path: Path) -> None:
     assert plan_to_budget("standard input", plan_json(plan).encode()).chosen == plan.chosen
     with pytest.raises(InputError, match="UTF-8"):
         plan_to_budget("standard input", b"\xff")
+
+
+def test_a_folder_with_a_plan_and_nothing_at_all(tmp_path):
+    (tmp_path / "plan.json").write_text("{}", encoding="utf-8")
+    with pytest.raises(InputError, match=r"found a folder; expected a plan.json. Did you mean .*plan.json"):
+        plan_to_budget(str(tmp_path))
+    with pytest.raises(InputError, match="standard input: found nothing; expected a plan.json"):
+        plan_to_budget("standard input", b" \n")

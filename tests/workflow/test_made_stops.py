@@ -2,6 +2,7 @@
 
 import re
 from dataclasses import replace
+from types import SimpleNamespace
 
 import pytest
 from makers import BRIEF, brief
@@ -9,7 +10,7 @@ from makers import BRIEF, brief
 from tcplan.made import PlainLeg, WireLeg
 from tcplan.parts.films import FilmRules
 from tcplan.units import parse_quantity
-from tcplan.workflow.made_stops import _members
+from tcplan.workflow.made_stops import _members, what_stops
 from tcplan.workflow.making import PartsRules, make_parts
 from tcplan.workflow.planning import make_plan
 
@@ -208,3 +209,9 @@ def test_nothing_stops_what_meets_its_limit_or_never_did():
     assert make_parts(plan_of(FILMS, 20000), PartsRules()).stops == ""
     missed = make_parts(plan_of(FILMS, 10), PartsRules())
     assert (missed.ideal.verdict, missed.verdict, missed.stops) == ("NOT MET", "NOT MET", "")
+
+
+def test_what_is_not_judged_is_not_stopped():
+    """A bound that stays open is no miss: nothing of the parts is to blame."""
+    task = SimpleNamespace(ideal=SimpleNamespace(verdict="MET"))
+    assert what_stops(task, [SimpleNamespace(verdict="NOT JUDGED")], [()]) == ""
