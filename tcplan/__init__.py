@@ -28,7 +28,7 @@ _HOMES = {
     "Series": "network",
     "Parallel": "network",
     "network_text": "network",
-    "parse_network": "network_text",
+    "parse_network": "network_reading",
     "Goal": "goal",
     "Limit": "goal",
     "Brief": "brief",

@@ -145,7 +145,14 @@ def leg_shares(network: Network, ratios: Mapping[str, FloatArray]) -> tuple[Floa
 
 
 def shares(network: Network) -> tuple[float, ...]:
-    """Return the share of every leg at the reference temperature."""
+    """Return the share of every leg at the reference temperature.
+
+    Examples
+    --------
+    >>> pair = Parallel((Leg(material="red_film", ohms=3000.0), Leg(material="blue_film", ohms=1000.0)))
+    >>> shares(pair)
+    (0.25, 0.75)
+    """
     ones = dict.fromkeys(used_materials(network), np.ones(()))
     return tuple(float(share) for share in leg_shares(network, ones))
 
@@ -237,6 +244,11 @@ def network_text(network: Network, show: Callable[[Leg], str] | None = None) -> 
     """Return the text form, ``a + (b || c)``; by default every value at full precision.
 
     ``parse_network(network_text(n))`` gives ``n`` back exactly.
+
+    Examples
+    --------
+    >>> network_text(Series((Leg(material="red_film", ohms=5100.0), Leg(material="blue_film", ohms=3300.0))))
+    'red_film 5100.0 ohm + blue_film 3300.0 ohm'
     """
     show = show or (lambda leg: f"{leg.material} {leg.ohms!r} ohm")
     if isinstance(network, Leg):

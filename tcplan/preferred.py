@@ -69,6 +69,11 @@ def nearest_preferred(value: float, series: str) -> tuple[float, float]:
     ------
     InputError
         If there is no such series, or the value is not a resistance that a part can have.
+
+    Examples
+    --------
+    >>> nearest_preferred(4800.0, "E24")
+    (4700.0, 5100.0)
     """
     significands = preferred_values(series)
     if not _SMALLEST <= value <= _LARGEST:

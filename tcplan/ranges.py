@@ -161,6 +161,11 @@ def temperature_range(
     ------
     InputError
         If these are not the ends of a range, or it leaves the reference out.
+
+    Examples
+    --------
+    >>> temperature_range(248.15, 378.15, 298.15).text()
+    '-25 degC to 105 degC'
     """
     # To a nanokelvin, so that 398.15 + 10 prints and compares as 408.15.
     top = round(high + rise, 9)
@@ -192,6 +197,12 @@ def named_range(name: str, reference: float = REFERENCE, rise: float = 0.0) -> T
     References
     ----------
     AEC-Q100 and AEC-Q200, tables of temperature grades.
+
+    Examples
+    --------
+    >>> over = named_range("automotive-1", rise=10.0)
+    >>> over.low_degC, over.high_degC, over.reference_degC
+    (-40.0, 135.0, 25.0)
     """
     grade = GRADES.get(name)
     if grade is None:

@@ -203,6 +203,13 @@ def parse_quantity(text: object, unit: str, *, where: str = "") -> float:
     References
     ----------
     IEC 60062, Marking codes for resistors and capacitors.
+
+    Examples
+    --------
+    >>> parse_quantity("12 kohm", "ohm"), parse_quantity("4k7", "ohm")
+    (12000.0, 4700.0)
+    >>> parse_quantity("-120 ppm/K", "1/K")
+    -0.00012
     """
     if unit not in _KINDS:
         raise InternalError(f"unknown canonical unit {shown(unit)}")
@@ -429,6 +436,11 @@ def format_ohms(value: float, digits: int = 4) -> str:
     -------
     str
         Such as ``14.24 kohm``.
+
+    Examples
+    --------
+    >>> format_ohms(12345.6)
+    '12.35 kohm'
     """
     return format_si(value, "ohm", digits)
 

@@ -6,7 +6,7 @@ from makers import film, need_of
 from tcplan.brief.model import Ratio
 from tcplan.goal import Limit
 from tcplan.network import Leg, Series
-from tcplan.network_text import parse_network
+from tcplan.network_reading import parse_network
 from tcplan.process import INDEPENDENT
 from tcplan.ratio.pair import Pair
 

@@ -20,7 +20,7 @@ ORDER = [
     {"ranges", "preferred", "toml_input", "table_reader", "material"},
     {"process"},
     {"network"},
-    {"network_text", "made"},
+    {"network_reading", "made"},
     {"drift"},
     {"goal"},
     {"brief"},

@@ -28,7 +28,7 @@ from tcplan.network import (
     tree,
     value,
 )
-from tcplan.network_text import parse_network
+from tcplan.network_reading import parse_network
 
 SEEDS = range(15)
 T = np.linspace(233.15, 423.15, 13)

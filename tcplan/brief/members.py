@@ -10,7 +10,7 @@ from tcplan.goal import Goal
 from tcplan.material.model import Material
 from tcplan.names import nearest_name, shown
 from tcplan.network import Leg, Network, scaled, value
-from tcplan.network_text import parse_network
+from tcplan.network_reading import parse_network
 from tcplan.table_reader import TableReader
 from tcplan.units import format_ohms
 

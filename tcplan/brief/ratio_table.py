@@ -10,7 +10,7 @@ from tcplan.brief.model import Ratio, RatioKind
 from tcplan.material.model import Material
 from tcplan.material.spread import Spread, law_bounds
 from tcplan.network import Network, Series, used_materials
-from tcplan.network_text import parse_network
+from tcplan.network_reading import parse_network
 from tcplan.ranges import TemperatureRange
 from tcplan.table_reader import TableReader
 

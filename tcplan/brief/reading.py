@@ -41,6 +41,12 @@ def read_brief(path: Path) -> Brief:
     ------
     InputError
         With every mistake of the brief and of its materials files.
+
+    Examples
+    --------
+    >>> brief = read_brief(Path("examples/cabinet_reference_wire/brief.toml"))
+    >>> brief.title, brief.target.ohms
+    ('Wire-wound reference, control cabinet', 1000.0)
     """
     return parse_brief(file_text(path), str(path), path.parent)
 

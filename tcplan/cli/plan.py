@@ -52,8 +52,8 @@ def command(
 ) -> int:
     """Find the mix of materials for BRIEF (a TOML file; - is stdin), check it and write the result.
 
-    Writes plan.json, mix.csv, spec.md and the figures network, drift, slope-curvature and, where spreads
-    are stated, spread (SVG and PNG), all of them or none. The options and the verdict go to stdout,
+    Writes plan.json, mix.csv, the spec sheet (html, md, json) and the figures network, drift,
+    slope-curvature and, where spreads are stated, spread (SVG and PNG), all of them or none. The options and the verdict go to stdout,
     everything else to stderr.
 
     A brief with [ratio] is checked in its place: that writes ratio.json and the figure drift.
@@ -155,12 +155,12 @@ def _folder(brief: str, output: str | None, *, as_json: bool) -> Path | None:
 def _show(plan: Plan, *, as_json: bool) -> None:
     from tcplan.cli.screen import screen
     from tcplan.plan import plan_json
-    from tcplan.spec.spec import spec_of
+    from tcplan.spec.summary import summary_of
 
     if as_json:
         say_json_text(plan_json(plan))
     else:
-        say(screen(spec_of(plan), width(), colour=colourful()))
+        say(screen(summary_of(plan), width(), colour=colourful()))
 
 
 def _code(plan: Plan) -> int:

@@ -8,7 +8,7 @@ import click
 
 from tcplan.cli.paragraphs import coloured, labelled, wrapped
 from tcplan.spec.rows import OptionRow
-from tcplan.spec.spec import Spec
+from tcplan.spec.summary import Summary
 
 LABEL = 10
 LEAST_NETWORK = 22  # columns; where fewer are left each option gets lines of its own
@@ -18,12 +18,12 @@ MOST_OPTIONS = 12
 NO_BREAK = "\u00a0"
 
 
-def screen(spec: Spec, width: int, *, colour: bool = False) -> str:
+def screen(spec: Summary, width: int, *, colour: bool = False) -> str:
     """Return the first screen of a plan.
 
     Parameters
     ----------
-    spec : Spec
+    spec : Summary
     width : int
         Columns.
     colour : bool
@@ -46,7 +46,7 @@ def screen(spec: Spec, width: int, *, colour: bool = False) -> str:
     return "\n\n".join("\n".join(block) for block in blocks)
 
 
-def _asked(spec: Spec, width: int, *, colour: bool) -> list[str]:
+def _asked(spec: Summary, width: int, *, colour: bool) -> list[str]:
     lines = wrapped(spec.headline, width)
     if colour:
         lines = [click.style(line, bold=True) for line in lines]
@@ -54,7 +54,7 @@ def _asked(spec: Spec, width: int, *, colour: bool) -> list[str]:
     return [*lines, *(line for text in rest for line in wrapped(text, width))]
 
 
-def _chosen(spec: Spec, width: int) -> list[str]:
+def _chosen(spec: Summary, width: int) -> list[str]:
     """Return what is said about the chosen option, a label a fact."""
     facts: tuple[tuple[str, Sequence[str]], ...] = (
         ("Chosen", [f"{spec.chosen}: {spec.reason}."]),

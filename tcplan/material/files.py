@@ -129,6 +129,12 @@ def read_materials(path: Path) -> dict[str, Material]:
     ------
     InputError
         With every mistake in the file, each with its place.
+
+    Examples
+    --------
+    >>> films = read_materials(Path("examples/brake_sensor_films/films.toml"))
+    >>> films["red_film"].kind, films["red_film"].ohm_per_square
+    ('film', 320.0)
     """
     return read_material_file(path).materials
 
@@ -186,6 +192,11 @@ def published(name: str) -> dict[str, Material]:
     ------
     InputError
         When there is no such file.
+
+    Examples
+    --------
+    >>> list(published("metals"))[:3]
+    ['copper', 'copper_pure', 'aluminium']
     """
     known = published_names()
     if name not in known:

@@ -41,6 +41,12 @@ class Polynomial(Law):
     ------
     InputError
         When there are none or more than 8 coefficients, or one is not finite.
+
+    Examples
+    --------
+    >>> law = Polynomial(reference=298.15, coefficients=(-120e-6, 0.55e-6))
+    >>> float(law.ratio(398.15))
+    0.9935
     """
 
     kind: ClassVar[str] = "polynomial"

@@ -1,15 +1,11 @@
-"""The Markdown spec sheet: every expression of its template is escaped unless it says it is Markdown."""
+"""The Markdown spec sheet: every text is escaped unless it is Markdown already."""
 
 from __future__ import annotations
 
 import re
-from importlib import resources
-from typing import Any
+from collections.abc import Iterator
 
-from tcplan.plan import Plan
-from tcplan.spec.formula import coefficients, composite_formula
-from tcplan.spec.numbers import number
-from tcplan.spec.spec import spec_of
+from tcplan.spec.spec import Block, Cell, Code, Picture, Points, Spec, Table
 
 _SPECIAL = re.compile(r"([\\`*_\[\]|#~$!])")
 _ENTITIES = str.maketrans({"&": "&amp;", "<": "&lt;", ">": "&gt;"})
@@ -48,43 +44,51 @@ def fenced(text: str, language: str = "") -> Markdown:
     return Markdown(f"{fence}{language}\n{text}\n{fence}")
 
 
-def spec_markdown(plan: Plan) -> str:
-    """Return the spec sheet of a plan as Markdown.
+def spec_markdown(spec: Spec) -> str:
+    """Return a spec sheet as Markdown.
 
     Parameters
     ----------
-    plan : Plan
+    spec : Spec
 
     Returns
     -------
     str
-        With relative links to the figures.
+        With relative links to the figures, which lie beside it as SVG.
     """
-    from jinja2 import Environment, StrictUndefined
-
-    environment = Environment(
-        autoescape=False,  # for HTML; ``finalize`` escapes every expression for Markdown and HTML
-        finalize=escaped,
-        undefined=StrictUndefined,
-        trim_blocks=True,
-        lstrip_blocks=True,
-        keep_trailing_newline=True,
-    )
-    environment.filters.update({"code": code, "cell": cell})
-    template = resources.files("tcplan.spec").joinpath("templates", "spec.md.j2")
-    return environment.from_string(template.read_text(encoding="utf-8")).render(_content(plan))
+    return "\n\n".join([f"# {escaped(spec.title)}", *_body(spec)]) + "\n"
 
 
-def _content(plan: Plan) -> dict[str, Any]:
-    text, latex = composite_formula(plan, plan.best)
-    tc1, tc2, tc3 = (number(c) for c in coefficients(plan, plan.best))
-    return {
-        "spec": spec_of(plan),
-        "formula": fenced(text),
-        "latex": fenced(latex, "math"),
-        "effective": f"TC1 {tc1} ppm/K, TC2 {tc2} ppm/K^2, TC3 {tc3} ppm/K^3",
-        "reference": number(plan.range.reference_degC),
-    }
+def _body(spec: Spec) -> Iterator[str]:
+    for section in spec.sections:
+        yield f"## {escaped(section.title)}"
+        for block in section.blocks:
+            yield _block(block)
+
+
+def _block(block: Block) -> str:
+    if isinstance(block, Table):
+        return _table(block)
+    if isinstance(block, Picture):
+        return f"![{escaped(block.alt)}]({block.name}.svg)\n\n{escaped(block.caption)}"
+    if isinstance(block, Points):
+        return "\n".join(f"- {escaped(item)}" for item in block.items)
+    if isinstance(block, Code):
+        return fenced(block.text, block.language)
+    return f"**{escaped(block.text)}**" if block.strong else escaped(block.text)
+
+
+def _table(table: Table) -> str:
+    """Return a table under its caption."""
+    head = " | ".join(escaped(column.title) for column in table.head)
+    rule = " | ".join("---:" if column.numeric else "---" for column in table.head)
+    rows = [" | ".join(map(_cell, row)) for row in table.rows]
+    lines = "\n".join(f"| {row} |" for row in (head, rule, *rows))
+    return f"{escaped(table.caption)}:\n\n{lines}"
+
+
+def _cell(own: Cell) -> str:
+    return cell(own.text) if own.code else escaped(own.text)
 
 
 def _ticks(text: str, least: int) -> str:

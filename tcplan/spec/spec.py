@@ -1,23 +1,9 @@
-"""The content of a spec sheet: everything that a writer prints, already in words and rounded."""
+"""The content of a spec sheet: sections of blocks, all in words and rounded, that the writers only write."""
 
 from __future__ import annotations
 
 from dataclasses import dataclass
-
-from tcplan.network import network_text, value
-from tcplan.plan import Plan
-from tcplan.spec import assumed, statements
-from tcplan.spec.asked import headline, mask_lines, range_text
-from tcplan.spec.rows import (
-    LegRow,
-    MaterialRow,
-    OptionRow,
-    figure_rows,
-    leg_rows,
-    material_row,
-    option_row,
-)
-from tcplan.units import format_ohms
+from typing import Literal, TypeAlias
 
 CAUTIONS = (
     "Figures are design estimates from the data below, to be confirmed on silicon or hardware.",
@@ -28,75 +14,138 @@ CAUTIONS = (
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
+class Cell:
+    """What stands in a table: its text, and where its number comes from (:func:`plan_path`), or empty.
+
+    ``code`` marks names and formulas, which are set as such.
+    """
+
+    text: str
+    source: str = ""
+    code: bool = False
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Words:
+    """A paragraph; ``strong`` is what has to be seen first."""
+
+    text: str
+    strong: bool = False
+    kind: Literal["words"] = "words"
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Points:
+    """A list."""
+
+    items: tuple[str, ...]
+    kind: Literal["points"] = "points"
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Column:
+    """A column of a table; the numbers of a ``numeric`` one stand below each other."""
+
+    title: str
+    numeric: bool = False
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Table:
+    """A table; the first cell of a row names the row."""
+
+    caption: str
+    head: tuple[Column, ...]
+    rows: tuple[tuple[Cell, ...], ...]
+    kind: Literal["table"] = "table"
+
+    def __post_init__(self) -> None:
+        if any(len(row) != len(self.head) for row in self.rows):
+            raise ValueError(f"a row of {self.caption!r} is not as long as its head")
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Picture:
+    """A figure by the name of its file, without the ending; ``alt`` says what is seen in it."""
+
+    name: str
+    alt: str
+    caption: str
+    kind: Literal["picture"] = "picture"
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Code:
+    """Formulas to copy, as text or as LaTeX."""
+
+    text: str
+    language: Literal["", "math"] = ""
+    kind: Literal["code"] = "code"
+
+
+Block: TypeAlias = Words | Points | Table | Picture | Code
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Section:
+    """A part of a spec sheet; ``key`` is its name in links."""
+
+    key: str
+    title: str
+    blocks: tuple[Block, ...]
+
+    @property
+    def tables(self) -> tuple[Table, ...]:
+        """The tables of the section."""
+        return tuple(block for block in self.blocks if isinstance(block, Table))
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
 class Spec:
-    """A spec sheet in words; ``worst_at`` and ``likely`` are empty where no spread is stated."""
+    """A spec sheet in words; ``verdict`` is MET, NOT MET, NOT JUDGED, or that no limit is given."""
 
     title: str
     headline: str
-    over: str
-    outcome: tuple[str, ...]
-    mask: tuple[str, ...]
-    assumptions: tuple[str, ...]
-    floor: str
-    options: tuple[OptionRow, ...]
-    chosen: str
-    reason: str
-    network: str
-    total: str
-    legs: tuple[LegRow, ...]
-    figures: tuple[tuple[str, str], ...]
-    worst_at: str
-    movers: tuple[str, ...]
-    likely: str
-    corners: str
-    fraction: str
-    centring: str
-    proof: str
-    notes: tuple[str, ...]
-    materials: tuple[MaterialRow, ...]
-    cautions: tuple[str, ...]
-    sha256: str
-    version: str
+    verdict: str
+    sections: tuple[Section, ...]
+
+    def section(self, key: str) -> Section:
+        """Return a section by its key."""
+        return next(section for section in self.sections if section.key == key)
 
 
-def spec_of(plan: Plan) -> Spec:
-    """Return the spec sheet of the chosen option of a plan.
+def plan_path(*keys: str | int) -> str:
+    """Return where a number comes from: ``plan.json#`` and its path.
 
     Parameters
     ----------
-    plan : Plan
+    *keys : str or int
+        From the root of plan.json.
 
-    Returns
-    -------
-    Spec
-        Every number in it comes from the plan.
+    References
+    ----------
+    RFC 6901, JavaScript Object Notation (JSON) Pointer.
     """
-    option, outside = plan.best, assumed.extrapolated(plan)
-    return Spec(
-        title=str(plan.brief["title"]),
-        headline=headline(plan),
-        over=range_text(plan),
-        outcome=statements.outcome(plan),
-        mask=mask_lines(plan),
-        assumptions=assumed.assumptions(plan),
-        floor=statements.floor_text(plan),
-        options=tuple(option_row(plan, each) for each in plan.options),
-        chosen=option.id,
-        reason=statements.reason(plan),
-        network=network_text(option.network, lambda leg: f"{leg.material} {format_ohms(leg.ohms)}"),
-        total=format_ohms(value(option.network)),
-        legs=leg_rows(plan, option),
-        figures=figure_rows(plan, option),
-        worst_at=statements.worst_point(plan, option),
-        movers=statements.movers(plan, option),
-        likely=statements.likely_lots(plan, option),
-        corners=statements.corners_text(option),
-        fraction=statements.fraction_text(plan),
-        centring=statements.centring(plan, option),
-        proof=statements.proof_text(plan, option),
-        notes=plan.notes,
-        materials=tuple(material_row(m, extrapolated=m.name in outside) for m in plan.materials),
-        cautions=CAUTIONS,
-        sha256=str(plan.brief["sha256"]),
-        version=plan.tcplan,
-    )
+    return "plan.json#" + pointer(*keys)
+
+
+def pointer(*keys: str | int) -> str:
+    """Return keys as a JSON Pointer (RFC 6901)."""
+    return "".join(f"/{str(key).replace('~', '~0').replace('/', '~1')}" for key in keys)
+
+
+def words(*texts: str) -> tuple[Words, ...]:
+    """Return a paragraph for each text that is not empty."""
+    return tuple(Words(text=text) for text in texts if text)
+
+
+def points(*texts: str) -> tuple[Points, ...]:
+    """Return a list of the texts that are not empty; nothing when there are none."""
+    kept = tuple(text for text in texts if text)
+    return (Points(items=kept),) if kept else ()
+
+
+def columns(*titles: str, numeric: str = "") -> tuple[Column, ...]:
+    """Return columns; ``numeric`` has an "n" at the place of each that holds numbers."""
+    marks = numeric.ljust(len(titles))
+    return tuple(Column(title=t, numeric=mark == "n") for t, mark in zip(titles, marks, strict=True))

@@ -12,7 +12,9 @@ from tcplan.plan import Plan, plan_json
 PLAN_FILES = (
     "plan.json",
     "mix.csv",
+    "spec.html",
     "spec.md",
+    "spec.json",
     "network.svg",
     "network.png",
     "drift.svg",
@@ -25,7 +27,7 @@ PLAN_FILES = (
 
 
 def write_plan(plan: Plan, folder: Path, *, force: bool = False) -> tuple[Path, ...]:
-    """Write plan.json, mix.csv, spec.md and the figures of a plan, all of them or none.
+    """Write plan.json, mix.csv, the spec sheet and the figures of a plan, all of them or none.
 
     Parameters
     ----------
@@ -47,12 +49,17 @@ def write_plan(plan: Plan, folder: Path, *, force: bool = False) -> tuple[Path, 
         When a file is in the way or cannot be written.
     """
     from tcplan.figures.files import figure_files
-    from tcplan.spec.markdown import spec_markdown
     from tcplan.spec.mix_csv import mix_csv
+    from tcplan.workflow.specs import make_spec, spec_files
 
     check_folder(folder, PLAN_FILES, force=force)
-    texts = {"plan.json": plan_json(plan), "mix.csv": mix_csv(plan), "spec.md": spec_markdown(plan)}
-    contents = {**{name: text.encode() for name, text in texts.items()}, **figure_files(plan)}
+    figures = figure_files(plan)
+    contents = {
+        "plan.json": plan_json(plan).encode(),
+        "mix.csv": mix_csv(plan).encode(),
+        **spec_files(make_spec(plan), figures),
+        **figures,
+    }
     made = {name: contents[name] for name in PLAN_FILES if name in contents}
     paths = write_files(folder, made, force=force)
     remove_earlier(folder / name for name in PLAN_FILES if name not in made)

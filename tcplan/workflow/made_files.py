@@ -16,6 +16,7 @@ from tcplan.workflow.delivery import remove_earlier
 
 PARTS_FILES = (
     "plan.json",
+    "spec.html",
     "parts.csv",
     "placement.svg",
     "placement.png",
@@ -27,7 +28,7 @@ PARTS_FILES = (
 
 
 def write_parts(made: MadePlan, folder: Path, *, force: bool = False) -> tuple[Path, ...]:
-    """Write the plan with its parts, parts.csv and the figures, all of them or none.
+    """Write the plan with its parts, its spec sheet, parts.csv and the figures, all of them or none.
 
     Parameters
     ----------
@@ -63,15 +64,19 @@ def _write(
 
 
 def _contents(made: MadePlan) -> dict[str, bytes]:
+    from tcplan.figures.files import figure_files
     from tcplan.figures.placement import placement_figure_files
     from tcplan.figures.trade import trade_figure_files
     from tcplan.parts.trim import bits_csv, codes_csv
     from tcplan.spec.parts_csv import parts_csv
+    from tcplan.workflow.specs import make_spec, spec_files
 
     plan, parts = made.plan, made.parts
     reference = from_celsius(plan.range.reference_degC)
     found = {
         "plan.json": plan_json(plan).encode(),
+        # Markdown has no figures of its own, and those of the plan do not lie here.
+        "spec.html": spec_files(make_spec(plan), figure_files(plan))["spec.html"],
         "parts.csv": parts_csv(parts.made, made.loads, plan.by_name, reference).encode(),
     }
     placements = [one for own in made.placements for one in own]

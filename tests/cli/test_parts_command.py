@@ -254,7 +254,7 @@ def test_files_are_replaced_only_with_force(folder: Path) -> None:
     assert invoke("bought.toml", "-o", "out").exit_code == 0
     before = Path("out/plan.json").read_bytes()
     told = refused("brief.toml", "-o", "out", "--list", "r.cir")
-    assert "plan.json, parts.csv already there" in told
+    assert "plan.json, spec.html, parts.csv already there" in told
     assert "--force" in told
     assert Path("out/plan.json").read_bytes() == before
     assert not Path("r.cir").exists()

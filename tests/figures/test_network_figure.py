@@ -21,7 +21,7 @@ from tcplan.figures.network import (
 )
 from tcplan.figures.style import TEXT_SIZE, figure_style
 from tcplan.network import Leg, leg_names, legs, mapped, value
-from tcplan.network_text import MAX_DEPTH, MAX_LEGS, parse_network
+from tcplan.network_reading import MAX_DEPTH, MAX_LEGS, parse_network
 from tcplan.units import format_ohms
 from tcplan.workflow.planning import make_plan
 

@@ -19,9 +19,10 @@ from tcplan.plan import Plan, plan_json
 from tcplan.spec import numbers
 from tcplan.spec.formula import coefficients, composite_formula
 from tcplan.spec.markdown import code, escaped, spec_markdown
-from tcplan.spec.spec import spec_of
+from tcplan.spec.summary import summary_of
 from tcplan.workflow.conversions import symbolic_formula
 from tcplan.workflow.planning import make_plan
+from tcplan.workflow.specs import make_spec
 
 WORST = BRIEF.replace('drift = "6000 ppm"', 'drift = "7000 ppm"\njudge = "worst-case"')
 EASY = WORST.replace("7000 ppm", "13000 ppm")
@@ -39,7 +40,7 @@ def judged() -> Plan:
 
 
 def sentences(plan: Plan) -> str:
-    spec = spec_of(plan)
+    spec = summary_of(plan)
     return " ".join([spec.headline, *spec.outcome, *spec.assumptions, spec.floor, spec.reason, spec.proof])
 
 
@@ -98,11 +99,11 @@ def test_numbers_are_plain(number: float, digits: int, text: str) -> None:
 
 
 def test_a_nominal_figure_is_never_alone(judged: Plan) -> None:
-    for row in spec_of(judged).options:
+    for row in summary_of(judged).options:
         assert row.nominal
         assert float(row.worst_case.split(" ")[0])
     nominal = plan_of(BRIEF + FILMS)
-    said = next(line for line in spec_of(nominal).outcome if "nominal" in line)
+    said = next(line for line in summary_of(nominal).outcome if "nominal" in line)
     assert re.search(r"at nominal and \d+ ppm in the worst case", said)
 
 
@@ -117,9 +118,9 @@ def test_what_is_not_met_says_by_how_much(judged: Plan) -> None:
 def test_no_spread_is_not_stated_and_not_judged() -> None:
     without = re.sub(r"\[material\.np\.spread\](\n.+)+", "", FILMS)
     plan = plan_of(WORST + without + '\n[given]\nnetwork = "pp 12 kohm + np 6 kohm"\n')
-    assert "NOT JUDGED" in spec_of(plan).headline
+    assert "NOT JUDGED" in summary_of(plan).headline
     assert "no spread is stated for np." in sentences(plan)
-    assert dict(spec_of(plan).figures)["judged figure, worst case"] == "not stated"
+    assert "| judged figure, worst case | not stated |" in spec_markdown(make_spec(plan))
 
 
 SIGMA = ('"limits"\nohm_per_square = "20 %"', '"sigma"\nohm_per_square = "7 %"')
@@ -174,11 +175,11 @@ def test_a_given_network_states_its_own_value() -> None:
 
 def test_the_verdict_and_the_proof_are_about_the_data(judged: Plan) -> None:
     assert judged.best.proof.kind == "global"
-    assert "Proved optimal among" in spec_of(judged).proof
-    assert "for these data" in spec_of(judged).proof
+    assert "Proved optimal among" in summary_of(judged).proof
+    assert "for these data" in summary_of(judged).proof
     searched = next(option for option in judged.options if option.proof.kind == "searched")
     other = dataclasses.replace(judged, chosen=searched.id)
-    assert re.search(r"Best found; no such network is below \d+ ppm worst-case", spec_of(other).proof)
+    assert re.search(r"Best found; no such network is below \d+ ppm worst-case", summary_of(other).proof)
 
 
 # --- the formula --------------------------------------------------------------------------------
@@ -249,11 +250,13 @@ def rendered(markdown: str) -> str:
 
 
 def test_the_sheet_has_its_parts(judged: Plan) -> None:
-    html = rendered(spec_markdown(judged))
-    for part in ("Network", "Drift", "Proof and floor", "Options", "Materials", "Formula", "Provenance"):
+    html = rendered(spec_markdown(make_spec(judged)))
+    for part in (section.title for section in make_spec(judged).sections):
         assert f"<h2>{part}</h2>" in html
-    assert html.count("<table>") == 3
-    assert len(re.findall(r"<tr>", html.split("<h2>Options</h2>")[1])) == 1 + len(judged.options)
+    assert html.count("<table>") == sum(len(section.tables) for section in make_spec(judged).sections)
+    assert len(
+        re.findall(r"<tr>", html.split("<h2>Why this option</h2>")[1].split("</table>")[0])
+    ) == 1 + len(judged.options)
     assert judged.brief["sha256"] in html
     for caution in ("confirmed on silicon or hardware", "ageing, humidity", "can burn", "licensed practice"):
         assert caution in html
@@ -266,8 +269,8 @@ def test_the_sheet_has_its_parts(judged: Plan) -> None:
 
 
 def test_the_sheet_has_no_date_and_is_the_same_every_time(judged: Plan) -> None:
-    assert spec_markdown(judged) == spec_markdown(judged)
-    assert not re.search(r"\b20[0-9]{2}-[0-9]{2}-[0-9]{2}\b", spec_markdown(judged))
+    assert spec_markdown(make_spec(judged)) == spec_markdown(make_spec(judged))
+    assert not re.search(r"\b20[0-9]{2}-[0-9]{2}-[0-9]{2}\b", spec_markdown(make_spec(judged)))
 
 
 HOSTILE = "<script>alert(1)</script> [x](javascript:y) ![i](z.png) `c` | ~~s~~ *b* __u__ &lt; # $m$"
@@ -276,7 +279,7 @@ HOSTILE = "<script>alert(1)</script> [x](javascript:y) ![i](z.png) `c` | ~~s~~ *
 def test_no_text_of_the_user_becomes_markup() -> None:
     films = FILMS.replace('source = "invented"', f'source = "{HOSTILE}"\nlabel = "{HOSTILE}"', 1)
     plan = plan_of(BRIEF.replace("Test resistor", HOSTILE) + films)
-    html = rendered(spec_markdown(plan))
+    html = rendered(spec_markdown(make_spec(plan)))
     assert "<script" not in html
     assert "<a " not in html
     assert html.count("<img") == 4
@@ -303,13 +306,13 @@ def test_every_figure_on_the_sheet_comes_from_the_plan(judged: Plan) -> None:
     from tcplan.plan_file import plan_from_dict
 
     again = plan_from_dict(json.loads(plan_json(judged)))
-    assert spec_markdown(again) == spec_markdown(judged)
+    assert spec_markdown(make_spec(again)) == spec_markdown(make_spec(judged))
 
 
 def test_the_easy_limit_is_met_by_the_simplest() -> None:
     plan = plan_of(EASY + FILMS)
     assert plan.best.verdict == "MET"
-    assert spec_of(plan).reason == "the simplest that meets the limit"
+    assert summary_of(plan).reason == "the simplest that meets the limit"
 
 
 def test_a_floor_above_the_limit_is_printed_above_it() -> None:

@@ -145,5 +145,5 @@ def test_a_folder_with_a_plan_and_nothing_at_all(tmp_path):
     (tmp_path / "plan.json").write_text("{}", encoding="utf-8")
     with pytest.raises(InputError, match=r"found a folder; expected a plan.json. Did you mean .*plan.json"):
         plan_to_budget(str(tmp_path))
-    with pytest.raises(InputError, match="standard input: found nothing; expected a plan.json"):
+    with pytest.raises(InputError, match=r"standard input: found nothing; expected a plan\.json"):
         plan_to_budget("standard input", b" \n")

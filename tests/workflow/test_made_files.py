@@ -149,12 +149,12 @@ def test_films_with_a_trim_have_all_files_in_their_order(trimmed: MadePlan, tmp_
 
 def test_without_films_there_is_no_figure(bought: MadePlan, tmp_path: Path) -> None:
     write_parts(bought, tmp_path)
-    assert names(tmp_path) == ["parts.csv", "plan.json"]
+    assert names(tmp_path) == ["parts.csv", "plan.json", "spec.html"]
 
 
 def test_one_way_to_draw_it_is_no_trade(trimmed: MadePlan, tmp_path: Path) -> None:
     write_parts(replace(trimmed, ways=trimmed.ways[:1], way=trimmed.ways[0], trims=()), tmp_path)
-    assert names(tmp_path) == ["parts.csv", "placement.png", "placement.svg", "plan.json"]
+    assert names(tmp_path) == ["parts.csv", "placement.png", "placement.svg", "plan.json", "spec.html"]
 
 
 def test_the_plan_that_is_written_is_read_again_as_it_is(trimmed: MadePlan, tmp_path: Path) -> None:
@@ -206,7 +206,7 @@ def test_force_replaces_them_and_leaves_nothing_of_earlier_parts(
     write_parts(trimmed, tmp_path)
     (tmp_path / "notes.txt").write_text("mine")
     write_parts(bought, tmp_path, force=True)
-    assert names(tmp_path) == ["notes.txt", "parts.csv", "plan.json"]
+    assert names(tmp_path) == ["notes.txt", "parts.csv", "plan.json", "spec.html"]
     assert "slate" not in (tmp_path / "plan.json").read_text()
 
 

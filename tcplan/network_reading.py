@@ -117,6 +117,13 @@ def parse_network(text: str, materials: Collection[str] | None = None, *, where:
     Raises
     ------
     ExpressionError, UnitError, InputError
+
+    Examples
+    --------
+    >>> from tcplan.network import value
+    >>> network = parse_network("(red_film 6k || blue_film 3 kohm) + red_film 10k")
+    >>> value(network)
+    12000.0
     """
     if not isinstance(text, str) or len(text) > MAX_TEXT:
         raise ExpressionError(
