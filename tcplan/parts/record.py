@@ -123,7 +123,10 @@ class MadePlan:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class MadeRatio:
-    """A ratio with the parts of both its resistors; ``first`` and ``second`` are their legs."""
+    """A ratio with the parts of both its resistors; ``first`` and ``second`` are their legs.
+
+    ``error`` is what a leg may be off without a word, as a fraction of its value.
+    """
 
     ideal: RatioCheck
     checked: RatioCheck
@@ -131,6 +134,7 @@ class MadeRatio:
     second: tuple[MadeLeg, ...]
     choices: tuple[FilmChoice, ...]
     placements: tuple[Placement, ...]
+    error: float
 
     def to_dict(self) -> dict[str, Any]:
         """Return ratio.json with its parts; see docs/ratio.md."""

@@ -9,25 +9,34 @@ tangents at its centre; what is then left is convex in the factors m, and convex
 so it is largest at a vertex. Common spreads cancel in it to second order in the size of the cell. Cells are
 halved until no device can be beyond the best one found by more than `GAP`, or the work allowed is done.
 
+Of two resistors of one shape a bound without vertices (`tcplan.ratio.same_shape`) is tried first, where it is
+nearer, to `SHAPE_GAP`; if that leaves the extreme open, both bounds count in each cell.
+
 Long, since the bound, the cells and the vertices that it is taken at are one argument.
 """
 
 from __future__ import annotations
 
 from collections.abc import Iterator
-from dataclasses import dataclass
-from itertools import product
+from dataclasses import dataclass, replace
 
 import numpy as np
 
 from tcplan.arrays import BoolArray, FloatArray, IntArray
 from tcplan.errors import InternalError
+from tcplan.ratio.same_shape import SameShape, same_shape_of
 from tcplan.ratio.space import Grid, Quotient, Space, log_value, material_shares
+from tcplan.ratio.vertices import Cells, corner_count, corners, halved, joined, start_cells
 
 GAP = 5e-5
 LEAST_GAP = 1e-10  # a figure; what is closer is of no account
 MOST_WORK = 6_000_000  # vertices, after which the bound stays as it is
 POINTS = 40_000  # vertices at a time
+FIRST = 4  # cells whose bounds by shape and by tangents are compared
+SHAPE_CELLS = 128  # cells at a time, where no vertices are needed
+CLIMBS = 24
+SHAPE_WORK = 3000  # vertices that count as one of these cells
+SHAPE_GAP = 9e-4  # what is nearer than this is left to it
 
 
 @dataclass(frozen=True, slots=True, eq=False)
@@ -44,22 +53,6 @@ class Side:
     up: bool
 
 
-@dataclass(frozen=True, slots=True, eq=False)
-class _Cells:
-    """Cells, shape (cells, coordinates), each at one temperature of the grid."""
-
-    low: FloatArray
-    high: FloatArray
-    at: IntArray
-    bound: FloatArray
-
-    def taken(self, which: IntArray | BoolArray | slice) -> _Cells:
-        return _Cells(self.low[which], self.high[which], self.at[which], self.bound[which])
-
-    def __len__(self) -> int:
-        return len(self.at)
-
-
 def side_extreme(
     space: Space, grid: Grid, *, up: bool, floor: float = -np.inf, work: int = MOST_WORK
 ) -> Side:
@@ -72,104 +65,137 @@ def side_extreme(
     up : bool
         Above; else below.
     floor : float
-        A figure that is reached already: what cannot pass it is not searched.
+        A figure that is reached already: where the quick bound of two resistors of one shape is not above
+        it, no more is searched.
     work : int
         Vertices after which the bound stays as it is.
     """
-    quotient = space.quotient(up=up)
-    cells, best, closed = _start(space, len(grid.T)), Side(-np.inf, np.inf, np.empty(0), 0, up), -np.inf
+    shape = same_shape_of(space.pair)
+    search = _Search(space, grid, space.quotient(up=up), shape)
+    cells, best = start_cells(space, len(grid.T)), Side(-np.inf, np.inf, np.empty(0), 0, up)
+    if shape is None:
+        return _by_tangents(search, cells, best, work)
+    cells, best, nearer = _shaped(search, cells, best)
+    if not nearer:
+        return _by_tangents(search, cells, best, work)
+    quick = _by_shape(search, cells, best, work // SHAPE_WORK)
+    enough = max(quick.figure, floor)
+    if quick.upper <= enough + max(SHAPE_GAP * abs(enough), LEAST_GAP):
+        return quick
+    found = _by_tangents(search, cells, quick, work)
+    return replace(found, upper=min(found.upper, max(quick.upper, found.figure)))
+
+
+def _by_tangents(search: _Search, cells: Cells, best: Side, work: int) -> Side:
+    """Return the extreme by the bound at the vertices of cells; work counts these."""
+    space, closed = search.space, -np.inf
     while len(cells):
-        enough = max(best.figure, floor)
-        done = np.asarray(cells.bound <= enough + max(GAP * abs(enough), LEAST_GAP))
+        done = _done(cells, best.figure)
         if best.point.size:
             closed = max(closed, float(cells.bound[done].max(initial=-np.inf)))
             cells = cells.taken(~done)
         if not len(cells) or work <= 0:
             break
         cells = cells.taken(np.argsort(-cells.bound, kind="stable"))
-        count = max(1, POINTS // _corner_count(space, cells))
+        count = max(1, POINTS // corner_count(space, cells))
         now, cells = cells.taken(slice(count)), cells.taken(slice(count, None))
-        work -= len(now) * _corner_count(space, now)
-        found, best = _examined(space, grid, quotient, now, best)
-        cells = _joined(cells, found)
+        work -= len(now) * corner_count(space, now)
+        now = replace(now, bound=np.minimum(now.bound, _shape_bound(search, now)))
+        found, best = _examined(search, now, best)
+        cells = joined(cells, found)
+    return _ended(best, closed, cells)
+
+
+@dataclass(frozen=True, slots=True, eq=False)
+class _Search:
+    """What is searched: the box, the temperatures, the quotient, the shape of both resistors if it is one."""
+
+    space: Space
+    grid: Grid
+    quotient: Quotient
+    shape: SameShape | None
+
+
+def _done(cells: Cells, enough: float) -> BoolArray:
+    return np.asarray(cells.bound <= enough + max(GAP * abs(enough), LEAST_GAP))
+
+
+def _ended(best: Side, closed: float, cells: Cells) -> Side:
     if not best.point.size:
         raise InternalError("a box of ratios without a device")
     left = float(cells.bound.max(initial=-np.inf))
-    return Side(best.figure, max(best.figure, closed, left), best.point, best.at, up)
+    return Side(best.figure, max(best.figure, closed, left), best.point, best.at, best.up)
 
 
-# --- cells --------------------------------------------------------------------------------------------
+# --- two resistors of one shape -----------------------------------------------------------------------
 
 
-def _start(space: Space, temperatures: int) -> _Cells:
-    """Return the cells that hold every ratio of the box, at each temperature."""
-    moving, scales = space.moving_values()
-    low, high = -space.half, space.half.copy()
-    for group in range(space.groups):
-        if group not in moving:
-            low[group] = high[group] = 0.0
-    lows, highs = [], []
-    for group in moving if scales else [-1]:
-        lows.append(low.copy())
-        highs.append(high.copy())
-        if group >= 0:
-            lows[-1][group] = 1.0
-    faces = len(lows)
-    at = np.tile(np.arange(temperatures), faces)
-    pick = np.repeat(np.arange(faces), temperatures)
-    return _Cells(np.stack(lows)[pick], np.stack(highs)[pick], at, np.full(len(at), np.inf))
+def _shaped(search: _Search, cells: Cells, best: Side) -> tuple[Cells, Side, bool]:
+    """Return the first cells with the bound by shape, and whether it is nearer than that by tangents."""
+    cells = replace(cells, bound=_shape_bound(search, cells))
+    first = cells.taken(np.argsort(-cells.bound, kind="stable")[:FIRST])
+    kept = np.asarray(corners(search.space, first)[1].any(axis=1))
+    if not kept.any():
+        return cells, best, False
+    tangents, best = _examined(search, replace(first, bound=np.full(len(first), np.inf)), best)
+    return cells, best, bool(float(first.bound[kept].max()) < float(tangents.bound.max()))
 
 
-def _joined(one: _Cells, other: _Cells) -> _Cells:
-    return _Cells(
-        np.concatenate([one.low, other.low]),
-        np.concatenate([one.high, other.high]),
-        np.concatenate([one.at, other.at]),
-        np.concatenate([one.bound, other.bound]),
-    )
+def _shape_bound(search: _Search, cells: Cells) -> FloatArray:
+    if search.shape is None:
+        return np.full(len(cells), np.inf)
+    log = search.shape.bound(search.space, search.grid, cells, up=search.quotient.up)
+    return _figure(search.grid, cells.at, log, search.quotient.up)
 
 
-def _corner_count(space: Space, cells: _Cells) -> int:
-    """Return how many vertices each of these cells has at most."""
-    tracked = [at for at, _ in space.tracked]
-    within = {int(k) + space.groups for at in tracked for k in at}
-    free = [j for j in np.flatnonzero((cells.high > cells.low).any(axis=0)) if int(j) not in within]
-    return int(2 ** len(free) * np.prod([4 * len(at) * 2 ** len(at) for at in tracked]))
+def _by_shape(search: _Search, cells: Cells, best: Side, work: int) -> Side:
+    """Return the extreme by the bound that needs no vertices; work counts cells."""
+    best, closed = _climbed(search, best), -np.inf
+    while len(cells):
+        done = _done(cells, best.figure)
+        closed = max(closed, float(cells.bound[done].max(initial=-np.inf)))
+        cells = cells.taken(~done)
+        if not len(cells) or work <= 0:
+            break
+        cells = cells.taken(np.argsort(-cells.bound, kind="stable"))
+        now, cells = cells.taken(slice(SHAPE_CELLS)), cells.taken(slice(SHAPE_CELLS, None))
+        work -= len(now)
+        split = halved(now, _narrowing(search, now))
+        split = replace(split, bound=np.minimum(split.bound, _shape_bound(search, split)))
+        centre = 0.5 * (split.low + split.high)
+        best = _reached(search, split, centre, _tracks(search.space, centre), best)
+        cells = joined(cells, split)
+    return _ended(best, closed, cells)
 
 
-def _corners(space: Space, cells: _Cells) -> tuple[FloatArray, BoolArray]:
-    """Return the vertices of cells, shape (cells, vertices, coordinates), and which of them there are."""
-    points = 0.5 * (cells.low + cells.high)[:, None, :]
-    there = np.ones(points.shape[:2], dtype=bool)
-    within = {int(k) + space.groups for at, _ in space.tracked for k in at}
-    for j in np.flatnonzero((cells.high > cells.low).any(axis=0)):
-        if int(j) not in within:
-            both = [points.copy(), points]
-            both[0][:, :, j], both[1][:, :, j] = cells.low[:, None, j], cells.high[:, None, j]
-            points, there = np.concatenate(both, axis=1), np.concatenate([there, there], axis=1)
-    for at, most in space.tracked:
-        own = at + space.groups
-        options, possible = _tracked_corners(cells.low[:, own], cells.high[:, own], most)
-        count = points.shape[1]
-        points = np.repeat(points, options.shape[1], axis=1)
-        points[:, :, own] = np.tile(options, (1, count, 1))
-        there = np.repeat(there, options.shape[1], axis=1) & np.tile(possible, (1, count))
-    return points, there
+def _climbed(search: _Search, best: Side) -> Side:
+    """Return the best device that is reached from one by putting coordinate after coordinate at a limit."""
+    space = search.space
+    moving = np.flatnonzero(space.half > 0.0)
+    at = np.full(2 * len(moving), best.at)
+    for _ in range(CLIMBS):
+        z = np.tile(best.point, (len(at), 1))
+        z[np.arange(len(at)), np.tile(moving, 2)] = np.concatenate([space.half[moving], -space.half[moving]])
+        tried = _reached(search, Cells(z, z, at, np.full(len(at), np.inf)), z, _tracks(space, z), best)
+        if tried.figure <= best.figure:
+            break
+        best = tried
+    return best
 
 
-def _tracked_corners(low: FloatArray, high: FloatArray, most: float) -> tuple[FloatArray, BoolArray]:
-    """Return the vertices of a box whose coordinates differ by ``most`` at most.
-
-    With c the least of them, each lies between max(low, c) and min(high, c + most); at a vertex c is the
-    limit of one coordinate, or that less ``most``, and each coordinate is at one end.
-    """
-    least = np.concatenate([low, high, low - most, high - most], axis=1)[:, :, None]
-    lower, upper = np.maximum(low[:, None, :], least), np.minimum(high[:, None, :], least + most)
-    possible = (lower <= upper).all(axis=2)
-    sides = np.array(list(product((0, 1), repeat=low.shape[1])))
-    ends = np.where(sides[None, None] == 1, upper[:, :, None], lower[:, :, None])
-    count = len(low)
-    return ends.reshape(count, -1, low.shape[1]), np.repeat(possible, len(sides), axis=1)
+def _narrowing(search: _Search, cells: Cells) -> IntArray:
+    """Return the coordinate of each cell without whose width its bound would be least."""
+    count = cells.low.shape[1]
+    which = np.tile(np.arange(len(cells)), count)
+    along = np.repeat(np.arange(count), len(cells))
+    flat = cells.taken(which)
+    middle = 0.5 * (flat.low + flat.high)
+    rows = np.arange(len(flat))
+    low, high = flat.low.copy(), flat.high.copy()
+    low[rows, along] = high[rows, along] = middle[rows, along]
+    bound = _shape_bound(search, replace(flat, low=low, high=high)).reshape(count, len(cells)).T
+    wide = cells.high > cells.low
+    return np.asarray(np.argmin(np.where(wide, bound, np.inf), axis=1))
 
 
 # --- bounds -------------------------------------------------------------------------------------------
@@ -194,7 +220,7 @@ class _Local:
         return np.asarray(common[None] + self.apart[:, :, None])
 
 
-def _local(space: Space, grid: Grid, cells: _Cells, up: bool) -> _Local:
+def _local(space: Space, grid: Grid, cells: Cells, up: bool) -> _Local:
     """Return the laws about the centres: (P + dP)/(Q + dQ) = P/Q + linear - linear dQ/(Q + dQ)."""
     centre, wide = 0.5 * (cells.low + cells.high), 0.5 * (cells.high - cells.low)
     x = grid.x[cells.at]
@@ -215,27 +241,33 @@ def _exact_laws(space: Space, grid: Grid, at: IntArray, apart: FloatArray, z: Fl
     return np.asarray((above / below)[None] + apart)
 
 
-def _examined(space: Space, grid: Grid, quotient: Quotient, cells: _Cells, best: Side) -> tuple[_Cells, Side]:
+def _examined(search: _Search, cells: Cells, best: Side) -> tuple[Cells, Side]:
     """Return the halves of cells with the bounds of the wholes, and the best device so far."""
+    space, grid, quotient = search.space, search.grid, search.quotient
     local = _local(space, grid, cells, quotient.up)
-    points, there = _corners(space, cells)
+    points, there = corners(space, cells)
     tangent = _Tangent.at(space, quotient, local)
     value = tangent.above(points) - _subtracted(space, quotient, local, points)
     value[~there] = -np.inf
-    bound = _figure(grid, cells.at, value.max(axis=1), quotient.up)
-    rows = np.arange(len(cells))
-    highest = points[rows, value.argmax(axis=1)]
-    for z, real in ((highest, there.any(axis=1)), (local.centre, _tracks(space, local.centre))):
-        laws = _exact_laws(space, grid, cells.at, local.apart, z)
-        reached = _figure(grid, cells.at, _log(space, quotient, laws, z), quotient.up)
-        reached[~real] = -np.inf
-        k = int(np.argmax(reached))
-        if reached[k] > best.figure:
-            best = Side(float(reached[k]), np.inf, z[k].copy(), int(cells.at[k]), quotient.up)
-    kept = np.asarray(there.any(axis=1))
-    whole = _Cells(cells.low, cells.high, cells.at, bound)
+    bound = np.minimum(cells.bound, _figure(grid, cells.at, value.max(axis=1), quotient.up))
+    rows, kept = np.arange(len(cells)), np.asarray(there.any(axis=1))
+    best = _reached(search, cells, points[rows, value.argmax(axis=1)], kept, best)
+    best = _reached(search, cells, local.centre, _tracks(space, local.centre), best)
+    whole = replace(cells, bound=bound)
     split = _widest(space, tangent, local, cells)
-    return _halved(whole.taken(kept), split[kept]), best
+    return halved(whole.taken(kept), split[kept]), best
+
+
+def _reached(search: _Search, cells: Cells, z: FloatArray, real: BoolArray, best: Side) -> Side:
+    """Return the best of a device and of one point of each cell, where that is one of the box."""
+    space, grid, quotient = search.space, search.grid, search.quotient
+    laws = _exact_laws(space, grid, cells.at, space.apart(grid.T[cells.at], up=quotient.up), z)
+    reached = _figure(grid, cells.at, _log(space, quotient, laws, z), quotient.up)
+    reached[~real] = -np.inf
+    k = int(np.argmax(reached))
+    if reached[k] <= best.figure:
+        return best
+    return Side(float(reached[k]), np.inf, z[k].copy(), int(cells.at[k]), quotient.up)
 
 
 def _figure(grid: Grid, at: IntArray, log: FloatArray, up: bool) -> FloatArray:
@@ -330,7 +362,7 @@ def _tracks(space: Space, z: FloatArray) -> BoolArray:
 # --- halving ------------------------------------------------------------------------------------------
 
 
-def _widest(space: Space, tangent: _Tangent, local: _Local, cells: _Cells) -> IntArray:
+def _widest(space: Space, tangent: _Tangent, local: _Local, cells: Cells) -> IntArray:
     """Return the coordinate of each cell along which the tangents miss most."""
     wide = 0.5 * (cells.high - cells.low)
     steps = np.eye(wide.shape[1])[None] * wide[:, None, :]
@@ -346,17 +378,6 @@ def _left_out(space: Space, local: _Local) -> FloatArray:
     """Return what the linear laws leave out, for the coordinates of their shifts."""
     missed = local.missed
     return np.concatenate([np.zeros((len(missed), space.groups)), missed, missed], axis=1)
-
-
-def _halved(cells: _Cells, along: IntArray) -> _Cells:
-    """Return both halves of each cell; one that is a single point is done, and stays as one."""
-    rows = np.arange(len(cells))
-    middle = 0.5 * (cells.low + cells.high)[rows, along]
-    low, high = cells.low.copy(), cells.high.copy()
-    low[rows, along] = high[rows, along] = middle
-    first = _Cells(cells.low, high, cells.at, cells.bound)
-    second = _Cells(low, cells.high, cells.at, cells.bound)
-    return _joined(first, second)
 
 
 def temperatures(space: Space, count: int) -> Iterator[tuple[FloatArray, FloatArray, bool]]:

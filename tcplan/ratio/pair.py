@@ -120,7 +120,7 @@ class Pair:
         """Whether top and bottom have one law in every device: equal networks without tracking."""
         if self.tracking and self.shared:
             return False
-        first, second = (_normal(network) for network in (self.ratio.first, self.ratio.second))
+        first, second = (normal_form(network) for network in (self.ratio.first, self.ratio.second))
         return _alike(first, second)
 
 
@@ -138,7 +138,7 @@ def _deviated(network: Network, factors: Mapping[str, float]) -> Network:
     return mapped(network, lambda leg: replace(leg, ohms=leg.ohms * factors[leg.material]))
 
 
-def _normal(network: Network) -> Network:
+def normal_form(network: Network) -> Network:
     """Return a network of 1 ohm with its members in an order of their own."""
     whole = value(network)
     return _sorted(mapped(simplified(network), lambda leg: Leg(material=leg.material, ohms=leg.ohms / whole)))

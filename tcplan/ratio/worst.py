@@ -50,7 +50,8 @@ def worst_of(pair: Pair) -> RatioWorst:
     space = space_of(pair)
     if pair.need.centred:
         return _banded(space)
-    high, low = (_followed(space, up=up) for up in (True, False))
+    high = _followed(space, up=True)
+    low = _followed(space, up=False, floor=high.judged.figure)
     one = max((high, low), key=lambda followed: followed.judged.figure)
     upper = max(high.upper, low.upper, one.judged.figure)
     return _worst(one.device, one.judged, upper, high.at, low.at)
@@ -74,17 +75,20 @@ class _Followed:
     at: float
 
 
-def _followed(space: Space, *, up: bool) -> _Followed:
-    """Return the worst device of one side, searched again where it turns out to be worst."""
+def _followed(space: Space, *, up: bool, floor: float = -np.inf) -> _Followed:
+    """Return the worst device of one side, searched again where it turns out to be worst.
+
+    A bound of it that is below ``floor``, what the other side reaches, need not be near.
+    """
     pieces = list(temperatures(space, GRID))
     T, weight = (np.concatenate([piece[k] for piece in pieces]) for k in (0, 1))
-    side = side_extreme(space, space.grid(T, weight), up=up)
+    side = side_extreme(space, space.grid(T, weight), up=up, floor=floor)
     best = _reached(space, side, float(T[side.at]))
     upper = side.upper
     for _ in range(ROUNDS):
         at = best.judged.at
         grid = space.grid(np.array([at]), np.array([_tightest(space, at)]))
-        side = side_extreme(space, grid, up=up)
+        side = side_extreme(space, grid, up=up, floor=floor)
         found, upper = _reached(space, side, at), max(upper, side.upper)
         if found.judged.figure <= best.judged.figure * (1.0 + 1e-6) + LEAST:
             break
@@ -105,7 +109,7 @@ def _tightest(space: Space, at: float) -> float:
 def side_at(pair: Pair, T: float, weight: float, *, up: bool) -> float:
     """Return the highest (lowest) drift of any device at one temperature [K], over the weight.
 
-    Signed, as a fraction; reached, and within `tcplan.ratio.cells.GAP` of the extreme.
+    Signed, as a fraction; reached, and within 0.1 % of the extreme where the work allowed suffices.
     """
     space = space_of(pair)
     side = side_extreme(space, space.grid(np.array([T]), np.array([weight])), up=up, work=MOST_WORK // 10)

@@ -2,6 +2,7 @@
 
 from __future__ import annotations
 
+from collections import Counter
 from collections.abc import Mapping, Sequence
 from dataclasses import replace
 
@@ -10,11 +11,12 @@ from tcplan.material.model import Material
 from tcplan.network import network_text, value
 from tcplan.parts.record import FilmWay, Load
 from tcplan.parts.wire import cutting_list
-from tcplan.plan import MadeValue, Option
+from tcplan.plan import MadeValue, Option, WorstCase
 from tcplan.spec import numbers
 from tcplan.units import format_celsius, format_length, format_ohms, format_si
 
 HEAD = ("leg", "material", "wanted", "made", "of")
+CLOSED = 1e-3  # a bound that is nearer than this to what is reached is not told beside it
 WAYS_HEAD = ("", "area", "judged", "error", "units, W x L")
 
 
@@ -87,7 +89,14 @@ def cutting(
     made: Sequence[MadeValue], materials: Mapping[str, Material], reference_degC: float
 ) -> tuple[str, ...]:
     """Return the cutting list of the wire of all values, a line each."""
-    own = [leg for one in made for leg in one.legs if isinstance(leg, WireLeg)]
+    return wire_lines([leg for one in made for leg in one.legs], materials, reference_degC)
+
+
+def wire_lines(
+    legs: Sequence[MadeLeg], materials: Mapping[str, Material], reference_degC: float
+) -> tuple[str, ...]:
+    """Return the cutting list of the wire among legs, a line each."""
+    own = [leg for leg in legs if isinstance(leg, WireLeg)]
     per_metre = {leg.material: leg.ohm_per_metre for leg in own}
     at = f"at {numbers.stated(reference_degC)} degC"
     return tuple(
@@ -101,19 +110,31 @@ def buying(
     made: Sequence[MadeValue], loads: Sequence[Sequence[Load]], materials: Mapping[str, Material]
 ) -> tuple[str, ...]:
     """Return how many of each stock part are needed for all values, a line each."""
-    counts: dict[tuple[str, float], int] = {}
+    own: list[StockLeg] = []
     powers: dict[tuple[str, float], float] = {}
     for k, one in enumerate(made):
         by_leg = {load.leg: load for load in loads[k]} if loads else {}
         for leg in (leg for leg in one.legs if isinstance(leg, StockLeg)):
-            for ohms in leg.values:
-                part = leg.material, ohms
-                counts[part] = counts.get(part, 0) + 1
-                if leg.id in by_leg:
-                    powers[part] = max(powers.get(part, 0.0), part_power(leg, ohms, by_leg[leg.id]))
+            own.append(leg)
+            for ohms in leg.values if leg.id in by_leg else ():
+                power = part_power(leg, ohms, by_leg[leg.id])
+                powers[leg.material, ohms] = max(powers.get((leg.material, ohms), 0.0), power)
+    return stock_lines(own, materials, powers)
+
+
+def stock_lines(
+    legs: Sequence[StockLeg],
+    materials: Mapping[str, Material],
+    powers: Mapping[tuple[str, float], float] | None = None,
+) -> tuple[str, ...]:
+    """Return how many of each stock part legs need, a line each, with the most power [W] of one where known.
+
+    ``powers`` are by material and value [ohm].
+    """
+    counts = Counter((leg.material, ohms) for leg in legs for ohms in leg.values)
     return tuple(
         f"{count} x {format_ohms(ohms)} of {name} ({materials[name].label}): {_traded(materials[name])}"
-        f"{_at_most(powers.get((name, ohms)))}"
+        f"{_at_most((powers or {}).get((name, ohms)))}"
         for (name, ohms), count in sorted(counts.items())
     )
 
@@ -162,13 +183,21 @@ def against_ideal(ideal: Option, made: MadeValue, *, several: bool = False) -> t
     first = f"{format_ohms(made.target_ohms)}: ideal" if several else "Ideal"
     sentences = [f"{first} {nominal}."]
     if ideal.worst_case is not None and option.worst_case is not None:
-        before, after = ideal.worst_case.peak_ppm, option.worst_case.peak_ppm
-        sentences.append(f"Ideal {_ppm(before)} in the worst case, as made {_ppm(after)}.")
+        before = _ppm(ideal.worst_case.peak_ppm)
+        sentences.append(f"Ideal {before} in the worst case, as made {_reached(option, option.worst_case)}.")
     elif ideal.worst_case is not None:
         sentences.append("The worst case as made is not stated: a part of it states no spread.")
     error = f"{_percent(made.value_error)} off"
     sentences.append(f"The value as made is {format_ohms(value(option.network))}, {error}.")
     return tuple(sentences)
+
+
+def _reached(option: Option, worst: WorstCase) -> str:
+    """Return the figure of a worst case, with its bound where that keeps the option from being judged."""
+    found, most = _ppm(worst.peak_ppm), _ppm(worst.upper_bound_ppm)
+    if option.verdict != "NOT JUDGED" or worst.upper_bound_ppm <= worst.peak_ppm * (1.0 + CLOSED):
+        return found
+    return f"{found} found, at most {most} guaranteed"
 
 
 def _ppm(figure: float) -> str:

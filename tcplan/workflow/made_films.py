@@ -46,7 +46,7 @@ def film_ways(task: Task, done: Mapping[str, MadeLeg]) -> tuple[FilmWay, ...]:
         choices = _choices_of(task, films, again)
     except InputError:  # some leg got too small, too large or too wide: the mix of the plan stays
         return ways
-    return _front([*ways, *_ways(task, done, choices)])
+    return front([*ways, *_ways(task, done, choices)])
 
 
 def taken(task: Task, ways: Sequence[FilmWay]) -> FilmWay:
@@ -157,7 +157,7 @@ def _ways(
         FilmWay(choices=one, figure=_worst(task, done, one, task.judged_quickly), area=_outlines(task, one))
         for one in combinations(films)
     ]
-    return _front(replace(way, figure=_worst(task, done, way.choices, task.judged)) for way in _front(quick))
+    return front(replace(way, figure=_worst(task, done, way.choices, task.judged)) for way in front(quick))
 
 
 def _outlines(task: Task, choices: Sequence[FilmChoice]) -> float:
@@ -199,7 +199,8 @@ def _thinned(choices: Sequence[FilmChoice]) -> Sequence[FilmChoice]:
     return [*choices[:-2], choices[-1]]
 
 
-def _front(ways: Iterable[FilmWay]) -> tuple[FilmWay, ...]:
+def front(ways: Iterable[FilmWay]) -> tuple[FilmWay, ...]:
+    """Return the ways that none beats in both area and figure, least area first."""
     best, kept = inf, []
     for way in sorted(ways, key=lambda way: (way.area, way.figure)):
         if way.figure < best * BETTER:

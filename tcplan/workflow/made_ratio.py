@@ -14,18 +14,22 @@ from tcplan.made import FilmLeg, MadeLeg, PlainLeg, StockLeg
 from tcplan.network import Leg, Network, Series, leg_names, legs, used_materials, value
 from tcplan.parts.films import FilmChoice
 from tcplan.parts.network import Assembly, assembled, made_process
-from tcplan.parts.placement import Placement, place
-from tcplan.parts.record import MadeRatio
-from tcplan.parts.stock import candidates
+from tcplan.parts.placement import Placement, outline_area, place
+from tcplan.parts.record import FilmWay, MadeRatio
+from tcplan.parts.stock import Candidate, candidates
 from tcplan.parts.wire import wire_legs
 from tcplan.ratio.check import RatioCheck, check_ratio, pair_of
+from tcplan.ratio.corners import corner_figure
+from tcplan.ratio.pair import Pair
 from tcplan.ratio.worst import worst_of
-from tcplan.workflow.made_films import combinations, film_choices, film_legs_of
+from tcplan.workflow.made_films import combinations, film_choices, film_legs_of, front
 from tcplan.workflow.made_task import NEAR, PartsRules
 from tcplan.workflow.ratio import make_ratio
 
 FEW = 5  # nearest stock values of a leg that are tried
 MOST_TRIED = 20_000
+DIGITS = 12  # of relative errors that are compared
+MOST_BOUNDED = 5  # ways to draw the films whose bounds are closed, where those of the first do not hold
 MOST_SPREADING = 4  # materials of the made ratio whose spreads are searched together
 
 
@@ -56,7 +60,7 @@ def make_ratio_parts(brief: Brief, rules: PartsRules) -> MadeRatio:
             problems.extend(error.problems)
     if problems:
         raise InputError(problems)
-    choices = _best(sides, done, films)
+    choices = _best(sides, {**done, **_stock(sides, done)}, films)
     done.update(film_legs_of(choices))
     done.update(_stock(sides, done))
     own = sides.whole(done)
@@ -68,6 +72,7 @@ def make_ratio_parts(brief: Brief, rules: PartsRules) -> MadeRatio:
         second=own[count:],
         choices=choices,
         placements=_placed(sides, own, count),
+        error=rules.films.error,
     )
 
 
@@ -158,33 +163,76 @@ def _checked(sides: _Sides, own: Sequence[MadeLeg]) -> RatioCheck:
     return check_ratio(_made_brief(sides, own))
 
 
-def _figure(sides: _Sides, own: Sequence[MadeLeg]) -> float:
-    """Return the figure of the worst case of the ratio as made, of the nominal one without spreads."""
+def _quickly(sides: _Sides, own: Sequence[MadeLeg]) -> float:
+    """Return the figure of the ratio as made: that of the corner devices, the nominal one without spreads."""
     pair = pair_of(_made_brief(sides, own))
-    if sides.brief.goal.judge == "nominal" or set(pair.names) - set(pair.spreads):
+    if not _spreading(sides, pair):
         return pair.judge(pair.nominal()).figure
-    return worst_of(pair).upper
+    return corner_figure(pair)
+
+
+def _spreading(sides: _Sides, pair: Pair) -> bool:
+    """Whether the figure is that of a worst case."""
+    return sides.brief.goal.judge != "nominal" and set(pair.names) <= set(pair.spreads)
+
+
+def _surely(sides: _Sides, own: Sequence[MadeLeg]) -> float:
+    """Return the figure of the ratio as made that no device is above."""
+    pair = pair_of(_made_brief(sides, own))
+    return worst_of(pair).upper if _spreading(sides, pair) else pair.judge(pair.nominal()).figure
+
+
+# --- films ----------------------------------------------------------------------------------------------
 
 
 def _best(
     sides: _Sides, done: Mapping[str, MadeLeg], films: Sequence[Sequence[FilmChoice]]
 ) -> tuple[FilmChoice, ...]:
-    """Return the unit cells of least area that keep the limit, else those of the least figure."""
+    """Return the unit cells of least area that keep the limit, else those of the least figure.
+
+    The ways are compared by their corner devices; only of the one that is taken the bound is closed, and
+    where that does not keep the limit, of the next larger ones.
+    """
     if not films:
         return ()
+
+    def whole(choices: Sequence[FilmChoice]) -> tuple[MadeLeg, ...]:
+        return sides.whole({**done, **film_legs_of(choices)})
+
+    ways = front(
+        FilmWay(choices=one, figure=_quickly(sides, whole(one)), area=_outlines(sides, one))
+        for one in combinations(films)
+    )
     scale = pair_of(sides.brief).need.scale
-    least, best = inf, None
-    for choices in sorted(combinations(films), key=lambda one: sum(choice.area for choice in one)):
-        figure = _figure(sides, sides.whole({**done, **film_legs_of(choices)}))
-        if best is None or figure < least:
-            least, best = figure, choices
-        if scale is not None and figure <= scale * (1.0 + NEAR):
-            return choices
-    return best or ()
+    most = inf if scale is None else scale * (1.0 + NEAR)
+    within = [way for way in ways if scale is not None and way.figure <= most]
+    least, best = inf, ways[-1].choices
+    for way in within[:MOST_BOUNDED]:
+        bound = _surely(sides, whole(way.choices))
+        if bound <= most:
+            return way.choices
+        if bound < least:
+            least, best = bound, way.choices
+    return best
+
+
+def _outlines(sides: _Sides, choices: Sequence[FilmChoice]) -> float:
+    """Return the area of the arrays of all films, both resistors in each, dummies included [m^2]."""
+    materials = sides.brief.by_name
+    return sum(
+        outline_area(c.unit, sum(leg.units for leg in c.legs), materials[c.unit.material]) for c in choices
+    )
+
+
+# --- bought parts ---------------------------------------------------------------------------------------
 
 
 def _stock(sides: _Sides, done: Mapping[str, MadeLeg]) -> dict[str, StockLeg]:
-    """Return one stock value for each bought leg: of the nearest, those whose ratio is nearest."""
+    """Return one stock value for each bought leg, of the nearest to each.
+
+    Of the values whose ratio is within the error asked, those are taken that are nearest to what was asked
+    of the legs; where there are none, those of the nearest ratio.
+    """
     own, materials = sides.whole(done), sides.brief.by_name
     bought = [leg for leg in own if materials[leg.material].series is not None and leg.id not in done]
     if not bought:
@@ -195,24 +243,31 @@ def _stock(sides: _Sides, done: Mapping[str, MadeLeg]) -> dict[str, StockLeg]:
         candidates(leg.wanted_ohms, str(materials[leg.material].series), lowest, highest, False, few)
         for leg in bought
     ]
-    wanted = _quotient(sides, own)
-    tried = (
-        {
-            leg.id: StockLeg(
-                id=leg.id, material=leg.material, wanted_ohms=leg.wanted_ohms, values=c.values, joined="one"
-            )
-            for leg, c in zip(bought, chosen, strict=True)
-        }
-        for chosen in product(*found)
-    )
-    return min(tried, key=lambda legs_: abs(_quotient(sides, sides.whole({**done, **legs_})) / wanted - 1.0))
+    wanted = _ratio(sides, sides.whole({}))
+
+    def order(taken: Mapping[str, StockLeg]) -> tuple[float, float]:
+        off = round(abs(_ratio(sides, sides.whole({**done, **taken})) / wanted - 1.0), DIGITS)
+        legs_off = round(max(abs(leg.ohms / leg.wanted_ohms - 1.0) for leg in taken.values()), DIGITS)
+        return (0.0, legs_off) if off <= sides.rules.films.error else (off, legs_off)
+
+    return min((_bought(bought, chosen) for chosen in product(*found)), key=order)
 
 
-def _quotient(sides: _Sides, own: Sequence[MadeLeg]) -> float:
-    """Return the first resistor over the second."""
+def _bought(own: Sequence[MadeLeg], chosen: Sequence[Candidate]) -> dict[str, StockLeg]:
+    return {
+        leg.id: StockLeg(
+            id=leg.id, material=leg.material, wanted_ohms=leg.wanted_ohms, values=c.values, joined="one"
+        )
+        for leg, c in zip(own, chosen, strict=True)
+    }
+
+
+def _ratio(sides: _Sides, own: Sequence[MadeLeg]) -> float:
+    """Return the ratio of what is made."""
     count = len(legs(sides.ratio.first))
-    first = _assembly(sides, sides.ratio.first, own[:count]).network
-    return value(first) / value(_assembly(sides, sides.ratio.second, own[count:]).network)
+    first = value(_assembly(sides, sides.ratio.first, own[:count]).network)
+    second = value(_assembly(sides, sides.ratio.second, own[count:]).network)
+    return first / second if sides.ratio.kind == "gain" else second / (first + second)
 
 
 def _placed(sides: _Sides, own: Sequence[MadeLeg], count: int) -> tuple[Placement, ...]:

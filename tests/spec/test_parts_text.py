@@ -262,6 +262,25 @@ def test_a_worst_case_that_is_not_known_is_told(made: MadePlan) -> None:
     assert len(against_ideal(bare, without)) == 2
 
 
+def test_a_bound_that_leaves_it_open_is_told(made: MadePlan) -> None:
+    """Where nothing hangs on the bound, or it differs by rounding only, it is not told."""
+    one = made.parts.made[0]
+    worst = one.option.worst_case
+    assert worst is not None
+
+    def told(bound_ppm: float, verdict: str) -> str:
+        option = replace(
+            one.option,
+            worst_case=replace(worst, upper_bound_ppm=bound_ppm),
+            verdict=verdict,  # type: ignore[arg-type]
+        )
+        return against_ideal(made.ideal, replace(one, option=option))[1]
+
+    plain = "Ideal 6500 ppm in the worst case, as made 6500 ppm"
+    assert told(9123.0, "NOT JUDGED") == f"{plain} found, at most 9130 ppm guaranteed."
+    assert told(9123.0, "MET") == told(worst.peak_ppm * (1 + 1e-4), "NOT JUDGED") == f"{plain}."
+
+
 def test_the_made_network_in_words(made: MadePlan) -> None:
     text = made_text(made.parts.made[0].option)
     assert "flat_a1 " in text

@@ -13,6 +13,9 @@ from tcplan.brief import Brief, parse_brief, read_brief
 from tcplan.errors import InputError
 from tcplan.parts.films import FilmRules
 from tcplan.parts.record import MadeRatio
+from tcplan.ratio.pair import Pair
+from tcplan.ratio.worst import RatioWorst
+from tcplan.workflow import made_ratio
 from tcplan.workflow.made_files import ratio_parts_json
 from tcplan.workflow.made_ratio import make_ratio_parts
 from tcplan.workflow.made_task import PartsRules
@@ -228,11 +231,13 @@ def test_both_sides_have_one_centroid(divider: MadeRatio) -> None:
     assert placement["why_not"] == ""
     assert all(row.startswith(".") and row.endswith(".") for row in placement["rows"])
     cells = " ".join(placement["rows"]).split(" ")
-    assert (cells.count("a"), cells.count("b")) == (data["parts"]["first"][0]["in_series"], 1)
+    legs = data["parts"]["first"][0], data["parts"]["second"][0]
+    assert (cells.count("a"), cells.count("b")) == tuple(leg["in_series"] for leg in legs)
 
 
 def test_one_unit_against_one_has_no_common_centroid() -> None:
-    made = make_ratio_parts(pair("ochre 6 kohm", "ochre 6 kohm", OCHRE), PartsRules(films=FilmRules()))
+    rules = PartsRules(films=FilmRules(most_count=1))
+    made = make_ratio_parts(pair("ochre 6 kohm", "ochre 6 kohm", OCHRE), rules)
     [placement] = data_of(made)["parts"]["placement"]
     assert made.first[0].units == made.second[0].units == 1
     assert placement["centroid_distance_m"] > 0.0
@@ -294,6 +299,64 @@ def test_the_least_area_within_the_limit_is_taken_and_else_the_least_figure() ->
     assert hard.checked.worst.upper <= easy.checked.worst.upper
 
 
+ENDS = SLATE + OCHRE.replace(
+    "matching", 'end_resistance = "20 ohm*um"\nend_tc1 = "-700 ppm/K"\nmatching'
+).replace('tc1 = "40 ppm/K"', 'tc1 = "40 ppm/K"\nend_resistance = "30 %"\nend_tc1 = "150 ppm/K"')
+
+
+def alike() -> Brief:
+    """Return two films with ends, both resistors of one mix, whose sides track to 2 ppm/K."""
+    brief = pair("slate 12 kohm + ochre 9 kohm", "slate 4 kohm + ochre 3.0001 kohm", ENDS, limit="700 ppm")
+    assert brief.ratio is not None
+    return replace(brief, ratio=replace(brief.ratio, tracking=2e-6))
+
+
+def bounded(monkeypatch: pytest.MonkeyPatch) -> list[float]:
+    """Return a list that every closed bound goes into."""
+    found: list[float] = []
+    own = made_ratio.worst_of
+
+    def counted(given: Pair) -> RatioWorst:
+        worst = own(given)
+        found.append(worst.upper)
+        return worst
+
+    monkeypatch.setattr(made_ratio, "worst_of", counted)
+    return found
+
+
+def test_two_films_with_ends_that_track_are_judged(monkeypatch: pytest.MonkeyPatch) -> None:
+    """To first order 2 ppm/K times 100 K; one bound is closed, and the least area of all ways taken."""
+    found = bounded(monkeypatch)
+    made = make_ratio_parts(alike(), RULES)
+    assert len(found) == 1
+    assert made.checked.verdict == "MET"
+    worst = made.checked.worst
+    assert worst is not None
+    assert worst.judged.figure == pytest.approx(200e-6, rel=0.1)
+    assert worst.judged.figure <= worst.upper <= 1.02 * worst.judged.figure
+
+
+@pytest.mark.parametrize("open_ones", [1, 9])
+def test_the_next_larger_way_is_taken_where_a_bound_stays_open(
+    monkeypatch: pytest.MonkeyPatch, open_ones: int
+) -> None:
+    """Ways of 4, 3, 2 .. units of area whose corner devices all keep the limit; bounds that do not."""
+    brief = pair("slate 12 kohm", "ochre 3 kohm", SLATE + OCHRE, limit="5 %")
+    first = make_ratio_parts(brief, RULES)
+    asked: list[int] = []
+
+    def surely(sides: object, own: object) -> float:
+        asked.append(1)
+        return 1.0 / len(asked) if len(asked) <= open_ones else 1e-9
+
+    monkeypatch.setattr(made_ratio, "_surely", surely)
+    made = make_ratio_parts(brief, RULES)
+    assert len(asked) <= 5
+    assert sum(p.area for p in made.placements) > sum(p.area for p in first.placements)
+    assert len(asked) == min(5, 1 + open_ones) or open_ones > len(asked)
+
+
 def e96() -> list[float]:
     """Return the E96 values from 1 to 999 kohm: 10^(i/96) to three digits (IEC 60063)."""
     return [round(10 ** (i / 96), 2) * 10.0**d for d in range(6) for i in range(96)]
@@ -303,20 +366,44 @@ def nearest(ohms: float, count: int = 5) -> list[float]:
     return sorted(e96(), key=lambda one: abs(one / ohms - 1))[:count]
 
 
-def test_stock_values_are_those_of_the_nearest_ratio() -> None:
-    """All of the 3 nearest values to each leg tried by hand; the ratio found is no worse than the best."""
-    made = make_ratio_parts(pair("flat 8.25 kohm + flat 1.2 kohm", "flat 1.53 kohm", FLAT), RULES)
+def tried_by_hand(error: float) -> tuple[float, ...]:
+    """Return the 5 nearest E96 values of each leg, all tried: 8.25 k + 1.2 k over 1.53 k.
+
+    Of those within the error of the ratio the nearest legs, else the nearest ratio.
+    """
+    asked = 8250.0, 1200.0, 1530.0
+    wanted = 9450.0 / 1530.0
+
+    def order(chosen: tuple[float, ...]) -> tuple[float, float]:
+        off = round(abs((chosen[0] + chosen[1]) / chosen[2] / wanted - 1), 12)
+        legs = round(max(abs(one / other - 1) for one, other in zip(chosen, asked, strict=True)), 12)
+        return (0.0, legs) if off <= error else (off, legs)
+
+    return min(product(*(nearest(one) for one in asked)), key=order)
+
+
+@pytest.mark.parametrize("error", [1e-7, 1e-3, 2e-3, 1e-2])
+def test_stock_values_are_the_nearest_that_make_the_ratio(error: float) -> None:
+    """IEC 60063 again by 10^(i/96); the error asked lets the legs stay where they were asked."""
+    rules = PartsRules(films=FilmRules(error=error))
+    made = make_ratio_parts(pair("flat 8.25 kohm + flat 1.2 kohm", "flat 1.53 kohm", FLAT), rules)
     data = data_of(made)
     legs = [*data["parts"]["first"], *data["parts"]["second"]]
-    series = e96()
-    for leg in legs:
-        assert min(abs(leg["values_ohms"][0] / one - 1) for one in series) < 1e-12
-        assert leg["joined"] == "one"
-    tried = product(nearest(8250.0, 3), nearest(1200.0, 3), nearest(1530.0, 3))
-    wanted = 9450.0 / 1530.0
-    best = min(abs((one + two) / three / wanted - 1) for one, two, three in tried)
-    assert abs(ratio_at(data, 25.0) / wanted - 1) <= best + 1e-12
+    assert [leg["joined"] for leg in legs] == ["one"] * 3
+    assert [leg["values_ohms"][0] for leg in legs] == pytest.approx(tried_by_hand(error), rel=1e-12)
     assert data["parts"]["placement"] == []
+
+
+def test_a_divider_of_bought_parts_stays_near_what_was_asked() -> None:
+    """17.3 k and 4.4 k: 17.4 k and 4.42 k make 0.202566, 979 ppm off; 17.8 k and 4.53 k are 499 ppm off."""
+    made = make_ratio_parts(pair("flat 17.3 kohm", "flat 4.4 kohm", FLAT, kind="divider"), RULES)
+    assert [leg.ohms for leg in (*made.first, *made.second)] == pytest.approx([17400.0, 4420.0])
+    close = make_ratio_parts(
+        pair("flat 17.3 kohm", "flat 4.4 kohm", FLAT, kind="divider"),
+        PartsRules(films=FilmRules(error=5e-4)),
+    )
+    assert [leg.ohms for leg in (*close.first, *close.second)] == pytest.approx([17800.0, 4530.0])
+    assert close.error == 5e-4
 
 
 def test_bought_parts_have_each_a_tcr_of_their_own() -> None:
