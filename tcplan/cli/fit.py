@@ -49,7 +49,7 @@ Examples:
 )
 @click.option("--law", metavar="FORMULA", help="Instead: a formula in T, T0 [K] and named parameters.")
 @click.option("--start", metavar="NAME=VALUE", multiple=True, help="First value of a parameter of --law.")
-@click.option("--order", type=int, help="Of a polynomial, 1 to 3; 2 where the data show it.")
+@click.option("--order", type=int, help="Of a polynomial, 1 to 3; 2 where readings are enough.")
 @click.option("--reference", metavar="TEMPERATURE", help="Of the law; 25 degC by default.")
 @click.option("--squares", type=float, help="Of each device, a film.")
 @click.option("--length", metavar="LENGTH", help="Of each device, a wire.")
@@ -179,7 +179,7 @@ def _lines(text: str) -> list[int]:
 
     words = [word.strip() for word in text.split(",")]
     if not all(word.isascii() and word.isdigit() and len(word) < 10 for word in words):
-        expected = "numbers of lines, such as 12,40"
+        expected = "numbers of lines, such as 12,40" + ("; ranges are not known" if "-" in text else "")
         raise InputError(Problem(where="--exclude", found=repr(text), expected=expected))
     return [int(word) for word in words]
 

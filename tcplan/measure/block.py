@@ -111,10 +111,12 @@ def material_block(
     label: str | None = None,
     size: Size | None = None,
     meaning: Meaning = "limits",
+    remarks: Sequence[str] = (),
 ) -> str:
     """Return the ``[material.NAME]`` of a materials file, with its spread and what it rests on as comments.
 
-    Parameters and what is raised are those of `material_of`.
+    Parameters and what is raised are those of `material_of`; ``remarks`` are sentences that are written as
+    comments too.
 
     Returns
     -------
@@ -123,7 +125,7 @@ def material_block(
     """
     material = material_of(name, found, source=source, label=label, size=size, meaning=meaning)
     lines = [
-        *account(found, meaning),
+        *account(found, meaning, remarks),
         f"[material.{name}]",
         f"label = {toml_text(material.label)}",
         f"source = {toml_text(source)}",

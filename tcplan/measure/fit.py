@@ -6,20 +6,20 @@ from typing import Literal, TypeAlias
 
 import numpy as np
 
-from tcplan.arrays import FloatArray, IntArray
+from tcplan.arrays import FloatArray
 from tcplan.errors import InputError, Problem
 from tcplan.material.law import check_positive
 from tcplan.material.law_base import checked_reference
 from tcplan.measure.common import check_common, common_changes
-from tcplan.measure.fit_checks import RISK, flags, lack_of_fit, last_term
+from tcplan.measure.fit_checks import BothWays, flags, lack_of_fit, last_term
 from tcplan.measure.fit_curve import Curve
 from tcplan.measure.fit_laws import Formula, FormulaCurve, SteinhartHartCurve, ThermistorCurve
 from tcplan.measure.fit_linear import PlatinumCurve, PolynomialCurve
 from tcplan.measure.fit_readings import check_temperatures, checked_readings, device_place, excluded
 from tcplan.measure.fit_repeats import NEARNESS, temperature_groups
 from tcplan.measure.fit_solve import Readings, Solved, solve
-from tcplan.measure.hysteresis import hysteresis
-from tcplan.measure.model import CommonErrors, Fit, Sweep
+from tcplan.measure.hysteresis import hysteresis, sides
+from tcplan.measure.model import CommonErrors, Fit, Hysteresis, LackOfFit, Sweep
 from tcplan.measure.referred import rows
 from tcplan.names import nearest_name, shown
 from tcplan.units import ZERO_CELSIUS
@@ -27,6 +27,8 @@ from tcplan.units import ZERO_CELSIUS
 ModelName: TypeAlias = Literal["polynomial", "platinum", "thermistor", "steinhart-hart"]
 MODELS: tuple[ModelName, ...] = ("polynomial", "platinum", "thermistor", "steinhart-hart")
 HIGHEST_ORDER = 3
+FREE_ORDER = 2
+"""Order of a polynomial where none is asked and the readings are enough for it."""
 
 _NO_COMMON_ERRORS = CommonErrors()
 
@@ -40,6 +42,8 @@ def fit(
     common: CommonErrors = _NO_COMMON_ERRORS,
     exclude: tuple[int, ...] = (),
     nearness: float = NEARNESS,
+    devices: int = 1,
+    ways_differ: bool = False,
 ) -> Fit:
     """Return the weighted least squares of a law to the readings of one device.
 
@@ -58,13 +62,18 @@ def fit(
     reference : float
         Reference temperature [K], among the readings or outside by at most half their span.
     order : int, optional
-        Of a polynomial, 1 to 3. None takes 2 where tc2 differs from 0 with 95 % confidence, else 1.
+        Of a polynomial, 1 to 3. None takes 2 where the readings are enough for it, else 1: a choice by the
+        data would leave intervals that do not hold what they say.
     common : CommonErrors, optional
         Standard uncertainties of what is common to the sweep.
     exclude : tuple of int, optional
         Lines of readings to leave out; nothing else is ever left out.
     nearness : float, optional
         Readings within this [K] are repeats of one temperature.
+    devices : int, optional
+        How many are looked at together: hysteresis is significant at 5 % over their number.
+    ways_differ : bool, optional
+        Whether other devices show hysteresis: then readings of two ways are no repeats of each other.
 
     Returns
     -------
@@ -88,28 +97,47 @@ def fit(
         readings = checked_readings(kept)
         at = checked_reference(reference)
         groups = temperature_groups(readings.T, nearness)
-        curve, solved = _chosen(readings, model, at, order, int(groups.max()) + 1)
-        return _reported(kept, curve, solved, at, common, groups, nearness)
+        distinct = int(groups.max()) + 1
+        curve = _curve(readings.T, model, at, _order(model, order, kept, nearness))
+        solved = _solved(readings, curve, at, distinct)
+        off = (readings.R - solved.fitted) / solved.fitted
+        moved = hysteresis(readings.T, off, curve.count, nearness, devices)
+        both = None
+        if moved is not None:
+            both = BothWays(sides=sides(readings.T, nearness), differ=ways_differ or moved.significant)
+        tests = lack_of_fit(solved, groups, both), moved
+        return _reported(kept, curve, solved, at, common, tests)
     except InputError as error:
         where = device_place(sweep)
         raise InputError(problem.inside(where) for problem in error.problems) from None
 
 
-def _chosen(
-    readings: Readings, model: ModelName | Formula, reference: float, order: int | None, distinct: int
-) -> tuple[Curve, Solved]:
-    """Return the curve and its answer; a polynomial of free order loses a quadratic term that is no help."""
-    if order is not None and (model != "polynomial" or not 1 <= order <= HIGHEST_ORDER):
+def highest_order(sweep: Sweep, nearness: float = NEARNESS) -> int:
+    """Return the highest order of a polynomial that the readings of a device are enough for; 0 for none.
+
+    One temperature more than the order; without u(R) also one reading more than coefficients, which shows the
+    scatter.
+
+    Parameters
+    ----------
+    sweep : Sweep
+        Readings of one device, at least one.
+    nearness : float, optional
+        Readings within this [K] are repeats of one temperature.
+    """
+    distinct = int(temperature_groups(sweep.T, nearness).max()) + 1
+    spare = len(sweep.T) - (1 if sweep.u_R is not None else 2)
+    return max(0, min(distinct - 1, spare))
+
+
+def _order(model: ModelName | Formula, order: int | None, sweep: Sweep, nearness: float) -> int:
+    """Return the order of a polynomial: as asked, else the quadratic where there are readings for it."""
+    if order is None:
+        return min(FREE_ORDER, max(1, highest_order(sweep, nearness)))
+    if model != "polynomial" or not 1 <= order <= HIGHEST_ORDER:
         expected = f"1 to {HIGHEST_ORDER} for a polynomial, and none for another law"
         raise InputError(Problem(where="order", found=f"{order}", expected=expected))
-    if model != "polynomial" or order is not None:
-        return _solved(readings, _curve(readings.T, model, reference, order or 1), reference, distinct)
-    # without u(R) one reading more than coefficients is needed, to show the scatter
-    if distinct >= 3 and (readings.stated or len(readings.T) >= 4):
-        quadratic = _solved(readings, PolynomialCurve(reference, 2, readings.T), reference, distinct)
-        if last_term(quadratic[1], readings.stated) <= RISK:
-            return quadratic
-    return _solved(readings, PolynomialCurve(reference, 1, readings.T), reference, distinct)
+    return order
 
 
 def _curve(T: FloatArray, model: ModelName | Formula, reference: float, order: int) -> Curve:
@@ -129,7 +157,7 @@ def _curve(T: FloatArray, model: ModelName | Formula, reference: float, order: i
     raise InputError(Problem(where="model", found=shown(model), expected=expected, todo=todo))
 
 
-def _solved(readings: Readings, curve: Curve, reference: float, distinct: int) -> tuple[Curve, Solved]:
+def _solved(readings: Readings, curve: Curve, reference: float, distinct: int) -> Solved:
     check_temperatures(readings.T, reference, curve.count, distinct)
     if not readings.stated and len(readings.T) <= curve.count:
         raise InputError(
@@ -140,7 +168,7 @@ def _solved(readings: Readings, curve: Curve, reference: float, distinct: int) -
                 todo="State u(R), measure more, or fit a law with fewer coefficients.",
             )
         )
-    return curve, solve(curve, readings)
+    return solve(curve, readings)
 
 
 def _reported(
@@ -149,8 +177,7 @@ def _reported(
     solved: Solved,
     reference: float,
     common: CommonErrors,
-    groups: IntArray,
-    nearness: float,
+    tests: tuple[LackOfFit | None, Hysteresis | None],
 ) -> Fit:
     stated, law = sweep.u_R is not None, curve.law(solved.theta)
     low, high = float(sweep.T.min()), float(sweep.T.max())
@@ -173,9 +200,9 @@ def _reported(
         low=low,
         high=high,
         flags=flags(solved, sweep.line, stated),
-        lack_of_fit=lack_of_fit(solved, groups),
+        lack_of_fit=tests[0],
         last_term=last_term(solved, stated) if curve.last else None,
-        hysteresis=hysteresis(sweep.T, residuals, curve.count, nearness),
+        hysteresis=tests[1],
     )
 
 

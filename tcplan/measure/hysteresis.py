@@ -7,13 +7,13 @@ from itertools import pairwise
 
 import numpy as np
 
-from tcplan.arrays import BoolArray, FloatArray
+from tcplan.arrays import BoolArray, FloatArray, IntArray
 from tcplan.measure.fit_repeats import group_sums, temperature_groups
 from tcplan.measure.model import Direction, Hysteresis
 
 _TURN = 0.1  # of the span: a smaller way back is jitter of the chamber
 _FEWEST = 3  # readings of a way
-_CONFIDENCE = 0.95
+_RISK = 0.05
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
@@ -47,6 +47,28 @@ def ways(T: FloatArray) -> tuple[Way, ...]:
     return tuple(way for way in found if way.end - way.first >= _FEWEST)
 
 
+def sides(T: FloatArray, nearness: float) -> IntArray:
+    """Return the side of each reading: 1 on a way up, -1 on a way down, 0 on none.
+
+    Readings at the turn that ends a way up are 2, and -2 where it ends a way down: they may be of either.
+
+    Parameters
+    ----------
+    T : array, shape (reading,)
+        Temperatures [K], in the order of the file.
+    nearness : float
+        Readings within this [K] of a turn are at it.
+    """
+    found, along = np.zeros(len(T), dtype=np.intp), ways(T)
+    for way in along:
+        found[way.first : way.end] = 1 if way.direction == "up" else -1
+    for way, after in pairwise(along):
+        if way.end == after.first:
+            at = np.abs(T[way.first : after.end] - T[way.end - 1]) <= nearness
+            found[way.first : after.end][at] = 2 if way.direction == "up" else -2
+    return found
+
+
 def _turns(T: list[float], back: float) -> tuple[list[int], bool]:
     """Return the positions of the turns, and whether the first way is up."""
     turns: list[int] = []
@@ -68,12 +90,15 @@ def _turns(T: list[float], back: float) -> tuple[list[int], bool]:
     return turns, (direction > 0) == (len(turns) % 2 == 0)
 
 
-def hysteresis(T: FloatArray, residuals: FloatArray, parameters: int, nearness: float) -> Hysteresis | None:
+def hysteresis(
+    T: FloatArray, residuals: FloatArray, parameters: int, nearness: float, devices: int = 1
+) -> Hysteresis | None:
     """Return the difference of the ways, down less up, or None without both at common temperatures.
 
     The residuals of the way up are interpolated at the temperatures of the way down, so that the bend of the
-    law does not count. The uncertainty of the mean follows from the scatter about the mean of each way; the
-    interval is Student's t.
+    law does not count. The uncertainty of the mean follows from the scatter about the mean of each way. It is
+    significant by Student's t at 5 % over the number of devices (Bonferroni), so that of 20 campaigns without
+    hysteresis one shows it in any device.
 
     Parameters
     ----------
@@ -85,6 +110,8 @@ def hysteresis(T: FloatArray, residuals: FloatArray, parameters: int, nearness: 
         How many the fit has: the scatter lost as many degrees of freedom to it.
     nearness : float
         Readings within this [K] are of one temperature.
+    devices : int, optional
+        How many are looked at together.
     """
     up, down = _collected(T, residuals, nearness)
     if up is None or down is None:
@@ -98,7 +125,7 @@ def hysteresis(T: FloatArray, residuals: FloatArray, parameters: int, nearness: 
         return None
     at = down.T[inside]
     difference = down.mean[inside] - np.interp(at, up.T, up.mean)
-    return _summary(at, difference, _noise_of_mean(up, down, inside, dof), dof)
+    return _summary(at, difference, _noise_of_mean(up, down, inside, dof), dof, devices)
 
 
 @dataclass(frozen=True, slots=True, kw_only=True, eq=False)
@@ -147,7 +174,7 @@ def _noise_of_mean(up: _Side, down: _Side, inside: BoolArray, dof: int) -> float
     return float(np.sqrt(variance * factor))
 
 
-def _summary(at: FloatArray, difference: FloatArray, u: float, dof: int) -> Hysteresis:
+def _summary(at: FloatArray, difference: FloatArray, u: float, dof: int, devices: int) -> Hysteresis:
     from scipy.special import stdtrit
 
     mean, most = float(difference.mean()), int(np.argmax(np.abs(difference)))
@@ -156,5 +183,5 @@ def _summary(at: FloatArray, difference: FloatArray, u: float, dof: int) -> Hyst
         uncertainty=u,
         most=float(difference[most]),
         at=float(at[most]),
-        significant=abs(mean) > float(stdtrit(dof, 0.5 + _CONFIDENCE / 2.0)) * u,
+        significant=abs(mean) > -float(stdtrit(dof, _RISK / (2.0 * devices))) * u,
     )

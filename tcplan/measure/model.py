@@ -137,7 +137,7 @@ class LackOfFit:
 class Hysteresis:
     """How far the way down lies above the way up, relative to R: mean, standard uncertainty, the most.
 
-    ``significant`` is whether the mean is further from 0 than its 95 % interval.
+    ``significant`` is whether the mean differs from 0 at 5 % over all devices together.
     """
 
     mean: float

@@ -28,7 +28,7 @@ class SweepRequest:
     label : str, optional
     model : ModelName or Formula
     order : int, optional
-        Of a polynomial; None takes that of the devices which needs the higher one.
+        Of a polynomial; None takes 2, or 1 where no device has readings for it.
     reference : float
         Of the law [K].
     size : Size, optional

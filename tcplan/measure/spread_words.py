@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from decimal import Decimal
 from textwrap import wrap
 
@@ -51,8 +52,8 @@ def in_unit(value: float, key: str) -> str:
     return f"{number(value * scale)} {unit}"
 
 
-def account(found: Population, meaning: Meaning) -> list[str]:
-    """Return comment lines that say how many devices there are, and what is known of each component."""
+def account(found: Population, meaning: Meaning, remarks: Sequence[str] = ()) -> list[str]:
+    """Return comment lines: how many devices there are, what is known of each component, remarks."""
     each = ", ".join(str(count) for count in found.counts[:20]) + (", .." if found.lots > 20 else "")
     lots = f" of {counted(found.lots, 'lot')}" + (f" ({each})" if found.lots > 1 else "")
     over = f"every one read from {format_celsius(found.low)} to {format_celsius(found.high)}"
@@ -63,8 +64,14 @@ def account(found: Population, meaning: Meaning) -> list[str]:
             f"Standard deviations without point noise, each with its {100 * found.confidence:g} % interval:"
         )
     lines += [_scatter_line(one) for one in found.scatters]
-    told = (wrap(line, WIDTH, subsequent_indent="  ") for line in (*lines, *found.notes))
+    lines += [*found.notes, *map(_printable, remarks)]
+    told = (wrap(line, WIDTH, subsequent_indent="  ") for line in lines)
     return [f"# {line}" for lines in told for line in lines]
+
+
+def _printable(text: str) -> str:
+    """Return text that a comment may hold: names of devices come from files."""
+    return "".join(mark if mark.isprintable() else " " for mark in text)
 
 
 def _meaning_of(found: Population, meaning: Meaning) -> str:

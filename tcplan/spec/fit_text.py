@@ -7,6 +7,7 @@ from __future__ import annotations
 
 import math
 from collections.abc import Iterator, Sequence
+from decimal import Decimal
 
 from tcplan.measure.fit_checks import RISK
 from tcplan.measure.fitted import FittedMaterial, combined, scatter_of
@@ -19,6 +20,7 @@ from tcplan.units import format_celsius, format_ohms
 MOST_LINES = 8  # that are told of each kind
 MOST_DEVICES = 4  # that are named
 LEAST_TOLD = 1e-3  # of a probability
+SMALLEST_PLAIN = 1e-4  # a number below is written with an exponent
 SCALES = {
     "tc1": (1e6, "ppm/K"),
     "tc2": (1e6, "ppm/K^2"),
@@ -53,7 +55,7 @@ def facts(one: FittedMaterial, refused: int) -> tuple[Fact, ...]:
     found: Sequence[Fact] = (
         ("Law", tuple(_law(one))),
         ("Spread", tuple(_spread(one.found))),
-        ("Readings", tuple(_quality(one))),
+        ("Readings", tuple(quality(one))),
         ("Flags", tuple(_flags(one))),
         ("Left out", tuple(_left_out(one))),
         ("Refused", tuple(_refused(one, refused))),
@@ -99,7 +101,7 @@ def _quadratic(one: FittedMaterial) -> Iterator[str]:
         together = ", all devices together" if len(one.fits) > 1 else ""
         p = f"(p {_probability(one.quadratic)}{together})"
         if one.quadratic > RISK:
-            yield f"The quadratic term is not significant {p}: a line was fitted."
+            yield f"The quadratic term is not significant {p}: it is kept; --order 1 leaves it out."
         else:
             yield f"The quadratic term is significant {p}."
     elif one.request.model == "polynomial" and one.request.order is None:
@@ -111,10 +113,17 @@ def _known(value: float, uncertainty: float) -> str:
     if not 0.0 < uncertainty < math.inf:
         return f"{numbers.number(value, 6)} +- {numbers.number(uncertainty, 2)}"
     place = math.floor(math.log10(uncertainty)) - 1
+    if max(abs(value), uncertainty) < SMALLEST_PLAIN:
+        return f"{_exponent(value, place)} +- {_exponent(uncertainty, place)}"
     if not -12 <= place <= 0:
         digits = max(1, math.floor(math.log10(abs(value) or uncertainty)) - place + 1)
         return f"{numbers.number(value, min(digits, 15))} +- {numbers.number(uncertainty, 2)}"
     return f"{round(value, -place) + 0.0:.{-place}f} +- {uncertainty:.{-place}f}"  # no minus zero
+
+
+def _exponent(value: float, place: int) -> str:
+    """Return a small number to a decimal place, with an exponent."""
+    return format(Decimal(repr(float(value))).quantize(Decimal(1).scaleb(place)), "e")
 
 
 def _probability(p: float) -> str:
@@ -157,12 +166,28 @@ def _scatter(scatter: Scatter) -> str:
 # --- the readings ---------------------------------------------------------------------------------------
 
 
-def _quality(one: FittedMaterial) -> Iterator[str]:
+def quality(one: FittedMaterial) -> Iterator[str]:
     """Yield how the readings lie about their laws."""
     yield from _scatter_of_readings(one)
+    yield from _lack_of_fit(one)
+    yield from _hysteresis(one)
+
+
+def _lack_of_fit(one: FittedMaterial) -> Iterator[str]:
+    """Yield what repeats say of the law; where hysteresis hides it, that they say nothing."""
+    moved = one.hysteresis is not None and one.hysteresis <= RISK
+    untold = [
+        fit.lack_of_fit is None and fit.hysteresis is not None and (moved or fit.hysteresis.significant)
+        for fit in one.fits
+    ]
     tests = [fit.lack_of_fit.probability for fit in one.fits if fit.lack_of_fit is not None]
-    if tests:
-        p = combined(tests)
+    p = combined(tests) if tests else 1.0
+    if any(untold) and p >= RISK:
+        yield (
+            f"Repeats cannot tell a lack of fit {_where(one, untold)}: the ways differ, and no way has "
+            "repeats of its own."
+        )
+    elif tests:
         together = ", all devices together" if len(tests) > 1 else ""
         found = f"(p {_probability(p)}{together})"
         name = one.sweep.devices[tests.index(min(tests))] if len(tests) == len(one.fits) > 1 else ""
@@ -172,12 +197,19 @@ def _quality(one: FittedMaterial) -> Iterator[str]:
             if p < RISK
             else f"Repeats show no lack of fit {found}."
         )
+
+
+def _hysteresis(one: FittedMaterial) -> Iterator[str]:
     moved = [fit.hysteresis for fit in one.fits if fit.hysteresis is not None]
     if moved:
-        significant = [fit.hysteresis is not None and fit.hysteresis.significant for fit in one.fits]
+        alone = [fit.hysteresis is not None and fit.hysteresis.significant for fit in one.fits]
+        together = ", all devices together" if len(moved) > 1 else ""
         most = max((h.most for h in moved), key=abs)
         mean = sum(h.mean for h in moved) / len(moved)
-        told = f"significant {_where(one, significant)}" if any(significant) else "not significant"
+        p = 1.0 if one.hysteresis is None else one.hysteresis
+        told = f"{'' if p <= RISK else 'not '}significant (p {_probability(p)}{together})"
+        if together and any(alone):
+            told += f"; by itself {_where(one, alone)}"
         yield f"Hysteresis, down less up: {_ppm(mean)} in the mean, {_ppm(most)} at most; {told}."
 
 

@@ -17,6 +17,7 @@ from tcplan.measure.request import FitRequest
 from tcplan.measure.tracking import MeasuredTracking, tracking_of
 from tcplan.output import check_folder, write_files
 from tcplan.spec.fit_data import fit_data
+from tcplan.spec.fit_text import quality
 
 FIT_FILES = ("materials.toml", "fit.json")
 FIGURES = ("fit", "residuals", "devices")
@@ -126,6 +127,7 @@ def materials_text(fits: Fitted) -> str:
                 label=asked.label,
                 size=asked.size,
                 meaning=meaning,
+                remarks=(f"Readings: {' '.join(quality(one))}", *one.notes),
             )
         )
     for one in fits.materials:

@@ -139,7 +139,7 @@ WRONG = {
     "both sizes": ((*SOURCE, "--squares", "5", "--length", "1 m"), "--length: found squares and a length"),
     "a length": ((*SOURCE, "--length", "1 ohm"), "--length: found"),
     "lines": ((*SOURCE, "--exclude", "2;3"), "--exclude: found '2;3'"),
-    "a range of lines": ((*SOURCE, "--exclude", "2-3"), "--exclude: found"),
+    "a range of lines": ((*SOURCE, "--exclude", "2-3"), "such as 12,40; ranges are not known"),
     "no lines": ((*SOURCE, "--exclude", ""), "--exclude: found"),
     "a line without a reading": ((*SOURCE, "--exclude", "1,7"), "film.csv: found line 1 to exclude"),
     "a start": ((*SOURCE, "--law", "B*T", "--start", "B"), "--start: found 'B'"),

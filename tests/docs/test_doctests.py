@@ -19,7 +19,7 @@ WITH_EXAMPLES = (
     "material.polynomial.Polynomial",
     "network.network_text",
     "network.shares",
-    "network_text.parse_network",
+    "network_reading.parse_network",
     "preferred.nearest_preferred",
     "ranges.named_range",
     "ranges.temperature_range",

@@ -114,7 +114,8 @@ def test_hysteresis_and_bad_rows_are_told(run):
     # the loop is a parabola of 120 ppm at its height: its mean is 2/3 of that, less at 9 temperatures
     mean = sum(one["mean"] for one in moved) / len(moved)
     assert mean * 1e6 == pytest.approx(2.0 / 3.0 * 120.0, rel=0.2)
-    assert sum(one["significant"] for one in moved) > len(moved) // 2
+    # 80 ppm are 3 times their uncertainty in one device: few pass a limit for 24 devices, all together do
+    assert sum(one["significant"] for one in moved) < len(moved) // 2
     assert [row["line"] for row in data["amber_film"]["refused"]] == [43, 134]
     assert data["moss_film"]["excluded_lines"] == [99]
 

@@ -9,7 +9,7 @@ from scipy import stats
 
 from tcplan.measure.fit import fit
 from tcplan.measure.fit_repeats import temperature_groups
-from tcplan.measure.hysteresis import Way, ways
+from tcplan.measure.hysteresis import Way, sides, ways
 
 ZERO = 273.15
 
@@ -20,23 +20,25 @@ def hat(T, order):
     return X @ np.linalg.inv(X.T @ X) @ X.T
 
 
-def test_the_order_is_chosen_by_the_data():
-    T, R = noisy(21, tc2=2e-6)
-    assert fit(sweep_of(T, R), "polynomial", ROOM).names == ("R", "tc1", "tc2")
+def test_without_an_order_a_quadratic_is_fitted_wherever_it_can_be():
     T, R = noisy(21, tc2=0.0)
-    assert fit(sweep_of(T, R), "polynomial", ROOM).names == ("R", "tc1")
+    found = fit(sweep_of(T, R), "polynomial", ROOM)
+    assert found == fit(sweep_of(T, R), "polynomial", ROOM, order=2)
+    assert found.last_term > 0.05
     # only as many coefficients as the readings can give, and one reading more where no u(R) is stated
     few, ohms = T[[0, 10, 20]], quadratic(T[[0, 10, 20]], tc2=2e-6)
     assert fit(sweep_of(few, ohms), "polynomial", ROOM).names == ("R", "tc1")
     assert fit(sweep_of(few, ohms, u_R=1.0), "polynomial", ROOM).names == ("R", "tc1", "tc2")
+    # a twice-read temperature makes no third one
+    assert fit(sweep_of(few[[0, 0, 2, 2]], ohms[[0, 0, 2, 2]], u_R=1.0), "polynomial", ROOM).dof == 2
 
 
-def test_a_needless_quadratic_term_is_kept_as_often_as_the_risk_says():
+def test_a_quadratic_term_that_is_not_there_is_called_significant_as_often_as_the_risk_says():
     # 5 % of straight devices by construction; binomial 3 sigma of 600 trials is 2.7 %
     T = np.linspace(-40.0, 125.0, 9) + ZERO
     noise = generator(22).normal(0.0, 2.0, (600, 9))
-    kept = [fit(sweep_of(T, quadratic(T, tc2=0.0) + e), "polynomial", ROOM).names[-1] == "tc2" for e in noise]
-    assert np.mean(kept) == pytest.approx(0.05, abs=0.027)
+    terms = [fit(sweep_of(T, quadratic(T, tc2=0.0) + e), "polynomial", ROOM).last_term for e in noise]
+    assert np.mean(np.array(terms) <= 0.05) == pytest.approx(0.05, abs=0.027)
 
 
 def test_the_last_term_is_tested_by_students_t():
@@ -191,3 +193,76 @@ def test_hysteresis_needs_both_ways():
     T, R = noisy(36)
     order = generator(37).permutation(len(T))
     assert fit(sweep_of(T[order], R[order]), "polynomial", ROOM).hysteresis is None
+
+
+def both_ways(seed, *, readings=1, lift=0.0, bend=0.0, tc3=0.0, noise=1.0):
+    """Return a sweep up and down that turns once: ``lift`` is alike, ``bend`` a loop, 0 at its ends."""
+    up = np.repeat(np.linspace(-40.0, 125.0, 8), readings)
+    T = np.concatenate([up, up[::-1][readings:]]) + ZERO
+    part = (T - T.min()) / np.ptp(T)
+    size = np.where(np.arange(len(T)) >= len(up), 50.0, -50.0)
+    R = quadratic(T, tc3=tc3) + size * (lift + bend * 4.0 * part * (1.0 - part))
+    return T, R + generator(seed).normal(0.0, noise, len(T))
+
+
+def test_lack_of_fit_without_the_way_is_that_of_a_model_with_a_way():
+    # twin: nested models by numpy.linalg.lstsq (Draper and Smith: extra sum of squares); one reading a way
+    T, R = both_ways(50, noise=2.0)
+    found = fit(sweep_of(T, R), "polynomial", ROOM, order=2)
+    assert not found.hysteresis.significant
+    x, way = (T - ROOM) / 100.0, np.sign(7.0 - np.arange(len(T)))
+
+    def left(*columns):
+        X = np.column_stack(columns)
+        beta = np.linalg.lstsq(X, R, rcond=None)[0]
+        return np.sum((R - X @ beta) ** 2), len(R) - np.linalg.matrix_rank(X)
+
+    law, law_dof = left(np.ones_like(x), x, x**2, way)
+    full, full_dof = left(*(np.where(np.isclose(T, t), 1.0, 0.0) for t in T[:8]), way)
+    f = (law - full) / (law_dof - full_dof) / (full / full_dof)
+    assert (found.lack_of_fit.lack_dof, found.lack_of_fit.pure_dof) == (law_dof - full_dof, full_dof)
+    assert found.lack_of_fit.f == pytest.approx(f, rel=1e-6)
+
+
+@pytest.mark.parametrize("move", [{"lift": 0.2}, {"bend": 0.2}, {}], ids=["alike", "a loop", "none"])
+def test_hysteresis_makes_no_lack_of_fit(move):
+    # 5 % by construction, whether the ways differ by 20 times the noise or not; 3 sigma of 400 is 3.3 %
+    sweeps = [both_ways(seed, readings=2, **move) for seed in range(400)]
+    found = [fit(sweep_of(T, R), "polynomial", ROOM, order=2).lack_of_fit.probability for T, R in sweeps]
+    assert np.mean(np.array(found) < 0.05) == pytest.approx(0.05, abs=0.033)
+
+
+@pytest.mark.parametrize("move", [{"lift": 0.2}, {"bend": 0.2}], ids=["alike", "a loop"])
+def test_hysteresis_hides_no_lack_of_fit(move):
+    # what a quadratic leaves of a cubic is tc3 h^3/4, h half the span (Chebyshev): 11 times the noise
+    T, R = both_ways(51, readings=2, tc3=8e-9, **move)
+    found = fit(sweep_of(T, R), "polynomial", ROOM, order=2)
+    assert found.hysteresis.significant
+    assert found.lack_of_fit.pure_dof == 14
+    assert found.lack_of_fit.probability < 1e-3
+
+
+def test_repeats_of_one_reading_a_way_say_nothing_under_hysteresis():
+    T, R = both_ways(52, bend=0.2)
+    found = fit(sweep_of(T, R), "polynomial", ROOM, order=2)
+    assert found.hysteresis.significant
+    assert found.lack_of_fit is None
+    # nor when other devices show that the ways differ
+    T, R = both_ways(52)
+    assert fit(sweep_of(T, R), "polynomial", ROOM).lack_of_fit.pure_dof == 6
+    assert fit(sweep_of(T, R), "polynomial", ROOM, ways_differ=True).lack_of_fit is None
+
+
+def test_sides_leave_the_turns_out():
+    T = np.array([0.0, 10.0, 20.0, 20.05, 10.0, 0.0, -10.0, 0.0, 10.0, 20.0])
+    assert sides(T, 0.1).tolist() == [1, 1, 2, 2, -1, -1, -2, 1, 1, 1]
+
+
+def test_hysteresis_of_many_devices_is_judged_over_their_number():
+    # twin: a limit of Student's t over the number of devices (Bonferroni), tables of scipy.stats
+    T, R = loop(34, 0.8e-4)
+    alone, many = (fit(sweep_of(T, R), "polynomial", ROOM, order=2, devices=n).hysteresis for n in (1, 200))
+    size, dof = abs(alone.mean) / alone.uncertainty, 2 * (24 - 1) - 2
+    assert stats.t.ppf(1 - 0.05 / 2, dof) < size < stats.t.ppf(1 - 0.05 / 400, dof)
+    assert (alone.significant, many.significant) == (True, False)
+    assert (alone.mean, alone.uncertainty) == (many.mean, many.uncertainty)

@@ -23,6 +23,8 @@ def told(one, refused=0):
         (-0.00001, 0.3, "0.00 +- 0.30"),
         (1.5, 0.0, "1.5 +- 0"),
         (1.123456789e-15, 1.2e-17, "1.123e-15 +- 1.2e-17"),
+        (2.58412e-9, 1.24e-10, "2.58e-9 +- 1.2e-10"),
+        (-7.98e-5, 3.0e-7, "-7.980e-5 +- 3.0e-7"),
     ],
 )
 def test_values_end_at_the_second_digit_of_their_uncertainty(value, uncertainty, text):
@@ -78,7 +80,8 @@ def test_probabilities_are_never_zero():
 
 
 def test_a_line_is_said_to_be_one():
-    assert "not significant (p 0." in told(fitted_text(sweep_text(1, 9, tc2=0.0)))["Law"]
+    straight = told(fitted_text(sweep_text(1, 9, tc2=0.0)))["Law"]
+    assert re.search(r"not significant \(p 0\.\d+, all .*\): it is kept; --order 1 leaves it out\.", straight)
     few = told(fitted_text(sweep_text(1, 1, (0.0, 0.0, 50.0))))["Law"]
     assert "A line was fitted: there are too few readings for a quadratic term." in few
     assert "quadratic" not in told(fitted_text(sweep_text(1, 9), order=2))["Law"]
@@ -109,6 +112,26 @@ def test_lack_of_fit():
     )
 
 
+def moved_down(text, readings, share):
+    """Return a sweep whose readings after the first half of each device are lower by a share."""
+    head, *lines = text.strip().split("\n")
+    moved = [head]
+    for n, line in enumerate(lines):
+        t, R, rest = line.split(",", 2)
+        moved.append(f"{t},{float(R) * (1 - share * (2 * (n % readings) >= readings))!r},{rest}")
+    return "\n".join(moved) + "\n"
+
+
+def test_repeats_that_hysteresis_spoils_tell_nothing():
+    once = (*NINE, *NINE[::-1])
+    text = told(fitted_text(moved_down(sweep_text(1, 3, once, noise=5e-6), 18, 300e-6)))["Readings"]
+    assert "Repeats cannot tell a lack of fit in every device: the ways differ" in text
+    assert "no lack of fit" not in text
+    twice = tuple(sorted((*NINE, *NINE)))
+    text = told(fitted_text(moved_down(sweep_text(1, 3, twice + twice[::-1], noise=5e-6), 36, 300e-6)))
+    assert "Repeats show no lack of fit" in text["Readings"]
+
+
 def test_hysteresis_is_told_with_its_sign_and_where():
     up_down = (*NINE, *NINE[::-1])
     quiet = told(fitted_text(sweep_text(1, 2, up_down)))["Readings"]
@@ -119,9 +142,8 @@ def test_hysteresis_is_told_with_its_sign_and_where():
         t, R, rest = line.split(",", 2)
         moved.append(f"{t},{float(R) * (1 - 300e-6 * (n % 18 > 8))!r},{rest}")
     loud = told(fitted_text("\n".join(moved) + "\n"))["Readings"]
-    assert re.search(
-        r"down less up: -(29|30)\d(\.\d)? ppm in the mean.*; significant in every device\.", loud
-    )
+    assert re.search(r"down less up: -(29|30)\d(\.\d)? ppm in the mean", loud)
+    assert loud.endswith("significant (p below 0.001, all devices together); by itself in every device.")
 
 
 def test_outliers_are_listed_farthest_first_and_not_all():

@@ -12,7 +12,7 @@ from scipy.optimize import brentq
 
 from tcplan.errors import InputError, OutputError
 from tcplan.material.files import read_materials
-from tcplan.measure.block import Size
+from tcplan.measure.block import Size, material_block
 from tcplan.measure.request import FitRequest, SpreadRules, SweepRequest
 from tcplan.units import parse_quantity
 from tcplan.workflow.fitting import check_fit_out, fit_json, fit_request, materials_text, write_fit
@@ -206,6 +206,17 @@ def test_all_files_that_cannot_be_read_are_told(tmp_path):
         fit_request(request)
     told = " ".join(str(problem) for problem in caught.value.problems)
     assert all(f"{name}.csv" in told for name in ("red", "blue", "green"))
+
+
+def test_the_quality_of_the_readings_is_a_comment_of_the_material(tmp_path):
+    twice = sorted((*NINE, *NINE))
+    text = materials_text(fit_request(request_of(tmp_path, red=sweep_text(1, 3, twice, stated=True))))
+    comment = " ".join(line[1:].strip() for line in text.splitlines() if line.startswith("#"))
+    assert "Readings: They are known to 50 ppm as stated (1 sigma), and scatter by " in comment
+    assert "Repeats show no lack of fit (p " in comment
+    found = fit_request(request_of(tmp_path, red=sweep_text(1, 2))).materials[0].found
+    block = material_block("red", found, source="x", remarks=["odd\nb = 1\x07 \u2028c = 2"])
+    assert list(tomllib.loads(block)) == ["material"]
 
 
 def test_files_are_written_all_or_none(tmp_path):
