@@ -53,8 +53,8 @@ def command(
     """Find the mix of materials for BRIEF (a TOML file; - is stdin), check it and write the result.
 
     Writes plan.json, mix.csv, the spec sheet (html, md, json) and the figures network, drift,
-    slope-curvature and, where spreads are stated, spread (SVG and PNG), all of them or none. The options and the verdict go to stdout,
-    everything else to stderr.
+    slope-curvature and, where spreads are stated, spread (SVG and PNG), all of them or none. The
+    options and the verdict go to stdout, everything else to stderr.
 
     A brief with [ratio] is checked in its place: that writes ratio.json and the figure drift.
 
