@@ -25,6 +25,8 @@ from tcplan.measure.explained import values_of
 from tcplan.network import Network, legs, resistance, used_materials
 
 MOST_CHANGE = 4.0  # of a leg, as a factor either way
+NEAR_MOST = 1.1  # a factor this near to the largest is told like one that stopped there
+MOST_LEFT_OUT = 0.5  # of the devices; the mean of fewer than the rest is not that of the file
 NO_WORSE = 1e-2  # of the least figure: what the least change may give away
 MOST_STEPS = 200
 
@@ -42,6 +44,18 @@ def why_not_centred(expected: Expected) -> str:
     return ""
 
 
+def why_not_trusted(explanations: Sequence[Explanation]) -> str:
+    """Return why what was measured is no ground for new values; empty when it is."""
+    doubted = sum(not one.trusted for one in explanations)
+    if not doubted or doubted < MOST_LEFT_OUT * len(explanations):
+        return ""
+    whose = "The device is" if len(explanations) == 1 else f"{doubted} of {len(explanations)} devices are"
+    return (
+        f"{whose} not explained by these materials (a probability under 0.1 %): values centred on deviations "
+        "that are not there would be wrong. Check the stated spreads, the unit of R and the network."
+    )
+
+
 def centred(
     expected: Expected, composite: Composite, names: Sequence[str], explanations: Sequence[Explanation]
 ) -> Centring:
@@ -56,14 +70,14 @@ def centred(
     names : sequence of str
         Of the devices.
     explanations : sequence of Explanation
-        Of each device; the mean of their deviations is centred.
+        Of each device; the mean of the deviations of those that are trusted is centred.
 
     Returns
     -------
     Centring
         R at the reference becomes the planned value, or, where its level says nothing, stays.
     """
-    mean = values_of(explanations)
+    mean = values_of([one for one in explanations if one.trusted])
     task = task_of(expected, composite, mean)
     x = _least_change(task)
     factors = task.factors(x)
@@ -71,6 +85,7 @@ def centred(
     devices = tuple(
         _device(expected, composite, network, name, one)
         for name, one in zip(names, explanations, strict=True)
+        if one.trusted
     )
     return Centring(
         factors=factors,
@@ -78,7 +93,8 @@ def centred(
         value=task.ohms * exp(task.level(x)),
         level="planned" if expected.level_known else "kept",
         devices=devices,
-        limited=bool(np.max(np.abs(x)) >= log(MOST_CHANGE) * (1.0 - 1e-6)),
+        limited=bool(np.max(np.abs(x)) >= log(MOST_CHANGE / NEAR_MOST)),
+        left_out=tuple(n for n, one in zip(names, explanations, strict=True) if not one.trusted),
     )
 
 

@@ -3,6 +3,7 @@
 from __future__ import annotations
 
 import math
+from collections.abc import Sequence
 from dataclasses import dataclass
 
 import numpy as np
@@ -10,7 +11,7 @@ import numpy as np
 from tcplan.arrays import FloatArray
 from tcplan.goal import Piece
 from tcplan.measure.anchor import Anchor, anchor_of
-from tcplan.measure.centred import centred, why_not_centred
+from tcplan.measure.centred import centred, why_not_centred, why_not_trusted
 from tcplan.measure.common import check_common, common_changes
 from tcplan.measure.compare_readings import EDGE, readings_by_device
 from tcplan.measure.comparison import (
@@ -23,6 +24,7 @@ from tcplan.measure.comparison import (
     Point,
 )
 from tcplan.measure.composite import Composite, composite_of
+from tcplan.measure.enough import with_enough
 from tcplan.measure.explained import Measured, explain
 from tcplan.measure.fit_repeats import NEARNESS
 from tcplan.measure.model import CommonErrors, Sweep
@@ -41,7 +43,8 @@ def compare(sweep: Sweep, expected: Expected, common: CommonErrors = _NO_COMMON_
     Parameters
     ----------
     sweep : Sweep
-        Readings of one or several devices; those outside of the range of the plan are left out and counted.
+        Readings of one or several devices; those outside of the range of the plan are left out and counted,
+        devices with too few of them are left out and named.
     expected : Expected
         What the plan says.
     common : CommonErrors
@@ -54,19 +57,21 @@ def compare(sweep: Sweep, expected: Expected, common: CommonErrors = _NO_COMMON_
     Raises
     ------
     InputError
-        When a device has no readings in the range, readings at one temperature, or is no such resistor.
+        When no device has readings enough in the range, or one is no such resistor.
     """
     check_common(common)
     composite = composite_of(
         expected.network, expected.materials, expected.spreads, expected.need.reference, expected.process
     )
-    taken = list(readings_by_device(sweep, expected))
+    enough, skipped = with_enough(sweep, expected)
+    taken = list(readings_by_device(enough, expected))
     curves = predicted_curves(expected, composite)
     devices = tuple(
-        _compared(own, left_out, expected, composite, common, np.array(curves.T)) for own, left_out in taken
+        _compared(own, left_out, expected, composite, common, (np.array(curves.T), *edges))
+        for (own, left_out), edges in zip(taken, _edges([own for own, _ in taken], expected), strict=True)
     )
-    why_not = why_not_centred(expected)
     explanations = [one.explanation for one in devices]
+    why_not = why_not_centred(expected) or why_not_trusted(explanations)
     names = [one.device for one in devices]
     return Comparison(
         name=expected.name,
@@ -80,7 +85,15 @@ def compare(sweep: Sweep, expected: Expected, common: CommonErrors = _NO_COMMON_
         level_known=expected.level_known,
         why_not=why_not,
         unspread=unspread(expected),
+        skipped=skipped,
     )
+
+
+def _edges(sweeps: Sequence[Sweep], expected: Expected) -> list[tuple[FloatArray, FloatArray]]:
+    """Return the band at the readings of each device: found once for all, as it is slow to find."""
+    lowest, highest = band_at(expected.band, np.concatenate([own.T for own in sweeps]), expected)
+    ends = np.cumsum([len(own.T) for own in sweeps])[:-1]
+    return list(zip(np.split(lowest, ends), np.split(highest, ends), strict=True))
 
 
 # --- one device -----------------------------------------------------------------------------------------
@@ -101,15 +114,17 @@ def _compared(
     expected: Expected,
     composite: Composite,
     common: CommonErrors,
-    T: FloatArray,
+    predicted: tuple[FloatArray, FloatArray, FloatArray],
 ) -> Compared:
+    """Return one device; ``predicted`` are T of the curves, and the band at its readings."""
+    T, *edges = predicted
     nominal = response_of(composite, composite.nominal(), sweep.T)
     scale = float(np.median(sweep.R / nominal.ohms))
     anchor = anchor_of(sweep, expected.need.reference, scale * nominal.slope)
     measured = Measured(T=sweep.T, ohms=sweep.R, sigma=anchor.sigma)
     explanation = explain(composite, measured, common, level_known=expected.level_known)
     drifts = _drifts(sweep, anchor, expected, composite, explanation, common)
-    points = _points(sweep, drifts, expected, composite, explanation)
+    points = _points(sweep, drifts, edges, expected, composite, explanation)
     away = np.abs(sweep.T - composite.reference) > NEARNESS  # at the reference there is no drift to judge
     beyond = np.where(away, [point.beyond for point in points], -np.inf)
     factor = _factor(len(points))
@@ -160,9 +175,14 @@ def _drifts(
 
 
 def _points(
-    sweep: Sweep, drifts: _Drifts, expected: Expected, composite: Composite, explanation: Explanation
+    sweep: Sweep,
+    drifts: _Drifts,
+    edges: Sequence[FloatArray],
+    expected: Expected,
+    composite: Composite,
+    explanation: Explanation,
 ) -> tuple[Point, ...]:
-    lowest, highest = band_at(expected.band, sweep.T, expected)
+    lowest, highest = edges
     excess = np.maximum(drifts.drift - highest, lowest - drifts.drift)
     sure = np.maximum(drifts.uncertainty, ROUNDING)
     columns = (

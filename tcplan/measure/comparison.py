@@ -20,6 +20,9 @@ from tcplan.ranges import TemperatureRange
 Place: TypeAlias = Literal["inside", "not clear", "outside"]
 """Where a figure lies by its limits: not clear when it is beyond them by less than its uncertainty."""
 
+IMPLAUSIBLE = 1e-3
+"""Probability under which deviations do not belong to the spread, and what is left is not noise."""
+
 Band: TypeAlias = Callable[[FloatArray], tuple[FloatArray, FloatArray]]
 """T [K] to the lowest and the highest drift (fractions) over the spread."""
 
@@ -173,6 +176,11 @@ class Explanation:
         """The deviations of the materials."""
         return tuple(one.value for one in self.deviations)
 
+    @property
+    def trusted(self) -> bool:
+        """Whether the deviations belong to the stated spreads, and what is left can be noise."""
+        return min(self.spread.probability, self.misfit.probability) >= IMPLAUSIBLE
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class MeasuredFigure:
@@ -233,6 +241,11 @@ class Compared:
     curve: tuple[float, ...]
     left_out: int
 
+    @property
+    def good(self) -> bool:
+        """Whether it is not outside of its band, its limit or its tolerance."""
+        return "outside" not in (self.place, self.value_place, self.figure.place if self.figure else None)
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Curves:
@@ -255,6 +268,11 @@ class Centred:
     after: float
     uncertainty: float
 
+    @property
+    def clear(self) -> bool:
+        """Whether the gain is more than what the readings leave open."""
+        return self.before - self.after > self.uncertainty
+
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Centring:
@@ -272,7 +290,9 @@ class Centring:
         Whether that is the planned value, or what it was measured to be.
     devices : tuple of Centred
     limited : bool
-        Whether a leg stopped at the largest change that is looked at.
+        Whether a leg stopped at the largest change that is looked at, or within a tenth of it.
+    left_out : tuple of str
+        Devices whose explanation is not trusted: the mean is without them.
     """
 
     factors: tuple[float, ...]
@@ -281,11 +301,25 @@ class Centring:
     level: Literal["planned", "kept"]
     devices: tuple[Centred, ...]
     limited: bool
+    left_out: tuple[str, ...] = ()
+
+
+@dataclass(frozen=True, slots=True, kw_only=True)
+class Skipped:
+    """A device that is not compared: what there is of it, what was expected, and what to do."""
+
+    device: str
+    found: str
+    expected: str
+    todo: str
 
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class Comparison:
-    """Measured devices beside their plan; ``why_not`` says why no change of values is worked out."""
+    """Measured devices beside their plan; ``why_not`` says why no change of values is worked out.
+
+    ``skipped`` are the devices with too few readings.
+    """
 
     name: str
     source: str
@@ -298,11 +332,9 @@ class Comparison:
     level_known: bool
     why_not: str = ""
     unspread: tuple[str, ...] = field(default=())
+    skipped: tuple[Skipped, ...] = field(default=())
 
     @property
     def good(self) -> bool:
-        """Whether no device is outside of its band, its limit or its tolerance."""
-        return not any(
-            "outside" in (one.place, one.value_place, one.figure.place if one.figure else None)
-            for one in self.devices
-        )
+        """Whether every device was compared, and none is outside of its band, limit or tolerance."""
+        return not self.skipped and all(one.good for one in self.devices)

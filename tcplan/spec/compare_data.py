@@ -32,6 +32,9 @@ def comparison_data(plan: Plan, comparison: Comparison) -> dict[str, Any]:
         "level_known": comparison.level_known,
         "no_spread_stated": list(comparison.unspread),
         "devices": [_device_data(one) for one in comparison.devices],
+        "not_compared": [
+            {"device": one.device, "found": one.found, "expected": one.expected} for one in comparison.skipped
+        ],
         "predicted": {
             "degC": [to_celsius(T) for T in curves.T],
             "nominal_ppm": _ppm(curves.nominal),
@@ -125,12 +128,14 @@ def _centring_data(plan: Plan, comparison: Comparison) -> dict[str, Any]:
         "reference_ohms": centring.value,
         "level": centring.level,
         "limited": centring.limited,
+        "left_out": list(centring.left_out),
         "devices": [
             {
                 "device": one.device,
                 "before_ppm": 1e6 * one.before,
                 "after_ppm": 1e6 * one.after,
                 "uncertainty_ppm": 1e6 * one.uncertainty,
+                "clear_gain": one.clear,
             }
             for one in centring.devices
         ],

@@ -7,11 +7,21 @@ from dataclasses import dataclass
 from math import ceil, floor, log10
 from typing import Any
 
-from tcplan.measure.comparison import Centring, Compared, Comparison, Explanation, FoundDeviation, Point
+from tcplan.measure.comparison import (
+    IMPLAUSIBLE,
+    Centred,
+    Centring,
+    Compared,
+    Comparison,
+    Explanation,
+    FoundDeviation,
+    Point,
+)
 from tcplan.network import leg_names, legs
 from tcplan.plan import Plan
 from tcplan.spec import numbers
 from tcplan.spec.compare_data import compared_option
+from tcplan.spec.compare_table import compare_table, deviation_name, shown_devices
 from tcplan.units import format_celsius, format_ohms, to_celsius
 
 HEAD = ("degC", "drift", "u", "nominal", "lowest", "highest", "band")
@@ -20,18 +30,8 @@ LEG_HEAD = ("leg", "material", "planned", "new", "factor")
 MOST_ROWS = 16
 MOST_PAIRS = 4
 NOT_SEEN = 0.9  # of the stated standard deviation left: the readings say nothing of it
-PLAUSIBLE, UNUSUAL = 0.05, 0.001
-SLOTS = {
-    "value": "value",
-    "tc1": "TC1",
-    "cold": "TCR below its reference",
-    "hot": "TCR above its reference",
-    "tc2": "TC2",
-    "chamber_offset": "chamber offset",
-    "chamber_scale": "chamber scale",
-    "lead": "lead",
-    "meter_scale": "meter scale",
-}
+PLAUSIBLE, UNUSUAL = 0.05, IMPLAUSIBLE
+MOST_CENTRED = 10  # devices with a line of their own about centring
 UNITS = {
     "value": (1e2, "%"),
     "tc1": (1e6, "ppm/K"),
@@ -62,9 +62,11 @@ class DeviceText:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class CompareText:
-    """Everything that is printed of a comparison."""
+    """Everything that is printed of a comparison: of one device all, of several a table and the worst."""
 
     title: str
+    table: tuple[tuple[str, ...], ...]
+    count: str
     devices: tuple[DeviceText, ...]
     legs: tuple[tuple[str, ...], ...]
     facts: tuple[tuple[str, tuple[str, ...]], ...]
@@ -74,10 +76,25 @@ def compare_text(plan: Plan, comparison: Comparison) -> CompareText:
     """Return what is printed of a comparison; the plan is the one whose options hold what was measured."""
     return CompareText(
         title=f"{plan.brief['title']}, {comparison.name}, measured in {comparison.source}",
-        devices=tuple(_device(plan, comparison, one) for one in comparison.devices),
+        table=compare_table(comparison.devices, comparison.planned) if len(comparison.devices) > 1 else (),
+        count=_count(comparison),
+        devices=tuple(_device(plan, comparison, one) for one in shown_devices(comparison.devices)),
         legs=tuple(_legs(plan, comparison, comparison.centring)) if comparison.centring else (),
         facts=(("Centring", tuple(_centring(comparison))), ("Assumed", tuple(_assumed(comparison)))),
     )
+
+
+def _count(comparison: Comparison) -> str:
+    """Return how many devices are outside, and of how many the details follow; empty for one device."""
+    count = len(comparison.devices)
+    if count == 1:
+        return ""
+    outside = sum(not one.good for one in comparison.devices)
+    shown = len(shown_devices(comparison.devices))
+    if not outside:
+        return f"None of {count} devices is outside. --json holds the details of each."
+    which = f"the worst {shown}" if shown < outside else "it" if outside == 1 else "they"
+    return f"{outside} of {count} devices outside; in detail {which} below, and each with --json."
 
 
 # --- one device -----------------------------------------------------------------------------------------
@@ -89,10 +106,9 @@ def _device(plan: Plan, comparison: Comparison, one: Compared) -> DeviceText:
         "not clear": "outside the predicted band by less than the readings tell",
         "outside": "OUTSIDE the predicted band",
     }
-    places = (one.place, one.value_place, one.figure.place if one.figure else None)
     return DeviceText(
         head=f"{one.device or 'The device'}: {words[one.place]}",
-        good="outside" not in places,
+        good=one.good,
         points=tuple(_point(point) for point in _chosen(one)),
         deviations=tuple(_deviation(d) for d in (*one.explanation.deviations, *one.explanation.common)),
         facts=(
@@ -182,15 +198,15 @@ def _probability(probability: float) -> str:
 
 
 def _open(explanation: Explanation) -> Iterator[str]:
-    unseen = [_name(d) for d in explanation.deviations if d.left >= NOT_SEEN]
+    unseen = [deviation_name(d) for d in explanation.deviations if d.left >= NOT_SEEN]
     if unseen:
         yield f"The readings say nothing of {_listed(unseen)}."
     for first, second, together in explanation.twins[:MOST_PAIRS]:
         pair = [explanation.deviations[k] for k in (first, second)]
         known = "difference" if together > 0 else "sum"
         yield (
-            f"{_name(pair[0])} and {_name(pair[1])} are hardly told apart (correlation {together:.3f}): "
-            f"their weighted {known} is known."
+            f"{deviation_name(pair[0])} and {deviation_name(pair[1])} are hardly told apart (correlation "
+            f"{together:.3f}): their weighted {known} is known."
         )
     if len(explanation.twins) > MOST_PAIRS:
         yield f"{len(explanation.twins) - MOST_PAIRS} more such pairs; --json lists them."
@@ -240,16 +256,12 @@ def _point(point: Point) -> tuple[str, ...]:
 def _deviation(one: FoundDeviation) -> tuple[str, ...]:
     factor, unit = UNITS[one.slot]
     return (
-        _name(one),
+        deviation_name(one),
         f"{_near(factor * one.value, factor * one.uncertainty, sign=True)} {unit}",
         numbers.number(factor * one.uncertainty, 2),
         numbers.number(factor * one.sigma, 3),
         f"{one.sigmas:+.2f}",
     )
-
-
-def _name(one: FoundDeviation) -> str:
-    return f"{one.material} {SLOTS[one.slot]}".strip()
 
 
 # --- rounding -------------------------------------------------------------------------------------------
@@ -291,14 +303,14 @@ def _centring(comparison: Comparison) -> Iterator[str]:
     if centring is None:
         yield comparison.why_not
         return
-    for one in centring.devices:
-        left = numbers.number(1e6 * one.uncertainty, 2)
-        yield (
-            f"{one.device or 'The device'} as explained: {numbers.number(1e6 * one.before, 4)} ppm as "
-            f"planned, {numbers.number(1e6 * one.after, 4)} ppm with the new values; the readings leave "
-            f"{left} ppm open."
-        )
-    whose = "of the mean device " if len(comparison.devices) > 1 else ""
+    worst = sorted(centring.devices, key=lambda one: -one.after)
+    if len(worst) == 1:
+        yield _centred(worst[0])
+    else:
+        yield from _centred_devices(worst)
+    if centring.left_out:
+        yield f"The mean is without {_listed(centring.left_out)}: the materials do not explain it."
+    whose = "of the mean device " if len(worst) > 1 else ""
     levels = {
         "planned": f"becomes the planned {format_ohms(centring.value)}",
         "kept": f"stays at {format_ohms(centring.value)}",
@@ -307,7 +319,36 @@ def _centring(comparison: Comparison) -> Iterator[str]:
     yield "Of all values within 1 % of the least figure these change least."
     yield "Counts and stock are not made again."
     if centring.limited:
-        yield "A leg stops at the largest change looked at, a factor of 4: another network may be better."
+        yield (
+            "A leg stops at the largest change looked at, a factor of 4, or near it: another network may be "
+            "better."
+        )
+
+
+def _centred_devices(worst: Sequence[Centred]) -> Iterator[str]:
+    """Yield a line for each of the first, and what is true of all; the largest after comes first."""
+    for one in worst[:MOST_CENTRED]:
+        yield (
+            f"{one.device}: {numbers.number(1e6 * one.before, 4)} ppm as planned, "
+            f"{numbers.number(1e6 * one.after, 4)} new, {numbers.number(1e6 * one.uncertainty, 2)} open"
+            f"{'' if one.clear else ': no clear gain'}."
+        )
+    if len(worst) > MOST_CENTRED:
+        yield f"{len(worst) - MOST_CENTRED} more devices have less with the new values; --json lists them."
+    if unclear := sum(not one.clear for one in worst):
+        yield f"{unclear} of {len(worst)} devices have no clear gain."
+    if worst[0].after >= max(one.before for one in worst):
+        yield "The largest figure of all devices is not smaller: only that of the mean device is."
+
+
+def _centred(one: Centred) -> str:
+    left = numbers.number(1e6 * one.uncertainty, 2)
+    told = (
+        f"{one.device or 'The device'} as explained: {numbers.number(1e6 * one.before, 4)} ppm as "
+        f"planned, {numbers.number(1e6 * one.after, 4)} ppm with the new values; the readings leave "
+        f"{left} ppm open"
+    )
+    return f"{told}." if one.clear else f"{told}: no clear gain."
 
 
 def _assumed(comparison: Comparison) -> Iterator[str]:

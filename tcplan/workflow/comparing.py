@@ -24,9 +24,9 @@ from tcplan.workflow.as_made import assembly_of, parts_of, plan_as_made
 from tcplan.workflow.options import given_positions, option_of
 
 COMPARE_FILES = ("compare.json", "compare.svg", "compare.png")
-ONE_BY_ONE = (
-    60  # temperatures of a mixed network at which the band is searched; of more its quick bound is taken
-)
+ONE_BY_ONE = 120
+"""Temperatures of a mixed network at which the band is searched; of more its quick bound is taken."""
+
 NEAR = 1e-9  # relative; one value and the same
 
 _NO_COMMON_ERRORS = CommonErrors()

@@ -76,6 +76,8 @@ def test_a_device_outside_is_the_exit_code(folder: Path) -> None:
     assert result.exit_code == 1
     assert "OUTSIDE the predicted band" in result.stdout
     assert "NOT PLAUSIBLE" in result.stdout
+    assert "Leg values that would centre it" not in result.stdout
+    assert "a probability under 0.1 %" in " ".join(result.stdout.split())
 
 
 def test_json_holds_every_reading(folder: Path) -> None:
@@ -94,6 +96,65 @@ def test_json_holds_every_reading(folder: Path) -> None:
     assert data["planned_ohms"] == pytest.approx(value(plan.best.network))
     assert len(data["predicted"]["degC"]) == len(data["predicted"]["likely_low_ppm"])
     assert {row["material"] for row in data["centring"]["legs"]} == {"pp", "np"}
+
+
+def test_a_sweep_on_stdin_is_that_of_the_file(folder: Path) -> None:
+    write_sweep({("pp", "tc1"): 10e-6})
+    from_file = invoke("compare", "plan.json", "sweep.csv", "--json")
+    from_stdin = invoke("compare", "plan.json", "-", "--json", stdin=Path("sweep.csv").read_text())
+    assert from_stdin.exit_code == 0, from_stdin.output
+    both = [json.loads(one.stdout) for one in (from_file, from_stdin)]
+    assert both[0].pop("source") == "sweep.csv"
+    assert both[1].pop("source") == "standard input"
+    assert both[0] == both[1]
+    twice = invoke("compare", "-", "-", stdin="{}")
+    assert twice.exit_code == 2
+    assert "one of them on stdin" in twice.stderr
+
+
+def write_devices(rows: dict[str, dict[tuple[str, str], float]], *more: str) -> None:
+    plan = read_plan(Path("plan.json").read_text())
+    lines = ["device;T [degC];R [ohm]"]
+    for name, off in rows.items():
+        for k, t in enumerate(DEGREES):
+            ohms = scalar_ohms(plan.best.network, plan.by_name, off, t + 273.15) * (1.0 + 1e-5 * (-1) ** k)
+            lines.append(f"{name};{t};{ohms:.4f}")
+    Path("sweep.csv").write_text("\n".join([*lines, *more]) + "\n")
+
+
+def test_many_devices_are_a_line_each_and_the_worst_in_detail(folder: Path) -> None:
+    far = {f"far-{k}": {("pp", "tc1"): (300 + 10 * k) * 1e-6} for k in range(7)}
+    near = {f"near-{k}": {("pp", "tc1"): 1e-6 * k} for k in range(13)}
+    write_devices(near | far)
+    result = invoke("compare", "plan.json", "sweep.csv")
+    assert result.exit_code == 1, result.output
+    lines = result.stdout.splitlines()
+    assert all(len(line) <= 80 for line in lines)
+    table = [line for line in lines if line.startswith(("far-", "near-")) and line.endswith("sigma")]
+    assert len(table) == 20
+    assert all("OUTSIDE band" in line and "pp TC1" in line for line in table if line.startswith("far-"))
+    detailed = [line.split(":")[0] for line in lines if ": OUTSIDE the predicted band" in line]
+    assert len(detailed) == 5
+    assert all(name.startswith("far-") for name in detailed)
+    whole = " ".join(result.stdout.split())
+    assert "7 of 20 devices outside; in detail the worst 5 below" in whole
+    assert whole.count("ppm as planned") == 10
+    assert "3 more devices have less with the new values" in whole
+    assert "The mean is without far-0" in whole
+    assert len(json.loads(invoke("compare", "plan.json", "sweep.csv", "--json").stdout)["devices"]) == 20
+
+
+def test_a_device_with_too_few_readings_is_told_and_the_exit_code(folder: Path) -> None:
+    write_devices({"D1": {}, "D2": {("pp", "tc1"): 5e-6}}, "short;25;18000", "short;85;18010")
+    result = invoke("compare", "plan.json", "sweep.csv")
+    assert result.exit_code == 1, result.output
+    assert "Give more readings of device short, or leave it out." in " ".join(result.stderr.split())
+    assert "None of 2 devices is outside" in result.stdout
+    data = json.loads(invoke("compare", "plan.json", "sweep.csv", "--json").stdout)
+    assert [one["device"] for one in data["not_compared"]] == ["short"]
+    assert [one["device"] for one in data["devices"]] == ["D1", "D2"]
+    write_devices({}, "short;25;18000", "short;85;18010")
+    assert invoke("compare", "plan.json", "sweep.csv").exit_code == 2
 
 
 def test_files_are_written_and_not_over_others(folder: Path) -> None:

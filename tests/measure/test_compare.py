@@ -177,6 +177,63 @@ def test_devices_are_told_apart():
     assert [one.device for one in found.centring.devices] == ["D1", "D2"]
 
 
+def many(count, seed, jitter=0.0):
+    """Return a sweep of devices with TC1 drawn, a third of its limit a sigma, and noise of 20 ppm."""
+    rng = generator(seed)
+    temperatures, ohms = [], []
+    for _ in range(count):
+        off = {("pp", "tc1"): 10e-6 * rng.standard_normal(), ("np", "tc1"): 8e-6 * rng.standard_normal()}
+        at = np.clip(T + jitter * rng.standard_normal(len(T)) * (T != REFERENCE), T[0], T[-1])
+        temperatures.append(at)
+        ohms.append(device_ohms(PARALLEL, films(), off, at) * (1.0 + 2e-5 * rng.standard_normal(len(T))))
+    names = tuple(f"D{k}" for k in range(count))
+    device = np.repeat(np.arange(count), len(T))
+    return sweep_of(np.concatenate(temperatures), np.concatenate(ohms), 0.35, names=names, device=device)
+
+
+@pytest.mark.parametrize("jitter", [0.0, 0.2], ids=["same temperatures", "temperatures as measured"])
+def test_the_band_is_found_once_for_all_devices(jitter):
+    # Outside: the band asked at the readings of one device alone; h^2/8 |R''| of a 1 K grid is below 1 ppm.
+    expected = expected_of(PARALLEL, films())
+    asked = []
+
+    def counted(at):
+        asked.append(len(at))
+        return expected.band(at)
+
+    found = compare(many(40, 5, jitter), replace(expected, band=counted))
+    assert len(asked) == 2  # the curves, and all readings together
+    assert asked[1] <= 201
+    for one in (found.devices[0], found.devices[-1]):
+        low, high = expected.band(np.array([point.T for point in one.points]))
+        assert [point.lowest for point in one.points] == pytest.approx(low, abs=1e-6)
+        assert [point.highest for point in one.points] == pytest.approx(high, abs=1e-6)
+
+
+def test_a_device_with_too_few_readings_does_not_stop_the_others():
+    device = np.r_[np.repeat(0, len(T)), 1, 1, 2, 2, 2, 3, 3]
+    at = np.r_[T, T[[0, -1]], np.full(3, REFERENCE), T[[0, 1]] - 100.0]
+    noisy = measured().R * (1.0 + 1e-5 * generator(3).standard_normal(len(T)))
+    R = np.r_[noisy, noisy[[0, -1]], np.full(3, value(PARALLEL)), noisy[:2]]
+    sweep = sweep_of(at, R, None, names=("D1", "D2", "D3", "D4"), device=device)
+    found = compare(sweep, expected_of(PARALLEL, films()))
+    assert [one.device for one in found.devices] == ["D1"]
+    assert [one.device for one in found.skipped] == ["D2", "D3", "D4"]
+    for one, words in zip(found.skipped, ("2 readings", "one temperature", "-140 degC"), strict=True):
+        assert words in one.found
+        assert one.todo == f"Give more readings of device {one.device}, or leave it out."
+    assert not found.good
+    alone = compare(sweep_of(T, noisy), expected_of(PARALLEL, films())).devices[0]
+    assert found.devices[0].points == alone.points
+
+
+def test_a_file_of_too_few_readings_is_refused_with_each_device():
+    ends = [0, -1, 0, -1]
+    message = refused(sweep_of(T[ends], measured().R[ends], None, names=("D1", "D2"), device=[0, 0, 1, 1]))
+    assert "Give more readings of device D1, or leave it out" in message
+    assert "Give more readings of device D2, or leave it out" in message
+
+
 # --- centring ------------------------------------------------------------------------------------
 
 
@@ -207,6 +264,54 @@ def test_centring_reaches_what_a_global_search_finds(network):
     assert found.devices[0].before == pytest.approx(peak(network, deviations), rel=1e-3)
     assert scalar_ohms(own, films(), deviations, REFERENCE) == pytest.approx(value(network), rel=1e-8)
     assert found.level == "planned"
+
+
+@pytest.mark.parametrize(
+    ("off", "step"), [({("pp", "tc1"): 120e-6}, 0.0), ({}, 3e-4)], ids=["not plausible", "not explained"]
+)
+def test_what_is_not_explained_is_not_centred(off, step):
+    # 12 sigma of a normal TC1, and a zigzag of 15 u(R): either chi-square is far under 0.1 %.
+    ohms = device_ohms(PARALLEL, films(), off, T) * (1.0 + step * (np.arange(len(T)) % 2))
+    found = compare(sweep_of(T, ohms, 2e-5 * ohms), expected_of(PARALLEL, films()))
+    checks = found.devices[0].explanation
+    assert min(checks.spread.probability, checks.misfit.probability) < 1e-3
+    assert found.centring is None
+    assert "under 0.1 %" in found.why_not
+
+
+def test_one_device_that_is_not_explained_is_left_out_of_the_mean():
+    good, bad = many(4, 8), measured({("pp", "tc1"): 120e-6})
+    device = np.r_[good.device, np.full(len(T), 4)]
+    both = sweep_of(
+        np.r_[good.T, bad.T], np.r_[good.R, bad.R], 0.35, names=(*good.devices, "X"), device=device
+    )
+    expected = expected_of(PARALLEL, films())
+    found = compare(both, expected).centring
+    assert found.left_out == ("X",)
+    assert [one.device for one in found.devices] == list(good.devices)
+    assert found.factors == pytest.approx(compare(good, expected).centring.factors, rel=1e-9)
+
+
+def test_a_gain_smaller_than_what_is_open_is_not_clear():
+    # Three readings of 0.2 % say next to nothing of a drift of 0.1 %; readings of 1 ppm say all of it.
+    off = {("pp", "tc1"): 15e-6, ("np", "tc1"): 10e-6}
+    rough, fine = (
+        compare(measured(off, at, u), expected_of(PARALLEL, films())).centring.devices[0]
+        for at, u in ((T[[0, 2, -1]], 2e-3), (T, 1e-6))
+    )
+    assert fine.clear
+    assert not rough.clear
+
+
+@pytest.mark.parametrize(("factor", "limited"), [(3.85, True), (3.4, False)])
+def test_a_leg_within_a_tenth_of_the_largest_change_is_told(factor, limited):
+    # Outside: Kirchhoff; of two legs at their best, b is made larger by the factor, and a such that R stays.
+    a, b = compare(measured(u=1e-6), expected_of(PARALLEL, films())).centring.ohms
+    own = 1.0 / (1.0 / a + 1.0 / b)
+    start = Parallel((leg("pp", 1.0 / (1.0 / own - 1.0 / (factor * b))), leg("np", factor * b)))
+    found = compare(measured(u=1e-6, network=start), expected_of(start, films())).centring
+    assert min(found.factors) == pytest.approx(1.0 / factor, rel=0.02)
+    assert found.limited == limited
 
 
 def test_of_equal_answers_the_least_change_is_taken():
@@ -321,7 +426,7 @@ def test_two_readings_without_uncertainty_are_too_few():
 
 def test_every_bad_device_is_named():
     device = np.repeat([0, 1], len(T))
-    sweep = sweep_of(np.r_[T + 300.0, T], np.r_[measured().R, 1e3 * measured().R], 0.3, names=("D1", "D2"),
+    sweep = sweep_of(np.r_[T, T], np.r_[9.0 * measured().R, 1e3 * measured().R], 0.3, names=("D1", "D2"),
                      device=device)  # fmt: skip
     message = refused(sweep)
     assert "device D1" in message
