@@ -21,11 +21,12 @@ def fit_of(
     reference: float = REFERENCE,
     low: float = 233.15,
     high: float = 398.15,
+    stated: bool = True,
 ) -> Fit:
     """Return a polynomial fit; ``noise`` and ``common`` are covariances of R [ohm] and the TCs."""
     law = Polynomial(reference=reference, coefficients=tuple(tcs))
     names = ("R", *(f"tc{n}" for n in range(1, len(tcs) + 1)))
-    return law_fit(law, ohms, names, tcs, noise=noise, common=common, low=low, high=high)
+    return law_fit(law, ohms, names, tcs, noise=noise, common=common, low=low, high=high, stated=stated)
 
 
 def law_fit(
@@ -38,8 +39,9 @@ def law_fit(
     common: np.ndarray | None = None,
     low: float = 233.15,
     high: float = 398.15,
+    stated: bool = True,
 ) -> Fit:
-    """Return a fit of any law."""
+    """Return a fit of any law; ``stated`` is whether u(R) was."""
     zero = np.zeros((len(names), len(names)))
     points = zero if noise is None else noise
     return Fit(
@@ -52,7 +54,7 @@ def law_fit(
         readings=20,
         dof=20 - len(names),
         sigma=1e-5,
-        chi_squared=None,
+        chi_squared=20.0 - len(names) if stated else None,
         residuals=(0.0,) * 20,
         low=low,
         high=high,

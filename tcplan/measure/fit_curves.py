@@ -17,6 +17,7 @@ from tcplan.measure.fit_gradients import law_gradient
 from tcplan.measure.fitted import FittedMaterial
 from tcplan.measure.model import Fit
 from tcplan.measure.population import lot_positions
+from tcplan.measure.spread_laws import is_stated
 from tcplan.measure.tolerance import MeanSquares, mean_squares, tolerance_half_width
 
 BAND = 0.95
@@ -65,7 +66,8 @@ def _of_all(one: FittedMaterial, T: FloatArray, *, with_R: bool) -> Curves:
     common = np.mean(np.stack([shared for _, shared in found]), axis=0) / mean**2
     measured = np.zeros((*point.shape, point.shape[1]))
     np.einsum("dtt->dt", measured)[:] = point
-    squares = mean_squares(values, measured, lot_positions(one.lots))
+    taken = measured * np.array([is_stated(fit) for fit in one.fits], dtype=float)[:, None, None]
+    squares = mean_squares(values, measured, lot_positions(one.lots), taken)
     band = np.array([_mean_half_width(squares, k, float(common[k])) for k in range(len(T))])
     return Curves(value=mean, band=band, limits=_limits(one, squares, common))
 

@@ -1,7 +1,8 @@
 """Several devices and lots: the mean law, and how far devices and lots scatter about it.
 
 What is common to a campaign (chamber, leads, meter) moves all devices alike: it adds to the uncertainty of
-the mean and takes nothing off the scatter. Only the point noise of each fit is taken off.
+the mean and takes nothing off the scatter. Only the point noise of each fit is taken off, and only where
+u(R) is stated: without it the scatter about the law is noise and misfit, and misfit is alike in all devices.
 """
 
 from __future__ import annotations
@@ -16,7 +17,7 @@ from tcplan.errors import InputError, InternalError, Problem
 from tcplan.material.law import Expression, Law, Polynomial
 from tcplan.measure.model import Fit
 from tcplan.measure.spread import COMPONENTS, Estimate, Population, Scatter, ValueCorrelation
-from tcplan.measure.spread_laws import components_of, law_with, local
+from tcplan.measure.spread_laws import components_of, is_stated, law_with, local
 from tcplan.measure.tolerance import (
     MeanSquares,
     Variance,
@@ -28,6 +29,9 @@ from tcplan.names import shown
 
 COVERAGE = 0.9973
 CONFIDENCE = 0.95
+UNSTATED = (
+    "No u(R) is stated: point noise is not taken off the spreads, since misfit of the law would pass for it."
+)
 MOST_CORRELATED = 0.99  # scatter less noise can give more than 1, and says no more than "nearly 1"
 _SAME_REFERENCE = 1e-6  # K
 
@@ -43,7 +47,7 @@ def population(
     """Return the mean law of several devices and how far devices and lots scatter about it.
 
     The mean is that of the lot means. Variances are by moments (one-way, random), less the point noise of
-    each fit, and zero where that leaves less than zero.
+    each fit where u(R) is stated, and zero where that leaves less than zero.
 
     Parameters
     ----------
@@ -78,7 +82,9 @@ def population(
     law = law_with(fits[0].law, fits[0].names, tuple(parameters.mean))
     names = components_of(fits[0])
     found = [local(fit, float(parameters.mean[0])) for fit in fits]
-    squares = mean_squares(np.stack([one[0] for one in found]), np.stack([one[1] for one in found]), at)
+    measured = np.stack([one[1] for one in found])
+    known = np.array([is_stated(fit) for fit in fits], dtype=float)[:, None, None]
+    squares = mean_squares(np.stack([one[0] for one in found]), measured, at, measured * known)
     common = np.mean([one[2] for one in found], axis=0)
     noise = np.sqrt(np.mean([np.diag(one[1]) for one in found], axis=0))
     scatters = tuple(
@@ -92,13 +98,13 @@ def population(
         values=tuple(float(mean) for mean in parameters.mean),
         uncertainties=_uncertainties(fits, parameters),
         scatters=scatters,
-        correlation=_correlation(squares, confidence) if "tc1" in names else None,
+        correlation=correlation_of(squares, confidence) if "tc1" in names else None,
         counts=squares.counts,
         low=max(fit.low for fit in fits),
         high=min(fit.high for fit in fits),
         coverage=coverage,
         confidence=confidence,
-        notes=tuple(_notes(law, squares, scatters)),
+        notes=tuple(_notes(fits, law, squares, scatters)),
     )
 
 
@@ -150,31 +156,38 @@ def _uncertainties(fits: Sequence[Fit], squares: MeanSquares) -> tuple[float, ..
     return tuple(math.sqrt(squares.mean_variance(k) + float(common[k])) for k in range(len(common)))
 
 
-def _correlation(squares: MeanSquares, confidence: float) -> ValueCorrelation | None:
-    """Return the correlation of the value with TC1, less what noise makes of it.
+def correlation_of(squares: MeanSquares, confidence: float) -> ValueCorrelation | None:
+    """Return the correlation of the first two figures, less what noise makes of it; None where none shows.
 
-    The interval is Fisher's, atanh r -/+ z/sqrt(dof - 2), wider by what of either scatter is noise.
+    Fisher's interval, atanh r -/+ z/sqrt(dof - 2), is that of r as measured. Noise is then taken off r and
+    both ends, which divides them by the reliability: an interval about the larger value would be too narrow.
     """
     from scipy.special import ndtri
 
     totals = [squares.total(k) for k in (0, 1)]
-    raw, measured = squares.total_products()
-    seen = raw - measured
+    raw, taken = squares.total_products()
+    seen = raw - taken
     dof = min((Variance(terms=total.terms).dof for total in totals if total is not None), default=0.0)
     if dof <= 2.0 or min(seen[0, 0], seen[1, 1]) <= 0.0:
         return None
-    size = math.sqrt(seen[0, 0] * seen[1, 1])
-    value = min(max(float(seen[0, 1]) / size, -MOST_CORRELATED), MOST_CORRELATED)
-    reliable = size / math.sqrt(raw[0, 0] * raw[1, 1])
-    off = float(ndtri(0.5 * (1.0 + confidence))) / (math.sqrt(dof - 2.0) * reliable)
-    low, high = math.tanh(math.atanh(value) - off), math.tanh(math.atanh(value) + off)
-    return ValueCorrelation(value=value, low=low, high=high, dof=dof)
+    whole, size = math.sqrt(raw[0, 0] * raw[1, 1]), math.sqrt(seen[0, 0] * seen[1, 1])
+    middle = math.atanh(_within(float(raw[0, 1]) / whole, MOST_CORRELATED))
+    off = float(ndtri(0.5 * (1.0 + confidence))) / math.sqrt(dof - 2.0)
+    low, high = (
+        _within((math.tanh(middle + side) * whole - float(taken[0, 1])) / size, 1.0) for side in (-off, off)
+    )
+    value = _within(float(seen[0, 1]) / size, MOST_CORRELATED)
+    return ValueCorrelation(value=value, low=min(low, value), high=max(high, value), dof=dof)
+
+
+def _within(value: float, most: float) -> float:
+    return min(max(value, -most), most)
 
 
 # ---- what is said and refused
 
 
-def _notes(law: Law, squares: MeanSquares, scatters: Sequence[Scatter]) -> list[str]:
+def _notes(fits: Sequence[Fit], law: Law, squares: MeanSquares, scatters: Sequence[Scatter]) -> list[str]:
     notes = []
     if squares.devices == 1:
         notes.append("One device: nothing is known of how devices and lots differ.")
@@ -182,6 +195,8 @@ def _notes(law: Law, squares: MeanSquares, scatters: Sequence[Scatter]) -> list[
         notes.append("One lot: nothing is known of how lots differ, and no spread here covers it.")
     elif squares.devices == squares.lots:
         notes.append("One device of each lot: the spread of devices and that of lots cannot be told apart.")
+    if squares.devices > 1 and not all(is_stated(fit) for fit in fits):
+        notes.append(UNSTATED)
     for one in scatters:
         for word, estimate in (("devices", one.device), ("lots", one.lot)):
             if estimate is not None and estimate.floored:

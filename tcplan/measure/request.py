@@ -59,8 +59,12 @@ class SpreadRules:
 
 @dataclass(frozen=True, slots=True, kw_only=True)
 class FitRequest:
-    """All sweeps that are fitted together: films of one campaign share its errors, and may share lots."""
+    """All sweeps that are fitted together: films of one campaign share its errors, and may share lots.
+
+    ``same_devices`` is whether devices of equal name in the sweeps are the same pieces, of the same lots.
+    """
 
     sweeps: tuple[SweepRequest, ...]
     errors: CommonErrors = field(default_factory=CommonErrors)
     spread: SpreadRules = field(default_factory=SpreadRules)
+    same_devices: bool = False

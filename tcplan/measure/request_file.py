@@ -58,10 +58,16 @@ def request_of(data: dict[str, Any], name: str, folder: Path) -> FitRequest:
         if isinstance(table, dict)
     ]
     errors, spread = _errors(reader.inner("errors")), _spread(reader.inner("spread"))
+    same = data.get("same_devices") is True
+    if same and isinstance(tables, dict) and len(tables) == 1:
+        reader.refuse("same_devices", "one sweep", "sweeps of two materials or more on the same devices")
     if reader.problems:
         raise InputError(reader.problems)
     return FitRequest(
-        sweeps=tuple(sweep for sweep in sweeps if sweep is not None), errors=errors, spread=spread
+        sweeps=tuple(sweep for sweep in sweeps if sweep is not None),
+        errors=errors,
+        spread=spread,
+        same_devices=same,
     )
 
 

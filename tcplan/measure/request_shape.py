@@ -53,6 +53,7 @@ class _SpreadShape(_Shape):
 class _RequestShape(_Shape):
     version: Annotated[int, Field(ge=1, le=1)] = Field(alias="schema", examples=["1"])
     sweep: Annotated[dict[str, _SweepShape], Field(min_length=1, max_length=MOST_SWEEPS)]
+    same_devices: bool | None = None
     errors: _ErrorsShape | None = None
     spread: _SpreadShape | None = None
 

@@ -11,7 +11,7 @@ import numpy as np
 from tcplan.arrays import FloatArray
 from tcplan.errors import InternalError
 from tcplan.material.law import Expression, Law, Polynomial
-from tcplan.measure.model import Fit
+from tcplan.measure.model import CommonErrors, Fit
 from tcplan.measure.spread import COMPONENTS, Component
 
 _STEP = 1e-4  # of a parameter, for a derivative
@@ -48,6 +48,35 @@ def local(fit: Fit, ohms: float) -> tuple[FloatArray, FloatArray, FloatArray]:
     noise = jacobian @ np.array(fit.point_covariance) @ jacobian.T
     whole = jacobian @ np.array(fit.covariance) @ jacobian.T
     return figures, noise, np.maximum(np.diag(whole) - np.diag(noise), 0.0)
+
+
+def is_stated(fit: Fit) -> bool:
+    """Whether the readings state their uncertainty, so that their noise is known apart from misfit."""
+    return fit.chi_squared is not None
+
+
+def tc1_moves(fit: Fit, common: CommonErrors) -> FloatArray | None:
+    """Return how one standard uncertainty of each common error moves TC1; None where readings decide it.
+
+    A polynomial that is moved stays a polynomial to first order, wherever the readings are. With its TC1 a
+    and TC2 b an offset d moves a by (2b - a^2) d, a scale g by a g, a lead r by (lead_tc1 - a) r/R; a gain
+    of the meter does not move it.
+
+    Returns
+    -------
+    array, shape (3,), or None
+        By chamber offset, chamber scale and lead [1/K].
+    """
+    if not isinstance(fit.law, Polynomial):
+        return None
+    a, b = (float(c) for c in _taylor(fit.law))
+    return np.array(
+        [
+            common.chamber_offset * (2.0 * b - a * a),
+            common.chamber_scale * a,
+            common.lead / fit.ohms * (common.lead_tc1 - a),
+        ]
+    )
 
 
 def _taylor(law: Law) -> FloatArray:

@@ -30,10 +30,13 @@ class Variance:
         Coefficient, mean square and degrees of freedom; the first coefficient is above zero.
     measured : float
         What measurement adds to the sum, taken as known.
+    doubtful : float
+        What measurement may add beside: taken off the lower bound alone.
     """
 
     terms: tuple[Term, ...]
     measured: float = 0.0
+    doubtful: float = 0.0
 
     @property
     def raw(self) -> float:
@@ -73,7 +76,7 @@ class Variance:
 
     def _lower(self, tail: float) -> float:
         off = _distance(self.terms, tail, upper=False)
-        return max(self.raw - off - self.measured, 0.0)
+        return max(self.raw - off - self.measured - self.doubtful, 0.0)
 
 
 def _distance(terms: Sequence[Term], tail: float, *, upper: bool) -> float:
@@ -126,6 +129,8 @@ class MeanSquares:
         Of the lot means about their mean, and of devices about their lot means; zero without freedom.
     measured_between, measured_within : array, shape (parameter, parameter)
         What measurement adds to each.
+    taken_between, taken_within : array, shape (parameter, parameter)
+        What of it is known well enough to be taken off.
     """
 
     mean: FloatArray
@@ -134,6 +139,8 @@ class MeanSquares:
     within: FloatArray
     measured_between: FloatArray
     measured_within: FloatArray
+    taken_between: FloatArray
+    taken_within: FloatArray
 
     @property
     def devices(self) -> int:
@@ -164,10 +171,10 @@ class MeanSquares:
         return self._sum(k, *self._total_parts) if self.devices > 1 else None
 
     def total_products(self) -> tuple[FloatArray, FloatArray]:
-        """Return the covariance of any device of any lot, raw, and what measurement adds to it."""
+        """Return the covariance of any device of any lot, raw, and what is taken off it."""
         c1, c2 = self._total_parts
         raw = c1 * self.between + c2 * self.within
-        return raw, c1 * self.measured_between + c2 * self.measured_within
+        return raw, c1 * self.taken_between + c2 * self.taken_within
 
     def mean_variance(self, k: int) -> float:
         """Return the variance of the mean; not below what measurement alone makes of it."""
@@ -185,11 +192,15 @@ class MeanSquares:
             (c1, float(self.between[k, k]), self.lots - 1),
             (c2, float(self.within[k, k]), self.devices - self.lots),
         )
-        measured = c1 * self.measured_between[k, k] + c2 * self.measured_within[k, k]
-        return Variance(terms=tuple(part for part in parts if part[0] and part[2]), measured=float(measured))
+        taken = float(c1 * self.taken_between[k, k] + c2 * self.taken_within[k, k])
+        measured = float(c1 * self.measured_between[k, k] + c2 * self.measured_within[k, k])
+        terms = tuple(part for part in parts if part[0] and part[2])
+        return Variance(terms=terms, measured=taken, doubtful=max(measured - taken, 0.0))
 
 
-def mean_squares(values: FloatArray, measured: FloatArray, lots: IntArray) -> MeanSquares:
+def mean_squares(
+    values: FloatArray, measured: FloatArray, lots: IntArray, taken: FloatArray | None = None
+) -> MeanSquares:
     """Return the mean squares of devices in lots.
 
     Parameters
@@ -200,6 +211,8 @@ def mean_squares(values: FloatArray, measured: FloatArray, lots: IntArray) -> Me
         Covariance of the measurement of each, independent from device to device.
     lots : array of int, shape (device,)
         The lot of each device: 0, 1, ..
+    taken : array, shape (device, parameter, parameter), optional
+        What of ``measured`` is taken off the scatter; all of it by default.
 
     References
     ----------
@@ -212,6 +225,7 @@ def mean_squares(values: FloatArray, measured: FloatArray, lots: IntArray) -> Me
     mean = means.mean(axis=0)
     apart, off = values - means[lots], means - mean
     share = 1.0 / counts[lots]
+    off_scatter = measured if taken is None else taken
     inside, between = max(len(values) - len(counts), 1), max(len(counts) - 1, 1)
     return MeanSquares(
         mean=mean,
@@ -220,6 +234,8 @@ def mean_squares(values: FloatArray, measured: FloatArray, lots: IntArray) -> Me
         within=apart.T @ apart / inside,
         measured_between=np.tensordot(share**2, measured, axes=1) / len(counts),
         measured_within=np.tensordot(1.0 - share, measured, axes=1) / inside,
+        taken_between=np.tensordot(share**2, off_scatter, axes=1) / len(counts),
+        taken_within=np.tensordot(1.0 - share, off_scatter, axes=1) / inside,
     )
 
 

@@ -3,8 +3,8 @@
 from __future__ import annotations
 
 import json
-from collections.abc import Iterator, Mapping
-from dataclasses import dataclass
+from collections.abc import Iterator, Mapping, Sequence
+from dataclasses import dataclass, replace
 from itertools import combinations
 from pathlib import Path
 
@@ -15,6 +15,7 @@ from tcplan.measure.fitted import FittedMaterial, fitted
 from tcplan.measure.reading import ReadSweep, parse_sweep, read_sweep
 from tcplan.measure.request import FitRequest
 from tcplan.measure.tracking import MeasuredTracking, tracking_of
+from tcplan.names import shown
 from tcplan.output import check_folder, write_files
 from tcplan.spec.fit_data import fit_data
 from tcplan.spec.fit_text import quality
@@ -28,8 +29,9 @@ FIGURES = ("fit", "residuals", "devices")
 class Fitted:
     """All materials of a request, and how the TC1 of those measured on the same devices track.
 
-    ``tracking`` holds pairs of materials whose TC1 stay closer together than their limits say. ``refused``
-    is how many rows of each file were no readings.
+    ``tracking`` holds pairs of materials whose TC1 are shown to move together, and stay closer together than
+    their limits say; only where the request says that they are on the same devices. ``refused`` is how many
+    rows of each file were no readings.
     """
 
     request: FitRequest
@@ -50,7 +52,8 @@ def fit_request(request: FitRequest, content: Mapping[str, bytes] | None = None)
     Raises
     ------
     InputError
-        With every file that can not be read, and every device that can not be fitted.
+        With every file that can not be read, every device that can not be fitted, and devices said to be the
+        same whose lots differ.
     """
     given = content or {}
     found: list[FittedMaterial] = []
@@ -65,40 +68,99 @@ def fit_request(request: FitRequest, content: Mapping[str, bytes] | None = None)
             problems.extend(error.problems)
     if problems:
         raise InputError(problems)
-    return Fitted(
-        request=request,
-        materials=tuple(found),
-        tracking=tuple(_tracking(request, found)),
-        refused=refused,
-    )
+    materials, tracking = _tracking(request, found)
+    return Fitted(request=request, materials=materials, tracking=tracking, refused=refused)
 
 
 def _read(file: Path, content: bytes | None) -> ReadSweep:
     return read_sweep(file) if content is None else parse_sweep(content, "standard input")
 
 
+Tracked = tuple[tuple[str, str], MeasuredTracking]
+
+
 def _tracking(
-    request: FitRequest, found: list[FittedMaterial]
-) -> Iterator[tuple[tuple[str, str], MeasuredTracking]]:
-    """Yield the pairs measured on the same devices whose TC1 track, each material in one pair at most."""
-    taken: set[str] = set()
-    rules = request.spread
-    for first, second in combinations(found, 2):
+    request: FitRequest, found: Sequence[FittedMaterial]
+) -> tuple[tuple[FittedMaterial, ...], tuple[Tracked, ...]]:
+    """Return the materials and the pairs whose TC1 track, each material in one pair at most.
+
+    Where a pair does not, a note of its second material says why. Equal names alone say nothing of devices:
+    without ``same_devices`` there is no pair.
+    """
+    if not request.same_devices:
+        return tuple(found), ()
+    pairs = list(combinations(found, 2))
+    if problems := [problem for pair in pairs for problem in _other_lots(*pair)]:
+        raise InputError(problems)
+    written: list[Tracked] = []
+    notes: dict[str, list[str]] = {one.request.name: [] for one in found}
+    for first, second in pairs:
         names = first.request.name, second.request.name
-        both = set(first.by_device) & set(second.by_device) - {""}
-        if len(both) < 2 or taken & set(names) or any(_is_correlated(one) for one in (first, second)):
-            continue
-        tracked = tracking_of(
-            first.by_device,
-            second.by_device,
-            first.lot_of,
-            coverage=rules.coverage,
-            confidence=rules.confidence,
-        )
-        halves = [_tc1_half_width(one) for one in (first, second)]
-        if None not in halves and tracked.half_width < min(h for h in halves if h is not None):
-            taken |= set(names)
-            yield names, tracked
+        told = _tracked(request, first, second, {name for pair, _ in written for name in pair})
+        if isinstance(told, str):
+            notes[names[1]].append(f"No tracking with {names[0]}: {told}.")
+        else:
+            written.append((names, told))
+    return tuple(replace(one, notes=(*one.notes, *notes[one.request.name])) for one in found), tuple(written)
+
+
+def _tracked(
+    request: FitRequest, first: FittedMaterial, second: FittedMaterial, taken: set[str]
+) -> MeasuredTracking | str:
+    """Return how the TC1 of two materials track, or why that is not written."""
+    rules = request.spread
+    if len(_both(first, second)) < 2:
+        return "fewer than two devices have readings of both"
+    if held := [one.request.name for one in (first, second) if _is_correlated(one)]:
+        return f"TC1 of {' and of '.join(held)} stands in a correlation with R"
+    if held := sorted(taken & {first.request.name, second.request.name}):
+        return f"{' and '.join(held)} stands in a tracking already"
+    tracked = tracking_of(
+        first.by_device,
+        second.by_device,
+        first.lot_of,
+        request.errors,
+        coverage=rules.coverage,
+        confidence=rules.confidence,
+    )
+    if not tracked.is_shown:
+        return f"the data do not show that their TC1 move together{_correlated(tracked)}"
+    halves = [_tc1_half_width(one) for one in (first, second)]
+    if any(half is None or half <= tracked.half_width for half in halves):
+        return "the limits of the difference of TC1 are not below those of both"
+    return tracked
+
+
+def _correlated(tracked: MeasuredTracking) -> str:
+    """Return the correlation of the two TC1 in words."""
+    one = tracked.correlation
+    return (
+        ""
+        if one is None
+        else f" (correlation {one.value:.2f}, 95 % interval {one.low:.2f} to {one.high:.2f})"
+    )
+
+
+def _both(first: FittedMaterial, second: FittedMaterial) -> tuple[str, ...]:
+    """Return the names of devices that carry both materials."""
+    return tuple(name for name in first.sweep.devices if name and name in second.sweep.devices)
+
+
+def _other_lots(first: FittedMaterial, second: FittedMaterial) -> Iterator[Problem]:
+    """Yield devices of equal name that can not be the same pieces, since their lots differ."""
+    here, there = first.lot_of, second.lot_of
+    for name in _both(first, second):
+        if here[name] != there[name]:
+            yield Problem(
+                where=f"sweep.{second.request.name}: device {shown(name)}",
+                found=_lot_words(there[name]),
+                expected=f"{_lot_words(here[name])}, as in sweep.{first.request.name}",
+                todo="Correct the lot or the name of the device, or take same_devices out.",
+            )
+
+
+def _lot_words(lot: str) -> str:
+    return f"lot {shown(lot)}" if lot else "no lot"
 
 
 def _is_correlated(one: FittedMaterial) -> bool:

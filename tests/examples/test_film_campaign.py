@@ -108,6 +108,14 @@ def test_the_correlation_that_was_made_is_found_and_no_other(run):
     assert told["low"] <= by_lot / (across * along) <= told["high"] < 0.0
 
 
+def test_films_of_other_pieces_do_not_track(run):
+    """Devices of the three films have equal names, and are other pieces: the campaign does not say else."""
+    folder = run[0] / "examples/film_campaign"
+    assert "same_devices" not in (folder / "campaign.toml").read_text()
+    assert "tracking" not in tomllib.loads((folder / "fitted/materials.toml").read_text())
+    assert json.loads((folder / "fitted/fit.json").read_text())["tracking"] == []
+
+
 def test_hysteresis_and_bad_rows_are_told(run):
     data = found(run)
     moved = [one["hysteresis"] for one in data["iron_film"]["devices"]]

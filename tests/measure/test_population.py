@@ -2,13 +2,16 @@
 
 import numpy as np
 import pytest
+from fit_sweeps import sweep_of
 from measured_fits import fit_of, law_fit, lots_of
 from scipy import stats
+from scipy.special import ndtr
 
 from tcplan.draws.statistics import tolerance_factor
 from tcplan.errors import InputError
 from tcplan.material.law import Expression, SteinhartHart, Thermistor
-from tcplan.measure.population import population
+from tcplan.measure.fit import fit
+from tcplan.measure.population import UNSTATED, population
 from tcplan.measure.spread_laws import local
 
 TC1, TC2 = -120e-6, 0.55e-6
@@ -85,6 +88,46 @@ def test_point_noise_is_taken_off():
     assert value.device.dof == 2.0
     assert value.uncertainty == pytest.approx(0.004 / np.sqrt(3), rel=1e-9)
     assert any(note.startswith("value: no spread of devices") for note in found.notes)
+
+
+def test_without_stated_uncertainty_nothing_is_taken_off():
+    noise = np.diag([4.0, 2e-6, 0.0]) ** 2
+    values = [(1000.0, TC1 + k * 3e-6, TC2) for k in (-1, 0, 1)]
+    found = population(one_lot(values, noise=noise, stated=False), *named(3))
+    known = population(one_lot(values, noise=noise), *named(3))
+    one, other = found.scatter("tc1"), known.scatter("tc1")
+    assert one.device.sigma == pytest.approx(3e-6, rel=1e-9)
+    # The scatter may be all noise: the lower end is that of the case in which the noise is known.
+    assert one.device.low == other.device.low
+    assert one.half_width > other.half_width
+    assert (one.noise, one.uncertainty) == (other.noise, other.uncertainty)
+    assert UNSTATED in found.notes
+    assert UNSTATED not in known.notes
+    assert UNSTATED not in population(one_lot(values[:1], noise=noise, stated=False), *named(1)).notes
+
+
+def test_limits_hold_with_misfit_that_passes_for_noise():
+    """Six lots of three: a cubic term of 200 ppm at the ends is in all devices, and in no quadratic."""
+    rng, held = np.random.Generator(np.random.Philox(33)), []
+    T = np.linspace(-55.0, 140.0, 8) + 273.15
+    x = T - 298.15
+    # What a quadratic makes of the cubic is a part of the mean TC1: numpy's polyfit, an independent twin.
+    middle = np.polyfit(x, 1.0 + TC1 * x + TC2 * x**2 + 200e-6 * (x / 115.0) ** 3, 2)
+    middle, lot, device = middle[1] / middle[2], 3e-6, 1e-6
+    for _ in range(60):
+        fits = []
+        for _ in range(6):
+            of_lot = rng.normal(0.0, lot)
+            for _ in range(3):
+                a = TC1 + of_lot + rng.normal(0.0, device)
+                R = 1e3 * (1.0 + a * x + TC2 * x**2 + 200e-6 * (x / 115.0) ** 3)
+                R *= 1.0 + rng.normal(0.0, 10e-6, len(T))
+                fits.append(fit(sweep_of(T, R), "polynomial", 298.15, order=2))
+        one = population(fits, [str(k // 3) for k in range(18)], [str(k) for k in range(18)]).scatter("tc1")
+        off, sigma = one.mean - middle, np.hypot(lot, device)
+        held.append(ndtr((one.half_width - off) / sigma) - ndtr((-one.half_width - off) / sigma) >= 0.9973)
+    # 95 % confidence, less four standard errors of 60 campaigns.
+    assert np.mean(held) > 0.95 - 4 * np.sqrt(0.95 * 0.05 / 60)
 
 
 def test_common_errors_stay_in_the_mean_and_off_the_spread():
@@ -190,6 +233,35 @@ def test_a_chance_correlation_is_rarely_shown():
         shown.append(one is not None and one.is_shown)
     # 5 % of those that have none, within four standard errors.
     assert np.mean(shown) < 0.05 + 4 * np.sqrt(0.05 * 0.95 / 400)
+
+
+@pytest.mark.parametrize("sigma", [0.3e-6, 0.5e-6, 1e-6, 5e-6])
+@pytest.mark.parametrize("count", [5, 8, 15])
+def test_noise_makes_no_correlation_by_chance(count, sigma):
+    """One lot without correlation, TC1 scattering less than its noise and more: 5 % are shown, not more."""
+    shown = []
+    for seed in range(300):
+        given = lots_of(3000 + seed, (count,), (0, 0, 0), (0.003, sigma, 0.0), (20e-6, 0.5e-6, 0.0))
+        one = population(*given).correlation
+        shown.append(one is not None and one.is_shown)
+    assert np.mean(shown) < 0.05 + 4 * np.sqrt(0.05 * 0.95 / 300)
+
+
+def test_noise_is_taken_off_both_ends_of_the_interval():
+    rng = np.random.Generator(np.random.Philox(12))
+    x = rng.normal(0, 1, 20)
+    noise = np.diag([0.0, 1e-6, 0.0]) ** 2
+    tc1 = TC1 + (1.5 * x + rng.normal(0, 2.5, 20)) * 1e-6
+    found = population(
+        one_lot([(1000 + a, b, TC2) for a, b in zip(x, tc1, strict=True)], noise=noise), *named(20)
+    )
+    # By hand: Fisher's interval of scipy, over the root of the part of TC1 that is not noise.
+    twin = stats.pearsonr(x, tc1)
+    interval = twin.confidence_interval(0.95)
+    reliable = np.sqrt(1.0 - 1e-12 / np.var(tc1, ddof=1))
+    expected = np.array([interval.low, twin.statistic, interval.high]) / reliable
+    one = found.correlation
+    assert (one.low, one.value, one.high) == pytest.approx(tuple(expected), rel=1e-6)
 
 
 def test_nearly_full_correlation_stays_below_one():

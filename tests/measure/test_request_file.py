@@ -43,6 +43,7 @@ def test_the_example_of_the_document_is_read():
             chamber_offset=0.15, chamber_scale=1e-3, lead=0.02, lead_tc1=3.9e-3, meter_scale=50e-6
         ),
         spread=SpreadRules(meaning="limits", coverage=0.9973, confidence=0.95),
+        same_devices=True,
     )
 
 
@@ -52,6 +53,12 @@ def test_what_is_not_said():
     assert (one.model, one.order, one.reference, one.size) == ("polynomial", None, 298.15, None)
     assert parse_request(LEAST, "c.toml", Path()).spread == SpreadRules()
     assert parse_request(LEAST, "c.toml", Path()).errors == CommonErrors()
+
+
+def test_one_sweep_has_no_devices_in_common_with_another():
+    with pytest.raises(InputError, match=r"c\.toml.*same_devices: found one sweep"):
+        parse_request(f"same_devices = true\n{LEAST}", "c.toml", Path())
+    assert not parse_request(f"same_devices = false\n{LEAST}", "c.toml", Path()).same_devices
 
 
 @pytest.mark.parametrize("model", ["polynomial", "platinum", "thermistor", "steinhart-hart"])

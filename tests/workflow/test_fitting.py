@@ -3,6 +3,7 @@
 import json
 import math
 import tomllib
+from dataclasses import replace
 from pathlib import Path
 
 import numpy as np
@@ -13,12 +14,13 @@ from scipy.optimize import brentq
 from tcplan.errors import InputError, OutputError
 from tcplan.material.files import read_materials
 from tcplan.measure.block import Size, material_block
+from tcplan.measure.model import CommonErrors
 from tcplan.measure.request import FitRequest, SpreadRules, SweepRequest
 from tcplan.units import parse_quantity
 from tcplan.workflow.fitting import check_fit_out, fit_json, fit_request, materials_text, write_fit
 
 
-def request_of(folder, spread=None, **texts):
+def request_of(folder, spread=None, same=False, **texts):
     sweeps = []
     for name, text in texts.items():
         (folder / f"{name}.csv").write_text(text)
@@ -30,7 +32,7 @@ def request_of(folder, spread=None, **texts):
                 size=Size(key="ohm_per_square", count=50.0),
             )
         )
-    return FitRequest(sweeps=tuple(sweeps), spread=spread or SpreadRules())
+    return FitRequest(sweeps=tuple(sweeps), spread=spread or SpreadRules(), same_devices=same)
 
 
 def test_what_is_written_is_read_back(tmp_path):
@@ -90,15 +92,15 @@ def other_devices(lot, device):
     return f"L{lot}", f"chip {lot}.{device}"
 
 
-def tracked_texts():
+def tracked_texts(apart=1e-6, chips=2):
     """Return two films on the same chips, whose TC1 move together by 20 ppm/K and apart by far less."""
     rng = np.random.default_rng(8)
     texts = {"red": [], "blue": []}
     for lot in range(6):
-        for chip in range(2):
+        for chip in range(chips):
             both = rng.normal(0.0, 20e-6)
             for name, tc1 in (("red", -100e-6), ("blue", 300e-6)):
-                own, ohms = tc1 + both + rng.normal(0.0, 1e-6), 1e3 * (1 + rng.normal(0, 0.01))
+                own, ohms = tc1 + both + rng.normal(0.0, apart), 1e3 * (1 + rng.normal(0, 0.01))
                 texts[name] += [
                     f"{t!r},{ohms * (1 + own * (t - 25.0) + rng.normal(0.0, 1e-5))!r},{lot}.{chip},{lot}"
                     for t in NINE
@@ -107,7 +109,7 @@ def tracked_texts():
 
 
 def test_materials_on_the_same_devices_track(tmp_path):
-    fits = fit_request(request_of(tmp_path, **tracked_texts()))
+    fits = fit_request(request_of(tmp_path, same=True, **tracked_texts()))
     [(names, tracked)] = fits.tracking
     assert names == ("red", "blue")
     assert tracked.difference == pytest.approx(-400e-6, abs=3e-6)
@@ -123,9 +125,70 @@ def test_materials_on_the_same_devices_track(tmp_path):
     assert tracked.half_width <= within <= 1.01 * tracked.half_width
 
 
-def test_materials_on_other_devices_do_not(tmp_path):
-    fits = fit_request(request_of(tmp_path, red=sweep_text(3, 2), blue=sweep_text(3, 2, names=other_devices)))
+def why_not(fits):
+    """Return what the notes of the second material say of tracking; nothing is written."""
     assert fits.tracking == ()
+    assert "[[tracking]]" not in materials_text(fits)
+    return [note for one in fits.materials for note in one.notes if "tracking" in note]
+
+
+def test_equal_names_alone_are_no_reason(tmp_path):
+    assert why_not(fit_request(request_of(tmp_path, **tracked_texts()))) == []
+
+
+def test_materials_on_other_devices_do_not(tmp_path):
+    texts = {"red": sweep_text(3, 2), "blue": sweep_text(3, 2, names=other_devices)}
+    [note] = why_not(fit_request(request_of(tmp_path, same=True, **texts)))
+    assert note == "No tracking with red: fewer than two devices have readings of both."
+
+
+def test_films_that_do_not_move_together_do_not(tmp_path):
+    texts = {
+        name: sweep_text(4, 3, seed=seed, stated=True, names=lambda n, k: (f"L{n}", f"{n}.{k}"))
+        for name, seed in (("red", 1), ("blue", 2))
+    }
+    fits = fit_request(request_of(tmp_path, same=True, **texts))
+    [note] = why_not(fits)
+    assert note.startswith("No tracking with red: the data do not show that their TC1 move together (corr")
+    comment = " ".join(line.lstrip("# ") for line in materials_text(fits).splitlines())
+    assert note in comment
+    assert note in json.loads(fit_json(fits))["materials"]["blue"]["notes"]
+
+
+def test_a_difference_that_is_no_closer_is_not_written(tmp_path):
+    # TC1 share 20 ppm/K of 34 ppm/K: they move together, and apart by 39 ppm/K, more than each by itself.
+    fits = fit_request(request_of(tmp_path, same=True, **tracked_texts(apart=28e-6, chips=12)))
+    [note] = why_not(fits)
+    assert note == "No tracking with red: the limits of the difference of TC1 are not below those of both."
+
+
+def test_a_material_is_in_one_pair(tmp_path):
+    texts = tracked_texts()
+    fits = fit_request(request_of(tmp_path, same=True, **texts, green=texts["blue"]))
+    assert [names for names, _ in fits.tracking] == [("red", "blue")]
+    assert [note for note in fits.materials[2].notes if "tracking" in note] == [
+        "No tracking with red: red stands in a tracking already.",
+        "No tracking with blue: blue stands in a tracking already.",
+    ]
+
+
+def test_lots_of_the_same_devices_agree(tmp_path):
+    texts = tracked_texts()
+    texts["blue"] = texts["blue"].replace(",0.1,0\n", ",0.1,9\n")
+    assert fit_request(request_of(tmp_path, **texts)).tracking == ()
+    with pytest.raises(InputError) as caught:
+        fit_request(request_of(tmp_path, same=True, **texts))
+    [problem] = caught.value.problems
+    assert problem.where == "sweep.blue: device '0.1'"
+    assert (problem.found, problem.expected) == ("lot '9'", "lot '0', as in sweep.red")
+
+
+def test_a_scale_of_the_chamber_widens_what_is_written(tmp_path):
+    request = request_of(tmp_path, same=True, **tracked_texts())
+    [(_, plain)] = fit_request(request).tracking
+    # By hand: 3 standard deviations of 0.5 % of the difference of 400 ppm/K are 6 ppm/K.
+    [(_, found)] = fit_request(replace(request, errors=CommonErrors(chamber_scale=0.005))).tracking
+    assert np.sqrt(found.half_width**2 - plain.half_width**2) == pytest.approx(6e-6, rel=0.02)
 
 
 def test_a_tc1_in_a_correlation_is_not_in_a_tracking(tmp_path):
@@ -140,8 +203,9 @@ def test_a_tc1_in_a_correlation_is_not_in_a_tracking(tmp_path):
                     for t in NINE
                 ]
     texts = {n: "T [degC],R [ohm],device,lot\n" + "\n".join(r) + "\n" for n, r in rows.items()}
-    fits = fit_request(request_of(tmp_path, **texts))
-    assert fits.tracking == ()
+    fits = fit_request(request_of(tmp_path, same=True, **texts))
+    [note] = why_not(fits)
+    assert note == "No tracking with red: TC1 of red and of blue stands in a correlation with R."
     text = materials_text(fits)
     assert text.count("[[correlation]]") == 2
     (tmp_path / "m.toml").write_text(text)
