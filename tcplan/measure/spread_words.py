@@ -60,9 +60,7 @@ def account(found: Population, meaning: Meaning, remarks: Sequence[str] = ()) ->
     lines = [f"{counted(found.devices, 'device')}{lots}, {over}; mean R {format_ohms(found.ohms)}."]
     if found.devices > 1:
         lines.append(_meaning_of(found, meaning))
-        lines.append(
-            f"Standard deviations without point noise, each with its {100 * found.confidence:g} % interval:"
-        )
+        lines.append(f"Standard deviations, each with its {100 * found.confidence:g} % interval:")
     lines += [_scatter_line(one) for one in found.scatters]
     lines += [*found.notes, *map(_printable, remarks)]
     told = (wrap(line, WIDTH, subsequent_indent="  ") for line in lines)

@@ -107,20 +107,20 @@ def test_without_stated_uncertainty_nothing_is_taken_off():
 
 
 def test_limits_hold_with_misfit_that_passes_for_noise():
-    """Six lots of three: a cubic term of 200 ppm at the ends is in all devices, and in no quadratic."""
+    """Six lots of three: a cubic term of 1500 ppm at the ends is in all devices, and in no quadratic."""
     rng, held = np.random.Generator(np.random.Philox(33)), []
     T = np.linspace(-55.0, 140.0, 8) + 273.15
     x = T - 298.15
     # What a quadratic makes of the cubic is a part of the mean TC1: numpy's polyfit, an independent twin.
-    middle = np.polyfit(x, 1.0 + TC1 * x + TC2 * x**2 + 200e-6 * (x / 115.0) ** 3, 2)
-    middle, lot, device = middle[1] / middle[2], 3e-6, 1e-6
+    middle = np.polyfit(x, 1.0 + TC1 * x + TC2 * x**2 + 1500e-6 * (x / 115.0) ** 3, 2)
+    middle, lot, device = middle[1] / middle[2], 1e-6, 0.5e-6
     for _ in range(60):
         fits = []
         for _ in range(6):
             of_lot = rng.normal(0.0, lot)
             for _ in range(3):
                 a = TC1 + of_lot + rng.normal(0.0, device)
-                R = 1e3 * (1.0 + a * x + TC2 * x**2 + 200e-6 * (x / 115.0) ** 3)
+                R = 1e3 * (1.0 + a * x + TC2 * x**2 + 1500e-6 * (x / 115.0) ** 3)
                 R *= 1.0 + rng.normal(0.0, 10e-6, len(T))
                 fits.append(fit(sweep_of(T, R), "polynomial", 298.15, order=2))
         one = population(fits, [str(k // 3) for k in range(18)], [str(k) for k in range(18)]).scatter("tc1")
