@@ -90,7 +90,9 @@ class Player:
             self.folder = self.folder / words[1]
             return 0
         if words[:2] == ["cp", "-r"]:
-            shutil.copytree(ROOT / words[2], self.folder / words[3])
+            # What the reader's own commands left beside an example is not part of it.
+            left = shutil.ignore_patterns("fitted", "*-plan")
+            shutil.copytree(ROOT / words[2], self.folder / words[3], ignore=left)
             return 0
         assert words[0] == "tcplan", words
         target = words[words.index(">") + 1] if ">" in words else None

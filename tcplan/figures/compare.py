@@ -14,9 +14,9 @@ from matplotlib.lines import Line2D
 
 from tcplan.arrays import FloatArray
 from tcplan.figures.curves import bounds, celsius
-from tcplan.figures.files import _png, _svg
 from tcplan.figures.limits import Unit, draw_limits, unit_of, view_of
 from tcplan.figures.panel import draw_reference, finish, put_legend
+from tcplan.figures.pictures import picture_files
 from tcplan.figures.style import (
     CHOSEN,
     MARKERS,
@@ -189,4 +189,4 @@ def compare_figure_files(plan: Plan, comparison: Comparison) -> dict[str, bytes]
             "Drift of the measured devices with error bars of 2 standard uncertainties, the nominal "
             "prediction, the worst case at each temperature, the band of likely lots, and the limits.",
         )
-        return {"compare.svg": _svg(figure, *words), "compare.png": _png(figure)}
+        return picture_files("compare", figure, *words)

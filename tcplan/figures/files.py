@@ -2,20 +2,17 @@
 
 from __future__ import annotations
 
-import html
-import io
-
 from matplotlib.figure import Figure
 
 from tcplan.figures.drift import draw_drift
 from tcplan.figures.lots import Lots, lots_of
 from tcplan.figures.network import draw_network, sketch_of
+from tcplan.figures.pictures import picture_files
 from tcplan.figures.slope_curvature import draw_slope_curvature, is_crowded
 from tcplan.figures.spread import draw_spread
 from tcplan.figures.style import (
     DRIFT_INCHES,
     PLANE_INCHES,
-    PNG_DPI,
     SMALL_SIZE,
     TEXT_SIZE,
     figure_style,
@@ -52,8 +49,7 @@ def figure_files(plan: Plan) -> dict[str, bytes]:
             *([("spread", spread_figure(plan, lots))] if lots else []),
             ("slope-curvature", slope_curvature_figure(plan)),
         ):
-            found[f"{name}.svg"] = _svg(figure, *words[name])
-            found[f"{name}.png"] = _png(figure)
+            found |= picture_files(name, figure, *words[name])
     return found
 
 
@@ -98,27 +94,6 @@ def slope_curvature_figure(plan: Plan) -> Figure:
     ax = figure.add_axes((0.115, 0.285, 0.38 if is_crowded(plan) else 0.865, 0.66))
     draw_slope_curvature(ax, plan)
     return figure
-
-
-def _png(figure: Figure) -> bytes:
-    content = io.BytesIO()
-    figure.savefig(content, format="png", dpi=PNG_DPI, metadata={"Software": None})
-    return content.getvalue()
-
-
-def _svg(figure: Figure, title: str, description: str) -> bytes:
-    """Return SVG with words for those who do not see it.
-
-    It has no date, writer's version, or document type that points to a web address.
-    """
-    content = io.StringIO()
-    nothing = dict.fromkeys(("Date", "Creator", "Format", "Type"))
-    figure.savefig(content, format="svg", metadata=nothing)
-    text = content.getvalue()
-    start = text.index("<svg")
-    inside = text.index(">", start) + 1
-    words = f"\n <title>{html.escape(title)}</title>\n <desc>{html.escape(description)}</desc>"
-    return (f'<?xml version="1.0" encoding="utf-8"?>\n{text[start:inside]}{words}{text[inside:]}').encode()
 
 
 def _words(plan: Plan) -> dict[str, tuple[str, str]]:

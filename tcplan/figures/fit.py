@@ -16,7 +16,7 @@ from tcplan.figures.fit_devices import devices_figure
 from tcplan.figures.fit_groups import celsius, finish, groups_of, shown_rows, span_of
 from tcplan.figures.fit_residuals import residuals_figure
 from tcplan.figures.panel import put_legend
-from tcplan.figures.placement import picture_files
+from tcplan.figures.pictures import picture_files
 from tcplan.figures.style import (
     CHOSEN,
     OTHER,

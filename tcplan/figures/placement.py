@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import html
-import io
 import math
 import textwrap
 from collections.abc import Sequence
@@ -19,11 +17,11 @@ from matplotlib.patches import Patch
 from matplotlib.text import Annotation, Text
 
 from tcplan.figures.labels import page_box
+from tcplan.figures.pictures import picture_files
 from tcplan.figures.style import (
     CHOSEN,
     MATERIAL_COLOURS,
     OTHER,
-    PNG_DPI,
     SMALL_SIZE,
     TEXT_SIZE,
     figure_style,
@@ -349,19 +347,3 @@ def placement_figure_files(placements: Sequence[Placement]) -> dict[str, bytes]:
         films = ", ".join(placement.title for placement in placements)
         words = f"The arrays of {films} to scale, each unit with the letter of its leg, dummies hatched."
         return picture_files("placement", placement_figure(placements), title, words)
-
-
-def picture_files(name: str, figure: Figure, title: str, description: str) -> dict[str, bytes]:
-    """Return a figure as SVG with words for those who do not see it, and as PNG, by file name.
-
-    The SVG has no date, writer's version, or document type that points to a web address.
-    """
-    content, picture = io.StringIO(), io.BytesIO()
-    figure.savefig(content, format="svg", metadata=dict.fromkeys(("Date", "Creator", "Format", "Type")))
-    figure.savefig(picture, format="png", dpi=PNG_DPI, metadata={"Software": None})
-    text = content.getvalue()
-    start = text.index("<svg")
-    inside = text.index(">", start) + 1
-    words = f"\n <title>{html.escape(title)}</title>\n <desc>{html.escape(description)}</desc>"
-    svg = f'<?xml version="1.0" encoding="utf-8"?>\n{text[start:inside]}{words}{text[inside:]}'
-    return {f"{name}.svg": svg.encode(), f"{name}.png": picture.getvalue()}

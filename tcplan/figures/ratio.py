@@ -2,8 +2,6 @@
 
 from __future__ import annotations
 
-import html
-import io
 from dataclasses import dataclass
 
 import numpy as np
@@ -16,6 +14,7 @@ from matplotlib.ticker import FuncFormatter
 from tcplan.arrays import FloatArray
 from tcplan.figures.curves import celsius
 from tcplan.figures.limits import unit_of
+from tcplan.figures.pictures import picture_files
 from tcplan.figures.style import (
     CHOSEN,
     FAINT,
@@ -23,7 +22,6 @@ from tcplan.figures.style import (
     LIMIT_DASHES,
     LIMIT_FILL,
     OTHER,
-    PNG_DPI,
     SMALL_SIZE,
     TEXT_SIZE,
     WORST,
@@ -110,24 +108,5 @@ def ratio_figure_files(check: RatioCheck) -> dict[str, bytes]:
     with figure_style():
         figure = Figure(figsize=INCHES)
         draw_ratio(figure.add_axes((0.115, 0.15, 0.64, 0.75)), check)
-        return {"drift.svg": _svg(figure), "drift.png": _png(figure)}
-
-
-def _png(figure: Figure) -> bytes:
-    content = io.BytesIO()
-    figure.savefig(content, format="png", dpi=PNG_DPI, metadata={"Software": None})
-    return content.getvalue()
-
-
-def _svg(figure: Figure) -> bytes:
-    """Return SVG with words for those who do not see it, without a date or a web address."""
-    content = io.StringIO()
-    figure.savefig(content, format="svg", metadata=dict.fromkeys(("Date", "Creator", "Format", "Type")))
-    text = content.getvalue()
-    start = text.index("<svg")
-    inside = text.index(">", start) + 1
-    words = (
-        "\n <title>Drift of the ratio over temperature</title>\n <desc>"
-        f"{html.escape('Nominal drift, the worst device found, and the limits.')}</desc>"
-    )
-    return f'<?xml version="1.0" encoding="utf-8"?>\n{text[start:inside]}{words}{text[inside:]}'.encode()
+        words = "Nominal drift, the worst device found, and the limits."
+        return picture_files("drift", figure, "Drift of the ratio over temperature", words)

@@ -13,7 +13,7 @@ from matplotlib.ticker import FuncFormatter, LogLocator, MaxNLocator, NullLocato
 
 from tcplan.figures.labels import Name, marker_box, page_box, place_names
 from tcplan.figures.limits import FITS
-from tcplan.figures.placement import picture_files
+from tcplan.figures.pictures import picture_files
 from tcplan.figures.style import (
     CHOSEN,
     FAINT,
