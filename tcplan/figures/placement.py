@@ -1,4 +1,7 @@
-"""The arrays of films to scale: units with the letter of their leg, dummies hatched, and the outline."""
+"""The arrays of films to scale: units with the letter of their leg, dummies hatched, and the outline.
+
+Long, since what is drawn of a large array, what fits and what is said below it depend on each other.
+"""
 
 from __future__ import annotations
 

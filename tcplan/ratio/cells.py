@@ -12,7 +12,7 @@ halved until no device can be beyond the best one found by more than `GAP`, or t
 Of two resistors of one shape a bound without vertices (`tcplan.ratio.same_shape`) is tried first, where it is
 nearer, to `SHAPE_GAP`; if that leaves the extreme open, both bounds count in each cell.
 
-Long, since the bound, the cells and the vertices that it is taken at are one argument.
+Long, since the bounds and the search over cells that tightens them are one argument.
 """
 
 from __future__ import annotations

@@ -1,4 +1,7 @@
-"""A comparison of measured devices with their plan in words and numbers, for the screen."""
+"""A comparison of measured devices with their plan in words and numbers, for the screen.
+
+Long, since it is all the words of a comparison, each function a sentence or a row.
+"""
 
 from __future__ import annotations
 
